@@ -1,0 +1,132 @@
+"""The report in a real browser: quiet, offline, without scripts, on a phone and in the dark."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from pathlib import Path
+
+import pytest
+from playwright.sync_api import Browser, Page, sync_playwright
+from tests.unit import paper_examples as examples
+
+from lineproof.paper.figures import draw_figures
+from lineproof.paper.report import make_report
+
+CHROMIUM = "/usr/bin/chromium"
+PHONE = {"width": 390, "height": 844}
+DESKTOP = {"width": 1400, "height": 900}
+
+
+@pytest.fixture(scope="module")
+def browser() -> Iterator[Browser]:
+    with sync_playwright() as playwright:
+        browser = playwright.chromium.launch(executable_path=CHROMIUM, args=["--no-sandbox"])
+        yield browser
+        browser.close()
+
+
+@pytest.fixture(scope="module", params=[examples.usual, examples.hostile], ids=["usual", "hostile"])
+def report(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory) -> Path:
+    context = request.param()
+    path = tmp_path_factory.mktemp("report") / "report.html"
+    path.write_text(make_report(context, draw_figures(context)), encoding="utf-8")
+    return path
+
+
+def opened(browser: Browser, report: Path, **options: object) -> Page:
+    page = browser.new_context(**options).new_page()
+    page.goto(report.as_uri())
+    return page
+
+
+def test_one_request_and_a_clean_console(browser: Browser, report: Path) -> None:
+    page = browser.new_page()
+    asked: list[str] = []
+    said: list[str] = []
+    page.on("request", lambda request: asked.append(request.url))
+    page.on("console", lambda message: said.append(message.text))
+    page.on("pageerror", lambda error: said.append(str(error)))
+    page.on("dialog", lambda dialog: said.append(dialog.message))
+    page.goto(report.as_uri())
+    page.wait_for_load_state("networkidle")
+    assert asked == [report.as_uri()]
+    assert said == []
+
+
+@pytest.mark.parametrize("scheme", ["light", "dark"])
+@pytest.mark.parametrize("size", [PHONE, DESKTOP], ids=["phone", "desktop"])
+def test_page_never_scrolls_sideways(
+    browser: Browser, report: Path, size: dict[str, int], scheme: str
+) -> None:
+    page = opened(browser, report, viewport=size, color_scheme=scheme)
+    assert page.evaluate("document.documentElement.scrollWidth") == size["width"]
+
+
+def test_wide_tables_scroll_in_their_own_boxes(browser: Browser, report: Path) -> None:
+    page = opened(browser, report, viewport=PHONE)
+    boxes = page.evaluate(
+        "[...document.querySelectorAll('.scroll')].map(b => [b.scrollWidth, b.clientWidth,"
+        " getComputedStyle(b).overflowX, b.tabIndex])"
+    )
+    assert any(inner > outer for inner, outer, _, _ in boxes)
+    assert {(overflow, tab) for _, _, overflow, tab in boxes} == {("auto", 0)}
+
+
+def test_tables_fit_a_desktop_page(browser: Browser, report: Path) -> None:
+    page = opened(browser, report, viewport=DESKTOP)
+    wide = page.evaluate(
+        "[...document.querySelectorAll('.scroll')].filter(b => b.scrollWidth > b.clientWidth)"
+        ".map(b => b.getAttribute('aria-labelledby'))"
+    )
+    assert wide == []
+
+
+def test_reads_the_same_without_scripts(browser: Browser, report: Path) -> None:
+    with_scripts = opened(browser, report).inner_text("main")
+    without = opened(browser, report, java_script_enabled=False).inner_text("main")
+    assert with_scripts == without
+    assert "The answer" in without
+
+
+def test_ids_are_unique_and_contents_lead_to_headings(browser: Browser, report: Path) -> None:
+    page = opened(browser, report, viewport=DESKTOP)
+    ids = page.evaluate("[...document.querySelectorAll('[id]')].map(e => e.id)")
+    assert len(ids) == len(set(ids))
+    for link in page.query_selector_all("nav a"):
+        link.click()
+        target = page.url.split("#")[1]
+        top = page.evaluate(f"document.getElementById({target!r}).getBoundingClientRect().top")
+        at_end = page.evaluate("scrollY + innerHeight >= document.body.scrollHeight - 1")
+        assert 0 <= top <= 60 or at_end
+
+
+def test_dark_pages_are_dark_and_figures_follow(browser: Browser, report: Path) -> None:
+    shades = {}
+    for scheme in ("light", "dark"):
+        page = opened(browser, report, color_scheme=scheme)
+        shades[scheme] = page.evaluate(
+            "[getComputedStyle(document.body).backgroundColor,"
+            " getComputedStyle(document.querySelector('.plot path')).fill]"
+        )
+    assert shades["light"] == ["rgb(255, 255, 255)"] * 2
+    assert shades["dark"] == ["rgb(21, 23, 27)"] * 2
+
+
+def test_numbers_show_their_address(browser: Browser, report: Path) -> None:
+    page = opened(browser, report)
+    count = page.evaluate("document.querySelectorAll('td[title], .n[title]').length")
+    plain = page.evaluate(
+        "[...document.querySelectorAll('figure.table tbody td')]"
+        ".filter(c => /\\d/.test(c.textContent) && !c.title).length"
+    )
+    assert count > 100
+    assert plain == 0
+
+
+def test_prints_without_contents_and_in_light(browser: Browser, report: Path) -> None:
+    page = opened(browser, report, color_scheme="dark")
+    page.emulate_media(media="print")
+    assert not page.is_visible("nav")
+    shade = page.evaluate("getComputedStyle(document.body).backgroundColor")
+    assert shade == "rgb(255, 255, 255)"
+    assert page.pdf(format="A4").startswith(b"%PDF")

@@ -1,0 +1,265 @@
+"""Invented studies for the tests of the paper: drawn returns, priced by the real analyses."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from functools import cache
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from lineproof.analyses import ANALYSES
+from lineproof.paper.context import Context
+from lineproof.pricing import price_subperiod
+
+HOSTILE = ["<script>alert(1);", "=cmd()|'calc'!A0", "R&D_50%", "{$x^2$}#~\\"]
+LONG = "The very long name of an index of everything that has ever been listed anywhere"
+_KEYS = ["sort", "subperiod", "analysis", "variant", "asset", "term", "se_kind"]
+
+
+def cut(
+    sort: str, assets: Sequence[str], months: pd.PeriodIndex, *, ranked: bool, seed: int
+) -> pd.DataFrame:
+    """Monthly returns of assets with betas from 0.5 to 1.5, and alphas that fall with beta."""
+    random = np.random.Generator(np.random.PCG64(seed))
+    shape = (len(months), len(assets))
+    betas = np.linspace(0.5, 1.5, len(assets))
+    market = 0.006 + 0.045 * random.standard_normal(len(months))
+    riskless = np.full(len(months), 0.003) + 0.0005 * random.standard_normal(len(months))
+    excess = 0.004 * (1 - betas) + np.outer(market, betas) + 0.015 * random.standard_normal(shape)
+    nothing = np.full(shape, np.nan)
+    wide = {
+        "excess_return": excess,
+        "n_members": 30 + random.integers(0, 5, shape) if ranked else nothing,
+        "mean_size": np.full(shape, 120.0) if ranked else nothing,
+        "ante_beta": betas + 0.1 * random.standard_normal(shape) if ranked else nothing,
+        "market_excess": np.repeat(market[:, None], len(assets), axis=1),
+        "riskless": np.repeat(riskless[:, None], len(assets), axis=1),
+    }
+    frame = pd.DataFrame({name: values.T.ravel() for name, values in wide.items()})
+    dates = months.to_timestamp(how="end").normalize().to_numpy().astype("datetime64[ms]")
+    frame.insert(0, "date", np.tile(dates, len(assets)))
+    frame.insert(0, "asset", np.repeat(list(assets), len(months)))
+    frame.insert(0, "sort", sort)
+    return frame
+
+
+def subperiod(name: str, first: str, last: str, title: str | None = None) -> dict[str, Any]:
+    """A subperiod as the pipeline lists it."""
+    months = len(pd.period_range(first, last, freq="M"))
+    title = title or f"{first[:4]}–{last[:4]}"
+    return {"name": name, "title": title, "first": first, "last": last, "n_months": months}
+
+
+def counts(rows: list[tuple[str, str, str, str, str, float]]) -> pd.DataFrame:
+    """Rows of the estimates that hold an estimate only."""
+    frame = pd.DataFrame(
+        rows, columns=["subperiod", "analysis", "variant", "asset", "term", "estimate"]
+    )
+    frame = frame.assign(sort="-", se_kind="-", n_months=0, n_assets=0, status="ok", reason="")
+    for column in (
+        "se",
+        "statistic",
+        "df1",
+        "df2",
+        "p",
+        "p_one_sided",
+        "critical",
+        "critical_one_sided",
+    ):
+        frame[column] = np.nan
+    return frame
+
+
+def sample_rows(
+    periods: list[dict[str, Any]], intake: dict[str, Any], months: pd.PeriodIndex
+) -> pd.DataFrame:
+    """The sample's own numbers; the months' counts rise by one a month from 250."""
+    rows = [("-", "intake", "rows", "all", term, n) for term, n in intake["rows"].items()]
+    rows += [
+        ("-", "intake", "fault", f"fault-{f['number']:02d}", "n_rows", f["n"])
+        for f in intake["faults"]
+    ]
+    rows += [
+        ("-", "intake", "screen", f"screen-{place}", "n_rows", each["n"])
+        for place, each in enumerate(intake["screens"], start=1)
+    ]
+    for place, month in enumerate(map(str, months)):
+        rows.append(("-", "sample", "month", month, "n_securities", 250 + place % 200))
+        rows.append(("-", "sample", "month", month, "n_with_beta", max(0, 200 + place % 150 - 24)))
+    for each in periods:
+        values = {
+            "n_months": each["n_months"],
+            "n_securities": 700,
+            "n_security_months": 253_112,
+            "mean_alive": 281.25,
+            "min_alive": 250,
+            "max_alive": 1449,
+            "n_entries": 320,
+            "n_exits": 295,
+            "mean_return": 0.0084,
+            "sd_return": 0.0491,
+        }
+        rows += [(each["name"], "sample", "panel", "all", term, v) for term, v in values.items()]
+    return counts(rows)
+
+
+def facts(sorts: dict[str, dict[str, Any]], **changes: Any) -> dict[str, Any]:
+    """What the paper knows of the study."""
+    paper = {
+        "authors": ["A. Author", "B. Author"],
+        "main": next(iter(sorts)),
+        "main_subperiod": "full",
+        "alpha_errors": "hac",
+        "line_weights": "ols",
+        "line_errors": "errors_in_variables",
+        "tables": "default",
+        "figures": "default",
+    }
+    return {
+        "name": "example",
+        "title": "Is beta priced on the Kestrel Sound Exchange?",
+        "market_name": "the Kestrel Sound Exchange",
+        "invented": True,
+        "level": 0.05,
+        "hac_lag": None,
+        "missing_final_return": None,
+        "screens": [{"column": "price", "at_least": 1}],
+        "sources": [
+            {
+                "place": "data.returns",
+                "file": "raw/returns.csv",
+                "source": "Kestrel Sound Exchange (invented)",
+                "access": "Made by this program.",
+                "may_share": True,
+            }
+        ],
+        "sorts": sorts,
+        **changes,
+        "paper": {**paper, **changes.get("paper", {})},
+    }
+
+
+def ranked_facts(title: str = "10 groups, equally weighted", groups: int = 10) -> dict[str, Any]:
+    """What the paper knows of a ranked sort."""
+    return {
+        "title": title,
+        "design": "single_window",
+        "groups": groups,
+        "weights": "equal",
+        "weights_label": "equally weighted, rebalanced monthly",
+        "form_month": 12,
+        "hold": 12,
+        "estimator_label": "ordinary least squares",
+        "window": 60,
+        "min_obs": 24,
+    }
+
+
+INTAKE = {
+    "rows": {
+        "rows_read": 254_011,
+        "rows_kept": 253_112,
+        "rows_set_aside": 771,
+        "exact_duplicates": 128,
+        "rows_screened": 640,
+    },
+    "faults": [
+        {"number": 8, "label": "a date that does not parse", "answer": "set aside", "n": 51},
+        {"number": 15, "label": "a return below −100 %", "answer": "set aside", "n": 720},
+        {"number": 7, "label": "blanks around a value", "answer": "repair", "n": 44},
+        {"number": 16, "label": "a return of exactly −100 %", "answer": "flag", "n": 12},
+    ],
+    "screens": [{"label": "price at least 1", "n": 640}],
+}
+
+
+def study(
+    sorts: dict[str, tuple[dict[str, Any], Sequence[str]]],
+    periods: list[dict[str, Any]],
+    *,
+    analyses: Sequence[str] = tuple(ANALYSES),
+    intake: dict[str, Any] = INTAKE,
+    **changes: Any,
+) -> Context:
+    """Everything the paper needs for given sorts (facts and asset names) and subperiods."""
+    first, last = min(p["first"] for p in periods), max(p["last"] for p in periods)
+    months = pd.period_range(first, last, freq="M")
+    whole = pd.concat(
+        [
+            cut(name, assets, months, ranked=said["design"] != "supplied", seed=4 + place)
+            for place, (name, (said, assets)) in enumerate(sorts.items())
+        ]
+    )
+    frames = []
+    for each in periods:
+        start, end = pd.Period(each["first"], "M"), pd.Period(each["last"], "M")
+        within = whole["date"].dt.to_period("M").between(start, end)
+        frames.append(
+            price_subperiod(
+                whole[within], subperiod=each["name"], level=0.05, hac_lag=None, analyses=analyses
+            )
+        )
+    frames.append(sample_rows(periods, intake, months))
+    estimates = pd.concat(frames, ignore_index=True)[frames[0].columns]
+    said = facts({name: about for name, (about, _) in sorts.items()}, **changes)
+    return Context(estimates, periods, said, intake)
+
+
+def groups(count: int) -> list[str]:
+    """Names of ranked groups."""
+    return [f"p{place:02d}" for place in range(1, count + 1)]
+
+
+@cache
+def usual() -> Context:
+    """Three sorts over a full sample, five-year parts, and six months: too few for a joint test."""
+    periods = [
+        subperiod("full", "1990-01", "2009-12", "Full sample, 1990–2009"),
+        *(subperiod(f"parts-{y}", f"{y}-01", f"{y + 4}-12") for y in range(1990, 2010, 5)),
+        subperiod("short", "2009-07", "2009-12", "Jul 2009 – Dec 2009"),
+    ]
+    sorts = {
+        "ten": (ranked_facts(), groups(10)),
+        "ten_size": (ranked_facts("10 groups, size-weighted"), groups(10)),
+        "sectors": (
+            {"title": "Sector indices", "design": "supplied"},
+            [
+                "Agriculture",
+                "Chemicals",
+                "Energy",
+                "Financials",
+                "Machinery",
+                "Retail",
+                "Transport",
+            ],
+        ),
+    }
+    return study(sorts, periods)
+
+
+@cache
+def hostile() -> Context:
+    """Supplied assets alone, 25 of them with names meant to break the formats, in one subperiod."""
+    names = [*HOSTILE, LONG, *(f"Asset {place}" for place in range(6, 26))]
+    sorts = {"given": ({"title": f"Supplied {HOSTILE[0]} & co", "design": "supplied"}, names)}
+    intake = {**INTAKE, "faults": [], "screens": []}
+    return study(
+        sorts,
+        [subperiod("full", "1990-01", "2009-12", f"{HOSTILE[0]} 100% {LONG}")],
+        intake=intake,
+        title=f"{HOSTILE[0]} & {HOSTILE[2]}",
+        market_name=HOSTILE[3],
+        invented=False,
+        missing_final_return=-0.3,
+        sources=[],
+    )
+
+
+@cache
+def many() -> Context:
+    """Thirty overlapping subperiods and 25 groups."""
+    periods = [subperiod(f"y{y}", f"{y}-01", f"{y + 3}-12") for y in range(1960, 1990)]
+    paper = {"main_subperiod": "y1960", "line_errors": "misspecification_robust_hac"}
+    return study({"many": (ranked_facts("25 groups", 25), groups(25))}, periods, paper=paper)

@@ -1,0 +1,1 @@
+"""Lineproof: test from raw security returns whether beta is priced."""

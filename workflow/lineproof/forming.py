@@ -1,0 +1,37 @@
+"""Read what a set of test assets is made from, and form it by its design."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+import pandas as pd
+
+from lineproof import catalog, store
+from lineproof.designs import DESIGNS
+from lineproof.intake.series import read_series
+from lineproof.sorting import Sorted, sort_single_window, take_supplied
+
+_PANEL_COLUMNS = ["security", "date", "total_return", "excess_return", "size", "eligible"]
+
+
+def form_portfolios(
+    sources: Sequence[str], market: pd.DataFrame, *, design: str, **options: Any
+) -> Sorted:
+    """Test assets by one design of the registry, from its source files and its options."""
+    return catalog.load(DESIGNS[design])(sources, market, **options)
+
+
+def from_single_window(sources: Sequence[str], market: pd.DataFrame, **options: Any) -> Sorted:
+    """Ranked on one estimate: the sources are the panel and the betas."""
+    panel = store.read_table(sources[0], _PANEL_COLUMNS)
+    betas = store.read_table(sources[1], ["security", "date", "beta"])
+    return sort_single_window(panel, betas, **options)
+
+
+def from_supplied(
+    sources: Sequence[str], market: pd.DataFrame, *, reading: dict[str, Any], returns_are: str
+) -> Sorted:
+    """Supplied as return series: the source is one raw file."""
+    supplied = read_series(sources[0], reading, "return").rename(columns={"return": "return_"})
+    return take_supplied(supplied, market, returns_are=returns_are)

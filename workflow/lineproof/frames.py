@@ -1,0 +1,182 @@
+"""The contract between stages: one pandera schema for each table on disk.
+
+Nothing is coerced or dropped here: a frame that does not fit is an error of ours, found where it is written.
+"""
+
+from __future__ import annotations
+
+import pandas as pd
+import pandera.pandas as pa
+
+from lineproof.addresses import KEY_COLUMNS
+
+
+def _text(**options: object) -> pa.Column:
+    return pa.Column(str, nullable=False, **options)
+
+
+def _number(*checks: pa.Check, nullable: bool = True) -> pa.Column:
+    return pa.Column(float, list(checks), nullable=nullable)
+
+
+def _count() -> pa.Column:
+    return pa.Column("int64", pa.Check.ge(0))
+
+
+def _month_end(dates: pd.Series) -> bool:
+    return bool(dates.dt.is_month_end.all())
+
+
+def _sorted_unique(*keys: str) -> pa.Check:
+    """Rows strictly increase in `keys`: sorted and unique, checked by comparing neighbours."""
+
+    def increases(frame: pd.DataFrame) -> bool:
+        below = pd.Series(False, index=frame.index)
+        tied = pd.Series(True, index=frame.index)
+        for key in keys:
+            column = frame[key]
+            if isinstance(
+                column.dtype, pd.StringDtype
+            ):  # sorts by code point, like the text itself
+                column = pd.Series(pd.factorize(column, sort=True)[0], index=frame.index)
+            before = column.shift()
+            below |= tied & (column > before)
+            tied &= column == before
+        return bool(below.iloc[1:].all())
+
+    return pa.Check(increases, name=f"sorted and unique by {', '.join(keys)}")
+
+
+_DATE = pa.Column("datetime64[ms]", pa.Check(_month_end, name="dates are month ends"))
+_HAS_ROWS = pa.Check(lambda frame: len(frame) > 0, name="has rows")
+
+PANEL = pa.DataFrameSchema(
+    {
+        "security": _text(),
+        "date": _DATE,
+        "total_return": _number(pa.Check.ge(-1)),
+        "excess_return": _number(),
+        "size": _number(pa.Check.gt(0)),
+        "price": _number(),
+        "eligible": pa.Column(bool),
+        "leaves": pa.Column(bool),
+    },
+    checks=[_HAS_ROWS, _sorted_unique("security", "date")],
+    strict=False,
+)
+
+MARKET = pa.DataFrameSchema(
+    {
+        "date": _DATE,
+        "market_excess": _number(nullable=False),
+        "riskless": _number(nullable=False),
+    },
+    checks=[_HAS_ROWS, _sorted_unique("date")],
+    strict=True,
+)
+
+SET_ASIDE = pa.DataFrameSchema(
+    {
+        "file": _text(),
+        "line": pa.Column("int64", pa.Check.ge(1)),
+        "fault": pa.Column("int64", pa.Check.in_range(1, 40)),
+        "reason": _text(),
+        "raw": _text(),
+    },
+    strict=True,
+)
+
+BETAS = pa.DataFrameSchema(
+    {
+        "security": _text(),
+        "date": _DATE,
+        "beta": _number(nullable=False),
+        "alpha": _number(nullable=False),
+        "se_beta": _number(pa.Check.ge(0), nullable=False),
+        "r2": _number(pa.Check.in_range(0, 1)),
+        "residual_sd": _number(pa.Check.ge(0), nullable=False),
+        "n_obs": pa.Column("int64", pa.Check.ge(3)),
+    },
+    checks=[_HAS_ROWS, _sorted_unique("security", "date")],
+    strict=True,
+)
+
+MEMBERS = pa.DataFrameSchema(
+    {
+        "formed": _DATE,
+        "asset": _text(),
+        "security": _text(),
+        "weight": _number(pa.Check.in_range(0, 1), nullable=False),
+        "ante_beta": _number(nullable=False),
+        "size": _number(pa.Check.gt(0)),
+    },
+    checks=[_sorted_unique("formed", "asset", "security")],
+    strict=True,
+)
+
+PORTFOLIO_RETURNS = pa.DataFrameSchema(
+    {
+        "asset": _text(),
+        "date": _DATE,
+        "excess_return": _number(),
+        "n_members": _number(pa.Check.ge(0)),
+        "mean_size": _number(pa.Check.gt(0)),
+        "ante_beta": _number(),
+    },
+    checks=[_HAS_ROWS, _sorted_unique("asset", "date")],
+    strict=True,
+)
+
+SUBPERIOD = pa.DataFrameSchema(
+    {
+        "sort": _text(),
+        **PORTFOLIO_RETURNS.columns,
+        "market_excess": _number(nullable=False),
+        "riskless": _number(nullable=False),
+    },
+    checks=[_HAS_ROWS],
+    strict=True,
+)
+
+
+def _defined_or_reasoned(frame: pd.DataFrame) -> bool:
+    undefined = frame["status"] == "undefined"
+    return bool((undefined == (frame["reason"] != "")).all())
+
+
+ESTIMATES = pa.DataFrameSchema(
+    {
+        **{key: _text(checks=pa.Check.str_length(min_value=1)) for key in KEY_COLUMNS},
+        "estimate": _number(),
+        "se": _number(pa.Check.ge(0)),
+        "statistic": _number(),
+        "df1": _number(pa.Check.gt(0)),
+        "df2": _number(pa.Check.gt(0)),
+        "p": _number(pa.Check.in_range(0, 1)),
+        "p_one_sided": _number(pa.Check.in_range(0, 1)),
+        "critical": _number(),
+        "critical_one_sided": _number(),
+        "n_months": _count(),
+        "n_assets": _count(),
+        "status": _text(checks=pa.Check.isin(["ok", "undefined"])),
+        "reason": _text(),
+    },
+    checks=[
+        _HAS_ROWS,
+        pa.Check(lambda frame: ~frame.duplicated(KEY_COLUMNS), name="one row an address"),
+        pa.Check(_defined_or_reasoned, name="a reason exactly where a number is undefined"),
+    ],
+    strict=True,
+    ordered=True,
+)
+
+CONTRACTS: dict[str, pa.DataFrameSchema] = {
+    "panel": PANEL,
+    "market": MARKET,
+    "set_aside": SET_ASIDE,
+    "betas": BETAS,
+    "members": MEMBERS,
+    "portfolio_returns": PORTFOLIO_RETURNS,
+    "subperiod": SUBPERIOD,
+    "estimates": ESTIMATES,
+}

@@ -1,0 +1,1 @@
+"""The paper: tables, figures and report, printed from the estimates without any statistics."""

@@ -1,0 +1,116 @@
+"""What the paper is printed from."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import pandas as pd
+
+from lineproof.paper.book import Book
+
+MONTHS = [
+    "January",
+    "February",
+    "March",
+    "April",
+    "May",
+    "June",
+    "July",
+    "August",
+    "September",
+    "October",
+    "November",
+    "December",
+]
+
+
+@dataclass(frozen=True)
+class Subperiod:
+    """A stretch of months; `first` and `last` as "1955-01"."""
+
+    name: str
+    title: str
+    first: str
+    last: str
+
+    @property
+    def dates(self) -> str:
+        """First and last month in words."""
+        return f"{month(self.first)} to {month(self.last)}"
+
+
+def month(text: str) -> str:
+    """ "1955-01" as "January 1955"."""
+    year, number = text.split("-")
+    return f"{MONTHS[int(number) - 1]} {year}"
+
+
+@dataclass(frozen=True)
+class Context:
+    """Everything a table, a figure or the report is made from.
+
+    Attributes:
+        estimates: one row a number, as `book.Book` reads it.
+        subperiods: dictionaries with name, title, first, last ("1955-01") and n_months.
+        facts: what `lineproof.facts.facts` says of the study.
+        intake: labels of the data's faults and screens, under "faults" and "screens".
+    """
+
+    estimates: pd.DataFrame
+    subperiods: list[dict[str, Any]]
+    facts: dict[str, Any]
+    intake: dict[str, Any]
+
+    @cached_property
+    def book(self) -> Book:
+        """The estimates by address."""
+        return Book(self.estimates)
+
+    @cached_property
+    def periods(self) -> list[Subperiod]:
+        """The study's subperiods, in order."""
+        keys = ("name", "title", "first", "last")
+        return [Subperiod(**{key: each[key] for key in keys}) for each in self.subperiods]
+
+    @property
+    def main_period(self) -> Subperiod:
+        """The subperiod of the tables that show only one.
+
+        A stretch the study cuts into parts is no subperiod itself: its first part stands for it.
+        """
+        wanted = self.facts["paper"]["main_subperiod"]
+        exact = [each for each in self.periods if each.name == wanted]
+        parts = [each for each in self.periods if each.name.startswith(f"{wanted}-")]
+        return (exact or parts or self.periods)[0]
+
+    @property
+    def level(self) -> float:
+        """Level of the tests."""
+        return self.facts["level"]
+
+    @property
+    def sorts(self) -> list[str]:
+        """Names of the sets of test assets, the main one first."""
+        main = self.facts["paper"]["main"]
+        return [main, *(name for name in self.facts["sorts"] if name != main)]
+
+    def ranked(self, sort: str) -> bool:
+        """Whether the assets of a sort are groups ranked on beta, not supplied series."""
+        return self.facts["sorts"][sort]["design"] != "supplied"
+
+    def title(self, sort: str) -> str:
+        """Name of a set of test assets for readers."""
+        return self.facts["sorts"][sort]["title"]
+
+    def assets(self, sort: str) -> list[str]:
+        """Test assets that a sort has in any subperiod."""
+        found = (name for each in self.periods for name in self.book.assets(sort, each.name))
+        return list(dict.fromkeys(found))
+
+    def label(self, sort: str, asset: str) -> str:
+        """An asset's name for readers: ranked groups p01, p02, … are called 1, 2, …"""
+        group = re.fullmatch(r"p0*(\d+)", asset) if self.ranked(sort) else None
+        return group[1] if group else asset

@@ -1,0 +1,44 @@
+"""Tables as tidy CSV: one line a number, at full precision, with its address."""
+
+from __future__ import annotations
+
+import csv
+import io
+
+from lineproof.paper.specification import Table
+
+HEADER = (
+    "table",
+    "panel",
+    "row",
+    "column",
+    "quantity",
+    "value",
+    "format",
+    "printed",
+    "status",
+    "address",
+)
+
+
+def escape(text: str) -> str:
+    """Text that no spreadsheet takes for a formula."""
+    return f"'{text}" if text.startswith(("=", "+", "-", "@", "\t", "\r")) else text
+
+
+def render(table: Table) -> str:
+    """The table's numbers in reading order, without empty cells; undefined values are empty."""
+    sink = io.StringIO()
+    writer = csv.writer(sink, lineterminator="\n")
+    writer.writerow(HEADER)
+    for panel, row, column, cell in table.cells():
+        if cell.value is None:
+            continue
+        value = "" if cell.undefined else repr(float(cell.value))
+        keys = [escape(key) for key in (table.name, panel.key, row.key, column.key)]
+        status = "undefined" if cell.undefined else "ok"
+        shown = "" if cell.undefined else cell.text
+        writer.writerow(
+            [*keys, cell.column, value, cell.format, shown, status, escape(cell.address)]
+        )
+    return sink.getvalue()

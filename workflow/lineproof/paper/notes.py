@@ -1,0 +1,153 @@
+"""Notes to tables: sentences made from the study's own facts, so that they cannot contradict it."""
+
+from __future__ import annotations
+
+from lineproof.analyses import ALPHA_ERRORS, ANALYSES, LINE_ERRORS, LINE_WEIGHTS
+from lineproof.paper.context import MONTHS, Context, Subperiod
+from lineproof.paper.rounding import share
+from lineproof.paper.symbols import Phrase, said
+
+
+def data(context: Context) -> Phrase:
+    """Which market, and whether it exists."""
+    invented = ", an invented market" if context.facts["invented"] else ""
+    return said(
+        "Monthly returns on {market}{invented}.", market=_market(context), invented=invented
+    )
+
+
+def months(period: Subperiod) -> Phrase:
+    """The months a table covers."""
+    return said("{dates}.", dates=period.dates)
+
+
+def formation(context: Context, sort: str) -> Phrase:
+    """How test assets are made."""
+    facts = context.facts["sorts"][sort]
+    if not context.ranked(sort):
+        return said("{title}: test assets supplied as return series.", title=facts["title"])
+    return said(
+        "{title}: at the end of each {month}, securities are ranked on the beta of their last "
+        "{window} months "
+        "({estimator}; at least {least} months) and parted at its quantiles into {groups} groups, "
+        "held for "
+        "{hold} months; returns are {weights}. Group 1 has the lowest betas.",
+        title=facts["title"],
+        month=MONTHS[facts["form_month"] - 1],
+        window=str(facts["window"]),
+        estimator=facts["estimator_label"],
+        least=str(facts["min_obs"]),
+        groups=str(facts["groups"]),
+        hold=str(facts["hold"]),
+        weights=facts["weights_label"],
+    )
+
+
+def formations(context: Context, sorts: list[str]) -> list[Phrase]:
+    """How several sets of test assets are made, without saying twice what they share."""
+    found: list[Phrase] = []
+    said_of: dict[tuple, str] = {}
+    for sort in sorts:
+        facts = context.facts["sorts"][sort]
+        own = {"title", "weights", "weights_label"}
+        shared = tuple((key, facts[key]) for key in facts if key not in own)
+        if context.ranked(sort) and shared in said_of:
+            found.append(
+                said(
+                    "{title}: as {first}, but returns are {weights}.",
+                    title=facts["title"],
+                    first=said_of[shared],
+                    weights=facts["weights_label"],
+                )
+            )
+            continue
+        said_of[shared] = facts["title"]
+        found.append(formation(context, sort))
+    return found
+
+
+def excess_units() -> Phrase:
+    """Units of returns."""
+    return said("Returns are in excess of the riskless rate, in per cent a month.")
+
+
+def alpha_errors(context: Context) -> Phrase:
+    """Which standard errors the t statistics of alphas rest on."""
+    kind = context.facts["paper"]["alpha_errors"]
+    lag = _lag(context) if kind == "hac" else Phrase()
+    return said(
+        "{t} statistics of {alpha} rest on standard errors that are {label}{lag}.",
+        label=ALPHA_ERRORS[kind],
+        lag=lag,
+    )
+
+
+def line_estimation(context: Context) -> Phrase:
+    """How the market line is fitted, and its standard errors."""
+    paper = context.facts["paper"]
+    return said(
+        "Mean excess returns of the test assets on their betas of the same months, by {weights}: "
+        "intercept "
+        "{gamma0}, slope {gamma1}. Standard errors: {errors}{lag}.",
+        weights=LINE_WEIGHTS[paper["line_weights"]],
+        errors=LINE_ERRORS[paper["line_errors"]],
+        lag=line_lag(context),
+    )
+
+
+def line_lag(context: Context) -> Phrase:
+    """The lag of the market line's standard errors, where they have one."""
+    has_lag = context.facts["paper"]["line_errors"].endswith("_hac")
+    return _lag(context) if has_lag else Phrase()
+
+
+def line_hypothesis(context: Context) -> Phrase:
+    """What the market line is held against."""
+    return said(
+        "By the CAPM {gamma0} is zero and {gamma1} is {fbar}, the market’s mean excess return. "
+        "Critical values "
+        "are two-sided at the {level}{percent} level; joint {p} is of both hypotheses together.",
+        level=share(context.level),
+    )
+
+
+def joint_hypothesis(context: Context) -> Phrase:
+    """What the joint tests test, and when each is exact."""
+    return said(
+        "Each tests that the alphas of all {N} test assets are zero in {T} months. {F} is exact "
+        "if residuals are "
+        "normal (Gibbons, Ross and Shanken 1989); the others are {chi2} with {N} degrees of "
+        "freedom in large "
+        "samples, the corrected likelihood ratio after Jobson and Korkie (1982), the last robust "
+        "to "
+        "heteroskedasticity and autocorrelation (Hansen 1982){lag}. {p} values in square brackets.",
+        lag=_lag(context),
+    )
+
+
+def not_run(analysis: str) -> Phrase:
+    """Why a table has no rows."""
+    return said("The study file does not ask for {label}.", label=ANALYSES[analysis].label)
+
+
+def without_assets(context: Context, sort: str, periods: list[Subperiod]) -> list[Phrase]:
+    """Subperiods in which a sort has no test asset, so that a table has no row for them."""
+    gone = [each.title for each in periods if not context.book.assets(sort, each.name)]
+    if not gone or len(gone) == len(periods):
+        return []
+    return [
+        said(
+            "{title}: no test asset has a return in {gone}.",
+            title=context.title(sort),
+            gone="; ".join(gone),
+        )
+    ]
+
+
+def _lag(context: Context) -> Phrase:
+    lag = context.facts["hac_lag"]
+    return said(", lag {auto_lag}") if lag is None else said(", lag {lag}", lag=str(lag))
+
+
+def _market(context: Context) -> str:
+    return context.facts["market_name"]

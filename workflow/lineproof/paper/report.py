@@ -1,0 +1,149 @@
+"""The report: one HTML page that needs no network and no script."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+from jinja2 import Environment, FileSystemLoader, StrictUndefined
+from markupsafe import Markup
+
+from lineproof.analyses import ALPHA_ERRORS, LINE_WEIGHTS
+from lineproof.paper import answer, exhibits, html_table, notes, tables
+from lineproof.paper.context import Context
+from lineproof.paper.inline import inline_svg
+from lineproof.paper.palette import DARK, LIGHT
+from lineproof.paper.rounding import share
+from lineproof.paper.specification import cell
+from lineproof.paper.symbols import Phrase, Symbol, said
+
+
+def make_report(context: Context, figures: Mapping[str, bytes]) -> str:
+    """The whole page, with the SVG files among those that `figures.draw_figures` gives.
+
+    Raises KeyError if a figure of the study is not among them.
+    """
+    loader = FileSystemLoader(html_table.TEMPLATES)
+    environment = Environment(
+        loader=loader,
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
+    )
+    main, appendix = _tables(context)
+    return environment.get_template("report.html.j2").render(
+        facts=context.facts,
+        market=context.facts["market_name"],
+        dates=context.main_period.dates,
+        light=LIGHT,
+        dark=DARK,
+        answer=_html(answer.overall(context)),
+        assets=context.title(context.sorts[0]),
+        periods=[(each, _html(answer.of_period(context, each))) for each in context.periods],
+        tables=main,
+        appendix=appendix,
+        figures=_figures(context, figures),
+        methods=_methods(context),
+        intake=_html(_intake(context)),
+        faults=_faults(context),
+    )
+
+
+def _html(phrase: Phrase) -> Markup:
+    return Markup(html_table.phrase(phrase))
+
+
+def _plain(phrase: Phrase) -> str:
+    """A phrase without markup, for what only a screen reader says."""
+    return "".join(part.plain if isinstance(part, Symbol) else str(part) for part in phrase)
+
+
+def _tables(context: Context) -> tuple[list[dict[str, Any]], list[dict[str, Any]]]:
+    """Tables of the main test assets, and those of the others."""
+    built = tables.build(context)
+    entries = [
+        {
+            "id": f"table-{exhibit.stem}",
+            "number": exhibit.number,
+            "title": exhibit.entry.label,
+            "sort": context.title(exhibit.sort),
+            "html": Markup(html_table.fragment(built[exhibit.stem])),
+        }
+        for exhibit in exhibits.tables(context.facts)
+    ]
+    appendix = [each for each in entries if each["number"].startswith("A")]
+    return [each for each in entries if each not in appendix], appendix
+
+
+def _figures(context: Context, figures: Mapping[str, bytes]) -> list[dict[str, Any]]:
+    found = []
+    for exhibit in exhibits.figures(context.facts):
+        note = said(exhibit.entry.note, **_figure_words(context, exhibit.sort))
+        name = f"figure-{exhibit.stem}"
+        svg = inline_svg(figures[f"{exhibit.stem}.svg"], name, exhibit.entry.label, _plain(note))
+        found.append(
+            {
+                "id": name,
+                "number": exhibit.number,
+                "title": exhibit.entry.label,
+                "svg": Markup(svg),
+                "note": _html(note),
+            }
+        )
+    return found
+
+
+def _figure_words(context: Context, sort: str) -> dict[str, Any]:
+    paper = context.facts["paper"]
+    return {
+        "assets": context.title(sort),
+        "weights": LINE_WEIGHTS[paper["line_weights"]],
+        "confidence": share(1 - context.level),
+        "alpha_errors": ALPHA_ERRORS[paper["alpha_errors"]],
+    }
+
+
+def _methods(context: Context) -> list[tuple[str, list[Markup]]]:
+    """The study's choices in words: heading and paragraphs."""
+    final = context.facts["missing_final_return"]
+    leaving = (
+        said("A security that leaves without a final return keeps its last one.")
+        if final is None
+        else said(
+            "A security that leaves without a final return is given one of {final}{percent}.",
+            final=share(final),
+        )
+    )
+    return [
+        ("Test assets", [_html(each) for each in notes.formations(context, context.sorts)]),
+        ("Time series", [_html(notes.alpha_errors(context))]),
+        (
+            "Market line",
+            [_html(notes.line_estimation(context)), _html(notes.line_hypothesis(context))],
+        ),
+        ("Level of the tests", [_html(said("{level}{percent}", level=share(context.level)))]),
+        ("Leaving the sample", [_html(leaving)]),
+    ]
+
+
+def _intake(context: Context) -> Phrase:
+    rows = {
+        term: cell(context.book.at("-", "-", "intake", "rows", "all", term, "-"), "count")
+        for term in ("rows_read", "rows_kept", "rows_set_aside", "exact_duplicates")
+    }
+    return said(
+        "Of {rows_read} rows of the raw returns, {rows_kept} were kept, {rows_set_aside} set "
+        "aside with their "
+        "reason, and {exact_duplicates} dropped as exact duplicates.",
+        **rows,
+    )
+
+
+def _faults(context: Context) -> list[dict[str, Any]]:
+    found = []
+    for fault in context.intake["faults"]:
+        key = f"fault-{fault['number']:02d}"
+        number = context.book.at("-", "-", "intake", "fault", key, "n_rows", "-")
+        found.append({**fault, "count": _html(Phrase([cell(number, "count")]))})
+    return found

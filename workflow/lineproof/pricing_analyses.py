@@ -1,0 +1,289 @@
+"""What each pricing analysis of a sample reports, as rows.
+
+Single coefficients are compared with Student's t: T-1 degrees of freedom for means and monthly
+slopes, T-2 for time-series regressions whatever the standard error, N-2 for the textbook market
+line; errors-in-variables and misspecification-robust standard errors hold in large samples only and
+go with the standard normal.
+
+A month counts where both the asset and the market have a return. Lags run over the months that
+count, so a hole in the middle of a sample takes no time.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Mapping
+from dataclasses import dataclass
+from functools import cache, cached_property, partial
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from lineproof.pricing_rows import NAN, Row, attempt
+from lineproof.stats import Undefined
+from lineproof.stats import joint_alpha as joint
+from lineproof.stats import market_line as lines
+from lineproof.stats import time_series as series
+from lineproof.stats.covariance import COEFFICIENT_COVARIANCES, automatic_lag, deviations
+from lineproof.stats.distributions import JointStatistic
+
+Floats = NDArray[np.float64]
+
+MONTHS_A_YEAR = 12
+
+
+@dataclass(frozen=True)
+class Sample:
+    """One sort in one subperiod.
+
+    Attributes:
+        sort: name of the sort.
+        subperiod: name of the subperiod.
+        dates: (T,) months, datetime64[M].
+        assets: N names.
+        excess: (T, N) excess returns, decimal per month, NaN where an asset is missing.
+        market: (T,) market excess returns.
+        riskless: (T,) riskless returns.
+        extras: other (T, N) columns of the cut by name.
+        level: significance level of the critical values.
+        hac_lag: truncation lag; None chooses it by the number of months.
+    """
+
+    sort: str
+    subperiod: str
+    dates: NDArray[np.datetime64]
+    assets: tuple[str, ...]
+    excess: Floats
+    market: Floats
+    riskless: Floats
+    extras: Mapping[str, Floats]
+    level: float
+    hac_lag: int | None
+
+    @property
+    def counted(self) -> NDArray[np.bool_]:
+        """(T, N): where both the asset and the market have a return."""
+        return np.isfinite(self.excess) & np.isfinite(self.market)[:, None]
+
+    def lag(self, n_months: int) -> int:
+        """Truncation lag for `n_months` months."""
+        return automatic_lag(n_months) if self.hac_lag is None else self.hac_lag
+
+
+def describe(sample: Sample) -> Iterator[Row]:
+    """Mean and standard deviation (divisor T-1) of each series, with the mean's t statistic; mean
+    characteristics of the assets that have any."""
+    for column, asset in enumerate(sample.assets):
+        yield from _moments(asset, sample.excess[:, column], "signed")
+        for name, values in sample.extras.items():
+            observed = values[np.isfinite(values[:, column]), column]
+            if observed.size:
+                mean = float(observed.mean())
+                yield Row("-", asset, name, "-", observed.size, 1, estimate=mean)
+    yield from _moments("market", sample.market, "signed")
+    yield from _moments("riskless", sample.riskless, "")
+
+
+def _moments(asset: str, returns: Floats, family: str) -> Iterator[Row]:
+    """Mean and standard deviation; the mean is compared with zero if `family` is given."""
+    observed = returns[np.isfinite(returns)]
+    n_months = observed.size
+    reason = "" if n_months > 1 else f"needs at least 2 months, has {n_months}"
+    mean = sd = se = NAN
+    if not reason:
+        mean = float(observed.mean())
+        sd = float(np.sqrt((deviations(observed) ** 2).sum() / (n_months - 1)))
+        se = sd / np.sqrt(n_months) if family else NAN
+    df = n_months - 1.0 if family else NAN
+    yield Row("-", asset, "mean", "-", n_months, 1, family, mean, se, df1=df, reason=reason)
+    yield Row("-", asset, "sd", "-", n_months, 1, estimate=sd, reason=reason)
+
+
+def _alpha_year(regression: series.Regression) -> Floats:
+    return MONTHS_A_YEAR * regression.alphas
+
+
+FITS: dict[str, Callable[[series.Regression], Floats]] = {
+    "r2": series.r_squared,
+    "correlation": series.correlation,
+    "residual_sd": series.residual_sd,
+    "residual_ac1": series.residual_autocorrelation,
+    "alpha_year": _alpha_year,
+}
+
+
+class _Fit(NamedTuple):
+    """A regression or the reason why there is none; standard errors by kind or their reasons."""
+
+    regression: series.Regression | None
+    reason: str
+    errors: dict[str, tuple[Floats | None, str]]
+    summaries: dict[str, Floats]
+
+
+def time_series(sample: Sample) -> Iterator[Row]:
+    """Alpha and beta of each asset over its own months, under every kind of standard error."""
+    rows: dict[int, list[Row]] = {}
+    # Assets that count in the same months share one regression.
+    patterns, pattern_of = np.unique(sample.counted, axis=1, return_inverse=True)
+    for pattern, months in enumerate(patterns.T):
+        columns = np.flatnonzero(pattern_of == pattern)
+        n_months = int(months.sum())
+        returns = sample.excess[np.ix_(months, columns)]
+        fit = _fit(returns, sample.market[months, None], sample.lag(n_months))
+        for place, column in enumerate(columns):
+            rows[column] = list(_fit_rows(fit, place, sample.assets[column], n_months))
+    for column in range(len(sample.assets)):
+        yield from rows[column]
+
+
+def _fit(returns: Floats, factors: Floats, lag: int) -> _Fit:
+    regression, reason = attempt(series.regress, returns, factors)
+    if regression is None:
+        return _Fit(None, reason, dict.fromkeys(COEFFICIENT_COVARIANCES, (None, reason)), {})
+    errors = {
+        kind: attempt(series.standard_errors, regression, kind, lag)
+        for kind in COEFFICIENT_COVARIANCES
+    }
+    summaries = {term: summary(regression) for term, summary in FITS.items()}
+    return _Fit(regression, "", errors, summaries)
+
+
+def _fit_rows(fit: _Fit, place: int, asset: str, n_months: int) -> Iterator[Row]:
+    """Rows of the asset in column `place` of the regression."""
+    for number, term in enumerate(("alpha", "beta")):
+        for kind, (errors, reason) in fit.errors.items():
+            row = Row("market", asset, term, kind, n_months, 1, "signed", reason=reason)
+            if errors is not None:
+                estimate = float(fit.regression.coefficients[number, place])
+                se = float(errors[number, place])
+                row = row._replace(estimate=estimate, se=se, df1=fit.regression.df)
+            yield row
+    for term in FITS:
+        estimate = NAN if fit.reason else float(fit.summaries[term][place])
+        yield Row("market", asset, term, "-", n_months, 1, estimate=estimate, reason=fit.reason)
+
+
+class _AllAssets:
+    """The regression of all assets over their common months, and rows about it."""
+
+    def __init__(self, sample: Sample) -> None:
+        self.sample = sample
+        self.months = sample.counted.all(axis=1)
+        self.lag = sample.lag(int(self.months.sum()))
+
+    @cached_property
+    def regression(self) -> series.Regression:
+        """Raises `Undefined` where there is none."""
+        ever = self.sample.counted.any(axis=0)
+        absent = [name for name, seen in zip(self.sample.assets, ever, strict=True) if not seen]
+        if absent:
+            raise Undefined(f"no month has returns of both the market and {', '.join(absent)}")
+        return series.regress(
+            self.sample.excess[self.months], self.sample.market[self.months, None]
+        )
+
+    def row(
+        self, variant: str, term: str, kind: str, family: str, find: Callable[[], dict[str, float]]
+    ) -> Row:
+        """A row with the numbers that `find` returns, or with the reason why it finds none."""
+        counts = (int(self.months.sum()), len(self.sample.assets))
+        numbers, reason = attempt(find)
+        row = Row(variant, "all", term, kind, *counts, family, reason=reason)
+        return row._replace(**(numbers or {}))
+
+
+def _joint_numbers(found: JointStatistic) -> dict[str, float]:
+    return {"statistic": found.value, "df1": found.df1, "df2": found.df2}
+
+
+def joint_alpha(sample: Sample) -> Iterator[Row]:
+    """Joint pricing tests that every alpha is zero, and how large the alphas are."""
+    assets = _AllAssets(sample)
+
+    def from_distance(statistic: joint.AlphaStatistic) -> dict[str, float]:
+        fit = assets.regression
+        distance = joint.measure_alphas(fit).distance
+        return _joint_numbers(statistic(distance, fit.n_months, fit.n_assets, fit.n_factors))
+
+    def robust() -> dict[str, float]:
+        return _joint_numbers(joint.hac_wald(assets.regression, assets.lag))
+
+    def measured(measure: Callable[[series.Regression], float]) -> dict[str, float]:
+        return {"estimate": measure(assets.regression)}
+
+    for variant, statistic in joint.ALPHA_STATISTICS.items():
+        yield assets.row(variant, "alpha", "-", "joint", partial(from_distance, statistic))
+    yield assets.row("hac_wald", "alpha", "-", "joint", robust)
+    for term, measure in joint.ALPHA_MEASURES.items():
+        yield assets.row("-", term, "-", "", partial(measured, measure))
+
+
+# A term of the market line -> its numbers from the line and the covariance of its coefficients.
+LineTerm = Callable[[lines.MarketLine, lines.LineCovariance], dict[str, float]]
+
+
+def _coefficient(estimate: float, variance: float, df: float) -> dict[str, float]:
+    return {"estimate": float(estimate), "se": float(np.sqrt(variance)), "df1": df}
+
+
+def _intercept(drawn: lines.MarketLine, spread: lines.LineCovariance) -> dict[str, float]:
+    return _coefficient(drawn.line.coefficients[0], spread.coefficients[0, 0], spread.df)
+
+
+def _slope(drawn: lines.MarketLine, spread: lines.LineCovariance) -> dict[str, float]:
+    return _coefficient(drawn.line.coefficients[1], spread.coefficients[1, 1], spread.df)
+
+
+def _slope_minus_market(drawn: lines.MarketLine, spread: lines.LineCovariance) -> dict[str, float]:
+    return _coefficient(drawn.against_market[1], spread.against_market[1, 1], spread.df)
+
+
+def _both(drawn: lines.MarketLine, spread: lines.LineCovariance) -> dict[str, float]:
+    return _joint_numbers(lines.sharpe_lintner_wald(drawn, spread))
+
+
+LINE_TERMS: dict[str, tuple[str, LineTerm]] = {
+    "intercept": ("signed", _intercept),
+    "slope": ("signed", _slope),
+    "slope_minus_market": ("signed", _slope_minus_market),
+    "intercept_and_slope_minus_market": ("joint", _both),
+}
+
+
+def market_line(sample: Sample) -> Iterator[Row]:
+    """The line by every weighting and kind of standard error, its hypotheses and pricing errors.
+
+    With it the market's mean excess return over the line's own months, to compare the slope with.
+    """
+    assets = _AllAssets(sample)
+    mean, _ = _moments("all", np.where(assets.months, sample.market, NAN), "signed")
+    yield mean._replace(term="market_mean", n_assets=len(sample.assets))
+    for variant, weighting in lines.WEIGHTINGS.items():
+        yield from _line_rows(assets, variant, weighting)
+
+
+def _line_rows(assets: _AllAssets, variant: str, weighting: lines.Weighting) -> Iterator[Row]:
+    @cache
+    def draw() -> lines.MarketLine:
+        return lines.draw_line(assets.regression, weighting)
+
+    @cache
+    def spread(kind: str) -> lines.LineCovariance:
+        return lines.LINE_COVARIANCES[kind](draw(), assets.lag)
+
+    def coefficient(number: LineTerm, kind: str) -> dict[str, float]:
+        return number(draw(), spread(kind))
+
+    def errors(test: Callable[[lines.MarketLine], JointStatistic]) -> dict[str, float]:
+        return _joint_numbers(test(draw()))
+
+    def fit() -> dict[str, float]:
+        return {"estimate": lines.line_r_squared(draw().line, weighting.metric(assets.regression))}
+
+    for term, (family, number) in LINE_TERMS.items():
+        for kind in lines.LINE_COVARIANCES:
+            yield assets.row(variant, term, kind, family, partial(coefficient, number, kind))
+    for kind, test in weighting.pricing_error_tests.items():
+        yield assets.row(variant, "pricing_errors", kind, "joint", partial(errors, test))
+    yield assets.row(variant, "r2", "-", "", fit)

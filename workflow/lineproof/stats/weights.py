@@ -1,0 +1,29 @@
+"""Weights of members inside a group, before they are scaled to one over the members with a return.
+
+A function here takes the members' sizes and gives one weight each; a security whose weight would be
+zero at formation is not ranked.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+
+def equal(lagged_size: np.ndarray) -> np.ndarray:
+    """The same weight for each member, every period; shape as `lagged_size`."""
+    return np.ones(len(lagged_size))
+
+
+def by_size(lagged_size: np.ndarray) -> np.ndarray:
+    """Size at the end of the period before; a member without a known size weighs nothing."""
+    return np.where(np.isnan(lagged_size), 0.0, lagged_size)
+
+
+def scaled_to_one(weight: np.ndarray, group: np.ndarray, n_groups: int) -> np.ndarray:
+    """Weights divided by their sum in each group; shape as `weight`.
+
+    `group` numbers the cell (a portfolio in a period) of each row, 0 to n_groups − 1. A cell whose
+    weights sum to zero keeps zero weights.
+    """
+    total = np.bincount(group, weight, n_groups)[group]
+    return np.divide(weight, total, out=np.zeros_like(weight), where=total > 0)

@@ -1,0 +1,25 @@
+# Takes the raw files in: a clean panel, the market, what was set aside, and the counts.
+
+
+checkpoint validate_returns:
+    input:
+        returns=study.returns.file,
+        market=study.market.file,
+        riskless=study.riskless.file,
+        options=wiring.options_file("validate_returns"),
+        pins=wiring.pins,
+        code=wiring.code("validate_returns"),
+    output:
+        panel=wiring.path("data/panel.parquet"),
+        market=wiring.path("data/market.parquet"),
+        set_aside=wiring.path("data/set_aside.parquet"),
+        set_aside_csv=wiring.path("data/set_aside.csv"),
+        intake=wiring.path("data/intake.json"),
+    log:
+        wiring.path("logs/validate_returns.log"),
+    benchmark:
+        wiring.path("benchmarks/validate_returns.tsv")
+    params:
+        options=wiring.options("validate_returns"),
+    script:
+        "../scripts/validate_returns.py"
