@@ -15,7 +15,7 @@ from jsonschema.exceptions import ValidationError
 
 from lineproof import catalog
 from lineproof.problems import Problem
-from lineproof.yamlfile import Place, YamlFile
+from lineproof.yamlfile import SAFE_LOADER, Place, YamlFile
 
 SCHEMA_FILE = Path(__file__).parent.parent / "schemas" / "study.schema.yaml"
 
@@ -23,7 +23,7 @@ SCHEMA_FILE = Path(__file__).parent.parent / "schemas" / "study.schema.yaml"
 @lru_cache(maxsize=1)
 def study_schema() -> dict[str, Any]:
     """The schema, with `$ref` resolved and the values a registry allows filled in."""
-    raw = yaml.safe_load(SCHEMA_FILE.read_text(encoding="utf-8"))
+    raw = yaml.load(SCHEMA_FILE.read_text(encoding="utf-8"), Loader=SAFE_LOADER)
     resolved = _resolve(raw, raw["$defs"])
     del resolved["$defs"]
     return resolved

@@ -12,6 +12,9 @@ from lineproof.problems import KnownProblem, Problem
 
 Place = tuple[str | int, ...]
 
+# The compiled parser where PyYAML has it: the study file is read at every start.
+SAFE_LOADER = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
+
 
 @dataclass
 class YamlFile:
@@ -49,8 +52,9 @@ def read_yaml(path: Path) -> YamlFile:
     except (OSError, UnicodeDecodeError) as error:
         raise KnownProblem(headline, [Problem(str(path), str(error))]) from None
     try:
-        node = yaml.compose(text, Loader=yaml.SafeLoader)
-        content = yaml.safe_load(text)
+        loader = SAFE_LOADER(text)
+        node = loader.get_single_node()
+        content = None if node is None else loader.construct_document(node)
     except (yaml.YAMLError, ValueError) as error:
         mark = getattr(error, "problem_mark", None)
         where = f"{path.name}, line {mark.line + 1}" if mark else path.name
