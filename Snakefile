@@ -47,6 +47,8 @@ include: "workflow/rules/paper.smk"
 rule study:
     default_target: True
     input:
+        after_validation(wiring.tables_between),
+        priced,
         after_cutting("report.html"),
         after_cutting("estimates.csv"),
         after_cutting(wiring.tables),

@@ -120,6 +120,16 @@ class Wiring:
         }
 
     @property
+    def tables_between(self) -> list[str]:
+        """Betas and test assets, inside the study's folder: part of a complete study, so made again when lost."""
+        sorts = [
+            f"portfolios/{name}/{kind}.parquet"
+            for name in self.study.sorts
+            for kind in ("members", "returns")
+        ]
+        return [*(f"betas/{name}.parquet" for name in self.study.betas), *sorts]
+
+    @property
     def main_betas(self) -> list[str]:
         """The estimate that the main test assets are ranked on, in a list; empty where they are supplied."""
         ranked_on = self.study.sorts[self.study.paper.main].rank_on
