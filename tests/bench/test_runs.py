@@ -1,4 +1,4 @@
-"""What runs cost, as ratios to Snakemake itself on a toy workflow of as many jobs. Prints; asserts nothing about time."""
+"""What runs cost, as ratios to Snakemake itself on a toy of as many jobs. Prints; asserts no time."""
 
 from __future__ import annotations
 
@@ -13,7 +13,6 @@ from collections.abc import Callable
 from pathlib import Path
 
 import pytest
-
 from tests.pipeline.conftest import ROOT, Project, copy_program
 
 TOY = textwrap.dedent(
@@ -47,7 +46,7 @@ def toy(folder: Path, n_jobs: int) -> Callable[[], object]:
 
 @pytest.fixture(scope="module")
 def demo(tmp_path_factory: pytest.TempPathFactory) -> tuple[Project, int, float]:
-    """The demo study run afresh, with its number of steps and seconds; the kernels are compiled beforehand, as set-up does."""
+    """The demo study run afresh, with its steps and seconds; kernels are compiled first, as by set-up."""
     project = copy_program(tmp_path_factory.mktemp("demo") / "project")
     shutil.copytree(ROOT / "config", project.folder / "config")
     (project.folder / ".venv").symlink_to(ROOT / ".venv")
@@ -80,5 +79,6 @@ def test_an_idle_run_of_the_demo(demo: tuple[Project, int, float], tmp_path: Pat
     )
     peer = seconds(run_toy)
     print(
-        f"\nidle demo: {idle:.2f} s; {idle / peer:.2f} × an up-to-date toy of as many jobs ({peer:.2f} s), {idle - peer:+.2f} s"
+        f"\nidle demo: {idle:.2f} s; {idle / peer:.2f} × an up-to-date toy of as many jobs "
+        f"({peer:.2f} s), {idle - peer:+.2f} s"
     )

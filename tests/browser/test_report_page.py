@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import os
+import shutil
 from collections.abc import Iterator
 from pathlib import Path
 
@@ -12,13 +14,18 @@ from tests.unit import paper_examples as examples
 from lineproof.paper.figures import draw_figures
 from lineproof.paper.report import make_report
 
-CHROMIUM = "/usr/bin/chromium"
+CHROMIUM = (
+    shutil.which("chromium") or shutil.which("chromium-browser") or shutil.which("google-chrome")
+)
 PHONE = {"width": 390, "height": 844}
 DESKTOP = {"width": 1400, "height": 900}
 
 
 @pytest.fixture(scope="module")
 def browser() -> Iterator[Browser]:
+    if CHROMIUM is None:
+        assert "LINEPROOF_NEEDS_BROWSER" not in os.environ, "chromium is not installed"
+        pytest.skip("needs Chromium, as from Debian's package chromium")
     with sync_playwright() as playwright:
         browser = playwright.chromium.launch(executable_path=CHROMIUM, args=["--no-sandbox"])
         yield browser

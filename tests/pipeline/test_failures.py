@@ -10,7 +10,6 @@ import sys
 import time
 
 import pytest
-
 from tests.pipeline.conftest import Project
 
 

@@ -68,7 +68,7 @@ def _parser() -> argparse.ArgumentParser:
 
 
 _DEVELOPING = {
-    "test": ("run the tests", [["-m", "pytest", "-q", "tests"]]),
+    "test": ("run the tests", [["-m", "pytest", "-q", "--ignore=tests/bench", "tests"]]),
     "lint": (
         "check style",
         [

@@ -7,40 +7,74 @@ from typing import Any
 from lineproof import store
 from lineproof.study import Study
 
+_WIDTH = 11  # of the counts
+_ANSWERS = {"flag": "kept, flagged", "repair": "read without them", "set aside": "set aside"}
+
 
 def summary(study: Study) -> str:
-    """The counts of the intake, its faults and screens, and what the study is set to do with the data."""
+    """What the intake of a study found, from its results folder."""
     intake = store.read_json(f"{study.folder}/data/intake.json")
+    return "\n".join(
+        [
+            f"{study.title} ({study.path.name}): the study file and its data can be used.",
+            "",
+            *describe_intake(intake),
+            "",
+            f"The rows set aside, as they stand in the file: {study.folder}/data/set_aside.csv",
+        ]
+    )
+
+
+def describe_intake(intake: dict[str, Any]) -> list[str]:
+    """The counts of an intake, its span, faults and screens, as lines of text."""
+    span = f"{intake['first']} to {intake['last']}"
     lines = [
-        f"{study.title} ({study.path.name}): the study file and its data can be used.",
-        "",
-        f"{intake['file']}: {intake['first']} to {intake['last']}, {intake['n_securities']:,} securities",
+        f"{intake['file']}: {span}, {_securities(intake['n_securities'])}",
         *_counts(intake),
+        *intake["span"],
     ]
     if intake["faults"]:
-        lines += ["", "Faults found:", *(_fault(fault) for fault in intake["faults"])]
+        lines += ["", "Faults found:"]
+        lines += [line for fault in intake["faults"] for line in _fault(fault)]
     if intake["screens"]:
-        lines += ["", "Screens, in order; a row they mark is not ranked in that month:"]
         lines += [
-            f"{s['n_rows']:>11,}  rows of {s['n_securities']:,} securities without {s['label']}"
-            for s in intake["screens"]
+            "",
+            "Rows that fail a screen, in order; they are kept, but not ranked that month:",
         ]
-    lines += ["", f"Set aside rows, with their text: {study.folder}/data/set_aside.csv"]
-    return "\n".join(lines)
+        lines += [_screen(screen) for screen in intake["screens"]]
+    return lines
 
 
 def _counts(intake: dict[str, Any]) -> list[str]:
+    missing = intake["n_missing_returns"]
     said = {
-        "rows_read": "rows read =",
-        "rows_kept": "kept +",
-        "rows_set_aside": "set aside +",
-        "exact_duplicates": "exact duplicates",
+        "rows_read": "rows read, of which",
+        "rows_kept": "kept" + (f", {missing:,} of them without a return" if missing else ""),
+        "rows_set_aside": "set aside",
+        "exact_duplicates": "dropped, as exact duplicates of others",
     }
-    lines = [f"{intake[key]:>11,}  {words}" for key, words in said.items()]
-    return [*lines, f"{intake['n_missing_returns']:>11,}  rows kept have no return"]
+    return [f"{_number(intake[key])}  {words}" for key, words in said.items()]
 
 
-def _fault(fault: dict[str, Any]) -> str:
-    answer = {"flag": "kept, flagged", "repair": "repaired"}.get(fault["answer"], fault["answer"])
-    examples = f" ({', '.join(fault['examples'])})" if fault["examples"] else ""
-    return f"{fault['n']:>11,}  {fault['label']}: {answer}{examples}"
+def _fault(fault: dict[str, Any]) -> list[str]:
+    """A line of count, label and answer; below it the kinds, the note and the first places."""
+    kinds = ", ".join(f"{n:,} {kind}" for kind, n in fault["kinds"].items())
+    examples = ", ".join(fault["examples"])
+    if len(fault["examples"]) < fault["n"] and examples:
+        examples += ", …"
+    said = [f"{_number(fault['n'])}  {fault['label']}: {_ANSWERS[fault['answer']]}"]
+    below = [text for text in (kinds, fault["note"], examples) if text]
+    return said + [f"{'':{_WIDTH}}    {text}" for text in below]
+
+
+def _screen(screen: dict[str, Any]) -> str:
+    whose = _securities(screen["n_securities"])
+    return f"{_number(screen['n_rows'])}  of {whose}: not “{screen['label']}”"
+
+
+def _securities(n: int) -> str:
+    return f"{n:,} {'security' if n == 1 else 'securities'}"
+
+
+def _number(n: int) -> str:
+    return f"{n:>{_WIDTH},}"

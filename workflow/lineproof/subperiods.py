@@ -106,7 +106,7 @@ def cut_subperiods(
     The market's returns stand beside them. "first" and "last" are the first and last month of the
     main test assets; others may have fewer months in a subperiod, and their results say how many.
 
-    Raises KnownProblem as `resolve_subperiods` does, and when no test asset has a return in a
+    Raises KnownProblem as `resolve_subperiods` does, and when no test asset has a month in a
     subperiod.
     """
     months = sorts[main].loc[sorts[main]["excess_return"].notna(), "date"]
@@ -117,9 +117,9 @@ def cut_subperiods(
     whole = returns.merge(market, on="date", how="left", validate="many_to_one")
     whole = whole[["sort", *(c for c in whole if c != "sort")]]
     cuts = {s.name: _between(whole, s) for s in subperiods}
-    empty = [name for name, cut in cuts.items() if cut["excess_return"].isna().all()]
+    empty = [name for name, cut in cuts.items() if cut.empty]
     if empty:
-        said = "no test asset has a return in it"
+        said = "no test asset has a month in it"
         problems = [Problem(f"subperiods.{name}", said, "change or remove it") for name in empty]
         raise KnownProblem("The subperiods do not fit the data.", problems)
     return subperiods, cuts

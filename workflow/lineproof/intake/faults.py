@@ -6,50 +6,78 @@ Answers: "stop" writes nothing and says what to change; "set aside" moves the ro
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 
 @dataclass(frozen=True)
 class Fault:
-    """`label` completes the sentence "rows with …"; `answer` as above."""
+    """`label` names the fault as a noun, `answer` as above; `note` says what a reader should make of it."""
 
     label: str
     answer: str
+    note: str = ""
 
 
 FAULTS: dict[int, Fault] = {
-    5: Fault("too many or too few fields, or an unbalanced quote", "set aside"),
-    7: Fault("blanks around a value, or thousands separators", "repair"),
+    5: Fault("too many or too few fields, or a stray quote", "set aside"),
+    7: Fault("blanks or quotes around a value, or thousands separators", "repair"),
     8: Fault("a date that does not parse, or outside 1800–2200", "set aside"),
-    12: Fault("a code for a missing value", "flag"),
+    12: Fault("a missing return", "flag", "it stays missing; it is never taken as zero"),
     13: Fault("text in a number column", "set aside"),
-    14: Fault("a value that is infinite or not a number", "set aside"),
+    14: Fault("an infinite value, or one spelt nan", "set aside"),
     15: Fault("a return below −100 %", "set aside"),
     16: Fault("a return of exactly −100 %", "flag"),
     19: Fault("another, different row of the same security and month", "set aside"),
-    20: Fault("months missing inside a security's history", "flag"),
-    21: Fault("runs of three or more zero returns", "flag"),
-    22: Fault("a jump over 300 % that reverses in the next month", "flag"),
+    20: Fault("a month missing inside a security's history", "flag"),
+    21: Fault("a run of three or more zero returns", "flag", "the price may be stale"),
+    22: Fault("a jump over 300 % that reverses in the next month", "flag", "Ince and Porter 2006"),
     23: Fault("a blank identifier", "set aside"),
-    24: Fault("a size that is zero, negative or missing", "flag"),
-    25: Fault("a security that leaves without a final return", "flag"),
-    26: Fault("no security ever leaves the file", "flag"),
+    24: Fault("a size that is zero, negative or missing", "flag", "the size is taken as missing"),
+    25: Fault(
+        "a security that leaves without a final return",
+        "flag",
+        "for a failure, a final return of −30 % is the usual assumption (Shumway 1997)",
+    ),
+    26: Fault("no security ever leaves", "flag", "a file of survivors only flatters every return"),
     28: Fault("no market or riskless return in that month", "set aside"),
+    41: Fault(
+        "an identifier that returns after more than 36 months",
+        "flag",
+        "it may have been given to another security",
+    ),
+    42: Fault(
+        "a final return although the security goes on",
+        "flag",
+        "it is not used; a final return belongs in the last row before a security leaves",
+    ),
 }
+N_EXAMPLES = 3
 
 
 @dataclass
 class Tally:
-    """Counts of faults met so far, with the places of the first few."""
+    """Counts of faults met so far, with the places of the first few, and counts by kind."""
 
     counts: dict[int, int] = field(default_factory=dict)
     examples: dict[int, list[str]] = field(default_factory=dict)
+    kinds: dict[int, dict[str, int]] = field(default_factory=dict)
 
-    def add(self, number: int, n: int, examples: list[str] | None = None) -> None:
-        """Count `n` more of a fault; keeps the first three examples."""
+    def add(
+        self,
+        number: int,
+        n: int,
+        examples: Sequence[str] = (),
+        kinds: dict[str, int] | None = None,
+    ) -> None:
+        """Count `n` more of a fault, of them so many of each kind; keeps the first few examples."""
         if n > 0:
             self.counts[number] = self.counts.get(number, 0) + int(n)
-            self.examples.setdefault(number, []).extend(examples or [])
+            self.examples.setdefault(number, []).extend(examples)
+            by_kind = self.kinds.setdefault(number, {})
+            for kind, of_kind in (kinds or {}).items():
+                if of_kind > 0:
+                    by_kind[kind] = by_kind.get(kind, 0) + int(of_kind)
 
     def report(self) -> list[dict[str, object]]:
         """One entry a fault met, by number."""
@@ -58,8 +86,10 @@ class Tally:
                 "number": number,
                 "label": FAULTS[number].label,
                 "answer": FAULTS[number].answer,
+                "note": FAULTS[number].note,
                 "n": self.counts[number],
-                "examples": self.examples[number][:3],
+                "kinds": self.kinds[number],
+                "examples": self.examples[number][:N_EXAMPLES],
             }
             for number in sorted(self.counts)
         ]

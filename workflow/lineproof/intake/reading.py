@@ -1,202 +1,240 @@
-"""Read a raw file as text: every row with its line, and every row that does not fit its header set aside."""
+"""Read a raw file as text: every row with its place, and every row that does not fit its header."""
 
 from __future__ import annotations
 
-import codecs
 import csv
 import io
+import json
 from dataclasses import dataclass
+from difflib import get_close_matches
+from itertools import chain
 from pathlib import Path
 from typing import Any
 
-import duckdb
 import numpy as np
 import pandas as pd
 import pyarrow as pa
+import pyarrow.compute as pc
+import pyarrow.csv
+import pyarrow.parquet as pq
 
+from lineproof.intake.lines import Block, find_misfits, read_blocks
+from lineproof.intake.stopping import UNUSABLE, stop
 from lineproof.problems import KnownProblem, Problem
-from lineproof.schema import nearest
 
-_CHUNK = 1 << 20
+_SEPARATORS = {",": "comma", ";": "semicolon", "\t": "tab", "|": "bar"}
 
 
 @dataclass(frozen=True)
 class TextTable:
-    """Rows as trimmed text under our own names, with `line`; `rejects` has line and reason of rows that do not fit.
+    """A raw file as text.
 
-    `n_read` counts both; `n_trimmed` counts values that had blanks around them.
+    `rows` has the columns of the study file under our names, trimmed of blanks, and `line`;
+    `rejects` has `line` and `reason` of each row whose fields do not fit the header. `line` counts
+    from 1, the header being line 1, or rows from 1 where `place` is "row", as in Parquet.
+    `n_read` counts the rows of both, and `n_trimmed` the values that had blanks around them.
     """
 
     label: str
+    place: str
     rows: pd.DataFrame
     rejects: pd.DataFrame
-    n_read: int
     n_trimmed: int
+
+    @property
+    def n_read(self) -> int:
+        return len(self.rows) + len(self.rejects)
 
 
 def read_text(file: str, reading: dict[str, Any]) -> TextTable:
-    """Read CSV, TSV (also .gz, .bz2, .zst) or Parquet, keeping the columns the study file names.
+    """Read CSV or TSV (also .gz, .bz2, .zst) or Parquet, keeping the columns the study file names.
 
-    Raises KnownProblem when the file is missing, empty, broken, not UTF-8, or lacks a column.
+    Raises KnownProblem when the file is missing, empty, broken, not UTF-8 or lacks a column.
     """
-    label = reading["label"]
-    path = Path(file)
+    label, path = reading["label"], Path(file)
     if not path.is_file():
-        raise _stop(label, "there is no such file", "check the path in the study file")
+        raise stop(label, "there is no such file", "check the path in the study file")
     if path.stat().st_size == 0:
-        raise _stop(label, "the file is empty", "deliver it again")
+        raise stop(label, "the file is empty", "deliver it again")
     try:
-        read = _read_parquet if path.suffix == ".parquet" else _read_csv
-        table = read(file, reading)
-    except (duckdb.Error, OSError, EOFError, pa.ArrowException) as error:
-        said = str(error).strip().split("\n")[0]
-        raise _stop(
-            label, f"it cannot be read: {said}", "is it complete, and what its ending says?"
-        ) from None
+        table = _read_parquet(file, reading) if _is_parquet(file) else _read_csv(file, reading)
+    except (OSError, pa.ArrowException) as error:
+        said = str(error).strip().split("\n")[0].rstrip(".")
+        change = "is it complete, and what its ending says?"
+        raise stop(label, f"it cannot be read: {said}", change) from None
     if table.n_read == 0:
-        raise _stop(label, "there is a header but no row", "deliver it again")
+        raise stop(label, "there is a header but no row", "deliver it again")
     return table
 
 
-def _stop(where: str, found: str, change: str) -> KnownProblem:
-    return KnownProblem(
-        "The raw data cannot be used; nothing was written.", [Problem(where, found, change)]
-    )
+def raw_rows(file: str, wanted: np.ndarray) -> list[str]:
+    """The text of the given lines (ascending, as in `TextTable.line`), without line ends.
+
+    A row of Parquet is written as a line of CSV.
+    """
+    if len(wanted) == 0:
+        return []
+    if _is_parquet(file):
+        rows = pq.read_table(file).take(wanted - 1).to_pylist()
+        return [_as_line(row.values()) for row in rows]
+    found: list[str] = []
+    for block in read_blocks(file, file):
+        upto = np.searchsorted(wanted, block.first + len(block))
+        found += [block.line(index) for index in wanted[len(found) : upto] - block.first]
+        if upto == len(wanted):
+            break
+    return found
 
 
-def raw_lines(file: str, wanted: np.ndarray) -> list[str]:
-    """The text of the given lines (1-based, any order) of a text file, without line ends."""
-    if Path(file).suffix == ".parquet":
-        return ["" for _ in wanted]
-    keep = set(wanted.tolist())
-    found: dict[int, str] = {}
-    with pa.input_stream(file, compression="detect") as stream:
-        text = io.TextIOWrapper(io.BufferedReader(stream), encoding="utf-8-sig", newline="\n")
-        for number, line in enumerate(text, start=1):
-            if number in keep:
-                found[number] = line.rstrip("\r\n")
-    return [found[number] for number in wanted.tolist()]
+def _as_line(values: Any) -> str:
+    line = io.StringIO()
+    csv.writer(line, lineterminator="").writerow(values)
+    return line.getvalue()
+
+
+def _is_parquet(file: str) -> bool:
+    return Path(file).suffix.lower() == ".parquet"
 
 
 def _read_csv(file: str, reading: dict[str, Any]) -> TextTable:
     label = reading["label"]
-    separator = reading["separator"] or ("\t" if ".tsv" in Path(file).suffixes else ",")
-    lines = _scan(file, label)
-    header = _header(file, separator)
-    wanted = _match(header, reading["columns"], label, separator, _first_line(file))
-    connection = duckdb.connect(config={"threads": 1})
-    types = ", ".join(f"'c{i}': 'VARCHAR'" for i in range(len(header)))
-    shown = ", ".join(
-        f"c{header.index(theirs)} AS {_quoted(ours)}" for ours, theirs in wanted.items()
+    separator = _separator(file, reading)
+    blocks = read_blocks(file, label)
+    first = next(blocks, None)
+    if first is None:
+        raise stop(label, "the file is empty", "deliver it again")
+    header = next(csv.reader([first.line(0)], delimiter=separator), [])
+    if not any(name.strip() for name in header):
+        raise stop(f"{label}, line 1", "there are no column names", "give a header in line 1")
+    wanted = _match([name.strip() for name in header], reading, separator, first.line(0))
+    texts, lines, rejects = [], [], []
+    for block in chain([first], blocks):
+        blank, reasons = find_misfits(block, separator, len(header))
+        if block is first:
+            blank[0] = True  # the header is no row
+            reasons.pop(0, None)
+        fits = ~blank
+        fits[list(reasons)] = False
+        texts.append(_split(block, fits, separator, len(header), sorted(set(wanted.values()))))
+        lines.append(np.flatnonzero(fits) + block.first)
+        rejects += [(block.first + index, said) for index, said in reasons.items()]
+    columns = _named(pa.concat_tables(texts), wanted)
+    return _as_table(label, "line", columns, np.concatenate(lines), rejects)
+
+
+def _separator(file: str, reading: dict[str, Any]) -> str:
+    given = reading["separator"]
+    if given is None:
+        return "\t" if ".tsv" in Path(file.lower()).suffixes else ","
+    if not given.isascii() or given in '"\r\n':
+        found = f"the character {given!r} cannot part the fields of a file"
+        raise stop(f"{reading['label']}, separator", found, "use , or ; or | or a tab")
+    return given
+
+
+def _split(
+    block: Block, fits: np.ndarray, separator: str, n_fields: int, wanted: list[int]
+) -> pa.Table:
+    """The wanted fields, by position, of the lines that fit: text columns named by position."""
+    names = [str(position) for position in range(n_fields)]
+    kept = [str(position) for position in wanted]
+    if not fits.any():
+        return pa.table({name: pa.array([], pa.string()) for name in kept})
+    text = block.only(fits)
+    table = pyarrow.csv.read_csv(
+        pa.BufferReader(text),
+        read_options=pyarrow.csv.ReadOptions(column_names=names, block_size=len(text)),
+        parse_options=pyarrow.csv.ParseOptions(delimiter=separator),
+        convert_options=pyarrow.csv.ConvertOptions(
+            column_types=dict.fromkeys(names, pa.string()), include_columns=kept
+        ),
     )
-    rows = connection.execute(
-        f"SELECT {shown} FROM read_csv(?, auto_detect=false, header=true, delim=?, quote='\"', escape='\"', "
-        f"columns={{{types}}}, store_rejects=true, rejects_limit=0, max_line_size=1000000, null_padding=false)",
-        [file, separator],
-    ).df()
-    rejects = connection.execute(
-        "SELECT line, first(error_message ORDER BY error_message) AS reason "
-        "FROM reject_errors GROUP BY line ORDER BY line"
-    ).df()
-    rejects["line"] = rejects["line"].astype("int64")
-    return _finished(label, rows, rejects, lines)
+    if len(table) != fits.sum():
+        raise AssertionError(f"{fits.sum()} lines gave {len(table)} rows")
+    return table
 
 
 def _read_parquet(file: str, reading: dict[str, Any]) -> TextTable:
-    label = reading["label"]
-    connection = duckdb.connect(config={"threads": 1})
-    schema = connection.execute("DESCRIBE SELECT * FROM read_parquet(?)", [file]).fetchall()
-    kinds = {name: kind for name, kind, *_ in schema}
-    wanted = _match(list(kinds), reading["columns"], label, ",", "")
-    shown = []
-    for ours, theirs in wanted.items():
-        is_date = kinds[theirs].startswith(("DATE", "TIMESTAMP"))
-        as_text = (
-            "strftime({}, '" + reading["dates"].replace("'", "") + "')"
-            if is_date
-            else "CAST({} AS VARCHAR)"
-        )
-        shown.append(f"{as_text.format(_quoted(theirs))} AS {_quoted(ours)}")
-    rows = connection.execute(f"SELECT {', '.join(shown)} FROM read_parquet(?)", [file]).df()
-    rejects = pd.DataFrame({"line": pd.Series(dtype="int64"), "reason": pd.Series(dtype=str)})
-    return _finished(label, rows, rejects, np.arange(1, len(rows) + 1))
+    names = pq.read_schema(file).names
+    wanted = _match(names, reading, None, "")
+    table = pq.read_table(file, columns=sorted({names[position] for position in wanted.values()}))
+    columns = {
+        ours: _as_text(table[names[position]], reading["dates"], ours in _INTEGERS)
+        for ours, position in wanted.items()
+    }
+    return _as_table(reading["label"], "row", columns, np.arange(1, len(table) + 1), [])
 
 
-def _finished(
-    label: str, rows: pd.DataFrame, rejects: pd.DataFrame, lines: np.ndarray
+_INTEGERS = ("security", "date")  # whole numbers that missing values may have turned to floats
+
+
+def _as_text(column: pa.ChunkedArray, dates: str, is_integer: bool) -> pa.ChunkedArray:
+    """A typed column as it would stand in a CSV file, missing values as empty text."""
+    if pa.types.is_date(column.type) or pa.types.is_timestamp(column.type):
+        column = pc.strftime(column.cast(pa.timestamp("s"), safe=False), format=dates)
+    elif pa.types.is_floating(column.type):
+        column = pc.if_else(pc.is_nan(column), None, column)
+        if is_integer and pc.all(pc.equal(column, pc.floor(column))).as_py():
+            column = column.cast(pa.int64())
+    return pc.fill_null(column.cast(pa.string()), "")
+
+
+def _named(table: pa.Table, wanted: dict[str, int]) -> dict[str, pa.ChunkedArray]:
+    return {ours: table[str(position)] for ours, position in wanted.items()}
+
+
+def _as_table(
+    label: str,
+    place: str,
+    columns: dict[str, pa.ChunkedArray],
+    lines: np.ndarray,
+    rejects: list[tuple[int, str]],
 ) -> TextTable:
-    free = np.setdiff1d(lines, rejects["line"].to_numpy(), assume_unique=True)
-    if len(free) != len(rows):
-        found = f"{len(rows)} rows stand on {len(free)} lines, so some quoted field runs over several lines"
-        raise _stop(label, found, "remove the line ends inside quotes")
-    rows = rows.astype(str).where(rows.notna(), "")
-    trimmed = rows.apply(lambda column: column.str.strip())
-    n_trimmed = int((trimmed != rows).to_numpy().sum())
-    return TextTable(label, trimmed.assign(line=free), rejects, len(rows) + len(rejects), n_trimmed)
-
-
-def _quoted(name: str) -> str:
-    return '"' + name.replace('"', '""') + '"'
-
-
-def _scan(file: str, label: str) -> np.ndarray:
-    """Numbers of the lines after the header that are not blank; stops at the first byte that is not UTF-8."""
-    decoder = codecs.getincrementaldecoder("utf-8")()
-    blank: list[int] = []
-    position, number, ends_open, has_text = 0, 1, False, False
-    with pa.input_stream(file, compression="detect") as stream:
-        while chunk := stream.read(_CHUNK):
-            try:
-                decoder.decode(chunk)
-            except UnicodeDecodeError as error:
-                at = position + error.start
-                raise _stop(
-                    label, f"byte {at:,} is not UTF-8 text", "save the file as UTF-8"
-                ) from None
-            position += len(chunk)
-            for part in _split(chunk):
-                has_text = has_text or bool(part.strip())
-                ends_open = not part.endswith(b"\n")
-                if not ends_open:
-                    if not has_text:
-                        blank.append(number)
-                    number, has_text = number + 1, False
-    last = number if ends_open and has_text else number - 1
-    return np.setdiff1d(np.arange(2, last + 1), np.array(blank, dtype="int64"), assume_unique=True)
-
-
-def _split(chunk: bytes) -> list[bytes]:
-    parts = chunk.split(b"\n")
-    return [part + b"\n" for part in parts[:-1]] + ([parts[-1]] if parts[-1] else [])
-
-
-def _first_line(file: str) -> str:
-    with pa.input_stream(file, compression="detect") as stream:
-        return stream.read(_CHUNK).decode("utf-8-sig", errors="replace").split("\n")[0].rstrip("\r")
-
-
-def _header(file: str, separator: str) -> list[str]:
-    return [name.strip() for name in next(csv.reader([_first_line(file)], delimiter=separator), [])]
+    trimmed = {name: pc.utf8_trim_whitespace(column) for name, column in columns.items()}
+    n_trimmed = sum(
+        pc.sum(pc.not_equal(trimmed[name], column)).as_py() or 0 for name, column in columns.items()
+    )
+    rows = pa.table(trimmed).to_pandas().assign(line=lines.astype(np.int64))
+    frame = pd.DataFrame(
+        {
+            "line": pd.Series([line for line, _ in rejects], dtype="int64"),
+            "reason": pd.Series([said for _, said in rejects], dtype=str),
+        }
+    )
+    return TextTable(label, place, rows, frame, n_trimmed)
 
 
 def _match(
-    header: list[str], columns: dict[str, str], label: str, separator: str, first_line: str
-) -> dict[str, str]:
-    """Our names to theirs, after checking that every column is there once."""
-    problems = []
-    absent = [theirs for theirs in columns.values() if theirs not in header]
-    for theirs in absent:
-        near = nearest(theirs, header)
-        change = f"{near} The columns are: {', '.join(header)}"
-        problems.append(Problem(label, f"there is no column {theirs!r}", change))
-    if len(absent) == len(columns):
-        others = {",": "comma", ";": "semicolon", "\t": "tab", "|": "bar"}
-        better = max(others, key=first_line.count)
-        if better != separator and first_line.count(better) > first_line.count(separator):
-            found = f"its first line has no {others.get(separator, separator)} but many a {others[better]}"
-            problems = [Problem(label, found, f"set separator: {better!r}")]
-    for theirs in sorted({c for c in columns.values() if header.count(c) > 1}):
-        problems.append(Problem(label, f"two columns are called {theirs!r}", "rename one of them"))
+    header: list[str], reading: dict[str, Any], separator: str | None, first_line: str
+) -> dict[str, int]:
+    """The position of each of our columns, after checking that every name is there, and once."""
+    label, columns = reading["label"], reading["columns"]
+    absent = [theirs for theirs in dict.fromkeys(columns.values()) if theirs not in header]
+    if separator is not None and len(header) == 1 and absent:
+        _check_separator(label, separator, first_line)
+    problems = [
+        Problem(label, f"there is no column {theirs!r}", _columns_found(theirs, header))
+        for theirs in absent
+    ]
+    twice = sorted({name for name in header if name and header.count(name) > 1})
+    problems += [
+        Problem(label, f"two columns are called {name!r}", "rename one of them") for name in twice
+    ]
     if problems:
-        raise KnownProblem("The raw data cannot be used; nothing was written.", problems)
-    return dict(columns)
+        raise KnownProblem(UNUSABLE, problems)
+    return {ours: header.index(theirs) for ours, theirs in columns.items()}
+
+
+def _columns_found(absent: str, header: list[str]) -> str:
+    close = get_close_matches(absent, header, n=1)
+    near = f"did you mean {close[0]}? " if close else ""
+    return f"{near}The columns are: {', '.join(header)}"
+
+
+def _check_separator(label: str, separator: str, first_line: str) -> None:
+    better = max(_SEPARATORS, key=first_line.count)
+    if first_line.count(better):
+        found = (
+            f"its header has no {_SEPARATORS.get(separator, separator)} but a {_SEPARATORS[better]}"
+        )
+        raise stop(label, found, f"set separator: {json.dumps(better)}")

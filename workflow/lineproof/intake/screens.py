@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
+from lineproof.intake.stopping import stop
 from lineproof.intake.values import to_numbers
 
 _COMPARE = {
@@ -15,31 +16,51 @@ _COMPARE = {
     "above": (np.greater, "above"),
     "below": (np.less, "below"),
 }
+_LISTS = {"in": (True, "one of"), "not_in": (False, "none of")}
 
 
 def passes(rows: pd.DataFrame, screen: dict[str, Any]) -> np.ndarray:
-    """Whether each row meets every condition of a screen; a missing value meets none. Shape (n_rows,)."""
+    """Whether each row meets every condition of a screen; a missing value meets none: bool (n_rows,).
+
+    Numbers are compared as our tables hold them, returns as decimals; a column of text is compared
+    as numbers by `at_least`, `at_most`, `above` and `below`, and as text by `in` and `not_in`.
+
+    Raises KnownProblem for a screen on the date, which subperiods are for.
+    """
+    if screen["column"] == "date":
+        found = "a screen cannot use the date"
+        raise stop("intake.screens", found, "remove it, and cut the study with subperiods")
     column = rows["return_" if screen["column"] == "return" else screen["column"]]
     is_text = not pd.api.types.is_numeric_dtype(column)
-    met = np.ones(len(rows), bool)
+    number = to_numbers(column, [], thousands=True).value if is_text else column.to_numpy()
+    known = (column != "").to_numpy() if is_text else ~np.isnan(number)
+    met = known.copy()
     for word, (compare, _) in _COMPARE.items():
         if word in screen:
-            value = to_numbers(column, []).value if is_text else column.to_numpy()
-            met &= compare(value, screen[word])
-    for word, wanted in (("in", True), ("not_in", False)):
+            met &= compare(number, screen[word])
+    for word, (wanted, _) in _LISTS.items():
         if word in screen:
-            listed = [str(v) for v in screen[word]] if is_text else screen[word]
-            known = (column != "") if is_text else column.notna()
-            met &= (column.isin(listed) == wanted).to_numpy() & known.to_numpy()
+            met &= _is_listed(column, screen[word], is_text) == wanted
     return met
+
+
+def _is_listed(column: pd.Series, listed: list[str | float], is_text: bool) -> np.ndarray:
+    values = [str(value) for value in listed]
+    if not is_text:
+        values = pd.to_numeric(pd.Series(values), errors="coerce").dropna().tolist()
+    return column.isin(values).to_numpy()
 
 
 def screen_label(screen: dict[str, Any]) -> str:
     """The condition in words, as in `price at least 1`."""
-    parts = [f"{words} {screen[word]:g}" for word, (_, words) in _COMPARE.items() if word in screen]
-    for word, said in (("in", "one of"), ("not_in", "none of")):
-        if word in screen:
-            parts.append(f"{said} {', '.join(str(v) for v in screen[word])}")
+    parts = [
+        f"{words} {screen[word]:,.15g}" for word, (_, words) in _COMPARE.items() if word in screen
+    ]
+    parts += [
+        f"{said} {', '.join(str(value) for value in screen[word])}"
+        for word, (_, said) in _LISTS.items()
+        if word in screen
+    ]
     return f"{screen['column']} {' and '.join(parts)}"
 
 

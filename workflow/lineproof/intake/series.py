@@ -2,118 +2,140 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from typing import Any
 
+import numpy as np
 import pandas as pd
 
 from lineproof.addresses import refused_asset_names
 from lineproof.calendar import month_name, month_number
-from lineproof.intake.reading import read_text
-from lineproof.intake.values import to_months, to_numbers
+from lineproof.intake.plausible import check_unit
+from lineproof.intake.reading import TextTable, read_text
+from lineproof.intake.stopping import UNUSABLE, counted, stop
+from lineproof.intake.values import Numbers, as_decimal, check_date_format, to_months, to_numbers
 from lineproof.problems import KnownProblem, Problem
 
-_HEADLINE = "The raw data cannot be used; nothing was written."
 _MOST_PLAUSIBLE_RATE = 0.03  # riskless return of one month
+_N_SHOWN = 12
 
 
 def read_series(file: str, reading: dict[str, Any], value: str) -> pd.DataFrame:
     """`date` (month end) and `value` (decimal), sorted; with `asset` where the columns name one.
 
-    Every row must be sound: a series has no spare months, so a fault stops the run.
+    Every row must be sound: a series has no spare months, so a fault stops the run. A row whose
+    value is missing counts as absent.
 
     Raises KnownProblem listing the rows whose date or value cannot be read, months that stand twice and months
-    missing inside the series.
+    missing inside the series, or when returns are in another unit than declared.
     """
+    check_date_format(reading)
     table = read_text(file, reading)
-    rows, label = table.rows, reading["label"]
+    rows = table.rows
     date = to_months(rows["date"], reading["dates"])
     numbers = to_numbers(rows[value], reading["missing"])
-    problems = [
-        Problem(
-            f"{label}, line {r.line}",
-            f"its fields do not fit the header: {r.reason}",
-            "mend the row",
-        )
-        for r in table.rejects.itertuples()
-    ]
-    problems += [
-        Problem(
-            f"{label}, line {line}",
-            f"{text!r} is not a date of the form {reading['dates']}",
-            "set dates:",
-        )
-        for line, text in rows.loc[date.isna(), ["line", "date"]].itertuples(index=False)
-    ]
-    unreadable = numbers.is_text | numbers.is_not_finite
-    problems += [
-        Problem(
-            f"{label}, line {line}",
-            f"{text!r} is not a number",
-            "mend it, or list it under missing:",
-        )
-        for line, text in rows.loc[unreadable, ["line", value]].itertuples(index=False)
-    ]
+    problems = _row_problems(table, date, numbers, reading, value)
     if problems:
-        raise KnownProblem(_HEADLINE, problems[:20])
-    scale = 0.01 if reading["unit"] == "percent" else 1.0
-    series = pd.DataFrame({"date": date, value: numbers.value * scale})
+        raise KnownProblem(UNUSABLE, problems)
+    decimal = as_decimal(numbers.value, reading["unit"])
+    if value == "return":
+        check_unit(decimal, reading)
+    series = pd.DataFrame({"date": date, value: decimal})
     keys = ["date"]
     if "asset" in rows:
         keys = ["asset", "date"]
         series.insert(0, "asset", rows["asset"])
-        _check_names(rows["asset"].unique().tolist(), label)
-    series = series[series[value].notna()]
-    _check_months(series, keys, label)
-    return series.sort_values(keys, ignore_index=True)
+        _check_names(rows["asset"].unique().tolist(), reading)
+    series = series[series[value].notna()].sort_values(keys, ignore_index=True)
+    _check_months(series, keys, reading["label"])
+    return series
 
 
-def _check_names(names: list[str], label: str) -> None:
+def _row_problems(
+    table: TextTable, date: pd.Series, numbers: Numbers, reading: dict[str, Any], value: str
+) -> list[Problem]:
+    """A problem for each row that cannot be read, the first few of each kind."""
+    rows, theirs = table.rows, reading["columns"]
+    unreadable = numbers.is_text | numbers.is_not_finite
+    kinds = (
+        ("", table.rejects, "it has {}", "mend the row"),
+        (
+            f", column {theirs['date']}",
+            rows.loc[date.isna(), ["line", "date"]],
+            f"{{!r}} is not a date of the form {reading['dates']}",
+            "mend it, or set dates:",
+        ),
+        (
+            f", column {theirs[value]}",
+            rows.loc[unreadable, ["line", value]],
+            "{!r} is not a number",
+            "mend it, or list it under missing:",
+        ),
+    )
+    problems = []
+    for column, found, said, change in kinds:
+        for line, text in found.head(_N_SHOWN).itertuples(index=False):
+            where = f"{table.label}, {table.place} {line}{column}"
+            problems.append(Problem(where, said.format(text), change))
+        if len(found) > _N_SHOWN:
+            more = f"{counted(len(found) - _N_SHOWN, 'more row')} like this"
+            problems.append(Problem(f"{table.label}{column}", more))
+    return problems
+
+
+def _check_names(names: list[str], reading: dict[str, Any]) -> None:
     refused = refused_asset_names(names)
     if refused:
-        found = f"test assets may not be called {', '.join(map(repr, refused))}"
+        found = f"test assets may not be called {_few(map(repr, refused))}"
         change = (
             "these names stand for other rows of the estimates, and / parts an address: rename them"
         )
-        raise KnownProblem(_HEADLINE, [Problem(label, found, change)])
+        raise stop(f"{reading['label']}, column {reading['columns']['asset']}", found, change)
 
 
 def _check_months(series: pd.DataFrame, keys: list[str], label: str) -> None:
+    """Stop at months that stand twice; and, in a series of its own, at months that are missing."""
     if series.empty:
-        raise KnownProblem(_HEADLINE, [Problem(label, "no row has both a date and a value", "")])
-    twice = series[series.duplicated(keys)]
+        raise stop(label, "no row has both a date and a value", "deliver it again")
+    twice = series.loc[series.duplicated(keys), keys].drop_duplicates()
     if len(twice):
-        shown = ", ".join(
-            " ".join([*map(str, r[:-1]), month_name(r[-1])]) for r in twice[keys].values[:12]
-        )
-        raise KnownProblem(
-            _HEADLINE, [Problem(label, f"months that stand twice: {shown}", "keep one row a month")]
-        )
+        named = [" ".join([*row[:-1], month_name(row[-1])]) for row in twice.to_numpy().tolist()]
+        raise stop(label, f"months that stand twice: {_few(named)}", "keep one row a month")
     if keys == ["date"]:
-        present = set(month_number(series["date"]))
-        absent = [m for m in range(min(present), max(present)) if m not in present]
-        if absent:
-            shown = ", ".join(f"{m // 12}-{m % 12 + 1:02d}" for m in absent[:12])
-            found = f"{len(absent)} months are missing inside the series: {shown}"
-            raise KnownProblem(
-                _HEADLINE, [Problem(label, found, "deliver them, or shorten the study")]
-            )
+        present = month_number(series["date"])
+        absent = np.setdiff1d(np.arange(present[0], present[-1]), present)
+        if len(absent):
+            named = [f"{month // 12}-{month % 12 + 1:02d}" for month in absent.tolist()]
+            found = f"{counted(len(absent), 'month')} missing inside the series: {_few(named)}"
+            raise stop(label, found, "deliver them, or shorten the series")
+
+
+def _few(names: Iterable[str]) -> str:
+    listed = list(names)
+    more = f" and {len(listed) - _N_SHOWN:,} more" if len(listed) > _N_SHOWN else ""
+    return ", ".join(listed[:_N_SHOWN]) + more
 
 
 def riskless_return(rate: pd.Series, quoted: str) -> pd.Series:
-    """Riskless return of one month from the rate as quoted (decimal).
+    """Riskless return of one month from the rate as quoted, both decimal.
 
-    A compound annual yield y gives (1 + y)^(1/12) − 1; a period return is taken as it is.
+    A compound annual yield y gives (1 + y)^(1/12) − 1; a period return is taken as it is. A yield
+    below −100 % gives NaN.
     """
     return (1 + rate) ** (1 / 12) - 1 if quoted == "annual_yield" else rate
 
 
-def check_riskless(series: pd.DataFrame, label: str, quoted: str) -> None:
-    """Stop when a month's riskless return is beyond what any rate so quoted could be."""
-    high = series[series["riskless"].abs() > _MOST_PLAUSIBLE_RATE]
-    if len(high):
-        worst = high.loc[high["riskless"].abs().idxmax()]
+def check_riskless(series: pd.DataFrame, reading: dict[str, Any], quoted: str) -> None:
+    """Stop when a month's riskless return is beyond what any rate so quoted could be.
+
+    `series` has date, rate and riskless, decimal. Raises KnownProblem.
+    """
+    beyond = series[~(series["riskless"].abs() <= _MOST_PLAUSIBLE_RATE)]
+    if len(beyond):
+        worst = beyond.loc[beyond["rate"].abs().idxmax()]
         found = (
-            f"{len(high)} months have a riskless return over 3 % a month when read as {quoted}: "
-            f"{worst['riskless']:.4g} in {month_name(worst['date'])}"
+            f"read as {quoted} in {reading['unit']}, {counted(len(beyond), 'month')} would earn beyond 3 % "
+            f"without risk; the rate of {month_name(worst['date'])} would be {100 * worst['rate']:.4g} %"
         )
-        raise KnownProblem(_HEADLINE, [Problem(label, found, "check unit: and quoted:")])
+        where = f"{reading['label']}, column {reading['columns']['rate']}"
+        raise stop(where, found, "check unit: and quoted:")

@@ -1,0 +1,148 @@
+"""Nothing later than a month can change what is estimated, formed or returned by that month.
+
+Every estimator, design and weighting of the registries is tried. All values dated after a random
+month are replaced by noise, or all rows after it removed; what is dated up to it must stay the same
+to the last bit.
+"""
+
+from __future__ import annotations
+
+import tempfile
+from collections.abc import Callable
+from pathlib import Path
+
+import numpy as np
+import pandas as pd
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from tests.properties.random_market import MONTHS, WINDOW, draw_market
+
+from lineproof import store
+from lineproof.designs import DESIGNS, WEIGHTS
+from lineproof.estimation import estimate_betas
+from lineproof.estimators import ESTIMATORS
+from lineproof.forming import form_portfolios
+from lineproof.sorting import Sorted
+
+SEEDS = st.integers(0, 2**32 - 1)
+# Late enough for a first formation and a month held after it, early enough for months to change.
+CUTS = st.integers(30, len(MONTHS) - 2)
+FEW = settings(max_examples=15, deadline=None, derandomize=True)
+Market = tuple[pd.DataFrame, pd.DataFrame]
+
+
+def with_noise_after(frame: pd.DataFrame, cut: pd.Timestamp, seed: int) -> pd.DataFrame:
+    """Every value dated after `cut` drawn anew: returns, sizes, prices and screens alike."""
+    rng = np.random.default_rng(seed)
+    later = frame["date"] > cut
+    n = int(later.sum())
+    frame = frame.copy()
+    for column in frame.columns.difference(["security", "date"]):
+        if column == "eligible":
+            frame.loc[later, column] = rng.random(n) < 0.5
+        else:
+            noise = rng.uniform(0.0, 9.0, n) if column in ("size", "price") else rng.normal(size=n)
+            noise[rng.random(n) < (0.2 if "market" not in column else 0.0)] = np.nan
+            frame.loc[later, column] = noise
+    return frame
+
+
+def cut_after(frame: pd.DataFrame, cut: pd.Timestamp, seed: int) -> pd.DataFrame:
+    """No row after `cut`."""
+    return frame[frame["date"] <= cut].reset_index(drop=True)
+
+
+CHANGES: dict[str, Callable[[pd.DataFrame, pd.Timestamp, int], pd.DataFrame]] = {
+    "noise": with_noise_after,
+    "cut": cut_after,
+}
+
+
+def assert_identical_until(
+    one: pd.DataFrame, other: pd.DataFrame, by: str, cut: pd.Timestamp
+) -> None:
+    early = [frame[frame[by] <= cut].reset_index(drop=True) for frame in (one, other)]
+    assert len(early[0]) > 0
+    pd.testing.assert_frame_equal(*early, check_exact=True)
+    numbers = [frame.select_dtypes("number").to_numpy().tobytes() for frame in early]
+    assert numbers[0] == numbers[1]
+
+
+def changed_market(market: Market, change: str, cut: pd.Timestamp, seed: int) -> Market:
+    panel, factor = (CHANGES[change](frame, cut, seed) for frame in market)
+    return panel, factor
+
+
+@pytest.mark.parametrize("change", list(CHANGES))
+@pytest.mark.parametrize("estimator", list(ESTIMATORS))
+@FEW
+@given(seed=SEEDS, at=CUTS)
+def test_betas(estimator: str, change: str, seed: int, at: int) -> None:
+    market, cut = draw_market(seed), MONTHS[at]
+    before, after = (
+        estimate_betas(*each, name="short", estimator=estimator, **WINDOW)
+        for each in (market, changed_market(market, change, cut, seed))
+    )
+    assert_identical_until(before, after, "date", cut)
+    assert not before.equals(after)  # the change does reach what is dated later
+
+
+def single_window(market: Market, weights: str, form_month: int, folder: Path) -> Sorted:
+    panel, factor = market
+    betas = estimate_betas(panel, factor, name="short", estimator="ols", **WINDOW)
+    sources = [str(folder / "panel.parquet"), str(folder / "betas.parquet")]
+    store.write_table(panel, sources[0], None)
+    store.write_table(betas, sources[1], "betas")
+    options = {"name": "three", "groups": 3, "form_month": form_month, "hold": 12}
+    return form_portfolios(sources, factor, design="single_window", weights=weights, **options)
+
+
+def supplied(market: Market, weights: str, form_month: int, folder: Path) -> Sorted:
+    """The first securities of the panel stand for supplied assets, which nobody weighs or forms."""
+    panel, factor = market
+    columns = {"asset": "security", "date": "date", "return": "total_return"}
+    file = folder / "supplied.csv"
+    panel[panel["security"] < "S05"].to_csv(file, columns=list(columns.values()), index=False)
+    reading = {
+        "label": file.name,
+        "columns": columns,
+        "unit": "decimal",
+        "missing": [""],
+        "dates": "%Y-%m-%d",
+        "separator": None,
+    }
+    return form_portfolios(
+        [str(file)], factor, design="supplied", reading=reading, returns_are="total"
+    )
+
+
+# How each design is fed from a panel and a market. A new design needs a line here.
+FED: dict[str, Callable[[Market, str, int, Path], Sorted]] = {
+    "single_window": single_window,
+    "supplied": supplied,
+}
+
+
+def test_every_design_is_tried() -> None:
+    assert set(FED) == set(DESIGNS)
+
+
+@pytest.mark.parametrize("change", list(CHANGES))
+@pytest.mark.parametrize("weights", list(WEIGHTS))
+@pytest.mark.parametrize("design", list(DESIGNS))
+@FEW
+@given(seed=SEEDS, at=CUTS, form_month=st.integers(1, 12))
+def test_test_assets(
+    design: str, weights: str, change: str, seed: int, at: int, form_month: int
+) -> None:
+    market, cut = draw_market(seed), MONTHS[at]
+    with tempfile.TemporaryDirectory() as folder:
+        before, after = (
+            FED[design](each, weights, form_month, Path(folder))
+            for each in (market, changed_market(market, change, cut, seed))
+        )
+    if len(before.members):
+        assert_identical_until(before.members, after.members, "formed", cut)
+    assert_identical_until(before.returns, after.returns, "date", cut)
+    assert not before.returns.equals(after.returns)

@@ -1,0 +1,215 @@
+"""Text into numbers and months: what is a value, what is missing, what is neither."""
+
+from __future__ import annotations
+
+import datetime
+import math
+import re
+
+import numpy as np
+import pandas as pd
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from tests.unit import intake_examples as examples
+
+from lineproof.intake.values import (
+    as_decimal,
+    check_date_format,
+    missing_codes,
+    share_with_decimal_comma,
+    to_months,
+    to_numbers,
+    without_codes,
+)
+from lineproof.problems import KnownProblem
+
+CODES = ["", "NA", "-99"]
+
+
+def text(*values: str) -> pd.Series:
+    return pd.Series(list(values), dtype="str")
+
+
+@pytest.mark.parametrize(
+    ("written", "value"),
+    [
+        ("0.05", 0.05),
+        ("+0.05", 0.05),
+        ("-.5", -0.5),
+        ("5.", 5.0),
+        ("007", 7.0),
+        ("1e-3", 0.001),
+        ("-1.5E+2", -150.0),
+        ("1e-400", 0.0),
+        ("0.1000000000000000055511151231257827", 0.1),
+    ],
+)
+def test_plain_numbers(written: str, value: float) -> None:
+    numbers = to_numbers(text(written), CODES)
+    assert numbers.value.tolist() == [value]
+    assert not numbers.is_text.any()
+    assert numbers.code.tolist() == [-1]
+
+
+@pytest.mark.parametrize(
+    "written", ["halted", "1.2.3", "--1", "1 000", "0x10", "1e", "5%", ".", "1_0", "1,5", "é", "１"]
+)
+def test_text(written: str) -> None:
+    numbers = to_numbers(text(written), CODES)
+    assert numbers.is_text.tolist() == [True]
+    assert np.isnan(numbers.value).all()
+
+
+@pytest.mark.parametrize(
+    "written", ["inf", "-INF", "Infinity", "nan", "NaN", "+inf", "1e400", "-1e400"]
+)
+def test_not_finite(written: str) -> None:
+    numbers = to_numbers(text(written), CODES)
+    assert numbers.is_not_finite.tolist() == [True]
+    assert numbers.is_text.tolist() == [False]
+    assert np.isnan(numbers.value).all()
+
+
+def test_codes_for_missing_by_name() -> None:
+    numbers = to_numbers(text("", "NA", "-99", "-99.00", "-9.9e1", "-99.01", "N/A"), CODES)
+    assert numbers.code.tolist() == [0, 1, 2, 2, 2, -1, -1]
+    assert numbers.is_text.tolist() == [False] * 6 + [True]
+    assert np.isnan(numbers.value).tolist() == [True] * 5 + [False, True]
+
+
+def test_a_code_may_be_spelt_like_a_number_that_is_none() -> None:
+    numbers = to_numbers(text("nan", "inf", "."), ["nan", "."])
+    assert numbers.code.tolist() == [1, -1, 2]
+    assert numbers.is_not_finite.tolist() == [False, True, False]
+
+
+def test_an_empty_field_is_always_missing() -> None:
+    assert missing_codes(["NA", "NA", "x"]) == ["", "NA", "x"]
+    assert to_numbers(text(""), ["NA"]).code.tolist() == [0]
+
+
+@pytest.mark.parametrize(
+    ("written", "value"),
+    [("1,234", 1234.0), ("12,345,678.5", 12345678.5), ("-1,000.", -1000.0), ("+1,000", 1000.0)],
+)
+def test_thousands_separators_where_they_may_be(written: str, value: float) -> None:
+    numbers = to_numbers(text(written, "5"), CODES, thousands=True)
+    assert numbers.value.tolist() == [value, 5.0]
+    assert numbers.had_thousands.tolist() == [True, False]
+    assert to_numbers(text(written), CODES).is_text.tolist() == [True]
+
+
+@pytest.mark.parametrize("written", ["0,123", "1,23", "1234,567", ",123", "1,234,56"])
+def test_commas_that_part_no_thousands(written: str) -> None:
+    assert to_numbers(text(written), CODES, thousands=True).is_text.tolist() == [True]
+
+
+@settings(max_examples=300, deadline=None)
+@given(st.lists(st.text("0123456789.,+-eEinfa ", max_size=8), min_size=1, max_size=20))
+def test_numbers_agree_with_a_slow_loop(written: list[str]) -> None:
+    numbers = to_numbers(text(*written), CODES, thousands=True)
+    for position, each in enumerate(written):
+        bare = each
+        if re.fullmatch(r"[+-]?[1-9]\d{0,2}(,\d{3})+(\.\d*)?", each):
+            bare = each.replace(",", "")
+        try:
+            expected = math.nan if bare != bare.strip() else float(bare)
+            known = bare == bare.strip()
+        except ValueError:
+            expected, known = math.nan, False
+        finite = known and math.isfinite(expected)
+        is_code = each == "" or expected == -99
+        assert (numbers.code[position] >= 0) == is_code
+        assert numbers.is_text[position] == (not known and not is_code)
+        assert numbers.is_not_finite[position] == (known and not finite)
+        wanted = expected if finite and not is_code else math.nan
+        np.testing.assert_equal(numbers.value[position], wanted)
+
+
+def test_percent_and_decimal() -> None:
+    assert as_decimal(np.array([-100.0, 0.0, 250.0]), "percent").tolist() == [-1.0, 0.0, 2.5]
+    assert as_decimal(np.array([-1.0, 0.5]), "decimal").tolist() == [-1.0, 0.5]
+
+
+def test_codes_in_text_columns_are_blanked() -> None:
+    assert without_codes(text("NA", "banks", ""), CODES).tolist() == ["", "banks", ""]
+
+
+def test_share_with_decimal_comma() -> None:
+    assert share_with_decimal_comma(text("0,015", "-,5", "1", "", "a,b")) == 0.5
+    assert share_with_decimal_comma(text("", "")) == 0.0
+
+
+def ends(dates: pd.Series) -> list[str]:
+    return ["" if pd.isna(d) else d.strftime("%Y-%m-%d") for d in dates]
+
+
+@pytest.mark.parametrize(
+    ("form", "written", "expected"),
+    [
+        ("%Y-%m-%d", "2000-02-03", "2000-02-29"),
+        ("%Y-%m-%d", "1999-12-31", "1999-12-31"),
+        ("%Y-%m-%d", "2000-02-30", ""),
+        ("%Y-%m-%d", "2000-13-01", ""),
+        ("%Y-%m-%d", "2000-01", ""),
+        ("%Y-%m-%d", "2000-01-31 09:00", ""),
+        ("%Y-%m-%d", "", ""),
+        ("%Y-%m-%d", "1799-12-31", ""),
+        ("%Y-%m-%d", "1800-01-01", "1800-01-31"),
+        ("%Y-%m-%d", "2200-12-01", "2200-12-31"),
+        ("%Y-%m-%d", "2201-01-01", ""),
+        ("%Y-%m-%d", "9999-12-31", ""),
+        ("%Y%m%d", "20000131", "2000-01-31"),
+        ("%Y%m%d", "2000131", ""),
+        ("%Y%m%d", "200001", ""),
+        ("%Y%m", "200001", "2000-01-31"),
+        ("%Y%m", "20001", ""),
+        ("%Y%m", "946598400000000000", ""),
+        ("%d.%m.%Y", "31.01.2000", "2000-01-31"),
+        ("%m/%d/%y", "01/31/99", "1999-01-31"),
+        ("%d %b %Y", "31 Jan 2000", "2000-01-31"),
+    ],
+)
+def test_months(form: str, written: str, expected: str) -> None:
+    assert ends(to_months(text(written), form)) == [expected]
+
+
+@settings(max_examples=50, deadline=None)
+@given(st.lists(st.dates(datetime.date(1700, 1, 1), datetime.date(2300, 12, 31)), min_size=1))
+def test_months_agree_with_the_calendar(days: list[datetime.date]) -> None:
+    found = to_months(text(*[day.isoformat() for day in days]), "%Y-%m-%d")
+    for day, end in zip(days, found, strict=True):
+        if 1800 <= day.year <= 2200:
+            following = datetime.date(day.year + day.month // 12, day.month % 12 + 1, 1)
+            assert end == pd.Timestamp(following) - pd.Timedelta(days=1)
+        else:
+            assert pd.isna(end)
+
+
+@pytest.mark.parametrize(
+    ("form", "said"),
+    [
+        ("%Q-%m", "'%Q-%m' is no format for dates: %Q is not known"),
+        ("%Y-%m-%", "'%Y-%m-%' is no format for dates: % is not known"),
+        ("%Y-%m-%d %z", "'%Y-%m-%d %z' is no format for dates: %z is not known"),
+        ("%Y-%m-%Y", "'%Y-%m-%Y' is no format for dates: %Y stands twice"),
+        ("%d/%m", "'%d/%m' gives no year"),
+        ("%Y", "'%Y' gives no month"),
+    ],
+)
+def test_formats_that_give_no_month(form: str, said: str) -> None:
+    with pytest.raises(KnownProblem) as caught:
+        check_date_format(examples.reading("raw/r.csv", {}, dates=form))
+    assert str(caught.value) == (
+        f"The raw data cannot be used; nothing was written.\n"
+        f"  raw/r.csv, dates: {said}\n    → as in %Y-%m-%d"
+    )
+
+
+@pytest.mark.parametrize(
+    "form", ["%Y-%m", "%Y%m%d", "%d %b %y", "%Y-%j", "%Y-%m-%d %H:%M:%S", "%%%Y%m"]
+)
+def test_formats_that_do(form: str) -> None:
+    check_date_format(examples.reading("raw/r.csv", {}, dates=form))
+    to_months(text("x"), form)

@@ -1,0 +1,17 @@
+"""Stops: what is raised when a raw file as a whole cannot be used."""
+
+from __future__ import annotations
+
+from lineproof.problems import KnownProblem, Problem
+
+UNUSABLE = "The raw data cannot be used; nothing was written."
+
+
+def stop(where: str, found: str, change: str) -> KnownProblem:
+    """The error to raise for one fault: where it is, what was found, what to change."""
+    return KnownProblem(UNUSABLE, [Problem(where, found, change)])
+
+
+def counted(n: int, noun: str) -> str:
+    """A number with its noun, as in `1 month` or `1,200 months`."""
+    return f"{n:,} {noun}" + ("" if n == 1 else "s")
