@@ -180,3 +180,11 @@ CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "subperiod": SUBPERIOD,
     "estimates": ESTIMATES,
 }
+
+
+def check_batch(name: str, batch: pd.DataFrame, before: pd.DataFrame | None) -> None:
+    """Check a piece of a table larger than memory against its contract, and that it goes on from the row before it."""
+    contract = CONTRACTS[name]
+    contract.validate(batch)
+    if before is not None and len(batch):
+        contract.validate(pd.concat([before, batch.iloc[:1]], ignore_index=True))

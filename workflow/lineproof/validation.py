@@ -2,193 +2,201 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping
 from typing import Any
 
 import numpy as np
 import pandas as pd
 
-from lineproof.calendar import month_name
+from lineproof.intake.chunk import Chunk
 from lineproof.intake.delisting import leaving_rows, with_final_returns
+from lineproof.intake.factor import Factor, Series, join
 from lineproof.intake.faults import FAULTS
-from lineproof.intake.reading import raw_rows, read_text
-from lineproof.intake.returns import Cleaned, clean_returns
-from lineproof.intake.screens import apply_screens
+from lineproof.intake.first_pass import Taken, take_rows
+from lineproof.intake.flags import flag_rows
+from lineproof.intake.panel import panel_frame
+from lineproof.intake.reading import open_files
+from lineproof.intake.screens import Screens
+from lineproof.intake.second_pass import Rules, Tracked, chunks
 from lineproof.intake.series import check_riskless, read_series, riskless_return
-from lineproof.intake.stopping import counted
+from lineproof.intake.stopping import counted, stop
+from lineproof.intake.values import check_date_format, missing_codes
+from lineproof.periods import Months
 from lineproof.problems import KnownProblem, Problem
+from lineproof.store import Scratch
 
-_PANEL_COLUMNS = [
-    "security",
-    "date",
-    "total_return",
-    "excess_return",
-    "size",
-    "price",
-    "eligible",
-    "leaves",
-]
+_OURS = {"line", "code", "return_", "total_return", "excess_return", "eligible", "leaves"}
 _NOTHING_LEFT = "Nothing is left to study."
 
 
-@dataclass(frozen=True)
-class Validated:
-    """What validation writes; see `frames` for the columns. `intake` holds the counts."""
-
-    panel: pd.DataFrame
-    market: pd.DataFrame
-    set_aside: pd.DataFrame
-    intake: dict[str, Any]
-
-
-@dataclass(frozen=True)
-class _Factor:
-    """`months`: date, market_excess, riskless in the months both series have; and the files that bound them."""
-
-    months: pd.DataFrame
-    begins: str
-    ends: str
-
-
 def validate_returns(
-    returns_file: str,
-    market_file: str,
-    riskless_file: str,
+    files: Mapping[str, list[str]],
+    scratch: Scratch,
     *,
     returns: dict[str, Any],
     market: dict[str, Any],
     market_is: str,
     riskless: dict[str, Any],
     riskless_quoted: str,
-    screens: list[dict[str, Any]],
-    missing_final_return: float | None,
-    same_month_rows: str,
-) -> Validated:
-    """Read and check the three raw files.
+    rules: dict[str, Any],
+) -> Intake:
+    """Read the raw files, by name in `files`: returns, market, riskless. Every row of the returns is read once.
 
-    Raises KnownProblem when a file cannot be used at all. Otherwise rows read = kept + set aside + exact duplicates.
+    `scratch` holds what memory does not. Raises KnownProblem when a file cannot be used at all.
     """
-    rate = read_series(riskless_file, riskless, "rate")
+    _check_names(returns)
+    check_date_format(returns)
+    rate = read_series(files["riskless"][0], riskless, "rate")
     rate["riskless"] = riskless_return(rate["rate"], riskless_quoted)
     check_riskless(rate, riskless, riskless_quoted)
-    series = read_series(market_file, market, "return")
-    factor = _common_months(series, rate, market_is, market["label"], riskless["label"])
-    months = factor.months
-    table = read_text(returns_file, returns)
-    cleaned = clean_returns(table, returns, same_month_rows, months["date"])
-    _check_conservation(cleaned)
-    if cleaned.rows.empty:
-        raise _nothing_kept(cleaned, returns["label"])
-    panel, screened = _panel(cleaned, months, screens, missing_final_return)
-    used = months[months["date"].between(panel["date"].min(), panel["date"].max())]
-    return Validated(
-        panel=panel,
-        market=used.reset_index(drop=True),
-        set_aside=_with_raw_text(cleaned.set_aside, returns_file, returns["label"]),
-        intake={
-            **_counts(cleaned, panel, screened, returns["label"]),
-            "span": _span(cleaned, factor),
-        },
+    index = read_series(files["market"][0], market, "return")
+    opened = open_files(files["returns"], returns)
+    taken = take_rows(opened, returns, scratch, lambda day, decimal: None)
+    periods = Months()
+    number = periods.number
+    factor = join(
+        Series(market["label"], number(_days(index)), index["return"].to_numpy()),
+        Series(riskless["label"], number(_days(rate)), rate["riskless"].to_numpy()),
+        market_is,
+        periods,
+        tuple(number(taken.days[0][[0, -1]])) if taken.n_dated else (0, 0),
     )
+    return Intake(opened, returns, taken, factor, rules)
 
 
-def _common_months(
-    market: pd.DataFrame, rate: pd.DataFrame, market_is: str, market_label: str, rate_label: str
-) -> _Factor:
-    """The months that both series have; neither has gaps, so they are one stretch."""
-    both = market.merge(rate, on="date")
-    if both.empty:
-        found = f"it has no month in common with {rate_label}"
-        raise KnownProblem(_NOTHING_LEFT, [Problem(market_label, found, "compare the dates")])
-    both["market_excess"] = both["return"] - (both["riskless"] if market_is == "total" else 0.0)
-    dates = {market_label: market["date"], rate_label: rate["date"]}
-    first, last = both["date"].min(), both["date"].max()
-    return _Factor(
-        months=both[["date", "market_excess", "riskless"]],
-        begins=" and ".join(label for label, date in dates.items() if date.min() == first),
-        ends=" and ".join(label for label, date in dates.items() if date.max() == last),
-    )
+def _days(series: pd.DataFrame) -> np.ndarray:
+    return series["date"].to_numpy().astype("datetime64[D]")
 
 
-def _check_conservation(cleaned: Cleaned) -> None:
-    n_kept, n_aside = len(cleaned.rows), len(cleaned.set_aside)
-    if cleaned.n_read != n_kept + n_aside + cleaned.n_duplicates:
-        raise AssertionError(
-            f"rows were lost: {cleaned.n_read} read, {n_kept} kept, {n_aside} set aside, "
-            f"{cleaned.n_duplicates} exact duplicates"
+def _check_names(reading: dict[str, Any]) -> None:
+    taken = sorted(_OURS & set(reading["columns"]))
+    if taken:
+        found = f"our own tables have a column {taken[0]!r} already"
+        raise stop(f"{reading['label']}, columns.{taken[0]}", found, "give it another name")
+
+
+class Intake:
+    """Raw rows on their way into the study: ask for the tables first, then for what was counted on the way."""
+
+    def __init__(
+        self, files: list, reading: dict[str, Any], taken: Taken, factor: Factor, rules: dict[str, Any]
+    ) -> None:
+        self._files, self._reading, self._taken, self._factor = files, reading, taken, factor
+        self._rules = rules
+        self._tracked = Tracked(np.zeros(len(files), np.int64), np.zeros(len(files), np.int64))
+        self._screens = Screens(rules["screens"], rules["stale_run"], factor.span.periods.noun)
+        self._first, self._last = np.iinfo(np.int64).max, np.iinfo(np.int64).min
+        self._n_rows = self._n_securities = self._n_missing = self._n_screened = 0
+        self._any_leaves = False
+
+    def tables(self) -> Iterator[dict[str, pd.DataFrame]]:
+        """Pieces of the panel, some securities at a time.
+
+        Raises KnownProblem when the raw data as a whole are not what the study file says of them, or nothing is left.
+        """
+        rules = self._rules
+        how = Rules(
+            same_month_rows=rules["same_month_rows"],
+            return_after_hole=rules["return_after_hole"],
+            jumps=rules["jump_and_reversal"],
+            from_price="return" not in self._reading["columns"],
         )
+        for chunk in chunks(self._taken, self._factor.span, how, self._tracked):
+            yield {"panel": self._piece(chunk)}
+        self._check_conservation()
+        if self._n_rows == 0:
+            raise self._nothing_kept()
+        self._taken.aside.count(self._files, self._taken.tally)
+        self._taken.tally.add(26, 0 if self._any_leaves else 1)
 
-
-def _nothing_kept(cleaned: Cleaned, label: str) -> KnownProblem:
-    """The error when every row is set aside: each fault with its first row."""
-    problems = []
-    for number, part in cleaned.set_aside.groupby("fault"):
-        line, reason = part[["line", "reason"]].iloc[0]
-        found = f"{counted(len(part), 'row')} with {FAULTS[int(number)].label}"
-        problems.append(Problem(label, found, f"{cleaned.place} {line} has {reason}"))
-    return KnownProblem(f"{_NOTHING_LEFT} Every row is set aside.", problems)
-
-
-def _panel(
-    cleaned: Cleaned,
-    months: pd.DataFrame,
-    screens: list[dict[str, Any]],
-    missing_final_return: float | None,
-) -> tuple[pd.DataFrame, list[dict[str, Any]]]:
-    """The panel, and what each screen took."""
-    rows, tally = cleaned.rows, cleaned.tally
-    leaves = leaving_rows(rows, cleaned.last_seen)
-    tally.add(26, 0 if leaves.any() else 1)
-    total = with_final_returns(rows, leaves, missing_final_return, tally)
-    eligible, screened = apply_screens(rows, screens)
-    riskless = months.set_index("date")["riskless"]
-    panel = rows.assign(
-        total_return=total,
-        excess_return=total - rows["date"].map(riskless),
-        eligible=eligible,
-        leaves=leaves,
-    )
-    further = [c for c in rows if c not in {*_PANEL_COLUMNS, "return_", "final_return"}]
-    return panel[[*_PANEL_COLUMNS, *further]], screened
-
-
-def _with_raw_text(aside: pd.DataFrame, file: str, label: str) -> pd.DataFrame:
-    raw = pd.Series(raw_rows(file, aside["line"].to_numpy()), index=aside.index, dtype=str)
-    table = aside.assign(raw=raw, file=pd.Series(label, index=aside.index, dtype=str))
-    return table[["file", "line", "fault", "reason", "raw"]]
-
-
-def _span(cleaned: Cleaned, factor: _Factor) -> list[str]:
-    """What is to be said when the returns reach beyond the market or the riskless rate."""
-    first, last = (month_name(date) for date in factor.months["date"].iloc[[0, -1]])
-    said = []
-    if cleaned.n_before:
-        said.append(
-            f"{counted(cleaned.n_before, 'row')} of returns dated before {first}, where {factor.begins} begins: "
-            "the study begins there"
+    def _piece(self, chunk: Chunk) -> pd.DataFrame:
+        """The panel's rows of one chunk; counts what the report shows."""
+        taken, rules, span = self._taken, self._rules, self._factor.span
+        flag_rows(chunk, taken.tally, missing_codes(self._reading["missing"]), span.periods)
+        leaves = leaving_rows(chunk, taken.last_seen(chunk.names), self._last_day())
+        chunk.values["total_return"] = with_final_returns(
+            chunk, leaves, rules["missing_final_return"], rules["final_return_by_reason"], taken.tally
         )
-    if cleaned.n_after:
-        said.append(
-            f"{counted(cleaned.n_after, 'row')} of returns dated after {last}, where {factor.ends} ends: "
-            "the study ends there"
-        )
-    return said
+        excess = chunk.values["total_return"] - self._factor.riskless[chunk.period - span.first]
+        eligible = self._screens.eligible(chunk)
+        self._count(chunk, eligible, leaves)
+        return panel_frame(chunk, span.periods, excess, eligible, leaves)
 
+    def _last_day(self) -> np.datetime64:
+        """The first day of the last period in which anything was delivered within the span of the study."""
+        periods, span = self._factor.span.periods, self._factor.span
+        numbers = periods.number(self._taken.days[0])
+        within = numbers[(numbers >= span.first) & (numbers <= span.last)]
+        return periods.begins(int(within.max())) if len(within) else np.datetime64("NaT")
 
-def _counts(
-    cleaned: Cleaned, panel: pd.DataFrame, screened: list[dict], label: str
-) -> dict[str, Any]:
-    return {
-        "file": label,
-        "first": month_name(panel["date"].min()),
-        "last": month_name(panel["date"].max()),
-        "rows_read": cleaned.n_read,
-        "rows_kept": len(panel),
-        "rows_set_aside": len(cleaned.set_aside),
-        "exact_duplicates": cleaned.n_duplicates,
-        "rows_screened": int((~panel["eligible"]).sum()),
-        "n_securities": int(panel["security"].nunique()),
-        "n_missing_returns": int(np.isnan(panel["total_return"]).sum()),
-        "faults": cleaned.tally.report(),
-        "screens": screened,
-    }
+    def _count(self, chunk: Chunk, eligible: np.ndarray, leaves: np.ndarray) -> None:
+        self._first = min(self._first, int(chunk.period.min()))
+        self._last = max(self._last, int(chunk.period.max()))
+        self._n_rows += len(chunk)
+        self._n_securities += len(chunk.names)
+        self._n_missing += int(np.isnan(chunk.values["total_return"]).sum())
+        self._n_screened += int((~eligible).sum())
+        self._any_leaves |= bool(leaves.any())
+
+    def market(self) -> pd.DataFrame:
+        """Date, market_excess and riskless of every period of the panel."""
+        return self._factor.table(None, self._first, self._last)
+
+    def set_aside(self) -> Iterator[dict[str, pd.DataFrame]]:
+        """Pieces of the table of rows set aside, by file and line."""
+        for table in self._taken.aside.tables(self._files):
+            yield {"set_aside": table}
+
+    def counts(self) -> dict[str, Any]:
+        """What came in and what became of it: see `intake.record`."""
+        taken, tracked = self._taken, self._tracked
+        aside = taken.aside.counts(len(self._files))
+        name = self._factor.span.periods.name
+        return {
+            "file": self._reading["label"],
+            "first": name(self._first),
+            "last": name(self._last),
+            "rows_read": sum(taken.n_read),
+            "rows_kept": int(tracked.n_kept.sum()),
+            "rows_set_aside": sum(aside),
+            "exact_duplicates": int(tracked.n_duplicates.sum()),
+            "rows_screened": self._n_screened,
+            "n_securities": self._n_securities,
+            "n_missing_returns": self._n_missing,
+            "faults": taken.tally.report(),
+            "screens": self._screens.report(),
+            "span": self._span(),
+        }
+
+    def _check_conservation(self) -> None:
+        aside = self._taken.aside.counts(len(self._files))
+        for at, n_read in enumerate(self._taken.n_read):
+            kept, exact = int(self._tracked.n_kept[at]), int(self._tracked.n_duplicates[at])
+            if n_read != kept + aside[at] + exact:
+                raise AssertionError(
+                    f"rows of {self._files[at].label} were lost: {n_read} read, {kept} kept, {aside[at]} set aside, "
+                    f"{exact} exact duplicates"
+                )
+
+    def _nothing_kept(self) -> KnownProblem:
+        """The error when every row is set aside: each fault with its first row."""
+        problems = []
+        for number, n, place, reason in self._taken.aside.first_of_each(self._files):
+            found = f"{counted(n, 'row')} with {FAULTS[number].label}"
+            problems.append(Problem(self._reading["label"], found, f"{place} has {reason}"))
+        return KnownProblem(f"{_NOTHING_LEFT} Every row is set aside.", problems)
+
+    def _span(self) -> list[str]:
+        """What is to be said when the returns reach beyond the market or the riskless rate."""
+        span, factor, said = self._factor.span, self._factor, []
+        if n := self._tracked.n_before:
+            said.append(
+                f"{counted(n, 'row')} of returns dated before {span.periods.name(span.first)}, where {factor.begins} "
+                "begins: the study begins there"
+            )
+        if n := self._tracked.n_after:
+            said.append(
+                f"{counted(n, 'row')} of returns dated after {span.periods.name(span.last)}, where {factor.ends} ends: "
+                "the study ends there"
+            )
+        return said

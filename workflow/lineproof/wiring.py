@@ -90,9 +90,15 @@ class Wiring:
             "market_is": study.market_is,
             "riskless": study.riskless.reading(),
             "riskless_quoted": study.riskless_quoted,
-            "screens": list(study.screens),
-            "missing_final_return": study.missing_final_return,
-            "same_month_rows": study.same_month_rows,
+            "rules": {
+                "screens": list(study.screens),
+                "missing_final_return": study.missing_final_return,
+                "final_return_by_reason": {},
+                "same_month_rows": study.same_month_rows,
+                "stale_run": None,
+                "return_after_hole": "keep",
+                "jump_and_reversal": "flag",
+            },
         }
 
     def _sort(self, name: str) -> dict[str, Any]:

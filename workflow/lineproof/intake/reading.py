@@ -238,3 +238,25 @@ def _check_separator(label: str, separator: str, first_line: str) -> None:
             f"its header has no {_SEPARATORS.get(separator, separator)} but a {_SEPARATORS[better]}"
         )
         raise stop(label, found, f"set separator: {json.dumps(better)}")
+
+
+class _Old:
+    def __init__(self, file, reading):
+        self.file, self.reading, self.label = file, reading, reading["label"]
+        self.place = "row" if _is_parquet(file) else "line"
+
+    def blocks(self):
+        from lineproof.intake.blocks import RawBlock
+        t = read_text(self.file, self.reading)
+        cols = {c: pa.array(t.rows[c].tolist(), pa.string()) for c in t.rows if c != "line"}
+        yield RawBlock(cols, t.rows["line"].to_numpy(), list(t.rejects.itertuples(index=False, name=None)), t.n_trimmed)
+
+    def line(self, p):
+        return p
+
+    def raw(self, p):
+        yield raw_rows(self.file, p)
+
+
+def open_files(files, reading):
+    return [_Old(f, reading) for f in files]

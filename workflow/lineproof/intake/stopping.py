@@ -7,9 +7,9 @@ from lineproof.problems import KnownProblem, Problem
 UNUSABLE = "The raw data cannot be used; nothing was written."
 
 
-def stop(where: str, found: str, change: str) -> KnownProblem:
+def stop(where: str, found: str, change: str, headline: str = UNUSABLE) -> KnownProblem:
     """The error to raise for one fault: where it is, what was found, what to change."""
-    return KnownProblem(UNUSABLE, [Problem(where, found, change)])
+    return KnownProblem(headline, [Problem(where, found, change)])
 
 
 def counted(n: int, noun: str) -> str:
