@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from functools import cached_property
 from typing import Protocol
 
 import numpy as np
@@ -56,10 +57,18 @@ class TradingDays:
     days: np.ndarray
     noun: str = field(default="day")
 
+    @cached_property
+    def _numbers(self) -> np.ndarray:
+        """The number of each calendar day from the first to the last, and `ABSENT` at the end for all others."""
+        since = (self.days - self.days[0]).astype(np.int64)
+        numbers = np.full(since[-1] + 2, ABSENT, np.int64)
+        numbers[since] = np.arange(len(self.days))
+        return numbers
+
     def number(self, days: np.ndarray) -> np.ndarray:
-        at = np.searchsorted(self.days, days)
-        at[at == len(self.days)] = 0
-        return np.where(self.days[at] == days, at, ABSENT)
+        since = (days - self.days[0]).astype(np.int64)
+        others = len(self._numbers) - 1
+        return self._numbers[np.where((since >= 0) & (since < others), since, others)]
 
     def date(self, numbers: np.ndarray) -> np.ndarray:
         return self.days[numbers]

@@ -10,6 +10,7 @@ import os
 import shutil
 import tempfile
 from collections.abc import Collection, Iterable, Mapping
+from concurrent.futures import Future, ThreadPoolExecutor
 from contextlib import ExitStack
 from pathlib import Path
 from types import TracebackType
@@ -46,8 +47,17 @@ def write_table(frame: pd.DataFrame, path: str | os.PathLike, contract: str | No
         frame = CONTRACTS[contract].validate(frame)
     table = pa.Table.from_pandas(frame, preserve_index=False)
     sink = pa.BufferOutputStream()
-    pq.write_table(table, sink, compression="zstd")
+    pq.write_table(table, sink, row_group_size=_ROW_GROUP, **_encoding(table.schema))
     write_bytes(sink.getvalue(), path)
+
+
+def _encoding(schema: pa.Schema) -> dict[str, Any]:
+    """Numbers seldom repeat: looking for repetitions costs more than writing them, split by byte, does."""
+    import pyarrow as pa
+
+    floats = [field.name for field in schema if pa.types.is_floating(field.type)]
+    others = [field.name for field in schema if field.name not in floats]
+    return {"compression": "zstd", "use_dictionary": others, "use_byte_stream_split": floats}
 
 
 def write_together(
@@ -76,6 +86,8 @@ class _Writer:
         self._held: pa.Table | None = None
         self._last: pd.DataFrame | None = None
         self._writer: Any = None
+        self._writing = ThreadPoolExecutor(1)  # one at a time, so in order
+        self._pending: Future | None = None
 
     def __enter__(self) -> _Writer:
         self._path.parent.mkdir(parents=True, exist_ok=True)
@@ -84,6 +96,7 @@ class _Writer:
     def __exit__(
         self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
     ) -> None:
+        self._writing.shutdown()
         if self._writer is not None:
             self._writer.close()
         self._beside.unlink(missing_ok=True)
@@ -108,16 +121,26 @@ class _Writer:
             raise ValueError(f"no rows for {self._path}, not even an empty batch")
         if len(self._held) or self._writer is None:
             self._write(self._held)
+        self._wait()
         self._writer.close()
         self._writer = None
         self._beside.replace(self._path)
 
     def _write(self, table: pa.Table) -> None:
+        """Write while the next rows are made; an error shows with the next write."""
         import pyarrow.parquet as pq
 
+        self._wait()
         if self._writer is None:
-            self._writer = pq.ParquetWriter(self._beside, table.schema, compression="zstd")
-        self._writer.write_table(table, row_group_size=_ROW_GROUP)
+            self._writer = pq.ParquetWriter(self._beside, table.schema, **_encoding(table.schema))
+        self._pending = self._writing.submit(
+            self._writer.write_table, table, row_group_size=_ROW_GROUP
+        )
+
+    def _wait(self) -> None:
+        if self._pending is not None:
+            self._pending.result()
+            self._pending = None
 
 
 class Scratch:

@@ -38,6 +38,8 @@ def with_final_returns(
     `missing_final_return`; None leaves the return as it is. All returns decimal.
     """
     own = chunk.values["return_"]
+    if "final_return" not in chunk.values and not leaves.any():
+        return own
     final = chunk.values.get("final_return", np.full(len(chunk), np.nan))
     given = ~np.isnan(final)
     unused = given & np.append(chunk.follows[1:], False)

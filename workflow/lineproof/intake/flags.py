@@ -37,6 +37,8 @@ def jumps_that_reverse(chunk: Chunk) -> np.ndarray:
     A return over 300 % and then (1 + r₁)(1 + r₂) − 1 below 50 % (Ince and Porter 2006).
     """
     now = chunk.values["return_"]
+    if not (now > _JUMP).any():
+        return np.zeros(len(now), bool)
     before = np.where(chunk.follows, np.roll(now, 1), np.nan)
     return (before > _JUMP) & ((1 + before) * (1 + now) - 1 < _AFTER_REVERSAL)
 

@@ -98,7 +98,8 @@ def _in_order(
 ) -> np.ndarray:
     """Indices of the sound rows by security and period, ties in the order of the raw files."""
     rows = np.flatnonzero(sound)
-    if len(rows) == 0:
+    step, on = np.diff(security[rows]), np.diff(period[rows])
+    if ((step > 0) | ((step == 0) & (on >= 0))).all():
         return rows
     span = int(period[rows].max() - period[rows].min()) + 1
     by_period, _ = counting_order(period[rows] - period[rows].min(), span)
@@ -175,6 +176,8 @@ def _chunk(
 ) -> Chunk:
     n_each = np.bincount(security[rows], minlength=len(names))
     held = n_each > 0
+    if len(rows) == len(security) and (rows == np.arange(len(rows))).all():
+        rows = slice(None)  # nothing to copy
     return Chunk(
         names=np.array(names, object)[held],
         start=np.append(0, np.cumsum(n_each[held])),
