@@ -18,7 +18,6 @@ from lineproof.store import Scratch
 from lineproof.validation import validate_returns
 
 
-
 @dataclass(frozen=True)
 class Validated:
     """What validation writes, whole; see `frames` for the columns. `intake` holds the counts."""

@@ -69,7 +69,9 @@ def write_together(
     left behind.
     """
     with ExitStack() as stack:
-        writers = {name: stack.enter_context(_Writer(name, Path(path))) for name, path in paths.items()}
+        writers = {
+            name: stack.enter_context(_Writer(name, Path(path))) for name, path in paths.items()
+        }
         for batch in batches:
             for name, frame in batch.items():
                 writers[name].add(frame)
@@ -94,7 +96,10 @@ class _Writer:
         return self
 
     def __exit__(
-        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+        self,
+        kind: type[BaseException] | None,
+        error: BaseException | None,
+        trace: TracebackType | None,
     ) -> None:
         self._writing.shutdown()
         if self._writer is not None:
@@ -159,7 +164,10 @@ class Scratch:
         return self
 
     def __exit__(
-        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+        self,
+        kind: type[BaseException] | None,
+        error: BaseException | None,
+        trace: TracebackType | None,
     ) -> None:
         self._arrays.clear()
         if self._folder is not None:

@@ -79,7 +79,12 @@ class Intake:
     """Raw rows on their way into the study: ask for the tables first, then for what was counted on the way."""
 
     def __init__(
-        self, files: list, reading: dict[str, Any], taken: Taken, factor: Factor, rules: dict[str, Any]
+        self,
+        files: list,
+        reading: dict[str, Any],
+        taken: Taken,
+        factor: Factor,
+        rules: dict[str, Any],
     ) -> None:
         self._files, self._reading, self._taken, self._factor = files, reading, taken, factor
         self._rules = rules
@@ -115,7 +120,11 @@ class Intake:
         flag_rows(chunk, taken.tally, missing_codes(self._reading["missing"]), span.periods)
         leaves = leaving_rows(chunk, taken.last_seen(chunk.names), self._last_day())
         chunk.values["total_return"] = with_final_returns(
-            chunk, leaves, rules["missing_final_return"], rules["final_return_by_reason"], taken.tally
+            chunk,
+            leaves,
+            rules["missing_final_return"],
+            rules["final_return_by_reason"],
+            taken.tally,
         )
         excess = chunk.values["total_return"] - self._factor.riskless[chunk.period - span.first]
         eligible = self._screens.eligible(chunk)

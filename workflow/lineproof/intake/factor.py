@@ -46,11 +46,17 @@ class Factor:
         assert excess is not None
         dates = self.span.periods.date(numbers).astype("datetime64[ms]")
         at = numbers - self.span.first
-        return pd.DataFrame({"date": dates, "market_excess": excess[at], "riskless": self.riskless[at]})
+        return pd.DataFrame(
+            {"date": dates, "market_excess": excess[at], "riskless": self.riskless[at]}
+        )
 
 
 def join(
-    market: Series | None, riskless: Series | None, market_is: str, periods: Periods, panel: tuple[int, int]
+    market: Series | None,
+    riskless: Series | None,
+    market_is: str,
+    periods: Periods,
+    panel: tuple[int, int],
 ) -> Factor:
     """The periods that both series have; each has no gaps between its first and its last, so they are one stretch.
 
@@ -63,7 +69,9 @@ def join(
     last = min((int(given.number[-1]) for given in series), default=panel[1])
     if first > last:
         found = f"it has no {periods.noun} in common with {series[1].label}"
-        raise stop(series[0].label, found, "compare the dates", headline="Nothing is left to study.")
+        raise stop(
+            series[0].label, found, "compare the dates", headline="Nothing is left to study."
+        )
     rate = _within(riskless, first, last) if riskless else np.full(last - first + 1, np.nan)
     excess = None
     if market is not None:

@@ -189,7 +189,9 @@ def _written(block: RawBlock, name: str, before: str = "") -> Callable[[np.ndarr
     """What the file has in a column of some rows, by index, in quotes."""
 
     def said(rows: np.ndarray) -> list[str]:
-        return [f"{before}{value!r}" for value in block.columns[name].take(pa.array(rows)).to_pylist()]
+        return [
+            f"{before}{value!r}" for value in block.columns[name].take(pa.array(rows)).to_pylist()
+        ]
 
     return said
 
@@ -198,7 +200,9 @@ def _texts(column: pa.Array, missing: list[str], known: Names) -> np.ndarray:
     """Codes into the distinct texts of a further column; a code for missing is the empty text."""
     coded = column.dictionary_encode()
     texts = [as_digits(value) for value in coded.dictionary.to_pylist()]
-    codes = known.codes(["" if text in set(missing_codes(missing)) else text for text in [*texts, ""]])
+    codes = known.codes(
+        ["" if text in set(missing_codes(missing)) else text for text in [*texts, ""]]
+    )
     return codes[coded.indices.fill_null(len(texts)).to_numpy(zero_copy_only=False)]
 
 

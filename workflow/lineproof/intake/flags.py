@@ -81,6 +81,10 @@ def _flag_stale(chunk: Chunk, tally: Tally, periods: Periods) -> None:
 def _flag_sizes(chunk: Chunk, tally: Tally) -> None:
     """Count sizes that are zero, negative or missing."""
     size = chunk.values["size"]
-    kinds = {"zero": (size == 0).sum(), "negative": (size < 0).sum(), "missing": np.isnan(size).sum()}
+    kinds = {
+        "zero": (size == 0).sum(),
+        "negative": (size < 0).sum(),
+        "missing": np.isnan(size).sum(),
+    }
     bad = ~(size > 0)
     tally.add(24, bad.sum(), first_rows(chunk, bad), kinds)

@@ -247,9 +247,15 @@ class _Old:
 
     def blocks(self):
         from lineproof.intake.blocks import RawBlock
+
         t = read_text(self.file, self.reading)
         cols = {c: pa.array(t.rows[c].tolist(), pa.string()) for c in t.rows if c != "line"}
-        yield RawBlock(cols, t.rows["line"].to_numpy(), list(t.rejects.itertuples(index=False, name=None)), t.n_trimmed)
+        yield RawBlock(
+            cols,
+            t.rows["line"].to_numpy(),
+            list(t.rejects.itertuples(index=False, name=None)),
+            t.n_trimmed,
+        )
 
     def line(self, p):
         return p

@@ -67,7 +67,9 @@ class SortedRuns:
         """
         names = sorted(set().union(*(ordered for ordered, _ in self._runs)))
         place = {name: at for at, name in enumerate(names)}
-        placed = [np.array([place[name] for name in ordered], np.int64) for ordered, _ in self._runs]
+        placed = [
+            np.array([place[name] for name in ordered], np.int64) for ordered, _ in self._runs
+        ]
         n_rows = np.zeros(len(names), np.int64)
         for at, (_, start) in zip(placed, self._runs, strict=True):
             n_rows[at] += np.diff(start)

@@ -36,7 +36,9 @@ def passes(chunk: Chunk, screen: dict[str, Any]) -> np.ndarray:
         raise stop("intake.screens", found, "remove it, and cut the study with subperiods")
     if column in chunk.values:
         number = chunk.values[column]
-        listed = {word: np.isin(number, _numbers(screen[word])) for word in _LISTS if word in screen}
+        listed = {
+            word: np.isin(number, _numbers(screen[word])) for word in _LISTS if word in screen
+        }
         return _met(~np.isnan(number), number, listed, screen)
     codes, texts = (
         (chunk.owner, chunk.names.tolist()) if column == "security" else chunk.texts[column]

@@ -60,14 +60,18 @@ def chunks(taken: Taken, span: Span, rules: Rules, tracked: Tracked) -> Iterator
         faults = FirstFault(taken.aside, columns["file"], columns["position"])
         _note_outside(period, columns, span, faults, tracked)
         rows = _in_order(security, period, ~faults.found, len(names))
-        exact = _note_repeated(rows, security, period, columns, rules.same_month_rows, faults, names)
+        exact = _note_repeated(
+            rows, security, period, columns, rules.same_month_rows, faults, names
+        )
         tracked.n_duplicates += np.bincount(columns["file"][exact], minlength=n_files)
         faults.found[exact] = True
         rows = rows[~faults.found[rows]]
         if rules.from_price:
             columns = _with_returns_from_price(rows, security, period, columns)
         if rules.return_after_hole == "set_aside" or rules.jumps == "set_aside":
-            _note_suspect(_chunk(rows, names, security, period, columns, taken), rows, rules, faults)
+            _note_suspect(
+                _chunk(rows, names, security, period, columns, taken), rows, rules, faults
+            )
             rows = rows[~faults.found[rows]]
         tracked.n_kept += np.bincount(columns["file"][rows], minlength=n_files)
         if len(rows) == 0:
@@ -129,7 +133,9 @@ def _note_repeated(
     )
     exact = frame.index[frame.duplicated(keep="last" if keep == "last" else "first")]
     different = frame.drop(exact)
-    losing = different.duplicated(["security", "period"], keep=False if keep == "set_aside" else keep)
+    losing = different.duplicated(
+        ["security", "period"], keep=False if keep == "set_aside" else keep
+    )
     mask = np.zeros(len(security), bool)
     mask[different.index[losing]] = True
     days = columns["day"].astype("datetime64[D]")
