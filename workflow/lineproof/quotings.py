@@ -1,6 +1,6 @@
-"""How a riskless rate may be quoted: one line each.
+"""How a riskless rate may be quoted, and how a market may be built from the panel: one line each.
 
-A function named here takes a rate (decimal, any shape) and the length of its period in years, and gives the period's
+A quoting's function takes a rate (decimal, any shape) and the length of its period in years, and gives the period's
 return.
 """
 
@@ -20,4 +20,9 @@ QUOTINGS: dict[str, Entry] = {
         "lineproof.intake.riskless:discount_91_days",
         "the discount of a bill of 91 days, on a year of 360 days",
     ),
+}
+
+BUILDS: dict[str, str] = {
+    "equal": "the equally weighted mean of all securities",
+    "size": "the mean of all securities, weighted by size at the end of the period before",
 }

@@ -10,6 +10,7 @@ import pandas as pd
 
 from lineproof.intake.riskless import (
     check_riskless,
+    cut_off,
     daily_from_daily,
     daily_from_monthly,
     riskless_return,
@@ -74,7 +75,9 @@ def on_days(rate: RisklessRate, days: np.ndarray) -> pd.DataFrame:
         return pd.DataFrame({"date": within.astype("datetime64[ms]"), "riskless": riskless})
     riskless = daily_from_daily(rate.rates, rate.quoted, within, rate.label)
     quoted_on = rate.rates[np.isin(known, within)]
-    found = pd.DataFrame({"date": quoted_on["date"].to_numpy(), "rate": quoted_on["rate"].to_numpy()})
+    found = pd.DataFrame(
+        {"date": quoted_on["date"].to_numpy(), "rate": quoted_on["rate"].to_numpy()}
+    )
     found["riskless"] = riskless
     check_riskless(found, rate.reading, rate.quoted, "daily")
     return found[["date", "riskless"]]
@@ -86,11 +89,12 @@ def join_factor(
     market_is: str,
     market_label: str,
     riskless_label: str,
+    noun: str = "month",
 ) -> Factor:
     """The periods that both series have: one stretch, as neither has gaps.
 
     `market` has date and return, `riskless` date and riskless, or is None: then `market_is` must be "excess".
-    Raises KnownProblem when they have no period in common.
+    `noun` is what a period is called. Raises KnownProblem when they have none in common.
     """
     if riskless is None:
         if market_is != "excess":
@@ -101,7 +105,7 @@ def join_factor(
         both = market.merge(riskless, on="date")
         dates = {market_label: market["date"], riskless_label: riskless["date"]}
     if both.empty:
-        found = f"it has no period in common with {riskless_label}"
+        found = f"it has no {noun} in common with {riskless_label}"
         raise KnownProblem(_NOTHING_LEFT, [Problem(market_label, found, "compare the dates")])
     both["market_excess"] = both["return"] - (both["riskless"] if market_is == "total" else 0.0)
     first, last = both["date"].min(), both["date"].max()
@@ -110,3 +114,62 @@ def join_factor(
         begins=" and ".join(label for label, date in dates.items() if date.min() == first),
         ends=" and ".join(label for label, date in dates.items() if date.max() == last),
     )
+
+
+def months_of_days(factor: Factor) -> pd.DataFrame:
+    """A factor of trading days compounded to months: date (month end), market_excess, riskless.
+
+    Total returns are compounded, day by day, and the riskless return likewise; the market's excess return of the month
+    is their difference. Without a riskless rate the daily excess returns themselves are compounded. A first or last
+    month of which more than three weekdays are missing is left out. An empty frame where no month is whole.
+    """
+    periods = factor.periods
+    day = periods["date"].to_numpy().astype("datetime64[D]")
+    month = day.astype("datetime64[M]")
+    riskless = periods["riskless"].fillna(0.0)
+    logs = pd.DataFrame(
+        {"total": np.log1p(periods["market_excess"] + riskless), "riskless": np.log1p(riskless)}
+    )
+    with np.errstate(invalid="ignore"):
+        of_month = np.expm1(logs.groupby(month).sum())
+    begun = cut_off(month[0].astype("datetime64[D]"), day[0]) == 0
+    ended = cut_off(day[-1] + 1, (month[-1] + 1).astype("datetime64[D]")) == 0
+    whole = np.ones(len(of_month), bool)
+    whole[0] &= begun
+    whole[-1] &= ended
+    of_month = of_month[whole]
+    last = (of_month.index.to_numpy().astype("datetime64[M]") + 1).astype("datetime64[D]") - 1
+    no_riskless = periods["riskless"].isna().all()
+    return pd.DataFrame(
+        {
+            "date": last.astype("datetime64[ms]"),
+            "market_excess": (of_month["total"] - of_month["riskless"]).to_numpy(),
+            "riskless": np.nan if no_riskless else of_month["riskless"].to_numpy(),
+        }
+    )
+
+
+def factor_report(
+    used: pd.DataFrame, market: dict[str, Any], riskless: dict[str, Any] | None
+) -> dict[str, Any]:
+    """The market's part of the data report, as JSON can hold it.
+
+    `used` has the periods of the study: date, market_excess, riskless. `market` says where it comes from, as in
+    {"label": …, "is": …} or {"build": …}; `riskless` likewise, {"label": …, "quoted": …}, or is None. Each is given
+    back with first and last date, number of periods, and mean, least and most, decimal a period.
+    """
+    return {
+        "market_series": {**market, **_numbers(used["date"], used["market_excess"])},
+        "riskless_series": riskless and {**riskless, **_numbers(used["date"], used["riskless"])},
+    }
+
+
+def _numbers(date: pd.Series, value: pd.Series) -> dict[str, Any]:
+    return {
+        "first": f"{date.iloc[0]:%Y-%m-%d}",
+        "last": f"{date.iloc[-1]:%Y-%m-%d}",
+        "n_periods": len(date),
+        "mean": float(value.mean()),
+        "min": float(value.min()),
+        "max": float(value.max()),
+    }

@@ -12,8 +12,8 @@ from numba import njit
 from lineproof.intake.chunk import Chunk
 from lineproof.intake.stopping import counted, few, stop
 from lineproof.periods import Periods
+from lineproof.quotings import BUILDS
 
-BUILDS = {"equal": "equally weighted", "size": "weighted by size"}
 _WEIGHT, _RETURN, _COUNT = range(3)  # rows of the sums
 
 

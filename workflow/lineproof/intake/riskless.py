@@ -116,14 +116,14 @@ def daily_from_monthly(rates: pd.DataFrame, days: np.ndarray, label: str) -> np.
     if len(absent):
         found = f"no rate in {counted(len(absent), 'month')} in which the market trades: {few(map(str, absent))}"
         raise stop(label, found, "deliver them, or shorten the series")
-    n[0] += _cut_off(month[0].astype("datetime64[D]"), days[0])
-    n[-1] += _cut_off(days[-1] + 1, (month[-1] + 1).astype("datetime64[D]"))
+    n[0] += cut_off(month[0].astype("datetime64[D]"), days[0])
+    n[-1] += cut_off(days[-1] + 1, (month[-1] + 1).astype("datetime64[D]"))
     monthly = rates["riskless"].to_numpy(float)[np.searchsorted(month_of_rate, month)]
     return np.expm1(np.log1p(monthly) / n)[of_month]
 
 
-def _cut_off(first: np.datetime64, end: np.datetime64) -> int:
-    """Weekdays from `first` to before `end`, if there are too many to be holidays."""
+def cut_off(first: np.datetime64, end: np.datetime64) -> int:
+    """Weekdays from `first` to before `end`, both datetime64[D]; 0 where there are few enough to be holidays."""
     n = int(np.busday_count(first, end))
     return n if n > _MISSING_WEEKDAYS else 0
 
