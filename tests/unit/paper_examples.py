@@ -121,6 +121,7 @@ def facts(sorts: dict[str, dict[str, Any]], **changes: Any) -> dict[str, Any]:
         "name": "example",
         "title": "Is beta priced on the Kestrel Sound Exchange?",
         "market_name": "the Kestrel Sound Exchange",
+        "market_build": None,
         "invented": True,
         "level": 0.05,
         "hac_lag": None,
