@@ -127,11 +127,8 @@ def months_of_days(factor: Factor) -> pd.DataFrame:
     day = periods["date"].to_numpy().astype("datetime64[D]")
     month = day.astype("datetime64[M]")
     riskless = periods["riskless"].fillna(0.0)
-    logs = pd.DataFrame(
-        {"total": np.log1p(periods["market_excess"] + riskless), "riskless": np.log1p(riskless)}
-    )
-    with np.errstate(invalid="ignore"):
-        of_month = np.expm1(logs.groupby(month).sum())
+    growth = {"total": 1 + (periods["market_excess"] + riskless), "riskless": 1 + riskless}
+    of_month = pd.DataFrame(growth).groupby(month).prod()
     begun = cut_off(month[0].astype("datetime64[D]"), day[0]) == 0
     ended = cut_off(day[-1] + 1, (month[-1] + 1).astype("datetime64[D]")) == 0
     whole = np.ones(len(of_month), bool)
