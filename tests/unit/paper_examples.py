@@ -182,6 +182,7 @@ def study(
     *,
     analyses: Sequence[str] = tuple(ANALYSES),
     intake: dict[str, Any] = INTAKE,
+    has_riskless: bool = True,
     **changes: Any,
 ) -> Context:
     """Everything the paper needs for given sorts (facts and asset names) and subperiods."""
@@ -193,6 +194,8 @@ def study(
             for place, (name, (said, assets)) in enumerate(sorts.items())
         ]
     )
+    if not has_riskless:
+        whole["riskless"] = np.nan
     frames = []
     for each in periods:
         start, end = pd.Period(each["first"], "M"), pd.Period(each["last"], "M")

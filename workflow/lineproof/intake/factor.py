@@ -141,7 +141,7 @@ def months_of_days(factor: Factor) -> pd.DataFrame:
         {
             "date": last.astype("datetime64[ms]"),
             "market_excess": (of_month["total"] - of_month["riskless"]).to_numpy(),
-            "riskless": np.nan if no_riskless else of_month["riskless"].to_numpy(),
+            "riskless": np.nan if no_riskless else of_month["riskless"].to_numpy() - 1,
         }
     )
 
