@@ -18,7 +18,9 @@ from lineproof.intake.factor import (
     join_factor,
     months_of_days,
     on_days,
+    on_months,
     read_riskless,
+    total_and_excess,
 )
 from lineproof.problems import KnownProblem
 
@@ -178,3 +180,40 @@ def test_what_the_report_says_of_the_series() -> None:
     }
     assert json.loads(json.dumps(found)) == found
     assert factor_report(used, {"label": "m.csv", "is": "excess"}, None)["riskless_series"] is None
+
+
+def test_a_daily_rate_in_months(tmp_path: Path) -> None:
+    """January is cut off and left out; each later month earns its calendar days, from last day to last day."""
+    values = {str(day): 3.65 for day in WEEKDAYS[10:]}
+    daily = rate(tmp_path, values, "daily", quoted="annual_yield", unit="percent")
+    found = on_months(daily)
+    assert found["date"].dt.strftime("%Y-%m-%d").tolist() == [
+        "2001-02-28",
+        "2001-03-31",
+        "2001-04-30",
+    ]
+    # 31 Jan to 28 Feb, to 30 Mar (a Friday), to 30 Apr
+    expected = 1.0365 ** (np.array([28, 30, 31]) / 365) - 1
+    np.testing.assert_allclose(found["riskless"], expected, rtol=0, atol=6e-15)  # 23 roundings at 1
+
+
+def test_a_monthly_rate_stays_as_it_is_in_months(tmp_path: Path) -> None:
+    monthly = rate(tmp_path, {"2001-01": 0.01, "2001-02": 0.02}, "monthly")
+    assert on_months(monthly)["riskless"].tolist() == [0.01, 0.02]
+
+
+def test_total_and_excess_returns_from_either() -> None:
+    given, riskless = np.array([0.05, np.nan, -1.0]), np.array([0.01, 0.01, 0.003])
+    total, excess = total_and_excess(given, riskless, "total")
+    assert total is given
+    np.testing.assert_array_equal(excess, [0.05 - 0.01, np.nan, -1.0 - 0.003])
+    again, same = total_and_excess(excess, riskless, "excess")
+    np.testing.assert_allclose(again, total, rtol=1e-15)  # one rounding
+    assert again[2] == -1
+    np.testing.assert_array_equal(same, excess)
+
+
+def test_without_a_riskless_rate_no_total_return_is_known() -> None:
+    total, excess = total_and_excess(np.array([0.05, -1.0]), np.full(2, np.nan), "excess")
+    assert np.isnan(total).all()
+    assert excess.tolist() == [0.05, -1.0]

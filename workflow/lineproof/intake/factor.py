@@ -18,6 +18,7 @@ from lineproof.intake.riskless import (
 from lineproof.intake.series import read_series
 from lineproof.problems import KnownProblem, Problem
 
+_ROUNDING = 1e-6  # of a sum of two returns delivered with six decimals
 _NOTHING_LEFT = "Nothing is left to study."
 
 
@@ -83,6 +84,19 @@ def on_days(rate: RisklessRate, days: np.ndarray) -> pd.DataFrame:
     return found[["date", "riskless"]]
 
 
+def on_months(rate: RisklessRate) -> pd.DataFrame:
+    """`date` (month end) and `riskless`; a rate a day is compounded over the days that have one.
+
+    A first or last month of which more than three weekdays are missing is left out. Raises KnownProblem where a rate is
+    implausible.
+    """
+    if rate.frequency == "monthly":
+        return rate.rates[["date", "riskless"]]
+    daily = on_days(rate, rate.rates["date"].to_numpy().astype("datetime64[D]"))
+    growth = _growth_of_months(daily["date"], {"riskless": daily["riskless"]})
+    return growth.assign(riskless=growth["riskless"] - 1)
+
+
 def join_factor(
     market: pd.DataFrame,
     riskless: pd.DataFrame | None,
@@ -124,26 +138,44 @@ def months_of_days(factor: Factor) -> pd.DataFrame:
     month of which more than three weekdays are missing is left out. An empty frame where no month is whole.
     """
     periods = factor.periods
-    day = periods["date"].to_numpy().astype("datetime64[D]")
-    month = day.astype("datetime64[M]")
     riskless = periods["riskless"].fillna(0.0)
-    growth = {"total": 1 + (periods["market_excess"] + riskless), "riskless": 1 + riskless}
-    of_month = pd.DataFrame(growth).groupby(month).prod()
-    begun = cut_off(month[0].astype("datetime64[D]"), day[0]) == 0
-    ended = cut_off(day[-1] + 1, (month[-1] + 1).astype("datetime64[D]")) == 0
-    whole = np.ones(len(of_month), bool)
-    whole[0] &= begun
-    whole[-1] &= ended
-    of_month = of_month[whole]
-    last = (of_month.index.to_numpy().astype("datetime64[M]") + 1).astype("datetime64[D]") - 1
+    returns = {"total": periods["market_excess"] + riskless, "riskless": riskless}
+    of_month = _growth_of_months(periods["date"], returns)
     no_riskless = periods["riskless"].isna().all()
     return pd.DataFrame(
         {
-            "date": last.astype("datetime64[ms]"),
-            "market_excess": (of_month["total"] - of_month["riskless"]).to_numpy(),
-            "riskless": np.nan if no_riskless else of_month["riskless"].to_numpy() - 1,
+            "date": of_month["date"],
+            "market_excess": of_month["total"] - of_month["riskless"],
+            "riskless": np.nan if no_riskless else of_month["riskless"] - 1,
         }
     )
+
+
+def _growth_of_months(date: pd.Series, returns: dict[str, pd.Series]) -> pd.DataFrame:
+    """`date` (month end) and the growth of one unit in each whole month, from returns of days."""
+    day = date.to_numpy().astype("datetime64[D]")
+    month = day.astype("datetime64[M]")
+    growth = (1 + pd.DataFrame(returns)).groupby(month).prod()
+    whole = np.ones(len(growth), bool)
+    whole[0] &= cut_off(month[0].astype("datetime64[D]"), day[0]) == 0
+    whole[-1] &= cut_off(day[-1] + 1, (month[-1] + 1).astype("datetime64[D]")) == 0
+    following = (growth.index.to_numpy().astype("datetime64[M]") + 1).astype("datetime64[D]")
+    growth.insert(0, "date", (following - 1).astype("datetime64[ms]"))
+    return growth[whole].reset_index(drop=True)
+
+
+def total_and_excess(
+    returns: np.ndarray, riskless: np.ndarray, returns_are: str
+) -> tuple[np.ndarray, np.ndarray]:
+    """Total and excess returns of securities from either, and the riskless return of each row's period: (n_rows,) all.
+
+    `returns_are` is "total" or "excess". Without a riskless rate (NaN) the other of the two is not known. The loss of
+    everything is a total return of exactly −1, which an excess return gives up to rounding only.
+    """
+    if returns_are == "total":
+        return returns, returns - riskless
+    total = returns + riskless
+    return np.where(np.abs(total + 1) < _ROUNDING, -1.0, total), returns
 
 
 def factor_report(
