@@ -387,3 +387,27 @@ def test_cells_show_what_their_headings_say(
         if (each.key, head.key) == (row, column)
     ]
     assert found == [(address, quantity)]
+
+
+def test_without_a_riskless_rate_the_sample_shows_a_dash_and_says_why() -> None:
+    period = examples.subperiod("full", "1990-01", "1999-12")
+    study = examples.study(
+        {"ten": (examples.ranked_facts(), examples.groups(10))},
+        [period],
+        has_riskless=False,
+        market_build="size",
+    )
+    table = build(study)["sample"]
+    returns = table.panels[2]
+    shown = dict(zip([c.key for c in returns.columns], returns.rows[0].cells, strict=True))
+    assert [key for key, cell in shown.items() if cell.undefined] == [
+        "riskless_mean",
+        "riskless_sd",
+    ]
+    text = make_tables(study)["sample.html"]
+    why = "not defined: the study has returns in excess of a riskless rate that is not known"
+    assert text.count(why) == 1
+    assert (
+        "The market is the mean of all securities, weighted by size at the end of the period before."
+        in text
+    )

@@ -9,6 +9,7 @@ import pytest
 
 from lineproof.problems import KnownProblem
 from lineproof.study import load_study
+from lineproof.wiring import Wiring
 
 GOOD = textwrap.dedent(
     """\
@@ -251,3 +252,109 @@ def test_what_is_sound_is_checked_further_although_another_section_is_not(folder
         "mine.yaml, line 9, betas.monthly60.windw: unknown key 'windw'",
         "mine.yaml, line 13, subperiods.full: has both split and every",
     ]
+
+
+MARKET = "market: {file: market.csv, columns: {date: month, return: mkt}}"
+RISKLESS = "  riskless: {file: bills.csv, columns: {date: month, rate: bill}}\n"
+
+
+def test_a_market_that_is_built(folder: Path) -> None:
+    study = load_study(write(folder, changed((MARKET, "market: {build: size}"))))
+    assert (study.market, study.market_build, study.market_is) == (None, "size", "total")
+    assert list(study.sources()) == ["data.returns", "data.riskless"]
+
+
+@pytest.mark.parametrize(
+    ("edits", "expected"),
+    [
+        (
+            [(MARKET, "market: {build: sise}")],
+            [
+                "mine.yaml, line 6, data.market.build: 'sise' is not one of the choices\n    → did you mean size?"
+            ],
+        ),
+        (
+            [(MARKET, "market: {build: size}"), (", size: cap", "")],
+            [
+                "mine.yaml, line 6, data.market.build: a market weighted by size needs a size column, and "
+                "data.returns.columns has none\n    → add size under data.returns.columns, or use build: equal"
+            ],
+        ),
+        (
+            [(MARKET, "market: {build: equal, file: market.csv, unit: percent}")],
+            [
+                "mine.yaml, line 6, data.market.file: a market that is built does not use 'file'\n"
+                "    → remove it, or remove build",
+                "mine.yaml, line 6, data.market.unit: a market that is built does not use 'unit'\n"
+                "    → remove it, or remove build",
+            ],
+        ),
+        (
+            [(MARKET, "market: {unit: percent}")],
+            [
+                "mine.yaml, line 6, data.market: the key 'columns' is missing\n"
+                "    → add it, or build: equal or size to make the market from the returns",
+                "mine.yaml, line 6, data.market: the key 'file' is missing\n"
+                "    → add it, or build: equal or size to make the market from the returns",
+            ],
+        ),
+    ],
+)
+def test_a_market_is_read_or_built(
+    folder: Path, edits: list[tuple[str, str]], expected: list[str]
+) -> None:
+    assert problems(folder, changed(*edits)) == expected
+
+
+def test_a_study_of_excess_returns_needs_no_riskless_rate(folder: Path) -> None:
+    text = changed(
+        ("size: cap}", "size: cap}\n    is: excess"),
+        ("return: mkt}", "return: mkt}, is: excess"),
+        (RISKLESS, ""),
+    )
+    study = load_study(write(folder, text))
+    assert (study.returns_are, study.market_is, study.riskless) == ("excess", "excess", None)
+    assert list(study.sources()) == ["data.returns", "data.market"]
+
+
+def test_a_market_built_of_excess_returns_is_one(folder: Path) -> None:
+    text = changed(
+        ("size: cap}", "size: cap}\n    is: excess"),
+        (MARKET, "market: {build: equal}"),
+        (RISKLESS, ""),
+    )
+    study = load_study(write(folder, text))
+    assert (study.market_is, study.market_build, study.riskless) == ("excess", "equal", None)
+
+
+def test_total_returns_need_a_riskless_rate(folder: Path) -> None:
+    supplied = "{design: supplied, file: market.csv, columns: {asset: a, date: d, return: r}}"
+    text = changed((RISKLESS, ""), ("{rank_on: monthly60}", supplied))
+    change = "    → add data.riskless, or set is: excess if they are in excess of it"
+    assert problems(folder, text) == [
+        f"mine.yaml, line 3, data.returns: total returns need a riskless rate\n{change}",
+        f"mine.yaml, line 6, data.market: a total return needs a riskless rate\n{change}",
+        f"mine.yaml, line 10, portfolios.ten: total returns need a riskless rate\n{change}",
+    ]
+    one = text.replace("size: cap}", "size: cap}\n    is: excess").replace(
+        "mkt}", "mkt}, is: excess"
+    )
+    assert problems(folder, one) == [
+        f"mine.yaml, line 11, portfolios.ten: total returns need a riskless rate\n{change}"
+    ]
+
+
+def test_options_of_validation_name_what_is_less_usual_only(folder: Path) -> None:
+    usual = Wiring(load_study(write(folder, GOOD))).options("validate_returns")
+    assert not {"returns_are", "market_build", "market_frequency", "riskless_frequency"} & set(
+        usual
+    )
+    text = changed(
+        (MARKET, "market: {build: size}"), ("rate: bill}", "rate: bill}, frequency: daily")
+    )
+    wiring = Wiring(load_study(write(folder, text)))
+    found = wiring.options("validate_returns")
+    assert (found["market"], found["market_build"]) == (None, "size")
+    assert found["riskless_frequency"] == "daily"
+    assert wiring.series_file("market") == []
+    assert Path(wiring.series_file("riskless")).name == "bills.csv"

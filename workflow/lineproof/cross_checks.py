@@ -57,6 +57,49 @@ def _has_size(content: dict[str, Any]) -> bool:
     return "size" in content["data"]["returns"]["columns"]
 
 
+def _market_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
+    """A market is read from a file or built from the returns, not both and not neither."""
+    place: Place = ("data", "market")
+    market, given = content["data"]["market"], file.content["data"]["market"]
+    if "build" not in market:
+        change = "add it, or build: equal or size to make the market from the returns"
+        return [
+            (place, f"the key {key!r} is missing", change)
+            for key in ("file", "columns")
+            if key not in market
+        ]
+    change = "remove it, or remove build"
+    found: list[Finding] = [
+        ((*place, key), f"a market that is built does not use {key!r}", change)
+        for key in given
+        if key != "build"
+    ]
+    if market["build"] == "size" and not _has_size(content):
+        said = "a market weighted by size needs a size column, and data.returns.columns has none"
+        change = "add size under data.returns.columns, or use build: equal"
+        found.append(((*place, "build"), said, change))
+    return found
+
+
+def _riskless_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    """Without a riskless rate every return must be in excess of it already."""
+    data = content["data"]
+    if "riskless" in data:
+        return []
+    change = "add data.riskless, or set is: excess if they are in excess of it"
+    found: list[Finding] = []
+    if data["returns"]["is"] == "total":
+        found.append((("data", "returns"), "total returns need a riskless rate", change))
+    if "build" not in data["market"] and data["market"]["is"] == "total":
+        found.append((("data", "market"), "a total return needs a riskless rate", change))
+    found += [
+        (("portfolios", name), "total returns need a riskless rate", change)
+        for name, options in content["portfolios"].items()
+        if options["design"] == "supplied" and options["is"] == "total"
+    ]
+    return found
+
+
 def _subperiod_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     found: list[Finding] = []
     for name, options in content["subperiods"].items():
@@ -102,7 +145,9 @@ def _file_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
         else None
     )
     named: list[tuple[Place, str]] = [
-        (("data", name), content["data"][name]["file"]) for name in content["data"]
+        (("data", name), options["file"])
+        for name, options in content["data"].items()
+        if "file" in options
     ]
     named += [
         (("portfolios", name), options["file"])
@@ -128,6 +173,8 @@ def _file_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
 CHECKS = (
     ({"betas"}, _beta_findings),
     ({"portfolios", "betas", "data"}, _sort_findings),
+    ({"data"}, _market_findings),
+    ({"data", "portfolios"}, _riskless_findings),
     ({"subperiods"}, _subperiod_findings),
     ({"intake", "data"}, _screen_findings),
     ({"paper", "portfolios", "subperiods"}, _paper_findings),

@@ -17,6 +17,7 @@ def facts(study: Study) -> dict[str, Any]:
         "name": study.name,
         "title": study.title,
         "market_name": study.market_name,
+        "market_build": study.market_build,
         "invented": study.demo is not None,
         "level": study.level,
         "hac_lag": study.hac_lag,

@@ -49,6 +49,10 @@ def _sorted_unique(*keys: str) -> pa.Check:
 
 _DATE = pa.Column("datetime64[ms]", pa.Check(_month_end, name="dates are month ends"))
 _HAS_ROWS = pa.Check(lambda frame: len(frame) > 0, name="has rows")
+_RISKLESS = pa.Check(  # a study of excess returns may have no riskless rate, and then in no period
+    lambda frame: frame["riskless"].isna().nunique() <= 1,
+    name="a riskless return in every period or in none",
+)
 
 PANEL = pa.DataFrameSchema(
     {
@@ -69,9 +73,9 @@ MARKET = pa.DataFrameSchema(
     {
         "date": _DATE,
         "market_excess": _number(nullable=False),
-        "riskless": _number(nullable=False),
+        "riskless": _number(),
     },
-    checks=[_HAS_ROWS, _sorted_unique("date")],
+    checks=[_HAS_ROWS, _sorted_unique("date"), _RISKLESS],
     strict=True,
 )
 
@@ -132,9 +136,9 @@ SUBPERIOD = pa.DataFrameSchema(
         "sort": _text(),
         **PORTFOLIO_RETURNS.columns,
         "market_excess": _number(nullable=False),
-        "riskless": _number(nullable=False),
+        "riskless": _number(),
     },
-    checks=[_HAS_ROWS],
+    checks=[_HAS_ROWS, _RISKLESS],
     strict=True,
 )
 

@@ -30,6 +30,7 @@ from lineproof.stats.distributions import JointStatistic
 Floats = NDArray[np.float64]
 
 MONTHS_A_YEAR = 12
+NO_RISKLESS = "the study has returns in excess of a riskless rate that is not known"
 
 
 @dataclass(frozen=True)
@@ -43,7 +44,7 @@ class Sample:
         assets: N names.
         excess: (T, N) excess returns, decimal per month, NaN where an asset is missing.
         market: (T,) market excess returns.
-        riskless: (T,) riskless returns.
+        riskless: (T,) riskless returns, NaN throughout where the study has none.
         extras: other (T, N) columns of the cut by name.
         level: significance level of the critical values.
         hac_lag: truncation lag; None chooses it by the number of months.
@@ -81,7 +82,15 @@ def describe(sample: Sample) -> Iterator[Row]:
                 mean = float(observed.mean())
                 yield Row("-", asset, name, "-", observed.size, 1, estimate=mean)
     yield from _moments("market", sample.market, "signed")
-    yield from _moments("riskless", sample.riskless, "")
+    yield from _riskless(sample.riskless)
+
+
+def _riskless(returns: Floats) -> Iterator[Row]:
+    if np.isfinite(returns).any():
+        yield from _moments("riskless", returns, "")
+        return
+    for term in ("mean", "sd"):
+        yield Row("-", "riskless", term, "-", 0, 1, reason=NO_RISKLESS)
 
 
 def _moments(asset: str, returns: Floats, family: str) -> Iterator[Row]:

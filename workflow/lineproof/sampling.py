@@ -27,9 +27,12 @@ def describe_sample(
     spans = _spans(panel)
     for subperiod in subperiods:
         rows += _subperiod_rows(panel, spans, subperiod)
-    return _as_estimates(rows)
+    no_totals = panel["total_return"].isna().all()
+    return _as_estimates(rows, _NO_TOTALS if no_totals else _TOO_FEW)
 
 
+_NO_TOTALS = "the returns are in excess of a riskless rate that is not known"
+_TOO_FEW = "too few months with returns in the subperiod"
 _ROW = ["subperiod", "analysis", "variant", "asset", "term", "estimate", "n_months"]
 Row = tuple[str, str, str, str, str, float, int]  # in the order of _ROW
 
@@ -98,10 +101,10 @@ def _subperiod_rows(
     return [(name, "sample", "panel", "all", *each, n_months) for each in values.items()]
 
 
-def _as_estimates(rows: list[Row]) -> pd.DataFrame:
+def _as_estimates(rows: list[Row], why_undefined: str) -> pd.DataFrame:
     frame = pd.DataFrame(rows, columns=_ROW).assign(sort="-", se_kind="-", n_assets=0)
     frame["estimate"] = frame["estimate"].astype(float)
     undefined = frame["estimate"].isna()
     frame["status"] = np.where(undefined, "undefined", "ok")
-    frame["reason"] = np.where(undefined, "too few months with returns in the subperiod", "")
+    frame["reason"] = np.where(undefined, why_undefined, "")
     return frame.reindex(columns=COLUMNS).astype(DTYPES)

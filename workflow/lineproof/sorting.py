@@ -137,10 +137,12 @@ def _lagged_size(panel: pd.DataFrame) -> np.ndarray:
     """Size at the end of the row before, of the same security; (n_rows,), NaN where unknown.
 
     A missing size is the last known one grown by the total returns since, so that a weight drifts
-    with its security; a missing return grows nothing, and after a total loss no size is known.
+    with its security; a missing return grows nothing, and after a total loss no size is known. A study without a
+    riskless rate knows no total returns: there excess returns stand in, which lets a size lag by the riskless return.
     """
     first = panel["security"].ne(panel["security"].shift()).to_numpy()
-    size, growth = panel["size"].to_numpy(), 1 + panel["total_return"].fillna(0.0)
+    grew = panel["total_return"].fillna(panel["excess_return"])
+    size, growth = panel["size"].to_numpy(), 1 + grew.fillna(0.0)
     begins = first | ~np.isnan(size)
     start = np.maximum.accumulate(np.where(begins, np.arange(len(panel)), 0))
     grown = size[start] * growth.mask(begins, 1.0).groupby(start).cumprod().to_numpy()
@@ -187,8 +189,12 @@ def take_supplied(supplied: pd.DataFrame, market: pd.DataFrame, *, returns_are: 
     returns, from which the riskless rate is taken, or in excess of it already. Months without a
     market return are left out.
 
-    Raises KnownProblem when no month is left.
+    Raises KnownProblem when no month is left, or total returns are given and no riskless rate is known.
     """
+    if returns_are == "total" and market["riskless"].isna().all():
+        change = "add data.riskless, or set is: excess if they are in excess of it"
+        problem = Problem("the supplied test assets", "total returns need a riskless rate", change)
+        raise KnownProblem("Excess returns cannot be taken.", [problem])
     known = supplied.merge(market[["date", "riskless"]], on="date", validate="many_to_one")
     if known.empty:
         found = "no month in common with the market"

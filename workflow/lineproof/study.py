@@ -104,10 +104,14 @@ class Study:
     level: float
     demo: dict[str, Any] | None
     returns: Source
-    market: Source
+    returns_are: str
+    market: Source | None  # None where it is built from the returns
     market_is: str
-    riskless: Source
+    market_build: str | None
+    market_frequency: str | None  # None is that of the returns
+    riskless: Source | None  # None where every return is in excess of it already
     riskless_quoted: str
+    riskless_frequency: str | None
     screens: tuple[dict[str, Any], ...]
     missing_final_return: float | None
     same_month_rows: str
@@ -136,7 +140,8 @@ class Study:
         """Every raw file by its place in the study file."""
         supplied = {f"portfolios.{n}": s.source for n, s in self.sorts.items() if s.source}
         core = {"returns": self.returns, "market": self.market, "riskless": self.riskless}
-        return {**{f"data.{name}": source for name, source in core.items()}, **supplied}
+        named = {f"data.{name}": source for name, source in core.items() if source is not None}
+        return {**named, **supplied}
 
 
 def load_study(path: str | os.PathLike) -> Study:
@@ -170,10 +175,7 @@ def _build(content: dict[str, Any], path: Path) -> Study:
         **{key: content["study"][key] for key in ("name", "title", "market_name", "seed", "level")},
         demo=content.get("demo"),
         returns=_source(data["returns"], path),
-        market=_source(data["market"], path),
-        market_is=data["market"]["is"],
-        riskless=_source(data["riskless"], path),
-        riskless_quoted=data["riskless"]["quoted"],
+        **_series(data, path),
         screens=tuple(intake["screens"]),
         missing_final_return=None if missing_final == "leave" else float(missing_final),
         same_month_rows=intake["same_month_rows"],
@@ -198,6 +200,22 @@ def _build(content: dict[str, Any], path: Path) -> Study:
             **{key: _choice(paper[key]) for key in ("tables", "figures")},
         ),
     )
+
+
+def _series(data: dict[str, Any], path: Path) -> dict[str, Any]:
+    """What the study says of the market, the riskless rate, and which returns are in excess of it."""
+    market, riskless = data["market"], data.get("riskless")
+    returns_are = data["returns"]["is"]
+    return {
+        "returns_are": returns_are,
+        "market": None if "build" in market else _source(market, path),
+        "market_is": returns_are if "build" in market else market["is"],
+        "market_build": market.get("build"),
+        "market_frequency": market.get("frequency"),
+        "riskless": None if riskless is None else _source(riskless, path),
+        "riskless_quoted": "period_return" if riskless is None else riskless["quoted"],
+        "riskless_frequency": None if riskless is None else riskless.get("frequency"),
+    }
 
 
 def _choice(value: str | list[str]) -> str | tuple[str, ...]:

@@ -86,20 +86,33 @@ class Wiring:
         study = self.study
         return {
             "returns": study.returns.reading(),
-            "market": study.market.reading(),
-            "market_is": study.market_is,
-            "riskless": study.riskless.reading(),
-            "riskless_quoted": study.riskless_quoted,
-            "rules": {
-                "screens": list(study.screens),
-                "missing_final_return": study.missing_final_return,
-                "final_return_by_reason": {},
-                "same_month_rows": study.same_month_rows,
-                "stale_run": None,
-                "return_after_hole": "keep",
-                "jump_and_reversal": "flag",
-            },
+            **self._series(),
+            "screens": list(study.screens),
+            "missing_final_return": study.missing_final_return,
+            "same_month_rows": study.same_month_rows,
         }
+
+    def _series(self) -> dict[str, Any]:
+        """How market and riskless rate are read or built; what is less usual is given only where it is used."""
+        study = self.study
+        less_usual = {
+            "returns_are": study.returns_are if study.returns_are != "total" else None,
+            "market_build": study.market_build,
+            "market_frequency": study.market_frequency,
+            "riskless_frequency": study.riskless_frequency,
+        }
+        return {
+            "market": study.market and study.market.reading(),
+            "market_is": study.market_is,
+            "riskless": study.riskless and study.riskless.reading(),
+            "riskless_quoted": study.riskless_quoted,
+            **{key: value for key, value in less_usual.items() if value is not None},
+        }
+
+    def series_file(self, name: str) -> str | list[str]:
+        """The raw file of the market or the riskless rate; an empty list where the study has none."""
+        source = {"market": self.study.market, "riskless": self.study.riskless}[name]
+        return [] if source is None else source.file
 
     def _sort(self, name: str) -> dict[str, Any]:
         spec = self.study.sorts[name]

@@ -4,8 +4,8 @@
 checkpoint validate_returns:
     input:
         returns=study.returns.file,
-        market=study.market.file,
-        riskless=study.riskless.file,
+        market=wiring.series_file("market"),
+        riskless=wiring.series_file("riskless"),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
         code=wiring.code("validate_returns"),
