@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from typing import NamedTuple
 
 
 @dataclass(frozen=True)
@@ -53,6 +54,15 @@ FAULTS: dict[int, Fault] = {
     ),
 }
 N_EXAMPLES = 3
+
+
+class Flag(NamedTuple):
+    """What a judge of the whole file found, as `Tally.add` takes it: `n` is 0 where nothing was found."""
+
+    number: int
+    n: int
+    examples: list[str]
+    kinds: dict[str, int]
 
 
 @dataclass
