@@ -37,11 +37,9 @@ class FrequencyEvidence:
 
     def add(self, start: np.ndarray, day: np.ndarray) -> None:
         """Take in rows: securities begin at `start`, int64 (n_securities + 1,); `day` is datetime64[D] (n_rows,)."""
-        month = day.astype("datetime64[M]")
         _count(
             np.ascontiguousarray(start, np.int64),
-            month.astype(np.int64),
-            (day - month.astype("datetime64[D]")).astype(np.int64),
+            np.ascontiguousarray(day, "datetime64[D]").view(np.int64),
             self.dates,
             self.steps,
             self.gaps,
@@ -49,12 +47,9 @@ class FrequencyEvidence:
 
     def merge(self, other: FrequencyEvidence) -> None:
         """Add what another one has seen of other securities."""
-        for mine, others in (
-            (self.dates, other.dates),
-            (self.steps, other.steps),
-            (self.gaps, other.gaps),
-        ):
-            mine += others
+        self.dates += other.dates
+        self.steps += other.steps
+        self.gaps += other.gaps
 
     def result(self) -> dict[str, Any]:
         """Months of single securities by their number of dates, and steps from month to month."""
@@ -108,23 +103,48 @@ class FrequencyEvidence:
 
 
 @njit(cache=True, nogil=True)
-def _count(start, month, place, dates, steps, gaps):  # pragma: no cover - compiled
+def _month_and_place(day):  # pragma: no cover - compiled
+    """The month of a day, both counted from 1970, and the day's place in it from 0: the Gregorian calendar counted in
+    cycles of 146,097 days and in years that begin in March, so that a leap day is the last of its year."""
+    shifted = day + 719_468
+    cycle, in_cycle = shifted // 146_097, shifted % 146_097
+    year = (in_cycle - in_cycle // 1_460 + in_cycle // 36_524 - in_cycle // 146_096) // 365
+    in_year = in_cycle - (365 * year + year // 4 - year // 100)
+    month = (5 * in_year + 2) // 153
+    place = in_year - (153 * month + 2) // 5
+    return (cycle * 400 + year - 1970) * 12 + month + 2, place
+
+
+@njit(cache=True, nogil=True)
+def _count(start, day, dates, steps, gaps):  # pragma: no cover - compiled
     for security in range(len(start) - 1):
-        first, last = start[security], start[security + 1]
-        seen = np.int64(0)
-        for i in range(first, last):
-            seen |= np.int64(1) << place[i]
-            if i + 1 < last and month[i + 1] == month[i]:
-                continue
-            n, before = 0, -1
-            for at in range(31):
-                if (seen >> at) & 1:
-                    n += 1
-                    if before >= 0:
-                        gaps[0] += 1
-                        gaps[1] += 5 <= at - before <= 9
-                    before = at
-            dates[n] += 1
-            seen = np.int64(0)
-            if i + 1 < last:
-                steps[min(month[i + 1] - month[i], len(steps) - 1)] += 1
+        before, seen, begins = np.int64(0), np.int64(0), np.int64(0)
+        for i in range(start[security], start[security + 1]):
+            month, place = before, day[i] - begins
+            if (
+                not seen or not 0 <= place < 28
+            ):  # within 28 days of its first a month cannot have ended
+                month, place = _month_and_place(day[i])
+                begins = day[i] - place
+            if seen and month != before:
+                steps[min(month - before, len(steps) - 1)] += 1
+                _close(seen, dates, gaps)
+                seen = np.int64(0)
+            before, seen = month, seen | (np.int64(1) << place)
+        if seen:
+            _close(seen, dates, gaps)
+
+
+@njit(cache=True, nogil=True)
+def _close(seen, dates, gaps):  # pragma: no cover - compiled
+    """Count the dates of one month, given as bits, and the gaps between them."""
+    n, gap = 0, 0
+    while seen:
+        if seen & 1:
+            if n:
+                gaps[0] += 1
+                gaps[1] += 5 <= gap <= 9
+            n, gap = n + 1, 0
+        gap += 1
+        seen >>= 1
+    dates[n] += 1

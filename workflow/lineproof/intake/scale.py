@@ -43,14 +43,12 @@ class ScaleEvidence:
         returns, float64, NaN where missing. Both (n_rows,), in any order."""
         month = np.ascontiguousarray(month, np.int64)
         decimal = np.ascontiguousarray(decimal, np.float64)
-        known = (month >= _MONTHS[0]) & (month < _MONTHS[1])
-        if known.any():
-            self._reach(
-                int(month.min(where=known, initial=_MONTHS[1])),
-                int(month.max(where=known, initial=0)),
-            )
+        first, last = _span(month)
+        if first <= last:
+            self._reach(first, last)
         _count(
-            month - self._first if self._first >= 0 else np.full(len(month), -1),
+            month,
+            self._first,
             decimal.view(np.int64),
             self.counts,
             self._inside,
@@ -153,7 +151,17 @@ _INFINITE = np.int64(0x7FF0000000000000)
 
 
 @njit(cache=True, nogil=True)
-def _count(month, bits, counts, inside, aside, monthly):  # pragma: no cover - compiled
+def _span(month):  # pragma: no cover - compiled
+    """The first and the last month that is one; the first is later than the last where there is none."""
+    first, last = _MONTHS[1], _MONTHS[0]
+    for i in range(len(month)):
+        if _MONTHS[0] <= month[i] < _MONTHS[1]:
+            first, last = min(first, month[i]), max(last, month[i])
+    return first, last
+
+
+@njit(cache=True, nogil=True)
+def _count(month, first, bits, counts, inside, aside, monthly):  # pragma: no cover - compiled
     for i in range(len(bits)):
         size = bits[i] & _SIGN
         if size >= _INFINITE:
@@ -165,8 +173,9 @@ def _count(month, bits, counts, inside, aside, monthly):  # pragma: no cover - c
         index = min(max((size >> _DROP) - _BASE, 0), _N_FINE - 1)
         counts[1 if bits[i] < 0 else 0, index] += 1
         inside[index] += (size >> (_DROP - _KEPT)) & ((1 << _KEPT) - 1)
-        if 0 <= month[i] < len(monthly):
-            monthly[month[i], index >> (_FINE - _COARSE)] += 1
+        place = month[i] - first
+        if 0 <= place < len(monthly):
+            monthly[place, index >> (_FINE - _COARSE)] += 1
 
 
 @njit(cache=True, nogil=True)

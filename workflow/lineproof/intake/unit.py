@@ -72,21 +72,19 @@ def judge_unit(
     change = _unit_to_set(evidence, reading["unit"] == "decimal", _SCALE[frequency])
     if change:
         where = f"{reading['label']}, column {reading['columns'].get('return', 'return')}"
-        raise stop(where, f"read as {reading['unit']}, {said_quantiles(evidence)}", change)
+        raise stop(
+            where, f"read as {reading['unit']}, {said_quantiles(evidence, frequency)}", change
+        )
 
 
-def said_quantiles(evidence: ScaleEvidence) -> str:
-    """The quantiles by which a unit is judged, and the impossible losses, in words."""
-    middle, high = (100 * evidence.quantile(level) for level in (0.5, 0.95))
-    said = (
-        f"half of all returns exceed {middle:.3g} % in size and one in twenty exceeds {high:.3g} %"
-    )
+def said_quantiles(evidence: ScaleEvidence, frequency: str = "monthly") -> str:
+    """The quantiles by which a unit is judged, in words; with the impossible losses where only they tell."""
+    middle, high = (evidence.quantile(level) for level in (0.5, 0.95))
+    said = f"half of all returns exceed {100 * middle:.3g} % in size and one in twenty exceeds {100 * high:.3g} %"
     n_impossible, _ = evidence.below(1.0)
-    return said + (
-        f"; {n_impossible:,} of {evidence.n:,} lie below −100 %"
-        if n_impossible > _SHARE_IMPOSSIBLE * evidence.n
-        else ""
-    )
+    if n_impossible <= _SHARE_IMPOSSIBLE * evidence.n or middle > _LARGE_MIDDLE * _SCALE[frequency]:
+        return said
+    return f"{said}; {n_impossible:,} of {evidence.n:,} lie below −100 %"
 
 
 def _unit_to_set(evidence: ScaleEvidence, is_decimal: bool, scale: float) -> str:
