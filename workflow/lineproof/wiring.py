@@ -90,9 +90,7 @@ class Wiring:
             "market_is": study.market_is,
             "riskless": study.riskless.reading(),
             "riskless_quoted": study.riskless_quoted,
-            "screens": list(study.screens),
-            "missing_final_return": study.missing_final_return,
-            "same_month_rows": study.same_month_rows,
+            **asdict(study.intake),
         }
 
     def _sort(self, name: str) -> dict[str, Any]:
