@@ -13,7 +13,7 @@ from html.parser import HTMLParser
 import pytest
 from tests.unit import paper_examples as examples
 
-from lineproof.paper import csv_table, html_table, latex
+from lineproof.paper import html_table, latex
 from lineproof.paper.context import Context
 from lineproof.paper.exhibits import table_files
 from lineproof.paper.rounding import printed
@@ -171,12 +171,6 @@ def test_symbols_are_ascii_where_text_is_plain() -> None:
 )
 def test_latex_escapes(raw: str, tex: str) -> None:
     assert latex.escape(raw) == tex
-
-
-@pytest.mark.parametrize("start", ["=", "+", "-", "@", "\t", "\r"])
-def test_spreadsheets_see_no_formula(start: str) -> None:
-    assert csv_table.escape(f"{start}cmd()") == f"'{start}cmd()"
-    assert csv_table.escape(f"a{start}b") == f"a{start}b"
 
 
 def test_hostile_names_stay_text() -> None:

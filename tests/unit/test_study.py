@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import textwrap
+from dataclasses import asdict
 from pathlib import Path
 
 import pytest
 
 from lineproof.problems import KnownProblem
-from lineproof.study import load_study
+from lineproof.study import IntakeSpec, load_study
 from lineproof.wiring import Wiring
 
 GOOD = textwrap.dedent(
@@ -358,3 +359,156 @@ def test_options_of_validation_name_what_is_less_usual_only(folder: Path) -> Non
     assert found["riskless_frequency"] == "daily"
     assert wiring.series_file("market") == []
     assert Path(wiring.series_file("riskless")).name == "bills.csv"
+
+
+def plus_intake(options: str, *edits: tuple[str, str]) -> str:
+    return changed(*edits) + f"intake:\n  {options}\n"
+
+
+def test_options_of_the_intake_and_their_defaults(folder: Path) -> None:
+    assert load_study(write(folder, GOOD)).intake == IntakeSpec(
+        screens=(),
+        outliers={"jump_and_reversal": "flag"},
+        return_after_hole="keep",
+        stale_run=None,
+        missing_final_return=None,
+        final_return_by_reason={},
+        allow_partial_last_month=False,
+        other_unit_stop_above=0.1,
+        same_month_rows="set_aside",
+    )
+    text = plus_intake(
+        "{outliers: {jump_and_reversal: set_aside}, return_after_hole: set_aside, stale_prices: {run: 6}, "
+        'delisting: {missing_final_return: -1, by_reason: {500: -0.3, "007": 0}}, '
+        "allow_partial_last_month: yes, other_unit_stop_above: 0, same_month_rows: last}",
+        ("size: cap", "size: cap, exit_reason: why"),
+    )
+    assert load_study(write(folder, text)).intake == IntakeSpec(
+        screens=(),
+        outliers={"jump_and_reversal": "set_aside"},
+        return_after_hole="set_aside",
+        stale_run=6,
+        missing_final_return=-1.0,
+        final_return_by_reason={"500": -0.3, "007": 0.0},
+        allow_partial_last_month=True,
+        other_unit_stop_above=0.0,
+        same_month_rows="last",
+    )
+
+
+def test_the_options_of_the_intake_are_those_of_the_validation(folder: Path) -> None:
+    study = load_study(write(folder, GOOD))
+    passed = Wiring(study).options("validate_returns")
+    assert asdict(study.intake).items() <= passed.items()
+
+
+def test_dates_may_be_left_to_the_data(folder: Path) -> None:
+    assert load_study(write(folder, GOOD)).returns.reading()["dates"] is None
+    text = changed(("riskless: {file", 'riskless: {dates: "%m/%Y", file'))
+    assert load_study(write(folder, text)).riskless.reading()["dates"] == "%m/%Y"
+
+
+@pytest.mark.fault(39)
+def test_returns_may_be_computed_from_prices(folder: Path) -> None:
+    text = changed(("return: ret, size: cap", "return: {from: price}, price: px"))
+    returns = load_study(write(folder, text)).returns
+    assert returns.return_from == returns.reading()["return_from"] == "price"
+    assert returns.columns == {"security": "id", "date": "date", "price": "px"}
+    assert load_study(write(folder, GOOD)).returns.return_from is None
+
+
+COLUMNS = "mine.yaml, line 5, data.returns.columns"
+
+
+@pytest.mark.fault(33)
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        (
+            changed(("return: ret", "return: {from: price}")),
+            f"{COLUMNS}.return: returns from prices need a price column, and there is none\n"
+            "    → add price under data.returns.columns",
+        ),
+        (
+            changed(("return: ret", "return: {from: prize}, price: px")),
+            f"{COLUMNS}.return.from: 'prize' is not one of the choices\n    → did you mean price?",
+        ),
+        (
+            changed(("return: ret", "return: 5")),
+            f"{COLUMNS}.return: found 5\n    → give text or a mapping of keys",
+        ),
+        (
+            changed(("size: cap", "size: cap, price: cap")),
+            f"{COLUMNS}.price: the column 'cap' is named as size already\n"
+            "    → one column cannot be both: change one of the two",
+        ),
+        (
+            plus_intake("delisting: {by_reason: {A: -0.3}}"),
+            "mine.yaml, line 15, intake.delisting.by_reason: final returns by reason need a column exit_reason, "
+            "and data.returns.columns has none\n"
+            "    → add exit_reason under data.returns.columns, or remove by_reason",
+        ),
+        (
+            plus_intake("delisting: {by_reason: {007: -0.3}}", ("size: cap", "exit_reason: why")),
+            "mine.yaml, line 15, intake.delisting.by_reason: a code that YAML takes for 7 is not what is written\n"
+            "    → put it in quotes",
+        ),
+        (
+            plus_intake("delisting: {by_reason: {A: -30}}", ("size: cap", "exit_reason: why")),
+            "mine.yaml, line 15, intake.delisting.by_reason.A: -30 is out of range\n"
+            "    → give at least -1 and at most 1",
+        ),
+        (
+            plus_intake("stale_prices: {}"),
+            "mine.yaml, line 15, intake.stale_prices: the key 'run' is missing\n"
+            "    → add it: Rows within runs of at least so many zero returns do not pass.",
+        ),
+        (
+            plus_intake("stale_prices: {run: 1}"),
+            "mine.yaml, line 15, intake.stale_prices.run: 1 is out of range\n"
+            "    → give at least 2 and at most 10000 periods",
+        ),
+        (
+            plus_intake("return_after_hole: set_asid"),
+            "mine.yaml, line 15, intake.return_after_hole: 'set_asid' is not one of the choices\n"
+            "    → did you mean set_aside?",
+        ),
+        (
+            plus_intake("allow_partial_last_month: perhaps"),
+            "mine.yaml, line 15, intake.allow_partial_last_month: found 'perhaps'\n    → give yes or no",
+        ),
+        (
+            plus_intake("other_unit_stop_above: 10"),
+            "mine.yaml, line 15, intake.other_unit_stop_above: 10 is out of range\n"
+            "    → give at least 0 and at most 1",
+        ),
+        (
+            plus_intake("outlier: {}"),
+            "mine.yaml, line 15, intake.outlier: unknown key 'outlier'\n    → did you mean outliers?",
+        ),
+        (
+            changed(("  full: {}", "  full: {split: 2}\n  full-1: {}")),
+            "mine.yaml, line 14, subperiods.full-1: two subperiods would be called full-1: this one and one of full\n"
+            "    → rename one of them",
+        ),
+        (
+            changed(("subperiods:", "pricing: {run: [time_series, time_series]}\nsubperiods:")),
+            "mine.yaml, line 12, pricing.run: 'time_series' stands twice\n    → name each once",
+        ),
+        (
+            changed(("data:", "demo: {first: 1999-01, last: 1990-01}\ndata:")),
+            "mine.yaml, line 2, demo: runs backwards, from 1999-01 to 1990-01\n    → swap first and last",
+        ),
+    ],
+)
+def test_problems_of_single_options(folder: Path, text: str, expected: str) -> None:
+    assert problems(folder, text) == [expected]
+
+
+def test_one_name_in_two_sections_is_not_ambiguous(folder: Path) -> None:
+    """`rank_on` looks among the betas only, `paper.main` among the portfolios only."""
+    text = changed(
+        ("  monthly60: {window", "  ten: {window"), ("rank_on: monthly60", "rank_on: ten")
+    )
+    study = load_study(write(folder, text))
+    assert (study.sorts["ten"].rank_on, study.paper.main) == ("ten", "ten")

@@ -109,6 +109,19 @@ def _subperiod_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
             found.append((("subperiods", name), said, "swap from and to"))
         if "split" in options and "every" in options:
             found.append((("subperiods", name), "has both split and every", "keep one of the two"))
+    return found + _name_findings(content["subperiods"])
+
+
+def _name_findings(subperiods: dict[str, Any]) -> list[Finding]:
+    """Parts of a split that would share a name. Those of `every` depend on the data, and are told when they are cut."""
+    found: list[Finding] = []
+    owners: dict[str, str] = {}
+    for name, options in subperiods.items():
+        parts = [f"{name}-{index}" for index in range(1, options.get("split", 0) + 1)]
+        for part in parts or [name]:
+            if "every" not in options and owners.setdefault(part, name) != name:
+                said = f"two subperiods would be called {part}: this one and one of {owners[part]}"
+                found.append((("subperiods", name), said, "rename one of them"))
     return found
 
 
@@ -122,6 +135,56 @@ def _screen_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
         )
         for index, screen in enumerate(content["intake"]["screens"])
         if screen["column"] not in known
+    ]
+
+
+def _column_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    """Columns of the returns that an option needs, and columns that stand for two things."""
+    place: Place = ("data", "returns", "columns")
+    columns = content["data"]["returns"]["columns"]
+    found: list[Finding] = []
+    if isinstance(columns["return"], dict) and "price" not in columns:
+        said = "returns from prices need a price column, and there is none"
+        found.append(((*place, "return"), said, "add price under data.returns.columns"))
+    owners: dict[str, str] = {}
+    for name in (n for n in _MEANT_ONCE if isinstance(columns.get(n), str)):
+        if owners.setdefault(columns[name], name) != name:
+            said = f"the column {columns[name]!r} is named as {owners[columns[name]]} already"
+            found.append(((*place, name), said, "one column cannot be both: change one of the two"))
+    return found
+
+
+_MEANT_ONCE = ("security", "date", "return", "size", "price", "final_return", "exit_reason")
+
+
+def _delisting_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
+    place: Place = ("intake", "delisting", "by_reason")
+    by_reason = content["intake"]["delisting"]["by_reason"]
+    found: list[Finding] = []
+    if by_reason and "exit_reason" not in content["data"]["returns"]["columns"]:
+        said = (
+            "final returns by reason need a column exit_reason, and data.returns.columns has none"
+        )
+        found.append(
+            (place, said, "add exit_reason under data.returns.columns, or remove by_reason")
+        )
+    for code in by_reason:
+        if (*place, str(code)) not in file.lines:  # as 007, which YAML takes for 7
+            said = f"a code that YAML takes for {code!r} is not what is written"
+            found.append((place, said, "put it in quotes"))
+    return found
+
+
+def _demo_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    demo = content.get("demo")
+    if demo is None or demo["first"] <= demo["last"]:
+        return []
+    return [
+        (
+            ("demo",),
+            f"runs backwards, from {demo['first']} to {demo['last']}",
+            "swap first and last",
+        )
     ]
 
 
@@ -176,7 +239,10 @@ CHECKS = (
     ({"data"}, _market_findings),
     ({"data", "portfolios"}, _riskless_findings),
     ({"subperiods"}, _subperiod_findings),
+    ({"data"}, _column_findings),
     ({"intake", "data"}, _screen_findings),
+    ({"intake", "data"}, _delisting_findings),
+    ({"demo"}, _demo_findings),
     ({"paper", "portfolios", "subperiods"}, _paper_findings),
     ({"study", "demo", "data", "portfolios"}, _file_findings),
 )

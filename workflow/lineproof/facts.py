@@ -21,8 +21,8 @@ def facts(study: Study) -> dict[str, Any]:
         "invented": study.demo is not None,
         "level": study.level,
         "hac_lag": study.hac_lag,
-        "missing_final_return": study.missing_final_return,
-        "screens": list(study.screens),
+        "missing_final_return": study.intake.missing_final_return,
+        "screens": list(study.intake.screens),
         "sources": [
             {
                 "place": place,

@@ -209,8 +209,10 @@ def copy_as_csv(table: str | os.PathLike, path: str | os.PathLike) -> None:
 
 
 def write_csv(frame: pd.DataFrame, path: str | os.PathLike) -> None:
-    """Write a frame as CSV at full precision, with UTF-8 and Unix line ends."""
-    write_text(frame.to_csv(index=False, lineterminator="\n"), path)
+    """Write a frame as CSV at full precision, with UTF-8 and Unix line ends; no text in it is a formula."""
+    from lineproof.spreadsheet import texts_as_text
+
+    write_text(texts_as_text(frame).to_csv(index=False, lineterminator="\n"), path)
 
 
 def read_json(path: str | os.PathLike) -> Any:
@@ -236,13 +238,18 @@ def write_if_changed(text: str, path: str | os.PathLike) -> None:
 
 
 def write_bytes(content: bytes | memoryview | pa.Buffer, path: str | os.PathLike) -> None:
-    """Write to a file beside `path`, then rename: no reader and no killed run ever sees half a file."""
+    """Write to a file beside `path`, then rename: no reader and no killed run ever sees half a file.
+
+    Raises OSError that names `path`, such as for a disk that is full.
+    """
     path = Path(path)
     path.parent.mkdir(parents=True, exist_ok=True)
     beside = path.with_name(f".{path.name}.{os.getpid()}.part")
     try:
         beside.write_bytes(content)
         beside.replace(path)
+    except OSError as error:
+        raise OSError(error.errno, error.strerror, str(path)) from error
     finally:
         beside.unlink(missing_ok=True)
 

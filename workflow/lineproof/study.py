@@ -15,18 +15,23 @@ from lineproof.yamlfile import read_yaml
 
 @dataclass(frozen=True)
 class Source:
-    """A raw file and how to read it; `label` is the path as written in the study file."""
+    """A raw file and how to read it; `label` is the path as written in the study file.
+
+    `dates` is None where their format is to be found out. `return_from` names the column that returns are computed
+    from, and then `columns` has no return.
+    """
 
     file: str
     label: str
     columns: dict[str, str]
     unit: str
     missing: tuple[str, ...]
-    dates: str
+    dates: str | None
     separator: str | None
     source: str
     access: str
     may_share: bool
+    return_from: str | None = None
 
     def reading(self) -> dict[str, Any]:
         """What a reader needs to know, as plain values."""
@@ -37,7 +42,27 @@ class Source:
             "missing": list(self.missing),
             "dates": self.dates,
             "separator": self.separator,
+            "return_from": self.return_from,
         }
+
+
+@dataclass(frozen=True)
+class IntakeSpec:
+    """What becomes of questionable rows: the keyword arguments of the validation, all returns decimal.
+
+    `stale_run` is the length of a run of zero returns from which rows are not eligible, None for no such screen;
+    `final_return_by_reason` goes before `missing_final_return`, which is None to leave a last return as it is.
+    """
+
+    screens: tuple[dict[str, Any], ...]
+    outliers: dict[str, str]
+    return_after_hole: str
+    stale_run: int | None
+    missing_final_return: float | None
+    final_return_by_reason: dict[str, float]
+    allow_partial_last_month: bool
+    other_unit_stop_above: float
+    same_month_rows: str
 
 
 @dataclass(frozen=True)
@@ -112,9 +137,7 @@ class Study:
     riskless: Source | None  # None where every return is in excess of it already
     riskless_quoted: str
     riskless_frequency: str | None
-    screens: tuple[dict[str, Any], ...]
-    missing_final_return: float | None
-    same_month_rows: str
+    intake: IntakeSpec
     betas: dict[str, BetaSpec]
     sorts: dict[str, SortSpec]
     subperiods: dict[str, SubperiodSpec]
@@ -166,8 +189,7 @@ def load_study(path: str | os.PathLike) -> Study:
 
 
 def _build(content: dict[str, Any], path: Path) -> Study:
-    data, intake, paper = content["data"], content["intake"], content["paper"]
-    missing_final = intake["delisting"]["missing_final_return"]
+    data, paper = content["data"], content["paper"]
     lag = content["pricing"]["hac_lag"]
     run = content["pricing"]["run"]
     return Study(
@@ -176,9 +198,7 @@ def _build(content: dict[str, Any], path: Path) -> Study:
         demo=content.get("demo"),
         returns=_source(data["returns"], path),
         **_series(data, path),
-        screens=tuple(intake["screens"]),
-        missing_final_return=None if missing_final == "leave" else float(missing_final),
-        same_month_rows=intake["same_month_rows"],
+        intake=_intake(content["intake"]),
         betas={
             name: BetaSpec(name, o["estimator"], o["window"], o["min"])
             for name, o in content["betas"].items()
@@ -218,6 +238,23 @@ def _series(data: dict[str, Any], path: Path) -> dict[str, Any]:
     }
 
 
+def _intake(options: dict[str, Any]) -> IntakeSpec:
+    leaving = options["delisting"]
+    missing = leaving["missing_final_return"]
+    return IntakeSpec(
+        screens=tuple(options["screens"]),
+        outliers=dict(options["outliers"]),
+        stale_run=options.get("stale_prices", {}).get("run"),
+        missing_final_return=None if missing == "leave" else float(missing),
+        final_return_by_reason={str(code): float(r) for code, r in leaving["by_reason"].items()},
+        other_unit_stop_above=float(options["other_unit_stop_above"]),
+        **{
+            key: options[key]
+            for key in ("return_after_hole", "allow_partial_last_month", "same_month_rows")
+        },
+    )
+
+
 def _choice(value: str | list[str]) -> str | tuple[str, ...]:
     return value if isinstance(value, str) else tuple(value)
 
@@ -243,17 +280,20 @@ def _sort(name: str, options: dict[str, Any], path: Path) -> SortSpec:
 
 
 def _source(options: dict[str, Any], path: Path) -> Source:
+    columns = dict(options["columns"])
+    computed = columns.pop("return")["from"] if isinstance(columns.get("return"), dict) else None
     return Source(
         file=_from_here((path.parent / options["file"]).resolve()),
         label=options["file"],
-        columns=dict(options["columns"]),
+        columns=columns,
         unit=options["unit"],
         missing=tuple(options["missing"]),
-        dates=options["dates"],
+        dates=options.get("dates"),
         separator=options.get("separator"),
         source=options["source"],
         access=options["access"],
         may_share=options["may_share"],
+        return_from=computed,
     )
 
 

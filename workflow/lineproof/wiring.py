@@ -87,9 +87,7 @@ class Wiring:
         return {
             "returns": study.returns.reading(),
             **self._series(),
-            "screens": list(study.screens),
-            "missing_final_return": study.missing_final_return,
-            "same_month_rows": study.same_month_rows,
+            "rules": asdict(study.intake),
         }
 
     def _series(self) -> dict[str, Any]:
