@@ -49,7 +49,7 @@ def subperiod(name: str, first: str, last: str, title: str | None = None) -> dic
     """A subperiod as the pipeline lists it."""
     months = len(pd.period_range(first, last, freq="M"))
     title = title or f"{first[:4]}–{last[:4]}"
-    return {"name": name, "title": title, "first": first, "last": last, "n_months": months}
+    return {"name": name, "title": title, "first": first, "last": last, "n_periods": months}
 
 
 def counts(rows: list[tuple[str, str, str, str, str, float]]) -> pd.DataFrame:
@@ -57,7 +57,7 @@ def counts(rows: list[tuple[str, str, str, str, str, float]]) -> pd.DataFrame:
     frame = pd.DataFrame(
         rows, columns=["subperiod", "analysis", "variant", "asset", "term", "estimate"]
     )
-    frame = frame.assign(sort="-", se_kind="-", n_months=0, n_assets=0, status="ok", reason="")
+    frame = frame.assign(sort="-", se_kind="-", n_periods=0, n_assets=0, status="ok", reason="")
     for column in (
         "se",
         "statistic",
@@ -90,9 +90,9 @@ def sample_rows(
         rows.append(("-", "sample", "month", month, "n_with_beta", max(0, 200 + place % 150 - 24)))
     for each in periods:
         values = {
-            "n_months": each["n_months"],
+            "n_periods": each["n_periods"],
             "n_securities": 700,
-            "n_security_months": 253_112,
+            "n_security_periods": 253_112,
             "mean_alive": 281.25,
             "min_alive": 250,
             "max_alive": 1449,

@@ -156,7 +156,7 @@ ESTIMATES = pa.DataFrameSchema(
         "p_one_sided": _number(pa.Check.in_range(0, 1)),
         "critical": _number(),
         "critical_one_sided": _number(),
-        "n_months": _count(),
+        "n_periods": _count(),
         "n_assets": _count(),
         "status": _text(checks=pa.Check.isin(["ok", "undefined"])),
         "reason": _text(),

@@ -30,7 +30,7 @@ def describe_sample(
     return _as_estimates(rows)
 
 
-_ROW = ["subperiod", "analysis", "variant", "asset", "term", "estimate", "n_months"]
+_ROW = ["subperiod", "analysis", "variant", "asset", "term", "estimate", "n_periods"]
 Row = tuple[str, str, str, str, str, float, int]  # in the order of _ROW
 
 
@@ -79,15 +79,15 @@ def _subperiod_rows(
     by_month = part.groupby("date")["total_return"].mean()
     start, end = month_number([first, last])
     beginning, ending = spans["min"].min(), spans["max"].max()
-    n_months = subperiod["n_months"]
+    n_periods = subperiod["n_periods"]
     entered = spans["min"].between(start, end) & (spans["min"] > beginning)
     left = spans["max"].between(start, end) & (spans["max"] < ending)
     values = {
-        "n_months": n_months,
+        "n_periods": n_periods,
         "n_securities": part["security"].nunique(),
-        "n_security_months": len(part),
-        "mean_alive": len(part) / n_months,
-        "min_alive": alive.min() if len(alive) == n_months else 0,
+        "n_security_periods": len(part),
+        "mean_alive": len(part) / n_periods,
+        "min_alive": alive.min() if len(alive) == n_periods else 0,
         "max_alive": alive.max() if len(alive) else 0,
         "n_entries": entered.sum(),
         "n_exits": left.sum(),
@@ -95,7 +95,7 @@ def _subperiod_rows(
         "sd_return": by_month.std(),
     }
     name = subperiod["name"]
-    return [(name, "sample", "panel", "all", *each, n_months) for each in values.items()]
+    return [(name, "sample", "panel", "all", *each, n_periods) for each in values.items()]
 
 
 def _as_estimates(rows: list[Row]) -> pd.DataFrame:

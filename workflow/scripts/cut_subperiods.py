@@ -13,5 +13,5 @@ with joblog.job(snakemake):
         store.write_table(cut, folder / f"{name}.parquet", "subperiod")
     store.keep_only(cuts, folder)
     store.write_json(
-        [asdict(s) | {"n_months": s.n_months} for s in subperiods], folder / "index.json"
+        [asdict(s) | {"n_periods": s.n_periods} for s in subperiods], folder / "index.json"
     )

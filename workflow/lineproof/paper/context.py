@@ -54,7 +54,7 @@ class Context:
 
     Attributes:
         estimates: one row a number, as `book.Book` reads it.
-        subperiods: dictionaries with name, title, first, last ("1955-01") and n_months.
+        subperiods: dictionaries with name, title, first, last ("1955-01") and n_periods.
         facts: what `lineproof.facts.facts` says of the study.
         intake: labels of the data's faults and screens, under "faults" and "screens".
     """

@@ -167,7 +167,7 @@ def _line_rows(context: Context, sort: str, period: Subperiod) -> list[Row]:
 
 
 def _sizes(number: Number) -> tuple[Cell, Cell]:
-    return cell(number, "count", "n_months"), cell(number, "count", "n_assets")
+    return cell(number, "count", "n_periods"), cell(number, "count", "n_assets")
 
 
 def _beneath(number: Number) -> Cell:

@@ -9,9 +9,9 @@ from lineproof.paper.specification import EMPTY, Cell, Column, Panel, Row, Table
 from lineproof.paper.symbols import Phrase, said
 
 _COUNTS = (
-    ("n_months", "Months", "count"),
+    ("n_periods", "Months", "count"),
     ("n_securities", "Securities", "count"),
-    ("n_security_months", "Security-months", "count"),
+    ("n_security_periods", "Security-months", "count"),
     ("n_entries", "Entries", "count"),
     ("n_exits", "Exits", "count"),
 )
