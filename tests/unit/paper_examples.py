@@ -123,6 +123,7 @@ def facts(sorts: dict[str, dict[str, Any]], **changes: Any) -> dict[str, Any]:
         "market_name": "the Kestrel Sound Exchange",
         "invented": True,
         "level": 0.05,
+        "period": asdict(FREQUENCIES["monthly"]),
         "hac_lag": None,
         "missing_final_return": None,
         "screens": [{"column": "price", "at_least": 1}],
@@ -153,6 +154,7 @@ def ranked_facts(title: str = "10 groups, equally weighted", groups: int = 10) -
         "hold": 12,
         "estimator_label": "ordinary least squares",
         "window": 60,
+        "window_periods": "months",
         "min_obs": 24,
     }
 

@@ -13,6 +13,8 @@ class Frequency:
     make up a window. `on_a` and `on_the` place something within one: "in a month", "on the day".
     `a_year` is the number of periods by which a mean is put on a yearly scale; 252 trading days is
     common practice.
+    `mean_format` is how mean returns are printed, a key of `paper.rounding.FORMATS`: what is earned
+    in a day is some twentieth of what is earned in a month, and needs the digits.
     """
 
     noun: str
@@ -22,9 +24,28 @@ class Frequency:
     on_a: str
     on_the: str
     a_year: int
+    mean_format: str
 
 
 FREQUENCIES: dict[str, Frequency] = {
-    "monthly": Frequency("month", "months", "monthly", "months", "in a month", "in the month", 12),
-    "daily": Frequency("day", "days", "daily", "trading days", "on a day", "on the day", 252),
+    "monthly": Frequency(
+        noun="month",
+        nouns="months",
+        adjective="monthly",
+        counted="months",
+        on_a="in a month",
+        on_the="in the month",
+        a_year=12,
+        mean_format="percent",
+    ),
+    "daily": Frequency(
+        noun="day",
+        nouns="days",
+        adjective="daily",
+        counted="trading days",
+        on_a="on a day",
+        on_the="on the day",
+        a_year=252,
+        mean_format="fine_percent",
+    ),
 }

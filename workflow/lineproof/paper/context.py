@@ -9,6 +9,7 @@ from typing import Any
 
 import pandas as pd
 
+from lineproof.frequency import Frequency
 from lineproof.paper.book import Book
 
 MONTHS = [
@@ -85,6 +86,11 @@ class Context:
         exact = [each for each in self.periods if each.name == wanted]
         parts = [each for each in self.periods if each.name.startswith(f"{wanted}-")]
         return (exact or parts or self.periods)[0]
+
+    @property
+    def period(self) -> Frequency:
+        """What a period of the study is called, and how what it earns is printed."""
+        return Frequency(**self.facts["period"])
 
     @property
     def level(self) -> float:
