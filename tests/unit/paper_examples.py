@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import asdict
 from functools import cache
 from typing import Any
 
@@ -10,6 +11,7 @@ import numpy as np
 import pandas as pd
 
 from lineproof.analyses import ANALYSES
+from lineproof.frequency import FREQUENCIES
 from lineproof.paper.context import Context
 from lineproof.pricing import price_subperiod
 

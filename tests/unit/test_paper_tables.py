@@ -344,7 +344,7 @@ MARKET_MEAN = "ten/full/market_line/-/all/market_mean/-"
         (
             "joint_tests",
             "full:statistic",
-            "months",
+            "periods",
             "ten/full/joint_alpha/f/all/alpha/-",
             "n_periods",
         ),

@@ -31,7 +31,9 @@ def worked() -> Regression:
     return regress(RETURNS, MARKET)
 
 
-def _data(seed: int, n_periods: int, n_assets: int, n_factors: int) -> tuple[np.ndarray, np.ndarray]:
+def _data(
+    seed: int, n_periods: int, n_assets: int, n_factors: int
+) -> tuple[np.ndarray, np.ndarray]:
     rng = np.random.default_rng(seed)
     factors = rng.normal(0.005, 0.04, (n_periods, n_factors))
     betas = rng.uniform(0.3, 1.6, (n_factors, n_assets))
