@@ -53,7 +53,7 @@ def number(estimate: float, p: float, status: str = "ok") -> Number:
     """A number with an estimate and a p value; the rest is out of play."""
     reason = "" if status == "ok" else "too few"
     return Number(
-        "a", estimate, NAN, NAN, NAN, NAN, p, NAN, NAN, NAN, n_months=9, n_assets=3,
+        "a", estimate, NAN, NAN, NAN, NAN, p, NAN, NAN, NAN, n_periods=9, n_assets=3,
         status=status, reason=reason,
     )  # fmt: skip
 

@@ -338,9 +338,9 @@ MARKET_MEAN = "ten/full/market_line/-/all/market_mean/-"
         (
             "joint_tests",
             "full:statistic",
-            "months",
+            "periods",
             "ten/full/joint_alpha/f/all/alpha/-",
-            "n_months",
+            "n_periods",
         ),
         ("market_line", "full:estimate", "gamma0", f"{LINE}/intercept/{EIV}", "estimate"),
         ("market_line", "full:t", "gamma1", f"{LINE}/slope/{EIV}", "statistic"),

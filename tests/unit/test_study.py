@@ -512,3 +512,45 @@ def test_one_name_in_two_sections_is_not_ambiguous(folder: Path) -> None:
     )
     study = load_study(write(folder, text))
     assert (study.sorts["ten"].rank_on, study.paper.main) == ("ten", "ten")
+
+
+    text = changed(
+        ("title: My study}", "title: My study, frequency: daily}"),
+        ("monthly60: {window: 60, min: 24}", "monthly60: {window: 250, min: 120}"),
+    )
+    study = load_study(write(folder, text))
+    assert (study.frequency, study.betas["monthly60"].returns) == ("daily", "daily")
+    assert load_study(write(folder, GOOD)).betas["monthly60"].returns == "monthly"
+
+
+@pytest.mark.parametrize(
+    ("edits", "expected"),
+    [
+        (
+            [("window: 60, min: 24", "returns: daily, window: 250, min: 120")],
+            "mine.yaml, line 9, betas.monthly60.returns: daily returns are asked for, and the study has monthly ones "
+            "only\n    → declare data.returns.frequency: daily if the file has days, or use returns: own",
+        ),
+        (
+            [("My study}", "My study, frequency: daily}"), ("window: 60, min: 24", "window: 250")],
+            "mine.yaml, line 9, betas.monthly60: the key 'min' is missing\n"
+            "    → betas from daily returns need it, in trading days",
+        ),
+        (
+            [("window: 60, min: 24", "window: 601, min: 24")],
+            "mine.yaml, line 9, betas.monthly60.window: 601 is out of range\n    → give at most 600 months",
+        ),
+        (
+            [
+                ("title: My study}", "title: My study, frequency: daily}\ndemo: {}"),
+                ("window: 60, min: 24", "window: 250, min: 120"),
+            ],
+            "mine.yaml, line 1, study.frequency: the invented market has monthly returns only\n"
+            "    → use frequency: monthly, or leave out the section demo",
+        ),
+    ],
+)
+def test_daily_returns_must_exist_and_be_counted_in_days(
+    folder: Path, edits: list[tuple[str, str]], expected: str
+) -> None:
+    assert problems(folder, changed(*edits)) == [expected]

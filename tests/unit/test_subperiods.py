@@ -192,7 +192,7 @@ def test_the_contract_refuses_a_month_without_a_market() -> None:
 
 def test_a_subperiod_in_a_hole_of_all_test_assets() -> None:
     main = returns_of("2000-01-31", 36).drop(index=range(10, 20))
-    with pytest.raises(KnownProblem, match=r"subperiods\.gap: no test asset has a month in it"):
+    with pytest.raises(KnownProblem, match=r"subperiods\.gap: no test asset has a return in it"):
         cut_subperiods(
             {"main": main},
             market_of("2000-01-31", 36),

@@ -14,16 +14,50 @@ def results_folder(name: str) -> str:
     return f"results/{name}"
 
 
-def _beta_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
-    return [
-        (
-            ("betas", name, "min"),
-            f"min {options['min']} is longer than the window of {options['window']} months",
-            "lower min or lengthen window",
-        )
-        for name, options in content["betas"].items()
-        if options["min"] > options["window"]
-    ]
+def beta_returns(options: dict[str, Any], content: dict[str, Any]) -> str:
+    """The frequency of the returns that an entry under `betas` is estimated from, "monthly" or "daily"."""
+    return content["study"]["frequency"] if options["returns"] == "own" else options["returns"]
+
+
+def _beta_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
+    found: list[Finding] = []
+    for name, options in content["betas"].items():
+        place: Place = ("betas", name)
+        daily = beta_returns(options, content) == "daily"
+        nouns = "trading days" if daily else "months"
+        if options["min"] > options["window"]:
+            said = f"min {options['min']} is longer than the window of {options['window']} {nouns}"
+            found.append(((*place, "min"), said, "lower min or lengthen window"))
+        for key in ("window", "min"):
+            if daily and key not in file.content["betas"][name]:
+                said = f"the key {key!r} is missing"
+                found.append((place, said, "betas from daily returns need it, in trading days"))
+            elif not daily and options[key] > _MOST_MONTHS:
+                said = f"{options[key]} is out of range"
+                found.append(((*place, key), said, f"give at most {_MOST_MONTHS} months"))
+        if daily and not _has_days(content):
+            said = "daily returns are asked for, and the study has monthly ones only"
+            change = (
+                "declare data.returns.frequency: daily if the file has days, or use returns: own"
+            )
+            found.append(((*place, "returns"), said, change))
+    return found
+
+
+_MOST_MONTHS = 600
+
+
+def _has_days(content: dict[str, Any]) -> bool:
+    delivered = content["data"]["returns"].get("frequency")
+    return "daily" in (content["study"]["frequency"], delivered)
+
+
+def _frequency_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    if content["study"]["frequency"] == "daily" and "demo" in content:
+        said = "the invented market has monthly returns only"
+        change = "use frequency: monthly, or leave out the section demo"
+        return [(("study", "frequency"), said, change)]
+    return []
 
 
 _ONLY_SUPPLIED = ("file", "columns", "is", "unit", "missing", "dates", "separator")
@@ -234,7 +268,8 @@ def _file_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
 
 # What the schema cannot see; a check runs when the sections it reads are sound.
 CHECKS = (
-    ({"betas"}, _beta_findings),
+    ({"betas", "study", "data"}, _beta_findings),
+    ({"study", "demo"}, _frequency_findings),
     ({"portfolios", "betas", "data"}, _sort_findings),
     ({"data"}, _market_findings),
     ({"data", "portfolios"}, _riskless_findings),

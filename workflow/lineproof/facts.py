@@ -7,6 +7,7 @@ from typing import Any
 
 from lineproof.designs import WEIGHTS
 from lineproof.estimators import ESTIMATORS
+from lineproof.frequency import FREQUENCIES
 from lineproof.study import SortSpec, Study
 
 
@@ -20,6 +21,7 @@ def facts(study: Study) -> dict[str, Any]:
         "market_build": study.market_build,
         "invented": study.demo is not None,
         "level": study.level,
+        "period": asdict(FREQUENCIES[study.frequency]),
         "hac_lag": study.hac_lag,
         "missing_final_return": study.intake.missing_final_return,
         "screens": list(study.intake.screens),
@@ -47,10 +49,11 @@ def _sort_facts(sort: SortSpec, study: Study) -> dict[str, Any]:
         **said,
         "groups": sort.groups,
         "weights": sort.weights,
-        "weights_label": WEIGHTS[sort.weights].label,
+        "weights_label": WEIGHTS[sort.weights].label.format(period=FREQUENCIES[study.frequency]),
         "form_month": sort.form_month,
         "hold": sort.hold,
         "estimator_label": ESTIMATORS[betas.estimator].label,
         "window": betas.window,
+        "window_periods": FREQUENCIES[betas.returns].counted,
         "min_obs": betas.min_obs,
     }

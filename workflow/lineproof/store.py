@@ -27,25 +27,31 @@ _SCRATCH = ".scratch-"
 
 
 def read_table(path: str | os.PathLike, columns: list[str] | None = None) -> pd.DataFrame:
-    """Read a Parquet table of ours, all columns or some."""
+    """Read a Parquet table of ours, all columns or some; `security` is a categorical, its names held once."""
     import pyarrow.parquet as pq
 
-    return pq.read_table(path, columns=columns).to_pandas()
+    return pq.read_table(path, columns=columns, read_dictionary=["security"]).to_pandas()
 
 
-def write_table(frame: pd.DataFrame, path: str | os.PathLike, contract: str | None) -> None:
-    """Check a frame against its contract and write it as Parquet: the same frame gives the same bytes.
+def write_table(
+    frame: pd.DataFrame,
+    path: str | os.PathLike,
+    contract: str | None,
+    frequency: str = "monthly",
+) -> None:
+    """Check a frame against its contract and write it as Parquet: the same content gives the same bytes.
 
-    `contract` names a table of `frames.CONTRACTS`; None is for tables outside the pipeline, such as the demo's truth.
+    `contract` names a table of `frames.CONTRACTS`, and `frequency` says how its rows are dated; None is for tables
+    outside the pipeline, such as the demo's truth. A categorical of text is written as the text.
     """
     import pyarrow as pa
     import pyarrow.parquet as pq
 
-    from lineproof.frames import CONTRACTS
+    from lineproof import frames
 
     if contract is not None:
-        frame = CONTRACTS[contract].validate(frame)
-    table = pa.Table.from_pandas(frame, preserve_index=False)
+        frame = frames.contract(contract, frequency).validate(frame)
+    table = _plain(pa.Table.from_pandas(frame, preserve_index=False))
     sink = pa.BufferOutputStream()
     pq.write_table(table, sink, row_group_size=_ROW_GROUP, **_encoding(table.schema))
     write_bytes(sink.getvalue(), path)
@@ -206,6 +212,22 @@ def copy_as_csv(table: str | os.PathLike, path: str | os.PathLike) -> None:
             for number, batch in enumerate(file.iter_batches(_ROW_GROUP))
         ] or [file.schema_arrow.empty_table().to_pandas().to_csv(index=False, lineterminator="\n")]
     write_text("".join(texts), path)
+
+
+def _plain(table: pa.Table) -> pa.Table:
+    """The table without dictionaries, with the notes that pandas leaves for a frame of plain text."""
+    import pyarrow as pa
+
+    coded = [field.name for field in table.schema if pa.types.is_dictionary(field.type)]
+    if not coded:
+        return table
+    for name in coded:
+        place = table.column_names.index(name)
+        table = table.set_column(place, name, table[name].cast(pa.large_string()))
+    like = pa.Table.from_pandas(
+        table.slice(0, 0).to_pandas(ignore_metadata=True), preserve_index=False
+    )
+    return table.cast(like.schema)
 
 
 def write_csv(frame: pd.DataFrame, path: str | os.PathLike) -> None:

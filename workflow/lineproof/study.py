@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from lineproof.cross_checks import CHECKS, results_folder
+from lineproof.cross_checks import CHECKS, beta_returns, results_folder
 from lineproof.problems import KnownProblem, Problem
 from lineproof.schema import as_problems, schema_findings, with_defaults
 from lineproof.yamlfile import read_yaml
@@ -67,10 +67,11 @@ class IntakeSpec:
 
 @dataclass(frozen=True)
 class BetaSpec:
-    """Options of one rolling estimate of beta; `window` and `min_obs` in months."""
+    """Options of one rolling estimate of beta; `window` and `min_obs` in periods of `returns`, "monthly" or "daily"."""
 
     name: str
     estimator: str
+    returns: str
     window: int
     min_obs: int
 
@@ -127,6 +128,7 @@ class Study:
     market_name: str
     seed: int
     level: float
+    frequency: str
     demo: dict[str, Any] | None
     returns: Source
     returns_are: str
@@ -188,19 +190,22 @@ def load_study(path: str | os.PathLike) -> Study:
     return _build(filled, file.path)
 
 
+_SAME_NAME = ("name", "title", "market_name", "seed", "level", "frequency")
+
+
 def _build(content: dict[str, Any], path: Path) -> Study:
     data, paper = content["data"], content["paper"]
     lag = content["pricing"]["hac_lag"]
     run = content["pricing"]["run"]
     return Study(
         path=path,
-        **{key: content["study"][key] for key in ("name", "title", "market_name", "seed", "level")},
+        **{key: content["study"][key] for key in _SAME_NAME},
         demo=content.get("demo"),
         returns=_source(data["returns"], path),
         **_series(data, path),
         intake=_intake(content["intake"]),
         betas={
-            name: BetaSpec(name, o["estimator"], o["window"], o["min"])
+            name: BetaSpec(name, o["estimator"], beta_returns(o, content), o["window"], o["min"])
             for name, o in content["betas"].items()
         },
         sorts={name: _sort(name, options, path) for name, options in content["portfolios"].items()},

@@ -64,20 +64,23 @@ class Wiring:
         found: dict[str, dict[str, Any]] = {
             "validate_returns": self._validation(),
             "cut_subperiods": {
+                "frequency": study.frequency,
                 "main": study.paper.main,
                 "specs": {name: asdict(spec) for name, spec in study.subperiods.items()},
             },
             "price_subperiod": {
+                "frequency": study.frequency,
                 "level": study.level,
                 "hac_lag": study.hac_lag,
                 "analyses": list(ANALYSES) if study.analyses == "all" else list(study.analyses),
             },
+            "describe_sample": {"frequency": study.frequency},
             "write_paper": {"facts": facts(study)},
         }
         if study.demo is not None:
             found["make_demo"] = dict(study.demo)
         for name, spec in study.betas.items():
-            found[f"estimate_betas-{name}"] = asdict(spec)
+            found[f"estimate_betas-{name}"] = {**asdict(spec), "dated": study.frequency}
         for name in study.sorts:
             found[f"form_portfolios-{name}"] = self._sort(name)
         return found
@@ -117,14 +120,25 @@ class Wiring:
         if spec.source is not None:
             return {
                 "design": spec.design,
+                "frequency": self.study.frequency,
                 "reading": spec.source.reading(),
                 "returns_are": spec.returns_are,
             }
         return {
             "design": spec.design,
+            "frequency": self.study.frequency,
             "name": name,
             **{key: getattr(spec, key) for key in ("groups", "weights", "form_month", "hold")},
         }
+
+    def beta_inputs(self, name: str) -> dict[str, str]:
+        """The panel and the market that an entry under `betas` is estimated from."""
+        study = self.study
+        if study.betas[name].returns == study.frequency:
+            tables = {"panel": "panel", "market": "market"}
+        else:
+            tables = {"panel": "daily", "market": "market_daily"}
+        return {key: self.path(f"data/{table}.parquet") for key, table in tables.items()}
 
     def sort_inputs(self, name: str) -> dict[str, str]:
         """The tables or files a set of test assets is made from."""

@@ -29,6 +29,12 @@ def sort_inputs(wildcards):
     return list(wiring.sort_inputs(wildcards.sort).values())
 
 
+def beta_inputs(wildcards):
+    """The panel and the market that betas are estimated from, by name."""
+    checkpoints.validate_returns.get()
+    return wiring.beta_inputs(wildcards.estimate)
+
+
 def priced(wildcards):
     """The estimates of each subperiod, known once the subperiods are cut."""
     checkpoints.validate_returns.get()
