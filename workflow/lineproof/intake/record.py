@@ -1,8 +1,8 @@
 """The shape of `data/intake.json`: what the intake found, as the data report, the paper and `make check` read it.
 
-Counts are integers, returns decimal a period, periods and dates ISO text ("2001-05", "2001-05-31"). Every key of `Intake`
-marked NotRequired may be absent, in a file of an earlier version or because the study has nothing of the kind: a reader
-then leaves that part out.
+Counts are integers, returns decimal a period, periods and dates ISO text ("2001-05", "2001-05-31"). Every key of
+`Intake` marked NotRequired may be absent, in a file of an earlier version or because the study has nothing of the kind:
+a reader then leaves that part out.
 """
 
 from __future__ import annotations
