@@ -45,7 +45,8 @@ def years(panel: pd.DataFrame) -> pd.Series:
 
 def test_alive_counts_rows_with_a_return(case) -> None:
     panel, periods, found = case
-    expected = panel.groupby("period")["total_return"].count()
+    every = range(panel["period"].min(), panel["period"].max() + 1)
+    expected = panel.groupby("period")["total_return"].count().reindex(every, fill_value=0)
     said = found["alive"]
     assert said["periods"] == [periods.name(number) for number in expected.index]
     assert said["alive"] == expected.tolist()

@@ -234,3 +234,11 @@ def check_conserved(file: FileRecord) -> None:
 def survivors_only(intake: Intake) -> bool:
     """Whether no security ever leaves."""
     return any(fault["number"] == SURVIVORS_ONLY for fault in intake["faults"])
+
+
+ANSWERS: dict[Answer, str] = {  # what a reader is told became of the rows
+    "flag": "kept, flagged",
+    "repair": "read without them",
+    "set aside": "set aside",
+    "stop": "stopped",
+}

@@ -40,8 +40,8 @@ class Alive:
         count_periods(chunk.period[ends[held] - 1], first, counts[_LAST])
 
     def result(self) -> AliveEvidence:
-        """Securities with a return in each period that has any row; entries and exits in each year."""
-        numbers, counts = self._counts.known()
+        """Securities with a return in each period from the first row to the last; entries and exits in each year."""
+        numbers, counts = self._counts.whole()
         entered, left = counts[_FIRST].copy(), counts[_LAST].copy()
         entered[:1] = 0
         left[-1:] = 0

@@ -23,10 +23,11 @@ class PeriodCounts:
             self._grow(int(period.min()), int(period.max()))
         return self._counts, self._first
 
-    def known(self) -> tuple[np.ndarray, np.ndarray]:
-        """Numbers of the periods that have any count, ascending, and their counts (n_rows, n_periods)."""
+    def whole(self) -> tuple[np.ndarray, np.ndarray]:
+        """Numbers of all periods from the first to the last with any count, and their counts (n_rows, n_periods)."""
         found = np.flatnonzero(self._counts.any(axis=0))
-        return found + self._first, self._counts[:, found]
+        low, high = (found[0], found[-1] + 1) if len(found) else (0, 0)
+        return np.arange(low, high) + self._first, self._counts[:, low:high]
 
     def _grow(self, low: int, high: int) -> None:
         n = self._counts.shape[1]

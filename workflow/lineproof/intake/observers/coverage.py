@@ -45,12 +45,12 @@ class Coverage:
 
     def result(self) -> CoverageEvidence:
         """Counts in each year, columns in the order in which they came."""
-        numbers, counts = self._rows.known()
+        numbers, counts = self._rows.whole()
         years = years_of(self._periods, numbers)
         all_years = np.arange(years[0], years[-1] + 1) if len(years) else years
         columns = {}
         for name, column in self._columns.items():
-            held, with_value = column.known()
+            held, with_value = column.whole()
             held_years = years_of(self._periods, held)
             columns[name.removesuffix("_")] = by_year(held_years, with_value[0], all_years)
         return {
