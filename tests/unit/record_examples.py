@@ -139,7 +139,7 @@ def clean() -> dict[str, Any]:
     intake = earlier()
     intake |= {"rows_set_aside": 0, "exact_duplicates": 0, "rows_read": intake["rows_kept"]}
     intake |= {"faults": [], "screens": [], "span": [], "n_missing_returns": 0, "rows_screened": 0}
-    return intake | {"set_aside": [], "evidence": observed(1, MONTHS, 0 + 1)}
+    return intake | {"set_aside": [], "evidence": observed(1, MONTHS, 1)}
 
 
 def hostile() -> dict[str, Any]:

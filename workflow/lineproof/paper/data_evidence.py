@@ -7,10 +7,7 @@ from typing import Any
 from lineproof.paper.recorded import Record, Value, typeset
 from lineproof.paper.rounding import part
 
-QUANTILES = {
-    "0.01": "1 %", "0.05": "5 %", "0.25": "25 %", "0.5": "50 %",
-    "0.75": "75 %", "0.95": "95 %", "0.99": "99 %",
-}  # fmt: skip
+_OUR_NAMES = {"final_return": "final return"}  # other columns are called as in the study file
 _MOMENTS = ("mean", "sd", "min")
 
 
@@ -35,7 +32,7 @@ def coverage_table(record: Record) -> dict[str, Any] | None:
                 }
             )
         rows.append({"year": year, "n": record.at(*whole), "cells": cells})
-    return {"columns": [name.replace("_", " ") for name in columns], "rows": rows}
+    return {"columns": [_OUR_NAMES.get(name, name) for name in columns], "rows": rows}
 
 
 def distribution_rows(record: Record) -> list[dict[str, Any]]:
@@ -46,7 +43,7 @@ def distribution_rows(record: Record) -> list[dict[str, Any]]:
         rows_in_all = each["n"] + each["n_missing"]
         zeros = record.share((*path, "n_zero"), (*path, "n"))
         missing = Value(typeset(part(each["n_missing"], rows_in_all)), "")
-        quantiles = [record.at(*path, "quantiles", key, form="digits") for key in QUANTILES]
+        quantiles = [record.at(*path, "quantiles", key, form="digits") for key in each["quantiles"]]
         rows.append(
             {
                 "decade": each["decade"],
@@ -87,8 +84,6 @@ def _large(record: Record, key: str, place: int) -> dict[str, Any]:
     return {
         "security": each["security"],
         "date": each["date"],
-        "before": each["before"] and each["before"]["date"],
-        "after": each["after"] and each["after"]["date"],
         "returns": _three(record, path, "return_", "percent"),
         "prices": _three(record, path, "price", "as_given") if "price" in each else None,
     }

@@ -14,6 +14,7 @@ from lineproof.paper.context import month
 from lineproof.paper.inline import inline_svg
 from lineproof.paper.page import environment, palette
 from lineproof.paper.recorded import Record, Value, typeset
+from lineproof.paper.rounding import printed, share
 
 PLACES = {
     "data.returns": "Returns",
@@ -110,7 +111,7 @@ def _set_aside(record: Record) -> list[dict[str, Any]] | None:
     if "set_aside" not in record.intake:
         return None
     return [
-        {**group, "n": record.at("set_aside", place, "n")}
+        {**group, "n": record.at("set_aside", place, "n"), "several": group["n"] != 1}
         | {
             "examples": [
                 {**each, "line": record.at("set_aside", place, "examples", at, "line")}
@@ -154,7 +155,10 @@ def _delisting(record: Record) -> dict[str, Any] | None:
         | {"stand_in": record.at("delisting", "by_reason", reason, "stand_in", form="percent")}
         for reason in known["by_reason"]
     ]
-    found["defined"] = None not in (known["mean_with"], known["mean_without"])
+    found["effect"] = None
+    if None not in (known["mean_with"], known["mean_without"]):
+        effect = known["mean_with"] - known["mean_without"]
+        found["effect"] = typeset(printed(effect, "fine_percent"))
     return found
 
 
@@ -190,7 +194,9 @@ def _distribution(record: Record) -> dict[str, Any] | None:
     known = record.get("evidence", "distribution")
     note = "Each decade’s median (circle) and the ranges that hold 50, 90 and 98 per cent of its returns."
     svg = data_figures.drawn("distribution", data_figures.distribution, known)
-    return {"rows": rows, "figure": figure("distribution", "Returns by decade", note, svg)}
+    picture = figure("distribution", "Returns by decade", note, svg)
+    shares = [share(float(key)) for key in known[0]["quantiles"]]
+    return {"rows": rows, "shares": shares, "figure": picture}
 
 
 def _scale(record: Record) -> list[dict[str, Any]] | None:
@@ -205,7 +211,9 @@ def _scale(record: Record) -> list[dict[str, Any]] | None:
         if series and series["points"]:
             name = f"scale-{place}"
             svg = data_figures.drawn(name, data_figures.scale, series)
-            said["figure"] = figure(name, check["what"], series["label"], svg)
+            points = series["points"]
+            note = f"{points[0][0]} to {points[-1][0]}."
+            said["figure"] = figure(name, series["label"], note, svg)
         found.append(said)
     return found
 

@@ -8,14 +8,14 @@ from functools import partial
 from html import escape
 from typing import Any
 
-from lineproof.paper.rounding import DASH, part, printed, significant
+from lineproof.paper.rounding import DASH, as_given, part, printed, significant
 
 FORMS: dict[str, Callable[[Any], str]] = {
     "count": partial(printed, name="count"),
     "percent": partial(printed, name="percent"),
     "fine_percent": partial(printed, name="fine_percent"),
     "digits": partial(significant, digits=3, shift=2),  # per cent
-    "as_given": partial(significant, digits=10),
+    "as_given": as_given,
 }
 
 

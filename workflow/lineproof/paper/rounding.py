@@ -71,7 +71,7 @@ def share(value: float) -> str:
 
 
 def significant(value: float | None, digits: int, shift: int = 0) -> str:
-    """A number times ten to the power `shift`, rounded half up to significant digits and written out.
+    """A number times ten to the power `shift`, rounded half up to so many significant digits and written out.
 
     As `printed`: "" for None, `DASH` for what is not finite, an ASCII minus sign; thousands are set apart by commas.
     """
@@ -79,11 +79,19 @@ def significant(value: float | None, digits: int, shift: int = 0) -> str:
         return ""
     if not math.isfinite(value):
         return DASH
-    exact = Decimal(repr(float(value))).scaleb(shift)
-    if not exact:
-        return "0"
+    rounded = _kept(Decimal(repr(float(value))).scaleb(shift), digits)
+    places = max(digits - 1 - rounded.adjusted(), 0) if rounded else 0
+    return f"{rounded:,.{places}f}"
+
+
+def as_given(value: float, digits: int = 10) -> str:
+    """A number as it was delivered, without trailing zeros; one of more than so many digits is rounded to them."""
+    return f"{_kept(Decimal(repr(float(value))), digits).normalize():,f}"
+
+
+def _kept(exact: Decimal, digits: int) -> Decimal:
     rounded = decimal.Context(prec=digits, rounding=ROUND_HALF_UP).plus(exact)
-    return f"{rounded:,f}" if rounded.as_tuple().exponent <= 0 else f"{int(rounded):,}"
+    return rounded if rounded else abs(rounded)  # nothing is ever printed as minus zero
 
 
 def part(n: int, whole: int) -> str:
