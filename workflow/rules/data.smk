@@ -1,4 +1,4 @@
-# Takes the raw files in: a clean panel, the market, what was set aside, and the counts.
+# Takes the raw files in: a clean panel, the market, what was set aside, and the counts; and shows what was found.
 
 
 checkpoint validate_returns:
@@ -23,3 +23,20 @@ checkpoint validate_returns:
         options=wiring.options("validate_returns"),
     script:
         "../scripts/validate_returns.py"
+
+
+rule write_data_report:
+    input:
+        intake=after_validation("data/intake.json"),
+        options=wiring.options_file("write_paper"),
+        code=wiring.code("write_data_report"),
+    output:
+        report=wiring.path("data_report.html"),
+    log:
+        wiring.path("logs/write_data_report.log"),
+    benchmark:
+        wiring.path("benchmarks/write_data_report.tsv")
+    params:
+        options=wiring.options("write_paper"),
+    script:
+        "../scripts/write_data_report.py"
