@@ -58,7 +58,4 @@ class Chunk:
 
     def where(self, rows: np.ndarray) -> list[str]:
         """Security and date of some rows, by index, as in `000123 on 2001-05-31`."""
-        return [
-            f"{self.names[i]} on {day}"
-            for i, day in zip(self.owner[rows], self.day[rows], strict=True)
-        ]
+        return [f"{self.names[i]} on {day}" for i, day in zip(self.owner[rows], self.day[rows], strict=True)]

@@ -15,7 +15,7 @@ from numba import njit
 from lineproof.intake.decoding import check_utf8, text_of
 from lineproof.intake.stopping import stop
 
-_BLOCK = 1 << 25  # bytes read at a time
+_BLOCK = 1 << 24  # bytes read at a time
 _LONGEST = 1 << 28  # bytes that one line may have
 _N_MISFITS = 1 << 10  # room for lines that do not fit, at first
 _BOM = b"\xef\xbb\xbf"
@@ -193,7 +193,7 @@ def _quoted(data, kind, start, end, quotes, returns):  # pragma: no cover - comp
                 fits = at == start
                 if not fits:
                     before = kind[data[at - 1]]
-                    fits = before == _IS_SEPARATOR or before == _IS_QUOTE
+                    fits = before in (_IS_SEPARATOR, _IS_QUOTE)
             stray = stray or not fits
             inside = not inside
     if quotes % 2:
@@ -205,10 +205,10 @@ def _quoted(data, kind, start, end, quotes, returns):  # pragma: no cover - comp
 
 @njit(cache=True, nogil=True)
 def _all_blank(data, start, end):  # pragma: no cover - compiled
+    n_blank = 0
     for at in range(start, end):
-        if not (data[at] == _BLANK or 9 <= data[at] <= 13):
-            return False
-    return True
+        n_blank += data[at] == _BLANK or 9 <= data[at] <= 13
+    return n_blank == end - start
 
 
 @njit(cache=True, nogil=True)

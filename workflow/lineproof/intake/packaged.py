@@ -46,7 +46,7 @@ class _FrameFormat(TypedFormat):
 
 
 class StataFormat(_FrameFormat):
-    """A .dta file. Dates of months (%tm) are their first day; labelled values are their numbers; .a to .z are missing."""
+    """A .dta file. Months (%tm) are their first day; labelled values are their numbers; .a to .z are missing."""
 
     def _frames(self, n_rows: int) -> Iterator[pd.DataFrame]:
         with pd.read_stata(
