@@ -83,7 +83,7 @@ def test_defaults_are_those_of_the_schema(folder: Path) -> None:
 
 def test_paths_are_relative_to_the_study_file(folder: Path) -> None:
     study = load_study(write(folder, GOOD))
-    assert Path(study.returns.file) == (folder / "returns.csv").resolve()
+    assert study.returns.files == (str((folder / "returns.csv").resolve()),)
     assert study.returns.label == "returns.csv"
 
 

@@ -32,6 +32,6 @@ def from_single_window(sources: Sequence[str], market: pd.DataFrame, **options: 
 def from_supplied(
     sources: Sequence[str], market: pd.DataFrame, *, reading: dict[str, Any], returns_are: str
 ) -> Sorted:
-    """Supplied as return series: the source is one raw file."""
-    supplied = read_series(sources[0], reading, "return").rename(columns={"return": "return_"})
+    """Supplied as return series: the sources are raw files."""
+    supplied = read_series(list(sources), reading, "return").rename(columns={"return": "return_"})
     return take_supplied(supplied, market, returns_are=returns_are)

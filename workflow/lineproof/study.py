@@ -7,19 +7,34 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from lineproof.cross_checks import CHECKS, results_folder
+from lineproof.cross_checks import CHECKS
+from lineproof.intake.formats import given_files, members
 from lineproof.problems import KnownProblem, Problem
 from lineproof.schema import as_problems, schema_findings, with_defaults
+from lineproof.source_checks import results_folder
 from lineproof.yamlfile import read_yaml
 
 
 @dataclass(frozen=True)
 class Source:
-    """A raw file and how to read it; `label` is the path as written in the study file."""
+    """Raw data and how to read them: files, or the result of a query.
 
-    file: str
+    `label` is what the study file says, and `labels` is what messages call each of the `files`. `connection` names the
+    environment variable with the way to the database; `names` is what a column of a wide file is, security or asset.
+    """
+
+    files: tuple[str, ...]
+    labels: tuple[str, ...]
     label: str
+    query: str | None
+    connection: str | None
     columns: dict[str, str]
+    names: str
+    layout: str
+    leave_out: tuple[str, ...]
+    decimal: str
+    encoding: str | None
+    sheet: str | None
     unit: str
     missing: tuple[str, ...]
     dates: str
@@ -37,6 +52,14 @@ class Source:
             "missing": list(self.missing),
             "dates": self.dates,
             "separator": self.separator,
+            "decimal": self.decimal,
+            "encoding": self.encoding,
+            "sheet": self.sheet,
+            "layout": self.layout,
+            "leave_out": list(self.leave_out),
+            "names": self.names,
+            "labels": list(self.labels),
+            "query": self.query,
         }
 
 
@@ -130,7 +153,8 @@ class Study:
 
     def is_made(self, source: Source) -> bool:
         """Whether the demo market makes this raw file."""
-        return self.demo is not None and Path(source.file).parent == Path(self.raw)
+        made = Path(self.raw)
+        return self.demo is not None and all(Path(file).parent == made for file in source.files)
 
     def sources(self) -> dict[str, Source]:
         """Every raw file by its place in the study file."""
@@ -162,6 +186,7 @@ def load_study(path: str | os.PathLike) -> Study:
 
 def _build(content: dict[str, Any], path: Path) -> Study:
     data, intake, paper = content["data"], content["intake"], content["paper"]
+    study_name = content["study"]["name"]
     missing_final = intake["delisting"]["missing_final_return"]
     lag = content["pricing"]["hac_lag"]
     run = content["pricing"]["run"]
@@ -169,10 +194,10 @@ def _build(content: dict[str, Any], path: Path) -> Study:
         path=path,
         **{key: content["study"][key] for key in ("name", "title", "market_name", "seed", "level")},
         demo=content.get("demo"),
-        returns=_source(data["returns"], path),
-        market=_source(data["market"], path),
+        returns=_source(data["returns"], path, study_name, "returns"),
+        market=_source(data["market"], path, study_name, "market"),
         market_is=data["market"]["is"],
-        riskless=_source(data["riskless"], path),
+        riskless=_source(data["riskless"], path, study_name, "riskless"),
         riskless_quoted=data["riskless"]["quoted"],
         screens=tuple(intake["screens"]),
         missing_final_return=None if missing_final == "leave" else float(missing_final),
@@ -181,7 +206,10 @@ def _build(content: dict[str, Any], path: Path) -> Study:
             name: BetaSpec(name, o["estimator"], o["window"], o["min"])
             for name, o in content["betas"].items()
         },
-        sorts={name: _sort(name, options, path) for name, options in content["portfolios"].items()},
+        sorts={
+            name: _sort(name, options, path, study_name)
+            for name, options in content["portfolios"].items()
+        },
         subperiods={
             name: SubperiodSpec(
                 name, o["from"], o["to"], o.get("split"), o.get("every"), o.get("title")
@@ -204,7 +232,7 @@ def _choice(value: str | list[str]) -> str | tuple[str, ...]:
     return value if isinstance(value, str) else tuple(value)
 
 
-def _sort(name: str, options: dict[str, Any], path: Path) -> SortSpec:
+def _sort(name: str, options: dict[str, Any], path: Path, study: str) -> SortSpec:
     supplied = options["design"] == "supplied"
     weighted = "size-weighted" if options["weights"] == "size" else "equally weighted"
     title = options.get("title") or (
@@ -220,22 +248,37 @@ def _sort(name: str, options: dict[str, Any], path: Path) -> SortSpec:
         form_month=options["form_month"],
         hold=options["hold"],
         returns_are=options["is"],
-        source=_source(options, path) if supplied else None,
+        source=_source(options, path, study, name) if supplied else None,
     )
 
 
-def _source(options: dict[str, Any], path: Path) -> Source:
+def _source(options: dict[str, Any], path: Path, study: str, name: str) -> Source:
+    """A source as the study file gives it, by its name; `study` is the name of the study."""
+    if "query" in options:
+        label = f"query {name}"
+        found = [(Path(results_folder(study)) / "extracts" / f"{name}.parquet", label)]
+    else:
+        given = given_files(options["file"])
+        found = [m for each in given for m in members(path.resolve().parent / each, each)]
+        label = ", ".join(given)
     return Source(
-        file=_from_here((path.parent / options["file"]).resolve()),
-        label=options["file"],
+        files=tuple(_from_here(file.parent.resolve() / file.name) for file, _ in found),
+        labels=tuple(label for _, label in found),
+        label=label,
+        query=options.get("query"),
+        connection=options.get("connection"),
         columns=dict(options["columns"]),
+        names="asset" if "design" in options else "security",
+        layout=options.get("layout", "long"),
+        leave_out=tuple(options.get("leave_out", ())),
         unit=options["unit"],
         missing=tuple(options["missing"]),
         dates=options["dates"],
-        separator=options.get("separator"),
         source=options["source"],
         access=options["access"],
         may_share=options["may_share"],
+        decimal=options["decimal"],
+        **{key: options.get(key) for key in ("separator", "encoding", "sheet")},
     )
 
 

@@ -109,15 +109,12 @@ class Wiring:
             **{key: getattr(spec, key) for key in ("groups", "weights", "form_month", "hold")},
         }
 
-    def sort_inputs(self, name: str) -> dict[str, str]:
+    def sort_inputs(self, name: str) -> list[str]:
         """The tables or files a set of test assets is made from."""
         spec = self.study.sorts[name]
         if spec.source is not None:
-            return {"supplied": spec.source.file}
-        return {
-            "panel": self.path("data/panel.parquet"),
-            "betas": self.path(f"betas/{spec.rank_on}.parquet"),
-        }
+            return list(spec.source.files)
+        return [self.path("data/panel.parquet"), self.path(f"betas/{spec.rank_on}.parquet")]
 
     @property
     def tables_between(self) -> list[str]:

@@ -3,9 +3,9 @@
 
 checkpoint validate_returns:
     input:
-        returns=study.returns.file,
-        market=study.market.file,
-        riskless=study.riskless.file,
+        returns=list(study.returns.files),
+        market=list(study.market.files),
+        riskless=list(study.riskless.files),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
         code=wiring.code("validate_returns"),

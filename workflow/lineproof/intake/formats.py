@@ -104,6 +104,11 @@ def check_beginning(first: bytes, kind: str, label: str, encoding: str | None = 
         raise stop(label, found, "name it as what it is, or deliver it again")
 
 
+def given_files(file: str | list[str]) -> list[str]:
+    """What `file` of the study file lists."""
+    return [file] if isinstance(file, str) else file
+
+
 def members(path: Path, label: str) -> list[tuple[Path, str]]:
     """The files that a path of the study file means, each with what messages call it, in order of their names.
 
