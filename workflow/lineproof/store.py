@@ -5,15 +5,18 @@ The heavy packages are imported where they are used, because the Snakefile write
 
 from __future__ import annotations
 
+import filecmp
 import json
 import os
-from collections.abc import Collection, Iterable, Mapping
+from collections.abc import Collection, Iterable, Iterator, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     import pandas as pd
     import pyarrow as pa
+
+_GROUP = 1 << 19  # rows in a row group of a file that is written as it comes
 
 
 def read_table(path: str | os.PathLike, columns: list[str] | None = None) -> pd.DataFrame:
@@ -39,6 +42,42 @@ def write_table(frame: pd.DataFrame, path: str | os.PathLike, contract: str | No
     sink = pa.BufferOutputStream()
     pq.write_table(table, sink, compression="zstd")
     write_bytes(sink.getvalue(), path)
+
+
+def write_batches_if_changed(
+    schema: pa.Schema, batches: Iterable[pa.RecordBatch], path: str | os.PathLike
+) -> None:
+    """Write rows as Parquet as they come, unless the file holds them already: then it keeps its time.
+
+    The same rows give the same bytes, however they are cut into batches.
+    """
+    import pyarrow.parquet as pq
+
+    path = Path(path)
+    path.parent.mkdir(parents=True, exist_ok=True)
+    beside = path.with_name(f".{path.name}.{os.getpid()}.part")
+    try:
+        with pq.ParquetWriter(beside, schema, compression="zstd") as writer:
+            for table in _evenly(schema, batches):
+                writer.write_table(table, row_group_size=_GROUP)
+        if not path.exists() or not filecmp.cmp(beside, path, shallow=False):
+            beside.replace(path)
+    finally:
+        beside.unlink(missing_ok=True)
+
+
+def _evenly(schema: pa.Schema, batches: Iterable[pa.RecordBatch]) -> Iterator[pa.Table]:
+    """The same rows in tables of `_GROUP` rows, the last one shorter."""
+    import pyarrow as pa
+
+    waiting = pa.Table.from_batches([], schema)
+    for batch in batches:
+        waiting = pa.concat_tables([waiting, pa.Table.from_batches([batch], schema)])
+        while len(waiting) >= _GROUP:
+            yield waiting.slice(0, _GROUP).combine_chunks()
+            waiting = waiting.slice(_GROUP)
+    if len(waiting):
+        yield waiting.combine_chunks()
 
 
 def write_csv(frame: pd.DataFrame, path: str | os.PathLike) -> None:

@@ -9,6 +9,7 @@ import pyarrow as pa
 import pyarrow.ipc
 import pyarrow.parquet as pq
 
+from lineproof.intake.stopping import stop
 from lineproof.intake.typedfile import PIECE, TypedFormat
 
 Stretches = Iterator[tuple[int | None, Callable[[], Iterator[pa.Table]]]]
@@ -20,7 +21,12 @@ class ParquetFormat(TypedFormat):
     @cached_property
     def _names(self) -> list[str]:
         with pq.ParquetFile(self._file) as parquet:
-            return parquet.schema_arrow.names
+            schema = parquet.schema_arrow
+        query = self._reading.get("query")
+        if query is not None and (schema.metadata or {}).get(b"query") != query.encode():
+            found = "the extract that is there is the result of another query"
+            raise stop(self._label, found, "run make study or make check, which ask the database")
+        return schema.names
 
     def names(self) -> list[str]:
         return self._names
