@@ -85,7 +85,7 @@ def test_defaults_are_those_of_the_schema(folder: Path) -> None:
 
 def test_paths_are_relative_to_the_study_file(folder: Path) -> None:
     study = load_study(write(folder, GOOD))
-    assert Path(study.returns.file) == (folder / "returns.csv").resolve()
+    assert study.returns.files == (str((folder / "returns.csv").resolve()),)
     assert study.returns.label == "returns.csv"
 
 
@@ -357,8 +357,8 @@ def test_options_of_validation_name_what_is_less_usual_only(folder: Path) -> Non
     found = wiring.options("validate_returns")
     assert (found["market"], found["market_build"]) == (None, "size")
     assert found["riskless_frequency"] == "daily"
-    assert wiring.series_file("market") == []
-    assert Path(wiring.series_file("riskless")).name == "bills.csv"
+    assert wiring.series_files("market") == []
+    assert [Path(file).name for file in wiring.series_files("riskless")] == ["bills.csv"]
 
 
 def plus_intake(options: str, *edits: tuple[str, str]) -> str:

@@ -2,16 +2,11 @@
 
 from __future__ import annotations
 
-from pathlib import Path
 from typing import Any
 
 from lineproof.schema import Finding, nearest
+from lineproof.source_checks import source_findings
 from lineproof.yamlfile import Place, YamlFile
-
-
-def results_folder(name: str) -> str:
-    """Folder of a study's results, relative to the working folder."""
-    return f"results/{name}"
 
 
 def beta_returns(options: dict[str, Any], content: dict[str, Any]) -> str:
@@ -60,7 +55,10 @@ def _frequency_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     return []
 
 
-_ONLY_SUPPLIED = ("file", "columns", "is", "unit", "missing", "dates", "separator")
+_ONLY_SUPPLIED = (
+    *("file", "columns", "is", "unit", "missing", "dates", "separator"),
+    *("decimal", "encoding", "sheet", "layout", "leave_out"),
+)
 _ONLY_RANKED = ("rank_on", "groups", "weights", "form_each", "form_month", "hold")
 
 
@@ -235,37 +233,6 @@ def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     ]
 
 
-def _file_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
-    made_in = (
-        Path(results_folder(content["study"]["name"])).resolve() / "raw"
-        if "demo" in content
-        else None
-    )
-    named: list[tuple[Place, str]] = [
-        (("data", name), options["file"])
-        for name, options in content["data"].items()
-        if "file" in options
-    ]
-    named += [
-        (("portfolios", name), options["file"])
-        for name, options in content["portfolios"].items()
-        if "file" in options
-    ]
-    found: list[Finding] = []
-    for place, label in named:
-        path = (file.path.parent / label).resolve()
-        if path.is_file() or path.parent == made_in:
-            continue
-        names = sorted(p.name for p in path.parent.iterdir()) if path.parent.is_dir() else []
-        change = (
-            nearest(path.name, names)
-            if names
-            else f"the folder {Path(label).parent} is empty or absent"
-        )
-        found.append(((*place, "file"), f"there is no file {label}", change))
-    return found
-
-
 # What the schema cannot see; a check runs when the sections it reads are sound.
 CHECKS = (
     ({"betas", "study", "data"}, _beta_findings),
@@ -279,5 +246,5 @@ CHECKS = (
     ({"intake", "data"}, _delisting_findings),
     ({"demo"}, _demo_findings),
     ({"paper", "portfolios", "subperiods"}, _paper_findings),
-    ({"study", "demo", "data", "portfolios"}, _file_findings),
+    ({"study", "demo", "data", "portfolios"}, source_findings),
 )

@@ -5,11 +5,12 @@ The heavy packages are imported where they are used, because the Snakefile write
 
 from __future__ import annotations
 
+import filecmp
 import json
 import os
 import shutil
 import tempfile
-from collections.abc import Collection, Iterable, Mapping
+from collections.abc import Collection, Iterable, Iterator, Mapping
 from concurrent.futures import Future, ThreadPoolExecutor
 from contextlib import ExitStack
 from pathlib import Path
@@ -228,6 +229,42 @@ def _plain(table: pa.Table) -> pa.Table:
         table.slice(0, 0).to_pandas(ignore_metadata=True), preserve_index=False
     )
     return table.cast(like.schema)
+
+
+def write_batches_if_changed(
+    schema: pa.Schema, batches: Iterable[pa.RecordBatch], path: str | os.PathLike
+) -> None:
+    """Write rows as Parquet as they come, unless the file holds them already: then it keeps its time.
+
+    The same rows give the same bytes, however they are cut into batches.
+    """
+    import pyarrow.parquet as pq
+
+    path = Path(path)
+    path.parent.mkdir(parents=True, exist_ok=True)
+    beside = path.with_name(f".{path.name}.{os.getpid()}.part")
+    try:
+        with pq.ParquetWriter(beside, schema, compression="zstd") as writer:
+            for table in _evenly(schema, batches):
+                writer.write_table(table, row_group_size=_ROW_GROUP)
+        if not path.exists() or not filecmp.cmp(beside, path, shallow=False):
+            beside.replace(path)
+    finally:
+        beside.unlink(missing_ok=True)
+
+
+def _evenly(schema: pa.Schema, batches: Iterable[pa.RecordBatch]) -> Iterator[pa.Table]:
+    """The same rows in tables of `_ROW_GROUP` rows, the last one shorter."""
+    import pyarrow as pa
+
+    waiting = pa.Table.from_batches([], schema)
+    for batch in batches:
+        waiting = pa.concat_tables([waiting, pa.Table.from_batches([batch], schema)])
+        while len(waiting) >= _ROW_GROUP:
+            yield waiting.slice(0, _ROW_GROUP).combine_chunks()
+            waiting = waiting.slice(_ROW_GROUP)
+    if len(waiting):
+        yield waiting.combine_chunks()
 
 
 def write_csv(frame: pd.DataFrame, path: str | os.PathLike) -> None:

@@ -7,23 +7,36 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from lineproof.cross_checks import CHECKS, beta_returns, results_folder
+from lineproof.cross_checks import CHECKS, beta_returns
+from lineproof.intake.formats import given_files, members
 from lineproof.problems import KnownProblem, Problem
 from lineproof.schema import as_problems, schema_findings, with_defaults
+from lineproof.source_checks import results_folder
 from lineproof.yamlfile import read_yaml
 
 
 @dataclass(frozen=True)
 class Source:
-    """A raw file and how to read it; `label` is the path as written in the study file.
+    """Raw data and how to read them: files, or the result of a query.
 
+    `label` is what the study file says, and `labels` is what messages call each of the `files`. `connection` names the
+    environment variable with the way to the database; `names` is what a column of a wide file is, security or asset.
     `dates` is None where their format is to be found out. `return_from` names the column that returns are computed
     from, and then `columns` has no return.
     """
 
-    file: str
+    files: tuple[str, ...]
+    labels: tuple[str, ...]
     label: str
+    query: str | None
+    connection: str | None
     columns: dict[str, str]
+    names: str
+    layout: str
+    leave_out: tuple[str, ...]
+    decimal: str
+    encoding: str | None
+    sheet: str | None
     unit: str
     missing: tuple[str, ...]
     dates: str | None
@@ -43,6 +56,14 @@ class Source:
             "dates": self.dates,
             "separator": self.separator,
             "return_from": self.return_from,
+            "decimal": self.decimal,
+            "encoding": self.encoding,
+            "sheet": self.sheet,
+            "layout": self.layout,
+            "leave_out": list(self.leave_out),
+            "names": self.names,
+            "labels": list(self.labels),
+            "query": self.query,
         }
 
 
@@ -159,7 +180,8 @@ class Study:
 
     def is_made(self, source: Source) -> bool:
         """Whether the demo market makes this raw file."""
-        return self.demo is not None and Path(source.file).parent == Path(self.raw)
+        made = Path(self.raw)
+        return self.demo is not None and all(Path(file).parent == made for file in source.files)
 
     def sources(self) -> dict[str, Source]:
         """Every raw file by its place in the study file."""
@@ -201,14 +223,17 @@ def _build(content: dict[str, Any], path: Path) -> Study:
         path=path,
         **{key: content["study"][key] for key in _SAME_NAME},
         demo=content.get("demo"),
-        returns=_source(data["returns"], path),
-        **_series(data, path),
+        returns=_source(data["returns"], path, content["study"]["name"], "returns"),
+        **_series(data, path, content["study"]["name"]),
         intake=_intake(content["intake"]),
         betas={
             name: BetaSpec(name, o["estimator"], beta_returns(o, content), o["window"], o["min"])
             for name, o in content["betas"].items()
         },
-        sorts={name: _sort(name, options, path) for name, options in content["portfolios"].items()},
+        sorts={
+            name: _sort(name, options, path, content["study"]["name"])
+            for name, options in content["portfolios"].items()
+        },
         subperiods={
             name: SubperiodSpec(
                 name, o["from"], o["to"], o.get("split"), o.get("every"), o.get("title")
@@ -227,17 +252,17 @@ def _build(content: dict[str, Any], path: Path) -> Study:
     )
 
 
-def _series(data: dict[str, Any], path: Path) -> dict[str, Any]:
+def _series(data: dict[str, Any], path: Path, study: str) -> dict[str, Any]:
     """What the study says of the market, the riskless rate, and which returns are in excess of it."""
     market, riskless = data["market"], data.get("riskless")
     returns_are = data["returns"]["is"]
     return {
         "returns_are": returns_are,
-        "market": None if "build" in market else _source(market, path),
+        "market": None if "build" in market else _source(market, path, study, "market"),
         "market_is": returns_are if "build" in market else market["is"],
         "market_build": market.get("build"),
         "market_frequency": market.get("frequency"),
-        "riskless": None if riskless is None else _source(riskless, path),
+        "riskless": None if riskless is None else _source(riskless, path, study, "riskless"),
         "riskless_quoted": "period_return" if riskless is None else riskless["quoted"],
         "riskless_frequency": None if riskless is None else riskless.get("frequency"),
     }
@@ -264,7 +289,7 @@ def _choice(value: str | list[str]) -> str | tuple[str, ...]:
     return value if isinstance(value, str) else tuple(value)
 
 
-def _sort(name: str, options: dict[str, Any], path: Path) -> SortSpec:
+def _sort(name: str, options: dict[str, Any], path: Path, study: str) -> SortSpec:
     supplied = options["design"] == "supplied"
     weighted = "size-weighted" if options["weights"] == "size" else "equally weighted"
     title = options.get("title") or (
@@ -280,25 +305,40 @@ def _sort(name: str, options: dict[str, Any], path: Path) -> SortSpec:
         form_month=options["form_month"],
         hold=options["hold"],
         returns_are=options["is"],
-        source=_source(options, path) if supplied else None,
+        source=_source(options, path, study, name) if supplied else None,
     )
 
 
-def _source(options: dict[str, Any], path: Path) -> Source:
+def _source(options: dict[str, Any], path: Path, study: str, name: str) -> Source:
+    """A source as the study file gives it, by its name; `study` is the name of the study."""
     columns = dict(options["columns"])
     computed = columns.pop("return")["from"] if isinstance(columns.get("return"), dict) else None
+    if "query" in options:
+        label = f"query {name}"
+        found = [(Path(results_folder(study)) / "extracts" / f"{name}.parquet", label)]
+    else:
+        given = given_files(options["file"])
+        found = [m for each in given for m in members(path.resolve().parent / each, each)]
+        label = ", ".join(given)
     return Source(
-        file=_from_here((path.parent / options["file"]).resolve()),
-        label=options["file"],
+        files=tuple(_from_here(file.parent.resolve() / file.name) for file, _ in found),
+        labels=tuple(label for _, label in found),
+        label=label,
+        query=options.get("query"),
+        connection=options.get("connection"),
         columns=columns,
+        names="asset" if "design" in options else "security",
+        layout=options.get("layout", "long"),
+        leave_out=tuple(options.get("leave_out", ())),
         unit=options["unit"],
         missing=tuple(options["missing"]),
         dates=options.get("dates"),
-        separator=options.get("separator"),
+        return_from=computed,
         source=options["source"],
         access=options["access"],
         may_share=options["may_share"],
-        return_from=computed,
+        decimal=options["decimal"],
+        **{key: options.get(key) for key in ("separator", "encoding", "sheet")},
     )
 
 

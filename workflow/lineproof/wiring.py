@@ -110,10 +110,10 @@ class Wiring:
             **{key: value for key, value in less_usual.items() if value is not None},
         }
 
-    def series_file(self, name: str) -> str | list[str]:
-        """The raw file of the market or the riskless rate; an empty list where the study has none."""
+    def series_files(self, name: str) -> list[str]:
+        """The raw files of the market or the riskless rate; none where the study has none."""
         source = {"market": self.study.market, "riskless": self.study.riskless}[name]
-        return [] if source is None else source.file
+        return [] if source is None else list(source.files)
 
     def _sort(self, name: str) -> dict[str, Any]:
         spec = self.study.sorts[name]
@@ -140,15 +140,12 @@ class Wiring:
             tables = {"panel": "daily", "market": "market_daily"}
         return {key: self.path(f"data/{table}.parquet") for key, table in tables.items()}
 
-    def sort_inputs(self, name: str) -> dict[str, str]:
+    def sort_inputs(self, name: str) -> list[str]:
         """The tables or files a set of test assets is made from."""
         spec = self.study.sorts[name]
         if spec.source is not None:
-            return {"supplied": spec.source.file}
-        return {
-            "panel": self.path("data/panel.parquet"),
-            "betas": self.path(f"betas/{spec.rank_on}.parquet"),
-        }
+            return list(spec.source.files)
+        return [self.path("data/panel.parquet"), self.path(f"betas/{spec.rank_on}.parquet")]
 
     @property
     def tables_between(self) -> list[str]:

@@ -3,9 +3,9 @@
 
 checkpoint validate_returns:
     input:
-        returns=study.returns.file,
-        market=wiring.series_file("market"),
-        riskless=wiring.series_file("riskless"),
+        returns=list(study.returns.files),
+        market=wiring.series_files("market"),
+        riskless=wiring.series_files("riskless"),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
         code=wiring.code("validate_returns"),
