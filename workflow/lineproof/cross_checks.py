@@ -30,29 +30,39 @@ def _beta_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
             elif not daily and options[key] > _MOST_MONTHS:
                 said = f"{options[key]} is out of range"
                 found.append(((*place, key), said, f"give at most {_MOST_MONTHS} months"))
-        if daily and not _has_days(content):
+        if daily and not _has_days(content, "returns"):
             said = "daily returns are asked for, and the study has monthly ones only"
             change = (
                 "declare data.returns.frequency: daily if the file has days, or use returns: own"
             )
             found.append(((*place, "returns"), said, change))
+        elif daily and not _has_days(content, "market"):
+            said = "daily returns are asked for, and the market has monthly ones only"
+            found.append(((*place, "returns"), said, "deliver a daily market, or build it"))
     return found
 
 
 _MOST_MONTHS = 600
 
 
-def _has_days(content: dict[str, Any]) -> bool:
-    delivered = content["data"]["returns"].get("frequency")
-    return "daily" in (content["study"]["frequency"], delivered)
+def _has_days(content: dict[str, Any], source: str) -> bool:
+    """Whether the returns, or the market, are delivered by the day."""
+    of_returns = content["data"]["returns"].get("frequency", content["study"]["frequency"])
+    return content["data"][source].get("frequency", of_returns) == "daily"
 
 
 def _frequency_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
-    if content["study"]["frequency"] == "daily" and "demo" in content:
+    if content["study"]["frequency"] != "daily":
+        return []
+    if "demo" in content:
         said = "the invented market has monthly returns only"
         change = "use frequency: monthly, or leave out the section demo"
         return [(("study", "frequency"), said, change)]
-    return []
+    return [
+        (("data", name, "frequency"), "a daily study cannot be made of months", "deliver days")
+        for name in ("returns", "market")
+        if content["data"][name].get("frequency") == "monthly"
+    ]
 
 
 _ONLY_SUPPLIED = (
@@ -236,7 +246,7 @@ def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
 # What the schema cannot see; a check runs when the sections it reads are sound.
 CHECKS = (
     ({"betas", "study", "data"}, _beta_findings),
-    ({"study", "demo"}, _frequency_findings),
+    ({"study", "demo", "data"}, _frequency_findings),
     ({"portfolios", "betas", "data"}, _sort_findings),
     ({"data"}, _market_findings),
     ({"data", "portfolios"}, _riskless_findings),

@@ -203,10 +203,12 @@ ESTIMATES = pa.DataFrameSchema(
     ordered=True,
 )
 
-# By name, as of a monthly study.
+# By name, as of a monthly study; `daily` and `market_daily` are the days beside a study of months.
 CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "panel": PANEL,
     "market": MARKET,
+    "daily": PANEL,
+    "market_daily": MARKET,
     "set_aside": SET_ASIDE,
     "betas": BETAS,
     "members": MEMBERS,
@@ -214,14 +216,7 @@ CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "subperiod": SUBPERIOD,
     "estimates": ESTIMATES,
 }
-
-
-def check_batch(name: str, batch: pd.DataFrame, before: pd.DataFrame | None) -> None:
-    """Check a piece of a table larger than memory against its contract, and that it goes on from the row before it."""
-    contract = CONTRACTS[name]
-    contract.validate(batch)
-    if before is not None and len(batch):
-        contract.validate(pd.concat([before, batch.iloc[:1]], ignore_index=True))
+_ALWAYS_DAILY = ("daily", "market_daily")
 
 
 @cache
@@ -232,6 +227,16 @@ def contract(name: str, frequency: str = "monthly") -> pa.DataFrameSchema:
     """
     schema = CONTRACTS[name]
     dated = [key for key, column in schema.columns.items() if str(column.dtype) == str(_DATE.dtype)]
-    if frequency == "monthly" or not dated:
+    if (frequency == "monthly" and name not in _ALWAYS_DAILY) or not dated:
         return schema
     return schema.update_columns({key: {"checks": _DAY.checks} for key in dated})
+
+
+def check_batch(
+    name: str, frequency: str, batch: pd.DataFrame, before: pd.DataFrame | None
+) -> None:
+    """Check a piece of a table larger than memory against its contract, and that it goes on from the row before it."""
+    whole = contract(name, frequency)
+    whole.validate(batch)
+    if before is not None and len(batch):
+        whole.validate(pd.concat([before, batch.iloc[:1]], ignore_index=True))

@@ -68,7 +68,9 @@ def _encoding(schema: pa.Schema) -> dict[str, Any]:
 
 
 def write_together(
-    batches: Iterable[Mapping[str, pd.DataFrame]], paths: Mapping[str, str | os.PathLike]
+    batches: Iterable[Mapping[str, pd.DataFrame]],
+    paths: Mapping[str, str | os.PathLike],
+    frequency: str = "monthly",
 ) -> None:
     """Write tables larger than memory, each under the contract of its name, from batches that hold a piece of each.
 
@@ -77,7 +79,8 @@ def write_together(
     """
     with ExitStack() as stack:
         writers = {
-            name: stack.enter_context(_Writer(name, Path(path))) for name, path in paths.items()
+            name: stack.enter_context(_Writer(name, frequency, Path(path)))
+            for name, path in paths.items()
         }
         for batch in batches:
             for name, frame in batch.items():
@@ -89,8 +92,8 @@ def write_together(
 class _Writer:
     """A table on its way to disk; it takes its place only when it is finished."""
 
-    def __init__(self, contract: str, path: Path) -> None:
-        self._contract, self._path = contract, path
+    def __init__(self, contract: str, frequency: str, path: Path) -> None:
+        self._contract, self._frequency, self._path = contract, frequency, path
         self._beside = path.with_name(f".{path.name}.{os.getpid()}.part")
         self._held: pa.Table | None = None
         self._last: pd.DataFrame | None = None
@@ -119,7 +122,7 @@ class _Writer:
 
         from lineproof.frames import check_batch
 
-        check_batch(self._contract, frame, self._last)
+        check_batch(self._contract, self._frequency, frame, self._last)
         self._last = frame.iloc[-1:] if len(frame) else self._last
         table = pa.Table.from_pandas(frame, preserve_index=False)
         self._held = table if self._held is None else pa.concat_tables([self._held, table])

@@ -153,13 +153,14 @@ class Study:
     demo: dict[str, Any] | None
     returns: Source
     returns_are: str
+    returns_frequency: str
     market: Source | None  # None where it is built from the returns
     market_is: str
     market_build: str | None
-    market_frequency: str | None  # None is that of the returns
+    market_frequency: str
     riskless: Source | None  # None where every return is in excess of it already
     riskless_quoted: str
-    riskless_frequency: str | None
+    riskless_frequency: str
     intake: IntakeSpec
     betas: dict[str, BetaSpec]
     sorts: dict[str, SortSpec]
@@ -224,7 +225,7 @@ def _build(content: dict[str, Any], path: Path) -> Study:
         **{key: content["study"][key] for key in _SAME_NAME},
         demo=content.get("demo"),
         returns=_source(data["returns"], path, content["study"]["name"], "returns"),
-        **_series(data, path, content["study"]["name"]),
+        **_series(data, path, content["study"]["name"], content["study"]["frequency"]),
         intake=_intake(content["intake"]),
         betas={
             name: BetaSpec(name, o["estimator"], beta_returns(o, content), o["window"], o["min"])
@@ -252,19 +253,21 @@ def _build(content: dict[str, Any], path: Path) -> Study:
     )
 
 
-def _series(data: dict[str, Any], path: Path, study: str) -> dict[str, Any]:
+def _series(data: dict[str, Any], path: Path, study: str, frequency: str) -> dict[str, Any]:
     """What the study says of the market, the riskless rate, and which returns are in excess of it."""
     market, riskless = data["market"], data.get("riskless")
     returns_are = data["returns"]["is"]
+    delivered = data["returns"].get("frequency", frequency)
     return {
         "returns_are": returns_are,
+        "returns_frequency": delivered,
         "market": None if "build" in market else _source(market, path, study, "market"),
         "market_is": returns_are if "build" in market else market["is"],
         "market_build": market.get("build"),
-        "market_frequency": market.get("frequency"),
+        "market_frequency": market.get("frequency", delivered),
         "riskless": None if riskless is None else _source(riskless, path, study, "riskless"),
         "riskless_quoted": "period_return" if riskless is None else riskless["quoted"],
-        "riskless_frequency": None if riskless is None else riskless.get("frequency"),
+        "riskless_frequency": (riskless or {}).get("frequency", delivered),
     }
 
 

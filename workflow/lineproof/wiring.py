@@ -88,27 +88,37 @@ class Wiring:
     def _validation(self) -> dict[str, Any]:
         study = self.study
         return {
+            "frequency": study.frequency,
             "returns": study.returns.reading(),
-            **self._series(),
+            "returns_are": study.returns_are,
+            "returns_frequency": study.returns_frequency,
+            "market_build": study.market_build,
+            "series": {
+                "market": study.market and study.market.reading(),
+                "market_is": study.market_is,
+                "market_frequency": study.market_frequency,
+                "riskless": study.riskless and study.riskless.reading(),
+                "riskless_quoted": study.riskless_quoted,
+                "riskless_frequency": study.riskless_frequency,
+            },
             "rules": asdict(study.intake),
         }
 
-    def _series(self) -> dict[str, Any]:
-        """How market and riskless rate are read or built; what is less usual is given only where it is used."""
+    @property
+    def panels(self) -> dict[str, str]:
+        """The panel, and the panel of days beside it where a study of months is delivered days; by name."""
+        names = ["panel"] if self.study.returns_frequency == self.study.frequency else ["panel", "daily"]
+        return {name: self.path(f"data/{name}.parquet") for name in names}
+
+    @property
+    def markets(self) -> dict[str, str]:
+        """The market, and the market's days beside it where there are such."""
         study = self.study
-        less_usual = {
-            "returns_are": study.returns_are if study.returns_are != "total" else None,
-            "market_build": study.market_build,
-            "market_frequency": study.market_frequency,
-            "riskless_frequency": study.riskless_frequency,
-        }
-        return {
-            "market": study.market and study.market.reading(),
-            "market_is": study.market_is,
-            "riskless": study.riskless and study.riskless.reading(),
-            "riskless_quoted": study.riskless_quoted,
-            **{key: value for key, value in less_usual.items() if value is not None},
-        }
+        beside = study.returns_frequency != study.frequency and (
+            study.market_build is not None or study.market_frequency == "daily"
+        )
+        names = ["market", "market_daily"] if beside else ["market"]
+        return {name: self.path(f"data/{name}.parquet") for name in names}
 
     def series_files(self, name: str) -> list[str]:
         """The raw files of the market or the riskless rate; none where the study has none."""

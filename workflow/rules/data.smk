@@ -10,8 +10,8 @@ checkpoint validate_returns:
         pins=wiring.pins,
         code=wiring.code("validate_returns"),
     output:
-        panel=wiring.path("data/panel.parquet"),
-        market=wiring.path("data/market.parquet"),
+        **wiring.panels,
+        **wiring.markets,
         set_aside=wiring.path("data/set_aside.parquet"),
         set_aside_csv=wiring.path("data/set_aside.csv"),
         intake=wiring.path("data/intake.json"),
@@ -21,6 +21,7 @@ checkpoint validate_returns:
         wiring.path("benchmarks/validate_returns.tsv")
     params:
         options=wiring.options("validate_returns"),
+        files=["returns", "market", "riskless"],
     script:
         "../scripts/validate_returns.py"
 

@@ -4,11 +4,13 @@ from lineproof import joblog, store
 from lineproof.validation import validate_returns
 
 with joblog.job(snakemake), store.Scratch(Path(snakemake.output.panel).parent) as scratch:
-    out = snakemake.output
-    files = {name: [snakemake.input[name]] for name in ("returns", "market", "riskless")}
-    found = validate_returns(files, scratch, **snakemake.params.options)
-    store.write_together(found.tables(), {"panel": out.panel})
-    store.write_table(found.market(), out.market, "market")
-    store.write_together(found.set_aside(), {"set_aside": out.set_aside})
-    store.copy_as_csv(out.set_aside, out.set_aside_csv)
-    store.write_json(found.counts(), out.intake)
+    out, options = dict(snakemake.output.items()), snakemake.params.options
+    files = {name: list(snakemake.input.get(name, [])) for name in snakemake.params.files}
+    found = validate_returns(files, scratch, **options)
+    panels = {name: out[name] for name in ("panel", "daily") if name in out}
+    store.write_together(found.tables(), panels, options["frequency"])
+    for name, market in found.markets().items():
+        store.write_table(market, out[name], name, options["frequency"])
+    store.write_together(found.set_aside(), {"set_aside": out["set_aside"]})
+    store.copy_as_csv(out["set_aside"], out["set_aside_csv"])
+    store.write_json(found.counts(), out["intake"])

@@ -7,7 +7,7 @@ is no fault of a row: the note says what happens.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Literal, NamedTuple
 
@@ -130,13 +130,13 @@ class Tally:
                 if of_kind > 0:
                     by_kind[kind] = by_kind.get(kind, 0) + int(of_kind)
 
-    def report(self) -> list[dict[str, object]]:
-        """One entry a fault met, by number."""
+    def report(self, chosen: Mapping[int, str] | None = None) -> list[dict[str, object]]:
+        """One entry a fault met, by number; `chosen` has the answers that differ from the usual ones."""
         return [
             {
                 "number": number,
                 "label": FAULTS[number].label,
-                "answer": FAULTS[number].answer,
+                "answer": (chosen or {}).get(number, FAULTS[number].answer),
                 "note": FAULTS[number].note,
                 "n": self.counts[number],
                 "kinds": self.kinds[number],

@@ -59,8 +59,10 @@ class SortedRuns:
     def n_rows(self) -> int:
         return sum(int(start[-1]) for _, start in self._runs)
 
-    def stretches(self, at_most: int) -> Iterator[tuple[list[str], np.ndarray, Columns]]:
-        """Names in order, the security of each row as a position in them, and the columns.
+    def stretches(
+        self, at_most: int, wanted: list[str] | None = None
+    ) -> Iterator[tuple[list[str], np.ndarray, Columns]]:
+        """Names in order, the security of each row as a position in them, and the columns, all or those wanted.
 
         All rows of a security come together, in the order of the raw files; a stretch has at most so many rows, or one
         security.
@@ -75,7 +77,7 @@ class SortedRuns:
             n_rows[at] += np.diff(start)
         for first, last in _cuts(n_rows, at_most):
             security: list[np.ndarray] = []
-            pieces: dict[str, list[np.ndarray]] = {name: [] for name in self._columns}
+            pieces: dict[str, list[np.ndarray]] = {name: [] for name in wanted or self._columns}
             for number, (at, (_, start)) in enumerate(zip(placed, self._runs, strict=True)):
                 low, high = np.searchsorted(at, [first, last])
                 if start[low] == start[high]:
