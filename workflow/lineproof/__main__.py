@@ -31,11 +31,10 @@ def main(words: list[str] | None = None) -> int:
     if rest:
         parser.error(f"unknown words: {' '.join(rest)}")
     if given.command == "compile":
-        from lineproof.intake import lines, market_build
+        from lineproof.intake import warm_up
         from lineproof.stats import windows
 
-        lines.warm_up()
-        market_build.warm_up()
+        warm_up.warm_up()
         windows.warm_up()
         return 0
     try:

@@ -43,7 +43,8 @@ def validate_returns(
     Raises KnownProblem when a file cannot be used, or the returns are not in the unit or frequency declared.
     """
     _check_names(returns)
-    returns = with_dates(files["returns"], returns, daily=returns_frequency == "daily")
+    returns = dict(with_dates(files["returns"], returns, daily=returns_frequency == "daily"))
+    returns["are"] = returns_are
     supplied = read_supplied(dict(files), returns_frequency, **series)
     opened = open_files(list(files["returns"]), returns)
     scale = ScaleEvidence()

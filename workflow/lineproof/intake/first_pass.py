@@ -29,6 +29,7 @@ from lineproof.store import Scratch
 NUMERIC = ("return", "final_return", "size", "price")
 _RETURNS = ("return", "final_return")
 _UNDECLARED_CODES = (-66.0, -77.0, -88.0, -99.0, -999.0)
+_LEAST = {"total": -1.0, "excess": -1.03}  # what a total loss is in excess of the highest plausible rate
 _FIRST_DAY = np.datetime64("1800-01-01")
 _N_DAYS = 401 * 366
 
@@ -165,7 +166,7 @@ def _numbers(
     if not is_return:
         return {name: numbers.value}
     decimal = as_decimal(numbers.value, reading["unit"])
-    _note_below_all(decimal, numbers, said, faults)
+    _note_below_all(decimal, numbers, said, faults, _LEAST[reading.get("are", "total")])
     return {"return_": decimal, "code": numbers.code} if name == "return" else {name: decimal}
 
 
@@ -174,9 +175,10 @@ def _note_below_all(
     numbers: Numbers,
     said: Callable[[np.ndarray], list[str]],
     faults: FirstFault,
+    least: float,
 ) -> None:
     """Set aside returns below −100 %, naming those that look like a code nobody declared."""
-    below = decimal < -1
+    below = decimal < least
     if not below.any():
         return
     hint = ", which often stands for a missing value; if so, add it to missing:"

@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from lineproof.intake.chunk import Chunk
+from lineproof.intake.factor import total_and_excess
 from lineproof.intake.first_pass import NUMERIC, Taken
 from lineproof.intake.flags import first_rows, jumps_that_reverse
 from lineproof.intake.runs import Columns, counting_order
@@ -16,7 +17,7 @@ from lineproof.intake.setting_aside import FirstFault
 from lineproof.periods import ABSENT, Periods
 
 _ROWS = 1 << 20  # of a chunk, at most, unless one security has more
-_VALUES = ("return_", *(name for name in NUMERIC if name != "return"))
+_VALUES = ("return_", "excess", *(name for name in NUMERIC if name != "return"))
 
 
 @dataclass(frozen=True)
@@ -33,13 +34,15 @@ class Rules:
     """What the study file decides about rows: see config/README.md, section intake.
 
     `same_month_rows` is "set_aside", "first" or "last"; `return_after_hole` "keep" or "set_aside"; `jumps` "flag" or
-    "set_aside"; with `from_price` returns are made from the price of the period before.
+    "set_aside"; with `from_price` returns are made from the price of the period before. Where returns are in excess,
+    `added` is the riskless return of each period of the span, which makes them total; else None.
     """
 
     same_month_rows: str
     return_after_hole: str
     jumps: str
     from_price: bool
+    added: np.ndarray | None
 
 
 @dataclass
@@ -59,6 +62,8 @@ def chunks(taken: Taken, span: Span, rules: Rules, tracked: Tracked) -> Iterator
         period = span.periods.number(columns["day"].astype("datetime64[D]"))
         faults = FirstFault(taken.aside, columns["file"], columns["position"])
         _note_outside(period, columns, span, faults, tracked)
+        if rules.added is not None:
+            columns = _as_total(period, columns, rules.added, span, faults)
         rows = _in_order(security, period, ~faults.found, len(names))
         exact = _note_repeated(
             rows, security, period, columns, rules.same_month_rows, faults, names
@@ -95,6 +100,23 @@ def _note_outside(
     tracked.n_before += int((outside & (days < first)).sum())
     tracked.n_after += int((outside & (days > last)).sum())
     faults.note(outside, 28, lambda rows: [f"'{day}'" for day in days[rows]])
+
+
+def _as_total(
+    period: np.ndarray, columns: Columns, riskless: np.ndarray, span: Span, faults: FirstFault
+) -> Columns:
+    """The columns with total returns, and `excess` as delivered; a total return below −100 % is set aside."""
+    excess = columns["return_"]
+    inside = ~faults.found
+    rate = np.full(len(period), np.nan)
+    rate[inside] = riskless[period[inside] - span.first]
+    total, _ = total_and_excess(excess, rate, "excess")
+    faults.note(
+        total < -1,
+        15,
+        lambda rows: [f"{excess[i]:g} in excess of {rate[i]:g} without risk" for i in rows],
+    )
+    return {**columns, "return_": total, "excess": excess}
 
 
 def _in_order(

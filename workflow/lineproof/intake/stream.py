@@ -90,6 +90,17 @@ class Intake:
         self._aside_examples: dict[int, list[dict[str, Any]]] = {}
 
     @property
+    def _are_made_total(self) -> bool:
+        """Whether returns come in excess of a riskless rate that is known; without it they stay so."""
+        has_rate = not np.isnan(self._delivered.riskless).all()
+        return self._kinds.returns_are == "excess" and has_rate
+
+    @property
+    def _are(self) -> str:
+        """What the returns are once they are in the panel's chunks."""
+        return "total" if self._are_made_total else self._kinds.returns_are
+
+    @property
     def _names(self) -> list[str]:
         return ["panel", "daily"] if self._kinds.compounds else ["panel"]
 
@@ -103,6 +114,7 @@ class Intake:
             return_after_hole=self._rules["return_after_hole"],
             jumps=self._rules["outliers"]["jump_and_reversal"],
             from_price=self._reading.get("return_from") == "price",
+            added=self._delivered.riskless if self._are_made_total else None,
         )
         for chunk in chunks(self._taken, self._delivered.span, rules, self._tracked):
             yield self._pieces(chunk)
@@ -150,7 +162,10 @@ class Intake:
         """Rows of the panel, or of the daily panel beside it, which nobody is ranked in."""
         known = chunk.values["total_return"]
         riskless = rates.riskless_of(chunk.period)
-        total, excess = total_and_excess(known, riskless, self._kinds.returns_are)
+        total, excess = total_and_excess(known, riskless, self._are)
+        if "excess" in chunk.values and rates is self._delivered:
+            as_given = known == chunk.values["return_"]  # no rounding of there and back
+            excess = np.where(as_given, chunk.values["excess"], excess)
         if self._builds:
             self._builds[name].see(chunk, known)
         eligible = np.ones(len(chunk), bool)
@@ -202,8 +217,6 @@ class Intake:
         if rates.market_excess is None or np.isnan(rates.riskless).all():
             return Flag(30, 0, [], {})
         own = self._leavers.means
-        if self._kinds.returns_are == "excess":
-            own = own + rates.riskless
         as_given = rates.market_excess + (rates.riskless if self._market_is == "total" else 0.0)
         said = looks_like_excess(as_given, rates.riskless, own, self._market_is)
         return Flag(30, 1 if said else 0, [said] if said else [], {})
@@ -223,7 +236,7 @@ class Intake:
         built = self._builds[name].result(rates.span.periods)
         number = rates.span.periods.number(built["date"].to_numpy().astype("datetime64[D]"))
         riskless = rates.riskless_of(number)
-        _, excess = total_and_excess(built["return"].to_numpy(), riskless, self._kinds.returns_are)
+        _, excess = total_and_excess(built["return"].to_numpy(), riskless, self._are)
         return rates.table(first, last, built[["date"]].assign(market_excess=excess))
 
     def set_aside(self) -> Iterator[dict[str, pd.DataFrame]]:
