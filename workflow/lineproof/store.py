@@ -65,6 +65,8 @@ def write_together(
                 writers[name].add(frame)
         for writer in writers.values():
             writer.finish()
+        for writer in writers.values():
+            writer.place()
 
 
 class _Writer:
@@ -84,9 +86,11 @@ class _Writer:
     def __exit__(
         self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
     ) -> None:
-        if self._writer is not None:
-            self._writer.close()
-        self._beside.unlink(missing_ok=True)
+        try:
+            if self._writer is not None:
+                self._writer.close()
+        finally:  # closing fails where the disk is full
+            self._beside.unlink(missing_ok=True)
 
     def add(self, frame: pd.DataFrame) -> None:
         """Check rows against the contract, together with the row before them, and write what fills a row group."""
@@ -103,13 +107,16 @@ class _Writer:
             self._held = self._held.slice(_ROW_GROUP)
 
     def finish(self) -> None:
-        """Write what is left and put the file in its place."""
+        """Write what is left."""
         if self._held is None:
             raise ValueError(f"no rows for {self._path}, not even an empty batch")
         if len(self._held) or self._writer is None:
             self._write(self._held)
         self._writer.close()
         self._writer = None
+
+    def place(self) -> None:
+        """Put the finished file in its place."""
         self._beside.replace(self._path)
 
     def _write(self, table: pa.Table) -> None:

@@ -90,7 +90,7 @@ def _note_outside(
         return
     tracked.n_before += int((outside & (days < first)).sum())
     tracked.n_after += int((outside & (days > last)).sum())
-    faults.note(outside, 28, lambda rows: [f"'{day}'" for day in days[rows]])
+    faults.note(outside, 28, lambda rows: [str(day) for day in days[rows]])
 
 
 def _in_order(
