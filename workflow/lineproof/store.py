@@ -124,7 +124,8 @@ class _Writer:
 
         if self._writer is None:
             self._writer = pq.ParquetWriter(self._beside, table.schema, compression="zstd")
-        self._writer.write_table(table, row_group_size=_ROW_GROUP)
+        # In one piece: a page may otherwise end where a batch does.
+        self._writer.write_table(table.combine_chunks(), row_group_size=_ROW_GROUP)
 
 
 class Scratch:
