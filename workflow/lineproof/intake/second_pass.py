@@ -55,7 +55,8 @@ class Tracked:
 def chunks(taken: Taken, span: Span, rules: Rules, tracked: Tracked) -> Iterator[Chunk]:
     """The kept rows, all of some securities at a time, in the order of their names."""
     n_files = len(tracked.n_kept)
-    for names, security, columns in taken.runs.stretches(_ROWS):
+    for names, security, delivered in taken.runs.stretches(_ROWS):
+        columns = delivered
         period = span.periods.number(columns["day"].astype("datetime64[D]"))
         faults = FirstFault(taken.aside, columns["file"], columns["position"])
         _note_outside(period, columns, span, faults, tracked)

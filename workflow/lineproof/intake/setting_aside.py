@@ -114,7 +114,9 @@ def _batched(batches: Iterator[list[str]]) -> Iterator[list[str]]:
         yield held
 
 
-def _table(file: list[str], line: Sequence[int], fault: Sequence[int], reason: pa.Array, raw: list[str]) -> pd.DataFrame:
+def _table(
+    file: list[str], line: Sequence[int], fault: Sequence[int], reason: pa.Array, raw: list[str]
+) -> pd.DataFrame:
     columns = {
         "file": pa.array(file, pa.string()),
         "line": pa.array(np.asarray(line, np.int64)),
