@@ -87,6 +87,8 @@ def write_together(
                 writers[name].add(frame)
         for writer in writers.values():
             writer.finish()
+        for writer in writers.values():
+            writer.place()
 
 
 class _Writer:
@@ -112,9 +114,11 @@ class _Writer:
         trace: TracebackType | None,
     ) -> None:
         self._writing.shutdown()
-        if self._writer is not None:
-            self._writer.close()
-        self._beside.unlink(missing_ok=True)
+        try:
+            if self._writer is not None:
+                self._writer.close()
+        finally:  # closing fails where the disk is full
+            self._beside.unlink(missing_ok=True)
 
     def add(self, frame: pd.DataFrame) -> None:
         """Check rows against the contract, together with the row before them, and write what fills a row group."""
@@ -131,7 +135,7 @@ class _Writer:
             self._held = self._held.slice(_ROW_GROUP)
 
     def finish(self) -> None:
-        """Write what is left and put the file in its place."""
+        """Write what is left."""
         if self._held is None:
             raise ValueError(f"no rows for {self._path}, not even an empty batch")
         if len(self._held) or self._writer is None:
@@ -139,6 +143,9 @@ class _Writer:
         self._wait()
         self._writer.close()
         self._writer = None
+
+    def place(self) -> None:
+        """Put the finished file in its place."""
         self._beside.replace(self._path)
 
     def _write(self, table: pa.Table) -> None:
@@ -148,8 +155,9 @@ class _Writer:
         self._wait()
         if self._writer is None:
             self._writer = pq.ParquetWriter(self._beside, table.schema, **_encoding(table.schema))
+        whole = table.combine_chunks()  # a page may otherwise end where a batch does
         self._pending = self._writing.submit(
-            self._writer.write_table, table, row_group_size=_ROW_GROUP
+            self._writer.write_table, whole, row_group_size=_ROW_GROUP
         )
 
     def _wait(self) -> None:

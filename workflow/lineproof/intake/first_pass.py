@@ -7,7 +7,6 @@ from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
-import pandas as pd
 import pyarrow as pa
 from numba import njit
 
@@ -81,7 +80,7 @@ def take_rows(
     """
     further = [name for name in reading["columns"] if name not in {"security", "date", *NUMERIC}]
     taken = Taken(SortedRuns(scratch), SetAside(), Tally(), {name: Names() for name in further})
-    is_first = True
+    is_first, declared_point = True, reading.get("decimal", "point") == "point"
     for number, file in enumerate(files):
         taken.n_read.append(0)
         for block in file.blocks():
@@ -90,9 +89,9 @@ def take_rows(
             taken.aside.add_rejects(number, block.rejects)
             if len(block.position) == 0:
                 continue
-            if is_first and "return" in block.columns:
+            if is_first and "return" in block.columns and declared_point:
                 check_decimal_comma(block.columns["return"], reading)
-                is_first = False
+            is_first = False
             _take_block(block, number, reading, taken, see)
     return taken
 
@@ -202,9 +201,8 @@ def _texts(column: pa.Array, missing: list[str], known: Names) -> np.ndarray:
     """Codes into the distinct texts of a further column; a code for missing is the empty text."""
     coded = column.dictionary_encode()
     texts = [as_digits(value) for value in coded.dictionary.to_pylist()]
-    codes = known.codes(
-        ["" if text in set(missing_codes(missing)) else text for text in [*texts, ""]]
-    )
+    blank = set(missing_codes(missing))
+    codes = known.codes(["" if text in blank else text for text in [*texts, ""]])
     return codes[coded.indices.fill_null(len(texts)).to_numpy(zero_copy_only=False)]
 
 

@@ -10,7 +10,7 @@ from lineproof.periods import Periods
 
 STALE_RUN = 3  # periods
 _STALE_KINDS = ((3, 5, "of 3 to 5 {}s"), (6, 11, "of 6 to 11 {}s"), (12, np.inf, "longer"))
-LONG_AWAY = np.timedelta64(36 * 30, "D")
+LONG_AWAY = 36  # months without a row
 _JUMP, _AFTER_REVERSAL = 3.0, 0.5  # Ince and Porter 2006
 
 
@@ -23,8 +23,9 @@ def flag_rows(chunk: Chunk, tally: Tally, codes: list[str], periods: Periods) ->
         total_loss |= values["final_return"] == -1
     tally.add(16, total_loss.sum(), first_rows(chunk, total_loss))
     tally.add(20, chunk.absent.sum(), first_rows(chunk, chunk.absent > 0))
-    away = np.diff(chunk.day, prepend=chunk.day[:1])
-    long_away = ~chunk.is_first & (chunk.absent > 0) & (away > LONG_AWAY)
+    month = chunk.day.astype("datetime64[M]").astype(np.int64)
+    away = np.diff(month, prepend=month[:1]) - 1
+    long_away = ~chunk.is_first & (away > LONG_AWAY)
     tally.add(41, long_away.sum(), first_rows(chunk, long_away))
     _flag_stale(chunk, tally, periods)
     if "size" in values:

@@ -6,6 +6,7 @@ from typing import Any
 
 import numpy as np
 import pandas as pd
+import pyarrow as pa
 
 from lineproof.intake.frequency import FrequencyEvidence
 from lineproof.intake.scale import ScaleEvidence
@@ -24,7 +25,7 @@ def check_unit(returns: np.ndarray, reading: dict[str, Any], frequency: str = "m
     judge_unit(evidence, reading, frequency)
 
 
-def check_decimal_comma(text: pd.Series, reading: dict[str, Any]) -> None:
+def check_decimal_comma(text: pd.Series | pa.Array, reading: dict[str, Any]) -> None:
     """Stop when most returns are written as in 0,015. Raises KnownProblem."""
     if share_with_decimal_comma(text) > 0.5:
         where = f"{reading['label']}, column {reading['columns']['return']}"
@@ -32,8 +33,8 @@ def check_decimal_comma(text: pd.Series, reading: dict[str, Any]) -> None:
         raise stop(where, found, "save the file with decimal points")
 
 
-def _first_with_comma(text: pd.Series) -> str:
-    return min(text[text.str.contains(",", regex=False)])
+def _first_with_comma(text: pd.Series | pa.Array) -> str:
+    return min(value for value in text.tolist() if "," in value)
 
 
 def check_frequency(

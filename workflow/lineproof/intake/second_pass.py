@@ -58,7 +58,8 @@ class Tracked:
 def chunks(taken: Taken, span: Span, rules: Rules, tracked: Tracked) -> Iterator[Chunk]:
     """The kept rows, all of some securities at a time, in the order of their names."""
     n_files = len(tracked.n_kept)
-    for names, security, columns in taken.runs.stretches(_ROWS):
+    for names, security, delivered in taken.runs.stretches(_ROWS):
+        columns = delivered
         period = span.periods.number(columns["day"].astype("datetime64[D]"))
         faults = FirstFault(taken.aside, columns["file"], columns["position"])
         _note_outside(period, columns, span, faults, tracked)
@@ -99,7 +100,7 @@ def _note_outside(
         return
     tracked.n_before += int((outside & (days < first)).sum())
     tracked.n_after += int((outside & (days > last)).sum())
-    faults.note(outside, 28, lambda rows: [f"'{day}'" for day in days[rows]])
+    faults.note(outside, 28, lambda rows: [str(day) for day in days[rows]])
 
 
 def _as_total(

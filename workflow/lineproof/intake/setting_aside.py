@@ -77,7 +77,9 @@ class SetAside:
                 file = files[of_file[row]]
                 named = f"{file.label}, " if len(files) > 1 else ""
                 examples.append(f"{named}{file.place} {file.line(position[[row]])[0]}")
-            tally.add(number, len(rows), examples)
+            # A fault that is otherwise flagged counts more than rows: say how many are set aside.
+            kinds = {} if FAULTS[number].answer == "set aside" else {"set aside": len(rows)}
+            tally.add(number, len(rows), examples, kinds)
 
     def first_of_each(self, files: Sequence[RawFile]) -> list[tuple[int, int, str, str]]:
         """Fault, how often, place and reason of the first row, for each fault met."""

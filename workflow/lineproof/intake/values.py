@@ -162,7 +162,7 @@ def to_days(column: pd.Series | pa.Array, dates: str) -> np.ndarray:
     """
     array = _as_array(column)
     if pa.types.is_temporal(array.type):
-        return _within(array.cast(pa.timestamp("s"), safe=False).to_numpy(zero_copy_only=False))
+        return _within(array.to_numpy(zero_copy_only=False))
     coded = array.dictionary_encode()
     distinct = pd.Series([as_digits(value) for value in coded.dictionary.to_pylist()], dtype=str)
     parsed = pd.to_datetime(distinct, format=dates, errors="coerce", exact=True, utc="%z" in dates)
@@ -176,10 +176,10 @@ def to_days(column: pd.Series | pa.Array, dates: str) -> np.ndarray:
 
 
 def as_digits(value: Any) -> str:
-    """A number as the digits it is written with: a whole one without a point."""
-    if isinstance(value, float):
-        return str(int(value)) if value == value and value == int(value) else str(value)
-    return "" if value is None else str(value)
+    """A number as the digits it is written with: a whole one without a point, nothing for NaN or None."""
+    if value is None or value != value:
+        return ""
+    return str(int(value)) if isinstance(value, float) and value.is_integer() else str(value)
 
 
 def _within(moments: np.ndarray) -> np.ndarray:
