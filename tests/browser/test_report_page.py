@@ -2,34 +2,15 @@
 
 from __future__ import annotations
 
-import os
-import shutil
-from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
-from playwright.sync_api import Browser, Page, sync_playwright
+from playwright.sync_api import Browser
+from tests.browser.conftest import DESKTOP, PHONE, asked_and_said, opened, violations
 from tests.unit import paper_examples as examples
 
 from lineproof.paper.figures import draw_figures
 from lineproof.paper.report import make_report
-
-CHROMIUM = (
-    shutil.which("chromium") or shutil.which("chromium-browser") or shutil.which("google-chrome")
-)
-PHONE = {"width": 390, "height": 844}
-DESKTOP = {"width": 1400, "height": 900}
-
-
-@pytest.fixture(scope="module")
-def browser() -> Iterator[Browser]:
-    if CHROMIUM is None:
-        assert "LINEPROOF_NEEDS_BROWSER" not in os.environ, "chromium is not installed"
-        pytest.skip("needs Chromium, as from Debian's package chromium")
-    with sync_playwright() as playwright:
-        browser = playwright.chromium.launch(executable_path=CHROMIUM, args=["--no-sandbox"])
-        yield browser
-        browser.close()
 
 
 @pytest.fixture(scope="module", params=[examples.usual, examples.hostile], ids=["usual", "hostile"])
@@ -40,24 +21,13 @@ def report(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFact
     return path
 
 
-def opened(browser: Browser, report: Path, **options: object) -> Page:
-    page = browser.new_context(**options).new_page()
-    page.goto(report.as_uri())
-    return page
-
-
 def test_one_request_and_a_clean_console(browser: Browser, report: Path) -> None:
-    page = browser.new_page()
-    asked: list[str] = []
-    said: list[str] = []
-    page.on("request", lambda request: asked.append(request.url))
-    page.on("console", lambda message: said.append(message.text))
-    page.on("pageerror", lambda error: said.append(str(error)))
-    page.on("dialog", lambda dialog: said.append(dialog.message))
-    page.goto(report.as_uri())
-    page.wait_for_load_state("networkidle")
-    assert asked == [report.as_uri()]
-    assert said == []
+    assert asked_and_said(browser, report) == ([report.as_uri()], [])
+
+
+@pytest.mark.parametrize("scheme", ["light", "dark"])
+def test_nothing_against_accessibility(browser: Browser, report: Path, scheme: str) -> None:
+    assert violations(browser, report, color_scheme=scheme) == []
 
 
 @pytest.mark.parametrize("scheme", ["light", "dark"])

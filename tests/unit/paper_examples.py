@@ -84,8 +84,9 @@ def sample_rows(
         for f in intake["faults"]
     ]
     rows += [
-        ("-", "intake", "screen", f"screen-{place}", "n_rows", each["n"])
+        ("-", "intake", "screen", f"screen-{place}", term, each[term])
         for place, each in enumerate(intake["screens"], start=1)
+        for term in ("n_rows", "n_securities")
     ]
     for place, month in enumerate(map(str, months)):
         rows.append(("-", "sample", "month", month, "n_securities", 250 + place % 200))
@@ -176,7 +177,8 @@ INTAKE = {
         {"number": 7, "label": "blanks around a value", "answer": "repair", "n": 44},
         {"number": 16, "label": "a return of exactly −100 %", "answer": "flag", "n": 12},
     ],
-    "screens": [{"label": "price at least 1", "n": 640}],
+    "screens": [{"label": "price at least 1", "n_rows": 640, "n_securities": 71}],
+    "span": [],
 }
 
 

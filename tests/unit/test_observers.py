@@ -14,7 +14,14 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from tests.unit.chunk_examples import MONTHS, chunk_of, cut, draw_panel, trading_days
 
-from lineproof.intake.observers import OBSERVERS, evidence, start_observers
+from lineproof.intake.observers import (
+    OBSERVERS,
+    counting,
+    distribution,
+    evidence,
+    start_observers,
+    warm_up,
+)
 from lineproof.intake.observers.distribution import SHARES
 from lineproof.intake.observers.largest import N_SHOWN
 from lineproof.intake.observers.significant import N_BINS, ZERO_BIN, bin_of, value_of
@@ -224,3 +231,18 @@ def test_three_digits_round_as_the_value_itself_does(digits: int, places: int) -
     rounding = Context(prec=3, rounding=ROUND_HALF_UP)
     kept = Decimal(repr(value_of(bin_at(value))))
     assert rounding.plus(kept) == rounding.plus(Decimal(repr(value)))
+
+
+def test_warming_up_compiles_every_kernel_for_the_types_of_a_chunk() -> None:
+    """A chunk afterwards finds all it needs: no signature is added."""
+    warm_up()
+    kernels = [
+        counting.count_periods,
+        counting.count_values,
+        counting.count_texts,
+        distribution._add,
+    ]
+    before = [len(kernel.signatures) for kernel in kernels]
+    observe([chunk_of(draw_panel(1))])
+    assert min(before) > 0
+    assert [len(kernel.signatures) for kernel in kernels] == before

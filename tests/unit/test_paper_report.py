@@ -127,7 +127,11 @@ def test_one_self_contained_page(page: str) -> None:
 def test_ids_are_unique_and_every_link_arrives(page: str) -> None:
     found = Page(page)
     assert len(found.ids) == len(set(found.ids))
-    assert {link.removeprefix("#") for link in found.links} <= set(found.ids)
+    inside = {link for link in found.links if link.startswith("#")}
+    assert {link.removeprefix("#") for link in inside} <= set(found.ids)
+    assert set(found.links) - inside == {
+        "data_report.html"
+    }  # beside the report, written by the same run
     assert set(found.labels) <= set(found.ids)
 
 
@@ -136,6 +140,26 @@ def test_cautions() -> None:
     assert "The market is invented" in usual
     assert "The market is invented" not in hostile
     assert usual.count("no investment advice") == hostile.count("no investment advice") == 1
+
+
+def test_the_intake_in_short_and_where_the_rest_is() -> None:
+    usual = examples.usual()
+    section = report_of(usual).split('<section id="data"')[1]
+    row = (
+        r'<tr><th scope="row">a return below −100 %</th><td class="count">15</td><td>set aside</td>'
+    )
+    assert re.search(row + r'<td class="count"><span [^>]*>720</span></td></tr>', section)
+    assert '<a href="#figure-coverage">Figure 3</a>' in section
+    assert "No security ever leaves" not in section
+    survivors = {"number": 26, "label": "no security ever leaves", "answer": "flag", "n": 1}
+    intake = {**examples.INTAKE, "faults": [survivors], "span": ["The study begins there & ends"]}
+    sorts = {"ten": (examples.ranked_facts(), examples.groups(4))}
+    context = examples.study(
+        sorts, [examples.subperiod("full", "1990-01", "1999-12")], intake=intake
+    )
+    section = report_of(context).split('<section id="data"')[1]
+    assert "<b>No security ever leaves: " in section
+    assert "The study begins there &amp; ends." in section
 
 
 def test_hostile_titles_are_escaped() -> None:

@@ -178,7 +178,7 @@ def test_hostile_names_stay_text() -> None:
     for name, text in tables.items():
         if name.endswith(".html"):
             assert "script" not in Cells(text).tags
-            assert "&lt;script&gt;alert(1);" in text or name.startswith("sample")
+            assert "&lt;script&gt;alert(1);" in text or name.startswith(("sample", "data_intake"))
         if name.endswith(".csv"):
             fields = [field for row in rows_of_csv(text) for field in row.values()]
             numbers = re.compile(r"-?\d[\d.e+-]*")
@@ -225,7 +225,7 @@ def test_wide_sorts_wrap_into_blocks_of_ten() -> None:
 
 def test_other_sorts_follow_in_an_appendix() -> None:
     tables = build(examples.usual())
-    assert [table.number for table in tables.values()] == [*"12345", "A1", "A2", "A3", "A4"]
+    assert [table.number for table in tables.values()] == [*"123456", "A1", "A2", "A3", "A4"]
     assert "ranked_portfolios-sectors" in tables
 
 
@@ -285,7 +285,7 @@ def test_tables_and_report_need_no_matplotlib() -> None:
     code = (
         "import sys, lineproof.paper.tables, lineproof.paper.report;"
         "import lineproof.paper.sample_table, lineproof.paper.portfolio_tables;"
-        "import lineproof.paper.pricing_tables;"
+        "import lineproof.paper.pricing_tables, lineproof.paper.intake_table;"
         "print({'matplotlib', 'scipy', 'pandera'} & set(sys.modules))"
     )
     assert _python(code) == "set()"
@@ -320,6 +320,15 @@ MARKET_MEAN = "ten/full/market_line/-/all/market_mean/-"
         ("sample", "rows_read", "n_rows", "-/-/intake/rows/all/rows_read/-", "estimate"),
         ("sample", "fault-15", "n_rows", "-/-/intake/fault/fault-15/n_rows/-", "estimate"),
         ("sample", "screen-1", "n_rows", "-/-/intake/screen/screen-1/n_rows/-", "estimate"),
+        ("data_intake", "rows", "rows_kept", "-/-/intake/rows/all/rows_kept/-", "estimate"),
+        ("data_intake", "fault-15", "n_rows", "-/-/intake/fault/fault-15/n_rows/-", "estimate"),
+        (
+            "data_intake",
+            "screen-1",
+            "n_securities",
+            "-/-/intake/screen/screen-1/n_securities/-",
+            "estimate",
+        ),
         ("sample", "full", "n_exits", "-/full/sample/panel/all/n_exits/-", "estimate"),
         ("sample", "full", "market_mean", f"{DESCRIBE}/market/mean/-", "estimate"),
         ("sample", "full", "market_sd", f"{DESCRIBE}/market/sd/-", "estimate"),
@@ -405,3 +414,18 @@ def test_without_a_riskless_rate_the_sample_shows_a_dash_and_says_why() -> None:
         "The market is the mean of all securities, weighted by size at the end of the period before."
         in text
     )
+
+
+def test_the_intake_without_faults_or_screens_says_so() -> None:
+    table = build(examples.hostile())["data_intake"]
+    assert [panel.key for panel in table.panels] == ["rows"]
+    said_ = html_table.fragment(table)
+    assert "No row has a fault." in said_
+    assert "There are no screens." in said_
+
+
+def test_faults_are_shown_with_number_and_answer() -> None:
+    panel = build(examples.usual())["data_intake"].panels[1]
+    labels = [[html_table.phrase(label) for label in row.labels] for row in panel.rows]
+    assert labels[1] == ["a return below −100 %", "15", "set aside"]
+    assert labels[3] == ["a return of exactly −100 %", "16", "kept, flagged"]

@@ -21,6 +21,9 @@ TABLES: dict[str, Entry] = {
     "market_line": Entry(
         "lineproof.paper.pricing_tables:market_line", "The market line by subperiod"
     ),
+    "data_intake": Entry(
+        "lineproof.paper.intake_table:data_intake", "The intake of the raw returns"
+    ),
 }
 # Made once for each set of test assets; every other table shows all sets, or none.
 PER_SORT = {"ranked_portfolios", "alphas_betas"}

@@ -95,7 +95,8 @@ def _head(panel: Panel) -> Iterator[str]:
         )
         yield f'<tr class="spans"><td colspan="{stubs}"></td>{spans}</tr>\n'
     headings = "".join(
-        f'<th scope="col">{phrase(stub)}</th>' if stub else "<td></td>" for stub in panel.stubs
+        f'<th scope="col" class="stub">{phrase(stub)}</th>' if stub else "<td></td>"
+        for stub in panel.stubs
     )
     headings += "".join(
         f'<th scope="col"{_long(each.heading, 14)}>{phrase(each.heading)}</th>'

@@ -8,6 +8,7 @@ from typing import Any
 from markupsafe import Markup
 
 from lineproof.analyses import ALPHA_ERRORS, LINE_WEIGHTS
+from lineproof.intake.record import ANSWERS, survivors_only
 from lineproof.paper import answer, exhibits, html_table, notes, tables
 from lineproof.paper.context import Context
 from lineproof.paper.inline import inline_svg
@@ -40,6 +41,8 @@ def make_report(context: Context, figures: Mapping[str, bytes]) -> str:
             methods=_methods(context),
             intake=_html(_intake(context)),
             faults=_faults(context),
+            survivors_only=survivors_only(context.intake),
+            span=context.intake["span"],
         )
     )
 
@@ -141,5 +144,6 @@ def _faults(context: Context) -> list[dict[str, Any]]:
     for fault in context.intake["faults"]:
         key = f"fault-{fault['number']:02d}"
         number = context.book.at("-", "-", "intake", "fault", key, "n_rows", "-")
-        found.append({**fault, "count": _html(Phrase([cell(number, "count")]))})
+        count = _html(Phrase([cell(number, "count")]))
+        found.append({**fault, "answer": ANSWERS[fault["answer"]], "count": count})
     return found
