@@ -49,6 +49,7 @@ rule study:
     input:
         after_validation(wiring.tables_between),
         priced,
+        after_validation("data_report.html"),
         after_cutting("report.html"),
         after_cutting("estimates.csv"),
         after_cutting(wiring.tables),
@@ -58,3 +59,4 @@ rule study:
 rule data:
     input:
         wiring.path("data/intake.json"),
+        after_validation("data_report.html"),

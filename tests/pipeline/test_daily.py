@@ -176,7 +176,6 @@ def test_means_of_days_print_with_four_digits(made: Made) -> None:
     assert np.isfinite(slope.estimate)
 
 
-@pytest.mark.skip(reason="the intake reads months only; remove this mark once it reads days")
 def test_a_whole_run(tmp_path: Path, made: Made) -> None:
     project: Project = copy_program(tmp_path / "project", daily_market.STUDY)
     daily_market.write_files(project.folder / "raw")

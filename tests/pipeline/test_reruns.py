@@ -7,7 +7,7 @@ import shutil
 
 from tests.pipeline.conftest import Project, deliver
 
-PAPER = {"write tables", "draw figures", "write report"}
+PAPER = {"write tables", "draw figures", "write report", "write data report"}
 ALL = {
     "validate returns",
     "estimate betas",

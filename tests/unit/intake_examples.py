@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import bz2
 import gzip
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -13,7 +14,19 @@ import pyarrow.parquet as pq
 import pytest
 
 from lineproof.problems import KnownProblem
-from lineproof.validation import Validated, validate_returns
+from lineproof.store import Scratch
+from lineproof.validation import validate_returns
+
+
+@dataclass(frozen=True)
+class Validated:
+    """What validation writes, whole; see `frames` for the columns. `intake` holds the counts."""
+
+    panel: pd.DataFrame
+    market: pd.DataFrame
+    set_aside: pd.DataFrame
+    intake: dict[str, Any]
+
 
 COLUMNS = {
     "security": "id",
@@ -101,19 +114,37 @@ def validate(
     market = dict.fromkeys(year, 0.01) if market is None else market
     riskless = dict.fromkeys(year, 0.002) if riskless is None else riskless
     series = {"dates": "%Y-%m"}
-    return validate_returns(
-        file,
-        write(folder / "market.csv", monthly_file("mkt", market)),
-        write(folder / "riskless.csv", monthly_file("rf", riskless)),
-        returns=returns_reading(**changes),
-        market=reading("raw/market.csv", {"date": "month", "return": "mkt"}, **series),
-        market_is="total",
-        riskless=reading("raw/riskless.csv", {"date": "month", "rate": "rf"}, **series),
-        riskless_quoted="period_return",
-        screens=screens or [],
-        missing_final_return=missing_final_return,
-        same_month_rows=same_month_rows,
-    )
+    files = {
+        "returns": [file],
+        "market": [write(folder / "market.csv", monthly_file("mkt", market))],
+        "riskless": [write(folder / "riskless.csv", monthly_file("rf", riskless))],
+    }
+    rules = {
+        "screens": screens or [],
+        "missing_final_return": missing_final_return,
+        "final_return_by_reason": {},
+        "same_month_rows": same_month_rows,
+        "stale_run": None,
+        "return_after_hole": "keep",
+        "jump_and_reversal": "flag",
+    }
+    with Scratch(folder) as scratch:
+        found = validate_returns(
+            files,
+            scratch,
+            returns=returns_reading(**changes),
+            market=reading("raw/market.csv", {"date": "month", "return": "mkt"}, **series),
+            market_is="total",
+            riskless=reading("raw/riskless.csv", {"date": "month", "rate": "rf"}, **series),
+            riskless_quoted="period_return",
+            rules=rules,
+        )
+        return Validated(
+            panel=pd.concat([t["panel"] for t in found.tables()], ignore_index=True),
+            market=found.market(),
+            set_aside=pd.concat([t["set_aside"] for t in found.set_aside()], ignore_index=True),
+            intake=found.counts(),
+        )
 
 
 def refused(*arguments: Any, **options: Any) -> str:

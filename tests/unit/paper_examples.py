@@ -123,6 +123,7 @@ def facts(sorts: dict[str, dict[str, Any]], **changes: Any) -> dict[str, Any]:
         "name": "example",
         "title": "Is beta priced on the Kestrel Sound Exchange?",
         "market_name": "the Kestrel Sound Exchange",
+        "market_build": None,
         "invented": True,
         "level": 0.05,
         "period": asdict(FREQUENCIES["monthly"]),
@@ -185,6 +186,7 @@ def study(
     *,
     analyses: Sequence[str] = tuple(ANALYSES),
     intake: dict[str, Any] = INTAKE,
+    has_riskless: bool = True,
     **changes: Any,
 ) -> Context:
     """Everything the paper needs for given sorts (facts and asset names) and subperiods."""
@@ -196,6 +198,8 @@ def study(
             for place, (name, (said, assets)) in enumerate(sorts.items())
         ]
     )
+    if not has_riskless:
+        whole["riskless"] = np.nan
     frames = []
     for each in periods:
         start, end = pd.Period(each["first"], "M"), pd.Period(each["last"], "M")

@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
+import re
 import textwrap
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
+from tests.unit import record_examples as examples
 from tests.unit.intake_examples import lines, months, validate
 
 from lineproof import store
-from lineproof.checking import describe_intake, summary
+from lineproof.checking import WIDTH, describe_intake, summary
+from lineproof.intake.record import Intake
 from lineproof.study import load_study
 
 MARKET = dict.fromkeys(months("2000-01", 3), 0.01)
@@ -21,10 +25,10 @@ ROWS = [
 ]
 EXPECTED = """\
     raw/returns.csv: 2000-01 to 2000-03, 3 securities
-             10  rows read, of which
-              7  kept, 4 of them without a return
-              2  set aside
-              1  dropped, as exact duplicates of others
+             10  rows read
+     =        7  kept, 4 of them without a return
+     +        2  set aside
+     +        1  dropped, as exact duplicates of others
     1 row of returns dated after 2000-03, where raw/market.csv ends: the study ends there
 
     Faults found:
@@ -41,8 +45,32 @@ EXPECTED = """\
               1  no market or riskless return in that month: set aside
                    line 11
 
-    Rows that fail a screen, in order; they are kept, but not ranked that month:
+    Rows that fail a screen, in order; they are kept, but not ranked on:
               1  of 1 security: not “price at least 1”
+"""
+FULL = """\
+raw/market.csv:
+        320  rows read
+ =      312  kept
+ +        0  set aside
+ +        0  dropped, as exact duplicates of others
+ +        8  not used: without a value, or beyond the study
+"""
+ENDING = """\
+Securities that leave:
+         22  with a final return
+         31  without one
+               3 for no reason given: left as they are
+               10 merged: taken as 0.00 %
+               18 failed: taken as −30.00 %
+             equally weighted mean a month: 0.8123 % with final returns, 0.8877 % without any
+
+Units and scale:
+  Unit of the returns: half of all returns lie between −3.2 % and 4.1 %: decimal, as declared
+  Unit by month: in 1 month the median size is 102 times its neighbours’: kept, flagged
+
+The largest returns, in per cent:
+  security  date         before    return    after
 """
 
 
@@ -56,10 +84,10 @@ def test_clean_data_say_little(tmp_path: Path) -> None:
     rows = ["A,2000-01-31,0.1,,1,5", "B,2000-01-31,0.1,0.1,1,5", "A,2000-02-29,0.1,,1,5"]
     assert describe_intake(validate(tmp_path, lines(*rows)).intake) == [
         "raw/returns.csv: 2000-01 to 2000-02, 2 securities",
-        "          3  rows read, of which",
-        "          3  kept",
-        "          0  set aside",
-        "          0  dropped, as exact duplicates of others",
+        "          3  rows read",
+        " =        3  kept",
+        " +        0  set aside",
+        " +        0  dropped, as exact duplicates of others",
     ]
 
 
@@ -86,7 +114,57 @@ def test_summary_of_a_study(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> 
     store.write_json(intake, "results/mine/data/intake.json")
     said = summary(load_study("mine.yaml")).splitlines()
     assert said[0] == "A study of mine (mine.yaml): the study file and its data can be used."
-    assert said[2:-2] == describe_intake(intake)
-    assert said[-1] == (
-        "The rows set aside, as they stand in the file: results/mine/data/set_aside.csv"
+    assert said[2:-3] == describe_intake(intake)
+    assert said[-2:] == [
+        "Rows set aside, as they stand in the file:  results/mine/data/set_aside.csv",
+        "The data report, with tables and figures:   results/mine/data_report.html",
+    ]
+
+
+@pytest.mark.parametrize("make", [examples.usual, examples.daily, examples.earlier, examples.clean])
+def test_lines_fit_a_terminal_and_columns_stand_in_line(make: Callable[[], Intake]) -> None:
+    said = describe_intake(make())
+    assert max(map(len, said)) <= WIDTH
+    counts = [line.index("  ", 11) for line in said if re.match(r" [ =+][ \d,]{9}  \S", line)]
+    assert set(counts) == {11}
+
+
+def test_all_parts_of_a_full_record() -> None:
+    said = "\n".join(describe_intake(examples.usual()))
+    assert FULL in said
+    assert ENDING in said
+
+
+def test_survivors_are_warned_of_first() -> None:
+    assert describe_intake(examples.daily())[0].startswith("WARNING: no security ever leaves.")
+    assert not any("WARNING" in line for line in describe_intake(examples.usual()))
+
+
+def test_the_largest_five_are_of_gains_and_losses_together() -> None:
+    intake = examples.usual()
+    largest = intake["evidence"]["largest"]
+    sizes = sorted(
+        (abs(each["return_"]) for side in largest.values() for each in side), reverse=True
     )
+    said = describe_intake(intake)
+    rows = said[said.index("The largest returns, in per cent:") + 2 :]
+    shown = [abs(float(row.split()[-2].replace("−", "-"))) for row in rows]
+    assert shown == [round(100 * size, 2) for size in sizes[:5]]
+
+
+def test_rows_that_do_not_add_up_are_never_printed() -> None:
+    intake = examples.usual()
+    intake["files"][1]["rows_unused"] = 7
+    with pytest.raises(
+        ValueError, match=r"rows of raw/market.csv do not add up: 320 ≠ 312 \+ 0 \+ 0 \+ 7"
+    ):
+        describe_intake(intake)
+
+
+def test_names_from_the_data_cannot_steer_the_terminal() -> None:
+    intake = examples.usual()
+    intake["faults"][0]["examples"] = ["\x1b[2Jline 7"]
+    intake["evidence"]["largest"]["negative"][0]["security"] = "S\x1b[31m\n1"
+    said = describe_intake(intake)
+    assert all(line.isprintable() for line in said)
+    assert any("\N{REPLACEMENT CHARACTER}[2Jline 7" in line for line in said)

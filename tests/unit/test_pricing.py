@@ -488,3 +488,15 @@ def test_two_rows_of_one_day_are_refused() -> None:
             analyses=["describe"],
             frequency="daily",
         )
+
+
+def test_without_a_riskless_rate_everything_else_is_the_same() -> None:
+    cut = _cut()
+    usual, without = _price(cut), _price(cut.assign(riskless=np.nan))
+    is_riskless = without["asset"] == "riskless"
+    assert is_riskless.sum() == 2
+    assert set(without.loc[is_riskless, "status"]) == {"undefined"}
+    assert set(without.loc[is_riskless, "reason"]) == {
+        "the study has returns in excess of a riskless rate that is not known"
+    }
+    pd.testing.assert_frame_equal(without[~is_riskless], usual[~is_riskless])

@@ -93,13 +93,20 @@ def test_ending_says_gzip_but_it_is_text(tmp_path: Path) -> None:
         (gzip.compress(TEXT.encode()), "compressed with gzip"),
         (b"PAR1\x15\x04", "a Parquet file"),
         (b"PK\x03\x04\x14", "a spreadsheet or a zip archive"),
-        (TEXT.encode("utf-16"), "UTF-16 text"),
+        (b"BZh91AY", "compressed with bzip2"),
+        (b"ARROW1\0\0", "a Feather (Arrow IPC) file"),
     ],
 )
 def test_ending_says_text_but_it_is_not(tmp_path: Path, content: bytes, what: str) -> None:
     assert message(tmp_path, content) == (
         f"  raw/r.csv: its ending says plain text, but its first bytes say it is {what}\n"
         "    → name it as what it is, or save it as CSV"
+    )
+
+
+def test_utf16_is_named_as_what_to_set(tmp_path: Path) -> None:
+    assert message(tmp_path, TEXT.encode("utf-16")) == (
+        "  raw/r.csv: its first bytes say it is UTF-16 text\n    → set encoding: utf-16"
     )
 
 
@@ -118,7 +125,8 @@ def test_first_byte_that_is_not_utf8(tmp_path: Path) -> None:
     content = TEXT.encode() + "3,2000-01-31,é\n".encode("latin-1")
     position = content.index(b"\xe9") + 1
     assert message(tmp_path, content) == (
-        f"  raw/r.csv, line 4: byte {position} is not UTF-8 text\n    → save the file as UTF-8"
+        f"  raw/r.csv, line 4: byte {position} is not UTF-8 text\n"
+        "    → save the file as UTF-8, or set encoding: as in latin-1 or cp1252"
     )
 
 

@@ -241,7 +241,8 @@ def test_decimal_declared_percent(tmp_path: Path) -> None:
 def test_prices_delivered_as_returns(tmp_path: Path, unit: str) -> None:
     message = refused(tmp_path, lines(*noisy(5.0, mean=150.0)), unit=unit)
     assert message.endswith(
-        "\n    → hardly any is negative: does the column hold prices, or 1 + return?"
+        "\n    → hardly any is negative: does the column hold prices, or 1 + return? "
+        "For prices, name their column under price: and set return: {from: price}"
     )
 
 
@@ -260,8 +261,8 @@ def test_daily_data(tmp_path: Path) -> None:
     ]
     assert refused(tmp_path, lines(*rows)) == (
         "The raw data cannot be used; nothing was written.\n"
-        "  raw/returns.csv: 80 dates in 4 months of single securities: are these daily or weekly data?\n"
-        "    → compound the returns to months first; this study is monthly"
+        "  raw/returns.csv: declared monthly, but 80 dates in 4 months of single securities, 20 a month: daily data?\n"
+        "    → set frequency: daily under data.returns, and they are compounded to months"
     )
 
 
@@ -275,8 +276,9 @@ def test_quarterly_data(tmp_path: Path) -> None:
     rows = [f"{s},2000-{m:02d}-28,0.01,,1,1" for s in range(11) for m in (3, 6, 9, 12)]
     assert refused(tmp_path, lines(*rows)) == (
         "The raw data cannot be used; nothing was written.\n"
-        "  raw/returns.csv: a security's next row is typically 3 months on: are these quarterly or yearly data?\n"
-        "    → deliver monthly returns; this study is monthly"
+        "  raw/returns.csv: declared monthly, but a security's next row is typically 3 months on, "
+        "in 33 steps from row to row: quarterly data?\n"
+        "    → deliver monthly returns"
     )
 
 

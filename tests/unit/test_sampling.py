@@ -175,3 +175,16 @@ def test_what_came_in() -> None:
         ("screen", "screen-2", "n_rows"): 4,
         ("screen", "screen-2", "n_securities"): 2,
     }
+
+
+def test_a_study_without_total_returns_says_why_it_has_no_mean() -> None:
+    panel = panel_of({"a": span("2000-01", "2000-06"), "b": span("2000-01", "2000-06")})
+    found = describe_sample(
+        panel.assign(total_return=np.nan), None, [subperiod("all", "2000-01", "2000-06")], INTAKE
+    )
+    ESTIMATES.validate(found)
+    undefined = found[found["status"] == "undefined"]
+    assert undefined["term"].tolist() == ["mean_return", "sd_return"]
+    assert set(undefined["reason"]) == {
+        "the returns are in excess of a riskless rate that is not known"
+    }

@@ -43,6 +43,14 @@ def test_a_table_that_breaks_its_contract_is_not_written(tmp_path: Path, dates: 
     assert list(tmp_path.iterdir()) == []
 
 
+def test_the_riskless_rate_is_known_in_every_period_or_in_none(tmp_path: Path) -> None:
+    frame = market(["2000-01-31", "2000-02-29"])
+    store.write_table(frame.assign(riskless=float("nan")), tmp_path / "none.parquet", "market")
+    partly = frame.assign(riskless=[0.002, float("nan")])
+    with pytest.raises(pandera.errors.SchemaError, match="in every period or in none"):
+        store.write_table(partly, tmp_path / "partly.parquet", "market")
+
+
 def test_a_failed_write_leaves_the_old_file_and_nothing_else(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:

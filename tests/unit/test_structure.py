@@ -20,8 +20,10 @@ REGISTRIES = (
     "lineproof.designs:DESIGNS",
     "lineproof.designs:WEIGHTS",
     "lineproof.analyses:ANALYSES",
+    "lineproof.quotings:QUOTINGS",
     "lineproof.paper.exhibits:TABLES",
     "lineproof.paper.exhibits:FIGURES",
+    "lineproof.intake.observers:OBSERVERS",
 )
 
 
@@ -75,6 +77,7 @@ def test_a_script_is_thin_and_calls_the_function_of_its_name(script: Path) -> No
     renamed = {
         "write_tables": "make_tables",
         "write_report": "make_report",
+        "write_data_report": "make_data_report",
     }
     assert renamed.get(script.stem, script.stem) in called(script)
     assert not imported(script) & {"pandas", "numpy"}

@@ -31,9 +31,12 @@ def main(words: list[str] | None = None) -> int:
     if rest:
         parser.error(f"unknown words: {' '.join(rest)}")
     if given.command == "compile":
-        from lineproof.stats.windows import warm_up
+        from lineproof.intake import lines, market_build
+        from lineproof.stats import windows
 
-        warm_up()
+        lines.warm_up()
+        market_build.warm_up()
+        windows.warm_up()
         return 0
     try:
         return _run(given)
@@ -95,6 +98,7 @@ def _develop(name: str, more: list[str]) -> int:
 
 
 def _run(given: argparse.Namespace) -> int:
+    from lineproof.extracts import fetch_extracts
     from lineproof.locking import only_run_of
     from lineproof.study import load_study
 
@@ -103,6 +107,7 @@ def _run(given: argparse.Namespace) -> int:
     study = load_study(path.relative_to(ROOT) if path.is_relative_to(ROOT) else path)
     began = time.monotonic()
     with only_run_of(study):
+        fetch_extracts(study)
         status, steps = _snakemake(
             given, study.path, "study" if given.command == "study" else "data"
         )

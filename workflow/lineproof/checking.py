@@ -1,14 +1,31 @@
-"""What `make check` prints: the intake of a study in a form one can read."""
+"""What `make check` prints: the intake of a study in a form one can read on a terminal."""
 
 from __future__ import annotations
 
-from typing import Any
+import textwrap
+from collections.abc import Iterator
 
 from lineproof import store
+from lineproof.intake.record import (
+    ANSWERS,
+    DelistingRecord,
+    FaultRecord,
+    FileRecord,
+    Intake,
+    LargeReturn,
+    LargestEvidence,
+    NeighbourRow,
+    ScreenRecord,
+    files_of,
+    survivors_only,
+)
+from lineproof.paper.rounding import printed
 from lineproof.study import Study
 
-_WIDTH = 11  # of the counts
-_ANSWERS = {"flag": "kept, flagged", "repair": "read without them", "set aside": "set aside"}
+WIDTH = 96  # of a line, unless a name or a row of the data is longer
+_COUNT = 11  # of the counts
+_N_LARGEST = 5  # gains and losses together
+_DASH = "–"
 
 
 def summary(study: Study) -> str:
@@ -20,61 +37,194 @@ def summary(study: Study) -> str:
             "",
             *describe_intake(intake),
             "",
-            f"The rows set aside, as they stand in the file: {study.folder}/data/set_aside.csv",
+            f"Rows set aside, as they stand in the file:  {study.folder}/data/set_aside.csv",
+            f"The data report, with tables and figures:   {study.folder}/data_report.html",
         ]
     )
 
 
-def describe_intake(intake: dict[str, Any]) -> list[str]:
-    """The counts of an intake, its span, faults and screens, as lines of text."""
-    span = f"{intake['first']} to {intake['last']}"
-    lines = [
-        f"{intake['file']}: {span}, {_securities(intake['n_securities'])}",
-        *_counts(intake),
-        *intake["span"],
+def describe_intake(intake: Intake) -> list[str]:
+    """All of an intake that a reader should see before the study runs, as lines of text.
+
+    Raises ValueError when the rows of a file do not add up.
+    """
+    largest = intake.get("evidence", {}).get("largest", {"positive": [], "negative": []})
+    scale = intake.get("evidence", {}).get("scale", [])
+    parts = [
+        _survivors(intake),
+        _files(intake),
+        _titled("Faults found:", [line for fault in intake["faults"] for line in _fault(fault)]),
+        _titled(
+            "Rows that fail a screen, in order; they are kept, but not ranked on:",
+            [line for screen in intake["screens"] for line in _screen(screen)],
+        ),
+        _titled("Securities that leave:", _delisting(intake.get("delisting"), _period(intake))),
+        _titled(
+            "Units and scale:",
+            [
+                line
+                for check in scale
+                for line in _below(f"{check['what']}: {check['found']}: {check['verdict']}", 2, 4)
+            ],
+        ),
+        _titled("The largest returns, in per cent:", _largest(largest)),
     ]
-    if intake["faults"]:
-        lines += ["", "Faults found:"]
-        lines += [line for fault in intake["faults"] for line in _fault(fault)]
-    if intake["screens"]:
-        lines += [
-            "",
-            "Rows that fail a screen, in order; they are kept, but not ranked that month:",
-        ]
-        lines += [_screen(screen) for screen in intake["screens"]]
-    return lines
+    shown = [part for part in parts if part]
+    return [line for place, part in enumerate(shown) for line in ([""] if place else []) + part]
 
 
-def _counts(intake: dict[str, Any]) -> list[str]:
-    missing = intake["n_missing_returns"]
-    said = {
-        "rows_read": "rows read, of which",
-        "rows_kept": "kept" + (f", {missing:,} of them without a return" if missing else ""),
-        "rows_set_aside": "set aside",
-        "exact_duplicates": "dropped, as exact duplicates of others",
-    }
-    return [f"{_number(intake[key])}  {words}" for key, words in said.items()]
+def _period(intake: Intake) -> str:
+    return intake.get("period", "month")
 
 
-def _fault(fault: dict[str, Any]) -> list[str]:
+def _titled(title: str, lines: list[str]) -> list[str]:
+    return [title, *lines] if lines else []
+
+
+def _survivors(intake: Intake) -> list[str]:
+    if not survivors_only(intake):
+        return []
+    said = (
+        "WARNING: no security ever leaves. The file may hold survivors only, and returns of survivors are too "
+        "high. Ask the vendor for the securities that have left."
+    )
+    return _below(said, 0, 9)
+
+
+def _files(intake: Intake) -> list[str]:
+    """The returns in full, then the other files; span and kept rows without a return."""
+    missing, n = intake["n_missing_returns"], intake["n_securities"]
+    said = f"{intake['file']}: {intake['first']} to {intake['last']}, {_securities(n)}"
+    lines = _below(said, 0, 2)
+    for place, file in enumerate(files_of(intake)):
+        lines += _equation(file, missing if file["place"] == "data.returns" else 0, named=place > 0)
+    return lines + [line for sentence in intake["span"] for line in _below(sentence, 0, 2)]
+
+
+def _equation(file: FileRecord, missing: int, *, named: bool) -> list[str]:
+    """Rows read, and the parts that they are the sum of, one under the other."""
+    parts = [
+        ("rows_read", "rows read"),
+        ("rows_kept", "kept" + (f", {missing:,} of them without a return" if missing else "")),
+        ("rows_set_aside", "set aside"),
+        ("exact_duplicates", "dropped, as exact duplicates of others"),
+    ]
+    if file.get("rows_unused"):
+        parts.append(("rows_unused", "not used: without a value, or beyond the study"))
+    signs = ["", "=", *["+"] * (len(parts) - 2)]
+    lines = [
+        f"{sign:>2}{file[key]:>{_COUNT - 2},}  {words}"  # type: ignore[literal-required]
+        for sign, (key, words) in zip(signs, parts, strict=True)
+    ]
+    return [*_below(f"{file['label']}:", 0, 2), *lines] if named else lines
+
+
+def _fault(fault: FaultRecord) -> list[str]:
     """A line of count, label and answer; below it the kinds, the note and the first places."""
     kinds = ", ".join(f"{n:,} {kind}" for kind, n in fault["kinds"].items())
     examples = ", ".join(fault["examples"])
     if len(fault["examples"]) < fault["n"] and examples:
         examples += ", …"
-    said = [f"{_number(fault['n'])}  {fault['label']}: {_ANSWERS[fault['answer']]}"]
     below = [text for text in (kinds, fault["note"], examples) if text]
-    return said + [f"{'':{_WIDTH}}    {text}" for text in below]
+    lines = _counted(fault["n"], f"{fault['label']}: {ANSWERS[fault['answer']]}")
+    return lines + [line for text in below for line in _below(text, _COUNT + 4, _COUNT + 6)]
 
 
-def _screen(screen: dict[str, Any]) -> str:
+def _screen(screen: ScreenRecord) -> list[str]:
     whose = _securities(screen["n_securities"])
-    return f"{_number(screen['n_rows'])}  of {whose}: not “{screen['label']}”"
+    return _counted(screen["n_rows"], f"of {whose}: not “{screen['label']}”")
+
+
+def _delisting(found: DelistingRecord | None, period: str) -> list[str]:
+    """With and without a final return, what stood in, and what it does to the mean."""
+    if found is None:
+        return []
+    lines = _counted(found["n_with"], "with a final return")
+    lines += _counted(found["n_without"], "without one")
+    for reason, each in found["by_reason"].items():
+        if each["n_without"]:
+            stand_in = each["stand_in"]
+            taken = (
+                "left as they are"
+                if stand_in is None
+                else f"taken as {_minus(printed(stand_in, 'percent'))} %"
+            )
+            said = f"{each['n_without']:,} {reason or 'for no reason given'}: {taken}"
+            lines += _below(said, _COUNT + 4, _COUNT + 6)
+    means = [found["mean_with"], found["mean_without"]]
+    if None not in means:
+        with_, without = (_minus(printed(mean, "fine_percent")) for mean in means)
+        said = f"equally weighted mean a {period}: {with_} % with final returns, {without} % without any"
+        lines += _below(said, _COUNT + 2, _COUNT + 4)
+    return lines
+
+
+def _largest(largest: LargestEvidence) -> list[str]:
+    """The largest of gains and losses, between the returns of the rows before and after."""
+    both = [*largest["positive"], *largest["negative"]]
+    rows = sorted(both, key=lambda each: -abs(each["return_"]))[:_N_LARGEST]  # stable
+    if not rows:
+        return []
+    table = [("security", "date", "before", "return", "after"), *map(_large, rows)]
+    widths = [max(len(row[at]) for row in table) for at in range(5)]
+    return [
+        f"  {row[0]:<{widths[0]}}  {row[1]:<{widths[1]}}  "
+        + "  ".join(f"{text:>{width}}" for text, width in zip(row[2:], widths[2:], strict=True))
+        for row in table
+    ]
+
+
+def _large(each: LargeReturn) -> tuple[str, str, str, str, str]:
+    before, after = (_return(each[side]) for side in ("before", "after"))
+    return (
+        _visible(each["security"]),
+        each["date"],
+        before,
+        _minus(printed(each["return_"], "percent")),
+        after,
+    )
+
+
+def _return(row: NeighbourRow | None) -> str:
+    """Blank where there is no row, a dash where the row has no return."""
+    if row is None:
+        return ""
+    return _DASH if row["return_"] is None else _minus(printed(row["return_"], "percent"))
+
+
+def _counted(n: int, words: str) -> list[str]:
+    """A count in its column and words beside it, wrapped below themselves."""
+    first, *rest = _below(words, _COUNT + 2, _COUNT + 4)
+    return [f"{n:>{_COUNT},}  {first.strip()}", *rest]
+
+
+def _below(text: str, indent: int, then: int) -> list[str]:
+    """Text in lines of at most `WIDTH` characters, indented; words are never broken."""
+    return list(_wrapped(text, " " * indent, " " * then)) or [""]
+
+
+def _wrapped(text: str, first: str, then: str) -> Iterator[str]:
+    yield from textwrap.wrap(
+        _visible(text),
+        WIDTH,
+        initial_indent=first,
+        subsequent_indent=then,
+        break_long_words=False,
+        break_on_hyphens=False,
+    )
+
+
+def _visible(text: str) -> str:
+    """Text from the data without what would steer a terminal."""
+    return "".join(
+        char if char.isprintable() else " " if char.isspace() else "\N{REPLACEMENT CHARACTER}"
+        for char in text
+    )
+
+
+def _minus(text: str) -> str:
+    return text.replace("-", "−")
 
 
 def _securities(n: int) -> str:
     return f"{n:,} {'security' if n == 1 else 'securities'}"
-
-
-def _number(n: int) -> str:
-    return f"{n:>{_WIDTH},}"

@@ -18,12 +18,13 @@ def facts(study: Study) -> dict[str, Any]:
         "name": study.name,
         "title": study.title,
         "market_name": study.market_name,
+        "market_build": study.market_build,
         "invented": study.demo is not None,
         "level": study.level,
         "period": asdict(FREQUENCIES[study.frequency]),
         "hac_lag": study.hac_lag,
-        "missing_final_return": study.missing_final_return,
-        "screens": list(study.screens),
+        "missing_final_return": study.intake.missing_final_return,
+        "screens": list(study.intake.screens),
         "sources": [
             {
                 "place": place,

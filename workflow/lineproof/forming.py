@@ -42,7 +42,7 @@ def from_supplied(
     returns_are: str,
     frequency: str = "monthly",
 ) -> Sorted:
-    """Supplied as return series: the source is one raw file."""
-    supplied = read_series(sources[0], reading, "return").rename(columns={"return": "return_"})
+    """Supplied as return series: the sources are raw files."""
+    supplied = read_series(list(sources), reading, "return", frequency).rename(columns={"return": "return_"})
     noun = FREQUENCIES[frequency].noun
     return take_supplied(supplied, market, returns_are=returns_are, noun=noun)

@@ -76,6 +76,10 @@ def _sorted_unique(*keys: str) -> pa.Check:
 _DATE = pa.Column("datetime64[ms]", pa.Check(_month_end, name="dates are month ends"))
 _DAY = pa.Column("datetime64[ms]", pa.Check(_whole_day, name="dates have no time of day"))
 _HAS_ROWS = pa.Check(lambda frame: len(frame) > 0, name="has rows")
+_RISKLESS = pa.Check(  # a study of excess returns may have no riskless rate, and then in no period
+    lambda frame: frame["riskless"].isna().nunique() <= 1,
+    name="a riskless return in every period or in none",
+)
 
 PANEL = pa.DataFrameSchema(
     {
@@ -98,9 +102,9 @@ MARKET = pa.DataFrameSchema(
     {
         "date": _DATE,
         "market_excess": _number(nullable=False),
-        "riskless": _number(nullable=False),
+        "riskless": _number(),
     },
-    checks=[_HAS_ROWS, _sorted_unique("date")],
+    checks=[_HAS_ROWS, _sorted_unique("date"), _RISKLESS],
     strict=True,
 )
 
@@ -161,9 +165,9 @@ SUBPERIOD = pa.DataFrameSchema(
         "sort": _text(),
         **PORTFOLIO_RETURNS.columns,
         "market_excess": _number(nullable=False),
-        "riskless": _number(nullable=False),
+        "riskless": _number(),
     },
-    checks=[_HAS_ROWS],
+    checks=[_HAS_ROWS, _RISKLESS],
     strict=True,
 )
 
@@ -199,10 +203,12 @@ ESTIMATES = pa.DataFrameSchema(
     ordered=True,
 )
 
-# By name, as of a monthly study.
+# By name, as of a monthly study; `daily` and `market_daily` are the days beside a study of months.
 CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "panel": PANEL,
     "market": MARKET,
+    "daily": PANEL,
+    "market_daily": MARKET,
     "set_aside": SET_ASIDE,
     "betas": BETAS,
     "members": MEMBERS,
@@ -210,6 +216,7 @@ CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "subperiod": SUBPERIOD,
     "estimates": ESTIMATES,
 }
+_ALWAYS_DAILY = ("daily", "market_daily")
 
 
 @cache
@@ -220,6 +227,16 @@ def contract(name: str, frequency: str = "monthly") -> pa.DataFrameSchema:
     """
     schema = CONTRACTS[name]
     dated = [key for key, column in schema.columns.items() if str(column.dtype) == str(_DATE.dtype)]
-    if frequency == "monthly" or not dated:
+    if (frequency == "monthly" and name not in _ALWAYS_DAILY) or not dated:
         return schema
     return schema.update_columns({key: {"checks": _DAY.checks} for key in dated})
+
+
+def check_batch(
+    name: str, frequency: str, batch: pd.DataFrame, before: pd.DataFrame | None
+) -> None:
+    """Check a piece of a table larger than memory against its contract, and that it goes on from the row before it."""
+    whole = contract(name, frequency)
+    whole.validate(batch)
+    if before is not None and len(batch):
+        whole.validate(pd.concat([before, batch.iloc[:1]], ignore_index=True))

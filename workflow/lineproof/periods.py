@@ -24,6 +24,9 @@ class Periods(Protocol):
     def date(self, numbers: np.ndarray) -> np.ndarray:
         """The date that stands for each period in our tables, datetime64[D]."""
 
+    def begins(self, number: int) -> np.datetime64:
+        """The first day of a period."""
+
     def name(self, number: int) -> str:
         """What a reader calls the period."""
 
@@ -50,6 +53,9 @@ class Months:
     def date(self, numbers: np.ndarray) -> np.ndarray:
         first = (np.asarray(numbers) + 1 - _JANUARY_1970).astype("datetime64[M]")
         return first.astype("datetime64[D]") - 1
+
+    def begins(self, number: int) -> np.datetime64:
+        return np.datetime64(self.name(number), "D")
 
     def name(self, number: int) -> str:
         return f"{number // 12}-{number % 12 + 1:02d}"
@@ -78,6 +84,9 @@ class TradingDays:
 
     def date(self, numbers: np.ndarray) -> np.ndarray:
         return self.days[numbers]
+
+    def begins(self, number: int) -> np.datetime64:
+        return self.days[number]
 
     def name(self, number: int) -> str:
         return str(self.days[number])

@@ -30,6 +30,8 @@ from lineproof.stats.distributions import JointStatistic
 
 Floats = NDArray[np.float64]
 
+NO_RISKLESS = "the study has returns in excess of a riskless rate that is not known"
+
 
 @dataclass(frozen=True)
 class Sample:
@@ -42,7 +44,7 @@ class Sample:
         assets: N names.
         excess: (T, N) excess returns, decimal per period, NaN where an asset is missing.
         market: (T,) market excess returns.
-        riskless: (T,) riskless returns.
+        riskless: (T,) riskless returns, NaN throughout where the study has none.
         extras: other (T, N) columns of the cut by name.
         level: significance level of the critical values.
         hac_lag: truncation lag; None chooses it by the number of periods.
@@ -82,7 +84,15 @@ def describe(sample: Sample) -> Iterator[Row]:
                 mean = float(observed.mean())
                 yield Row("-", asset, name, "-", observed.size, 1, estimate=mean)
     yield from _moments(sample, "market", sample.market, "signed")
-    yield from _moments(sample, "riskless", sample.riskless, "")
+    yield from _riskless(sample)
+
+
+def _riskless(sample: Sample) -> Iterator[Row]:
+    if np.isfinite(sample.riskless).any():
+        yield from _moments(sample, "riskless", sample.riskless, "")
+        return
+    for term in ("mean", "sd"):
+        yield Row("-", "riskless", term, "-", 0, 1, reason=NO_RISKLESS)
 
 
 def _moments(sample: Sample, asset: str, returns: Floats, family: str) -> Iterator[Row]:

@@ -33,7 +33,12 @@ def describe_sample(
     rows = _intake_rows(intake) + _month_rows(sample, estimated, periods)
     for subperiod in subperiods:
         rows += _subperiod_rows(sample, subperiod)
-    return _as_estimates(rows, periods.noun)
+    no_totals = panel["total_return"].isna().all()
+    too_few = f"too few {periods.noun}s with returns in the subperiod"
+    return _as_estimates(rows, _NO_TOTALS if no_totals else too_few)
+
+
+_NO_TOTALS = "the returns are in excess of a riskless rate that is not known"
 
 
 @dataclass(frozen=True)
@@ -135,10 +140,10 @@ def _subperiod_rows(sample: _Sample, subperiod: dict[str, Any]) -> list[Row]:
     return [(name, "sample", "panel", "all", *each, n_periods) for each in values.items()]
 
 
-def _as_estimates(rows: list[Row], noun: str) -> pd.DataFrame:
+def _as_estimates(rows: list[Row], why_undefined: str) -> pd.DataFrame:
     frame = pd.DataFrame(rows, columns=_ROW).assign(sort="-", se_kind="-", n_assets=0)
     frame["estimate"] = frame["estimate"].astype(float)
     undefined = frame["estimate"].isna()
     frame["status"] = np.where(undefined, "undefined", "ok")
-    frame["reason"] = np.where(undefined, f"too few {noun}s with returns in the subperiod", "")
+    frame["reason"] = np.where(undefined, why_undefined, "")
     return frame.reindex(columns=COLUMNS).astype(DTYPES)

@@ -122,6 +122,9 @@ def _in_words(error: ValidationError) -> list[Finding]:
             return [(place, f"{value} is out of range", _range(schema))]
         case "pattern":
             return [_pattern(error, place)]
+        case "uniqueItems":
+            twice = next(item for item in value if value.count(item) > 1)
+            return [(place, f"{twice!r} stands twice", "name each once")]
         case "minItems" | "minProperties" | "minLength":
             return [(place, "nothing is given here", schema.get("description", ""))]
         case _:

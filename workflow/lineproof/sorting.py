@@ -191,7 +191,8 @@ def _lagged_size(panel: pd.DataFrame, code: np.ndarray) -> np.ndarray:
     """Size at the end of the row before, of the same security; (n_rows,), NaN where unknown.
 
     A missing size is the last known one grown by the total returns since, so that a weight drifts
-    with its security; a missing return grows nothing, and after a total loss no size is known.
+    with its security; a missing return grows nothing, and after a total loss no size is known. A study without a
+    riskless rate knows no total returns: there excess returns stand in, which lets a size lag by the riskless return.
     """
     size = panel["size"].to_numpy()
     first = np.append(True, code[1:] != code[:-1])
@@ -199,7 +200,8 @@ def _lagged_size(panel: pd.DataFrame, code: np.ndarray) -> np.ndarray:
     start = np.maximum.accumulate(np.where(begins, np.arange(len(panel)), 0))
     known = size[start]
     grows = np.flatnonzero(~begins & ~np.isnan(known))
-    growth = 1 + panel["total_return"].iloc[grows].fillna(0.0)
+    part = panel.iloc[grows]
+    growth = 1 + part["total_return"].fillna(part["excess_return"]).fillna(0.0)
     known[grows] *= growth.groupby(start[grows]).cumprod().to_numpy()
     known = np.where(known > 0, known, np.nan)
     return np.where(first, np.nan, np.roll(known, 1))
@@ -247,8 +249,12 @@ def take_supplied(
     returns, from which the riskless rate is taken, or in excess of it already. Periods without a
     market return are left out; `noun` is what messages call one.
 
-    Raises KnownProblem when no period is left.
+    Raises KnownProblem when no period is left, or total returns are given and no riskless rate is known.
     """
+    if returns_are == "total" and market["riskless"].isna().all():
+        change = "add data.riskless, or set is: excess if they are in excess of it"
+        problem = Problem("the supplied test assets", "total returns need a riskless rate", change)
+        raise KnownProblem("Excess returns cannot be taken.", [problem])
     known = supplied.merge(market[["date", "riskless"]], on="date", validate="many_to_one")
     if known.empty:
         found = f"no {noun} in common with the market"

@@ -88,15 +88,42 @@ class Wiring:
     def _validation(self) -> dict[str, Any]:
         study = self.study
         return {
+            "frequency": study.frequency,
             "returns": study.returns.reading(),
-            "market": study.market.reading(),
-            "market_is": study.market_is,
-            "riskless": study.riskless.reading(),
-            "riskless_quoted": study.riskless_quoted,
-            "screens": list(study.screens),
-            "missing_final_return": study.missing_final_return,
-            "same_month_rows": study.same_month_rows,
+            "returns_are": study.returns_are,
+            "returns_frequency": study.returns_frequency,
+            "market_build": study.market_build,
+            "series": {
+                "market": study.market and study.market.reading(),
+                "market_is": study.market_is,
+                "market_frequency": study.market_frequency,
+                "riskless": study.riskless and study.riskless.reading(),
+                "riskless_quoted": study.riskless_quoted,
+                "riskless_frequency": study.riskless_frequency,
+            },
+            "rules": asdict(study.intake),
         }
+
+    @property
+    def panels(self) -> dict[str, str]:
+        """The panel, and the panel of days beside it where a study of months is delivered days; by name."""
+        names = ["panel"] if self.study.returns_frequency == self.study.frequency else ["panel", "daily"]
+        return {name: self.path(f"data/{name}.parquet") for name in names}
+
+    @property
+    def markets(self) -> dict[str, str]:
+        """The market, and the market's days beside it where there are such."""
+        study = self.study
+        beside = study.returns_frequency != study.frequency and (
+            study.market_build is not None or study.market_frequency == "daily"
+        )
+        names = ["market", "market_daily"] if beside else ["market"]
+        return {name: self.path(f"data/{name}.parquet") for name in names}
+
+    def series_files(self, name: str) -> list[str]:
+        """The raw files of the market or the riskless rate; none where the study has none."""
+        source = {"market": self.study.market, "riskless": self.study.riskless}[name]
+        return [] if source is None else list(source.files)
 
     def _sort(self, name: str) -> dict[str, Any]:
         spec = self.study.sorts[name]
@@ -123,15 +150,12 @@ class Wiring:
             tables = {"panel": "daily", "market": "market_daily"}
         return {key: self.path(f"data/{table}.parquet") for key, table in tables.items()}
 
-    def sort_inputs(self, name: str) -> dict[str, str]:
+    def sort_inputs(self, name: str) -> list[str]:
         """The tables or files a set of test assets is made from."""
         spec = self.study.sorts[name]
         if spec.source is not None:
-            return {"supplied": spec.source.file}
-        return {
-            "panel": self.path("data/panel.parquet"),
-            "betas": self.path(f"betas/{spec.rank_on}.parquet"),
-        }
+            return list(spec.source.files)
+        return [self.path("data/panel.parquet"), self.path(f"betas/{spec.rank_on}.parquet")]
 
     @property
     def tables_between(self) -> list[str]:

@@ -26,7 +26,7 @@ def after_cutting(names):
 def sort_inputs(wildcards):
     """What a set of test assets is made from: tables of ours, or a raw file."""
     checkpoints.validate_returns.get()
-    return list(wiring.sort_inputs(wildcards.sort).values())
+    return wiring.sort_inputs(wildcards.sort)
 
 
 def beta_inputs(wildcards):

@@ -1,17 +1,17 @@
-# Takes the raw files in: a clean panel, the market, what was set aside, and the counts.
+# Takes the raw files in: a clean panel, the market, what was set aside, and the counts; and shows what was found.
 
 
 checkpoint validate_returns:
     input:
-        returns=study.returns.file,
-        market=study.market.file,
-        riskless=study.riskless.file,
+        returns=list(study.returns.files),
+        market=wiring.series_files("market"),
+        riskless=wiring.series_files("riskless"),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
         code=wiring.code("validate_returns"),
     output:
-        panel=wiring.path("data/panel.parquet"),
-        market=wiring.path("data/market.parquet"),
+        **wiring.panels,
+        **wiring.markets,
         set_aside=wiring.path("data/set_aside.parquet"),
         set_aside_csv=wiring.path("data/set_aside.csv"),
         intake=wiring.path("data/intake.json"),
@@ -21,5 +21,23 @@ checkpoint validate_returns:
         wiring.path("benchmarks/validate_returns.tsv")
     params:
         options=wiring.options("validate_returns"),
+        files=["returns", "market", "riskless"],
     script:
         "../scripts/validate_returns.py"
+
+
+rule write_data_report:
+    input:
+        intake=after_validation("data/intake.json"),
+        options=wiring.options_file("write_paper"),
+        code=wiring.code("write_data_report"),
+    output:
+        report=wiring.path("data_report.html"),
+    log:
+        wiring.path("logs/write_data_report.log"),
+    benchmark:
+        wiring.path("benchmarks/write_data_report.tsv")
+    params:
+        options=wiring.options("write_paper"),
+    script:
+        "../scripts/write_data_report.py"

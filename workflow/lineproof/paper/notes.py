@@ -6,6 +6,7 @@ from lineproof.analyses import ALPHA_ERRORS, ANALYSES, LINE_ERRORS, LINE_WEIGHTS
 from lineproof.paper.context import MONTHS, Context, Subperiod
 from lineproof.paper.rounding import share
 from lineproof.paper.symbols import Phrase, said
+from lineproof.quotings import BUILDS
 
 
 def data(context: Context) -> Phrase:
@@ -17,6 +18,12 @@ def data(context: Context) -> Phrase:
         market=_market(context),
         invented=invented,
     )
+
+
+def built_market(context: Context) -> list[Phrase]:
+    """What the market is, where it was not supplied."""
+    build = context.facts["market_build"]
+    return [] if build is None else [said("The market is {label}.", label=BUILDS[build])]
 
 
 def months(period: Subperiod) -> Phrase:

@@ -5,14 +5,13 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from jinja2 import Environment, FileSystemLoader, StrictUndefined
 from markupsafe import Markup
 
 from lineproof.analyses import ALPHA_ERRORS, LINE_WEIGHTS
 from lineproof.paper import answer, exhibits, html_table, notes, tables
 from lineproof.paper.context import Context
 from lineproof.paper.inline import inline_svg
-from lineproof.paper.palette import DARK, LIGHT
+from lineproof.paper.page import environment, palette
 from lineproof.paper.rounding import share
 from lineproof.paper.specification import cell
 from lineproof.paper.symbols import Phrase, Symbol, said
@@ -23,30 +22,25 @@ def make_report(context: Context, figures: Mapping[str, bytes]) -> str:
 
     Raises KeyError if a figure of the study is not among them.
     """
-    loader = FileSystemLoader(html_table.TEMPLATES)
-    environment = Environment(
-        loader=loader,
-        autoescape=True,
-        undefined=StrictUndefined,
-        trim_blocks=True,
-        lstrip_blocks=True,
-    )
     main, appendix = _tables(context)
-    return environment.get_template("report.html.j2").render(
-        facts=context.facts,
-        market=context.facts["market_name"],
-        dates=context.main_period.dates,
-        light=LIGHT,
-        dark=DARK,
-        answer=_html(answer.overall(context)),
-        assets=context.title(context.sorts[0]),
-        periods=[(each, _html(answer.of_period(context, each))) for each in context.periods],
-        tables=main,
-        appendix=appendix,
-        figures=_figures(context, figures),
-        methods=_methods(context),
-        intake=_html(_intake(context)),
-        faults=_faults(context),
+    return (
+        environment()
+        .get_template("report.html.j2")
+        .render(
+            **palette(),
+            facts=context.facts,
+            market=context.facts["market_name"],
+            dates=context.main_period.dates,
+            answer=_html(answer.overall(context)),
+            assets=context.title(context.sorts[0]),
+            periods=[(each, _html(answer.of_period(context, each))) for each in context.periods],
+            tables=main,
+            appendix=appendix,
+            figures=_figures(context, figures),
+            methods=_methods(context),
+            intake=_html(_intake(context)),
+            faults=_faults(context),
+        )
     )
 
 

@@ -30,6 +30,7 @@ def sample(context: Context, sort: str) -> Table:
         panels=(_rows_panel(context), _securities_panel(context), _returns_panel(context, sort)),
         notes=(
             notes.data(context),
+            *notes.built_market(context),
             said(
                 "Rows read are rows kept, rows set aside and exact duplicates. Rows that fail a "
                 "screen are kept, "
