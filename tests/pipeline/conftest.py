@@ -146,13 +146,13 @@ def _after(line: str, last: str) -> bool:
     return month is not None and month[0] > last
 
 
-def copy_program(folder: Path) -> Project:
-    """The program without results, with the small study's file."""
+def copy_program(folder: Path, study: str = STUDY) -> Project:
+    """The program without results, with a small study's file."""
     ignored = shutil.ignore_patterns("__pycache__")
     shutil.copytree(ROOT / "workflow", folder / "workflow", ignore=ignored)
     shutil.copy2(ROOT / "Snakefile", folder / "Snakefile")
     project = Project(folder)
-    project.study.write_text(STUDY, encoding="utf-8")
+    project.study.write_text(study, encoding="utf-8")
     return project
 
 

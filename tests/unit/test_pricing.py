@@ -438,6 +438,58 @@ def test_malformed_cuts_are_refused() -> None:
             _price(other)
 
 
+def _in_days(cut: pd.DataFrame) -> pd.DataFrame:
+    """The same returns dated by consecutive weekdays instead of months."""
+    days = pd.bdate_range("1960-01-04", periods=cut["date"].nunique())
+    return cut.assign(date=np.repeat(days, cut["asset"].nunique()))
+
+
+def _price_days(cut: pd.DataFrame) -> pd.DataFrame:
+    return price_subperiod(
+        _in_days(cut),
+        subperiod="early",
+        level=0.05,
+        hac_lag=None,
+        analyses=list(ANALYSES),
+        frequency="daily",
+    )
+
+
+def test_days_are_priced_as_months_are_but_for_the_year() -> None:
+    """No statistic knows how long a period is, except an alpha a year: 252 trading days, not 12 months."""
+    monthly, daily = _price(_cut()), _price_days(_cut())
+    a_year = monthly["term"] == "alpha_year"
+    pd.testing.assert_frame_equal(daily[~a_year], monthly[~a_year], check_exact=True)
+    # One multiplication each.
+    np.testing.assert_allclose(
+        daily.loc[a_year, "estimate"], monthly.loc[a_year, "estimate"] * (252 / 12), rtol=1e-15
+    )
+
+
+def test_reasons_speak_of_days() -> None:
+    reasons = set(_price_days(_cut(n_periods=2))["reason"]) - {""}
+    assert "needs at least 3 complete days, has 2" in reasons
+    assert not any("month" in reason or "period" in reason for reason in reasons)
+    one = set(_price_days(_cut(n_periods=1))["reason"])
+    assert "needs at least 2 days, has 1" in one
+    absent = _cut()
+    absent.loc[absent["asset"] == "top", "excess_return"] = np.nan
+    assert "no day has returns of both the market and top" in set(_price_days(absent)["reason"])
+
+
+def test_two_rows_of_one_day_are_refused() -> None:
+    cut = _in_days(_cut())
+    with pytest.raises(ValueError, match="two rows in one day"):
+        price_subperiod(
+            pd.concat([cut, cut.iloc[:1]]),
+            subperiod="early",
+            level=0.05,
+            hac_lag=None,
+            analyses=["describe"],
+            frequency="daily",
+        )
+
+
 def test_without_a_riskless_rate_everything_else_is_the_same() -> None:
     cut = _cut()
     usual, without = _price(cut), _price(cut.assign(riskless=np.nan))
