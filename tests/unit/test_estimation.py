@@ -91,3 +91,17 @@ def test_no_estimate_at_all_says_what_to_change() -> None:
     with pytest.raises(KnownProblem) as flat:
         estimate_betas(panel_of({"A": series}), market_of(np.full(40, 0.1)), **OPTIONS)
     assert "the market's return is the same in every month" in str(flat.value)
+
+
+@pytest.mark.fault(33)
+def test_a_window_longer_than_the_sample_is_refused() -> None:
+    market, series = draw(6)
+    panel = panel_of({"A": series})
+    assert len(estimate_betas(panel, market_of(market), **{**OPTIONS, "window": 40})) > 0
+    with pytest.raises(KnownProblem) as told:
+        estimate_betas(panel, market_of(market), **{**OPTIONS, "window": 41})
+    assert str(told.value) == (
+        "No beta can be estimated.\n"
+        "  betas.short.window: a window of 41 months is longer than the sample, which has 40\n"
+        "    → shorten window"
+    )

@@ -11,6 +11,8 @@ from lineproof.estimators import ESTIMATORS
 from lineproof.problems import KnownProblem, Problem
 from lineproof.stats.betas import RollingBetas
 
+_NONE = "No beta can be estimated."
+
 
 def estimate_betas(
     panel: pd.DataFrame,
@@ -27,9 +29,12 @@ def estimate_betas(
     is made whenever the security has a row at t, with a return or without. Months without an
     estimate have no row.
 
-    Raises KnownProblem when no security has enough months for a single estimate, or the market's
-    return never changes.
+    Raises KnownProblem when the window is longer than the sample, no security has enough months for a
+    single estimate, or the market's return never changes.
     """
+    if window > len(market):
+        found = f"a window of {window} months is longer than the sample, which has {len(market)}"
+        raise KnownProblem(_NONE, [Problem(f"betas.{name}.window", found, "shorten window")])
     lookup = pd.Series(market["market_excess"].to_numpy(), index=market["date"])
     factor = lookup.reindex(panel["date"]).to_numpy()
     security = panel["security"].to_numpy()
@@ -44,9 +49,7 @@ def estimate_betas(
         min_obs=min_obs,
     )
     if len(estimate.row) == 0:
-        raise KnownProblem(
-            "No beta can be estimated.", [_why_none(name, estimate, window, min_obs)]
-        )
+        raise KnownProblem(_NONE, [_why_none(name, estimate, window, min_obs)])
     keys = panel[["security", "date"]].iloc[estimate.row].reset_index(drop=True)
     columns = ("beta", "alpha", "se_beta", "r2", "residual_sd", "n_obs")
     return keys.assign(**{column: getattr(estimate, column) for column in columns})
