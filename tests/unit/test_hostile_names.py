@@ -20,7 +20,7 @@ from lineproof.paper.report import make_report
 from lineproof.paper.tables import make_tables
 from lineproof.spreadsheet import as_text
 
-NAMES = ["<script>alert(1)</script>", "=cmd()|'calc'!A0", "R&D_50%", "+1+1", "@SUM(1)", "-2-3"]
+NAMES = ["<script>alert(1);", "=cmd()|'calc'!A0", "R&D_50%", "+1+1", "@SUM(1)", "-2-3"]
 
 
 def raw(names: list[str]) -> str:

@@ -43,6 +43,7 @@ def test_a_table_that_breaks_its_contract_is_not_written(tmp_path: Path, dates: 
     assert list(tmp_path.iterdir()) == []
 
 
+@pytest.mark.fault(35)
 def test_a_failed_write_leaves_the_old_file_and_nothing_else(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
