@@ -13,6 +13,7 @@ import pytest
 from tests.pipeline.conftest import Project
 
 
+@pytest.mark.fault(33)
 def test_an_unsound_study_file_runs_nothing(project: Project) -> None:
     project.edit("small.yaml", "groups: 5}", "grops: 5}")
     result = project.lineproof("study", "small.yaml")
@@ -56,6 +57,7 @@ def test_a_mended_file_makes_the_same_command_work(project: Project) -> None:
     assert project.hashes("estimates.parquet", "report.html", "data") == before
 
 
+@pytest.mark.fault(33)
 def test_a_subperiod_outside_the_data_is_said(project: Project) -> None:
     project.edit("small.yaml", "early: {to: 1997-12}", "early: {from: 1950-01, to: 1959-12}")
     result = project.lineproof("study", "small.yaml")
@@ -64,6 +66,7 @@ def test_a_subperiod_outside_the_data_is_said(project: Project) -> None:
     assert "Traceback" not in result.text
 
 
+@pytest.mark.fault(33)
 def test_more_groups_than_securities_is_said(project: Project) -> None:
     project.edit("small.yaml", "groups: 5}", "groups: 90}")
     result = project.lineproof("study", "small.yaml")
@@ -71,6 +74,7 @@ def test_more_groups_than_securities_is_said(project: Project) -> None:
     assert "portfolios.five.groups: 90 groups, but at most" in result.text
 
 
+@pytest.mark.fault(37)
 def test_a_second_run_of_a_study_leaves(project: Project) -> None:
     with (project.results / ".running").open("a") as handle:
         fcntl.flock(handle, fcntl.LOCK_EX)
@@ -89,6 +93,7 @@ def test_check_reads_the_data_and_runs_no_more(project: Project) -> None:
     assert "a date that does not parse" in result.text
 
 
+@pytest.mark.fault(36)
 @pytest.mark.parametrize("after", [1.5, 3.0, 4.5, 6.0])
 def test_a_killed_run_is_finished_by_the_same_command(project: Project, after: float) -> None:
     """Killed without warning at some moment, with all its jobs; the bytes are those of an undisturbed run."""

@@ -22,6 +22,7 @@ from lineproof.periods import Months
 from lineproof.problems import KnownProblem
 from lineproof.store import Scratch
 
+
 @dataclass(frozen=True)
 class Validated:
     """What validation writes, whole; see `frames` for the columns. `intake` holds the counts."""

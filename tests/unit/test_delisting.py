@@ -50,6 +50,7 @@ def test_final_return_in_the_last_month_of_the_file(tmp_path: Path) -> None:
     assert panel["leaves"].tolist() == [False]  # whether it leaves, the file does not say
 
 
+@pytest.mark.fault(25)
 @pytest.mark.parametrize(
     ("stand_in", "total", "said"), [(None, 0.1, "left as it is"), (-0.3, -0.23, "taken as -0.3")]
 )
@@ -65,6 +66,7 @@ def test_leavers_without_a_final_return(
     assert "Shumway 1997" in entry["note"]
 
 
+@pytest.mark.fault(42)
 def test_final_returns_of_a_security_that_goes_on_are_not_used(tmp_path: Path) -> None:
     rows = [f"A,2000-0{m}-28,0.1,-0.5,1,1" for m in (1, 2, 4)]  # the vendor repeats it
     found = validate(tmp_path, lines(*STAYS, *rows))
@@ -93,6 +95,7 @@ def test_who_left_with_a_row_set_aside_leaves_in_the_last_row_kept(tmp_path: Pat
     assert panel_of(tmp_path, *rows)["leaves"].tolist() == [True]
 
 
+@pytest.mark.fault(26)
 def test_survivors_only(tmp_path: Path) -> None:
     entry = fault(validate(tmp_path, lines(*STAYS)), 26)
     assert (entry["n"], entry["label"]) == (1, "no security ever leaves")

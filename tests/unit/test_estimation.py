@@ -171,3 +171,17 @@ def test_messages_about_days_speak_of_days() -> None:
     with pytest.raises(KnownProblem) as caught:
         estimate_betas(short, market_of(market, DAYS), dated="daily", **IN_DAYS)
     assert "no security has 20 days of returns within 50 days" in str(caught.value)
+
+
+@pytest.mark.fault(33)
+def test_a_window_longer_than_the_sample_is_refused() -> None:
+    market, series = draw(6)
+    panel = panel_of({"A": series})
+    assert len(estimate_betas(panel, market_of(market), **{**OPTIONS, "window": 40})) > 0
+    with pytest.raises(KnownProblem) as told:
+        estimate_betas(panel, market_of(market), **{**OPTIONS, "window": 41})
+    assert str(told.value) == (
+        "No beta can be estimated.\n"
+        "  betas.short.window: a window of 41 months is longer than the sample, which has 40\n"
+        "    → shorten window"
+    )

@@ -6,6 +6,7 @@ from pathlib import Path
 
 import numpy as np
 import pandas as pd
+import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from tests.unit import intake_examples as examples
@@ -40,6 +41,7 @@ def flagged(**histories: dict[int, float]) -> dict[int, dict]:
     return {entry["number"]: entry for entry in tally.report()}
 
 
+@pytest.mark.fault(16)
 def test_total_losses_count_rows(tmp_path: Path) -> None:
     rows = ["A,2000-01-31,-1,-1,1,1", "A,2000-02-29,-1.000,,1,1", "B,2000-01-31,0.1,-1,1,1"]
     found = validate(tmp_path, lines(*rows, ",2000-01-31,-1,,1,1"))
@@ -58,12 +60,14 @@ def test_total_loss_in_percent(tmp_path: Path) -> None:
     assert fault(found, 16)["n"] == 1
 
 
+@pytest.mark.fault(20)
 def test_holes() -> None:
     found = flagged(A={0: 0.1, 1: 0.1, 3: 0.1, 8: 0.1}, B={4: 0.1, 5: 0.1})
     assert (found[20]["n"], found[20]["examples"]) == (5, ["A on 2000-04-30", "A on 2000-09-30"])
     assert 41 not in found
 
 
+@pytest.mark.fault(41)
 def test_an_identifier_away_for_more_than_36_months() -> None:
     assert 41 not in flagged(A={0: 0.1, 37: 0.1})  # 36 months are missing
     found = flagged(A={0: 0.1, 38: 0.1})
@@ -71,6 +75,7 @@ def test_an_identifier_away_for_more_than_36_months() -> None:
     assert found[20]["n"] == 37
 
 
+@pytest.mark.fault(21)
 def test_runs_of_zero_returns_by_length() -> None:
     zeros = dict.fromkeys
     found = flagged(
@@ -85,6 +90,7 @@ def test_runs_of_zero_returns_by_length() -> None:
     assert found[21]["examples"] == ["A on 2000-05-31", "D on 2000-01-31", "E on 2000-01-31"]
 
 
+@pytest.mark.fault(22)
 def test_jumps_that_reverse() -> None:
     found = flagged(
         A={0: 4.0, 1: -0.8},  # 5 × 0.2 = 1: back where it was
@@ -97,6 +103,7 @@ def test_jumps_that_reverse() -> None:
     assert (found[22]["n"], found[22]["examples"]) == (1, ["A on 2000-02-29"])
 
 
+@pytest.mark.fault(24)
 def test_sizes(tmp_path: Path) -> None:
     sizes = ["0", "-12.5", "", "NA", "7"]
     found = validate(tmp_path, lines(*(f"{s},2000-01-31,0.1,,{v},1" for s, v in enumerate(sizes))))

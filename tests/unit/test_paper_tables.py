@@ -158,6 +158,7 @@ def test_symbols_are_ascii_where_text_is_plain() -> None:
     assert all(symbol.plain.isascii() and symbol.tex.isascii() for symbol in SYMBOLS.values())
 
 
+@pytest.mark.fault(38)
 @pytest.mark.parametrize(
     ("raw", "tex"),
     [
@@ -173,6 +174,7 @@ def test_latex_escapes(raw: str, tex: str) -> None:
     assert latex.escape(raw) == tex
 
 
+@pytest.mark.fault(38)
 def test_hostile_names_stay_text() -> None:
     tables = make_tables(examples.hostile())
     for name, text in tables.items():

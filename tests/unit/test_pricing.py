@@ -327,12 +327,14 @@ def test_the_line_is_compared_with_the_market_of_its_own_months() -> None:
     assert mean["se"] == pytest.approx(market[1:].std(ddof=1) / np.sqrt(len(market) - 1), rel=1e-13)
 
 
+@pytest.mark.fault(34)
 def test_too_few_months_for_anything() -> None:
     priced = _price(_cut(n_periods=2), "time_series", "joint_alpha", "market_line")
     assert _undefined_reason(_but_market_mean(priced)) == "needs at least 3 complete months, has 2"
     assert set(priced["n_periods"]) == {2}
 
 
+@pytest.mark.fault(34)
 def test_too_few_months_for_the_joint_tests_only() -> None:
     # T = N + K = 5: below the six months that four assets and the market need.
     priced = _price(_cut(n_periods=5), "joint_alpha", "market_line")

@@ -39,6 +39,7 @@ def test_values_are_decimal_and_sorted(tmp_path: Path) -> None:
     assert found["return"].tolist() == [-1.0, 0.025]
 
 
+@pytest.mark.fault(27)
 def test_months_missing_inside(tmp_path: Path) -> None:
     values = {m: 0.01 for m in YEAR if m not in {"2000-03", "2000-07"}} | {"2000-09": "NA"}
     assert refused(tmp_path, ROW, market=values) == (
@@ -63,6 +64,7 @@ def test_missing_values_at_the_ends_only_shorten(tmp_path: Path) -> None:
     assert len(found) == 10
 
 
+@pytest.mark.fault(31)
 def test_months_twice(tmp_path: Path) -> None:
     text = "month,mkt\n2000-02,0.1\n2000-01,0.1\n2000-01,0.2\n2000-02,0.1\n2000-02,0.1\n"
     assert message(tmp_path, text) == (
@@ -134,6 +136,7 @@ def test_riskless_return_by_hand() -> None:
     assert riskless_return(rate, "period_return").tolist() == rate.tolist()
 
 
+@pytest.mark.fault(29)
 @pytest.mark.parametrize(
     ("rate", "quoted", "unit", "said"),
     [

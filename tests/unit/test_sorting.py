@@ -279,6 +279,7 @@ def test_sizes_of_one_security_do_not_reach_the_next() -> None:
     assert column(found, "p01", "mean_size") == [100, 110]
 
 
+@pytest.mark.fault(33)
 def test_too_many_groups() -> None:
     with pytest.raises(KnownProblem) as told:
         form_tiny(groups=5)

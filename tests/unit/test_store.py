@@ -51,6 +51,7 @@ def test_the_riskless_rate_is_known_in_every_period_or_in_none(tmp_path: Path) -
         store.write_table(partly, tmp_path / "partly.parquet", "market")
 
 
+@pytest.mark.fault(35)
 def test_a_failed_write_leaves_the_old_file_and_nothing_else(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:

@@ -89,6 +89,7 @@ def test_paths_are_relative_to_the_study_file(folder: Path) -> None:
     assert study.returns.label == "returns.csv"
 
 
+@pytest.mark.fault(33)
 @pytest.mark.parametrize(
     ("edit", "expected"),
     [
@@ -149,6 +150,7 @@ def test_one_problem_is_said_with_its_place(
     assert problems(folder, changed(edit)) == [expected]
 
 
+@pytest.mark.fault(33)
 def test_all_problems_are_said_at_once_in_the_order_of_the_file(folder: Path) -> None:
     text = changed(
         ("title: My study", "titel: My study"),
@@ -164,6 +166,7 @@ def test_all_problems_are_said_at_once_in_the_order_of_the_file(folder: Path) ->
     ]
 
 
+@pytest.mark.fault(33)
 def test_references_that_lead_nowhere_are_all_said(folder: Path) -> None:
     text = changed(("rank_on: monthly60", "rank_on: m60")) + textwrap.dedent(
         """\
@@ -180,6 +183,7 @@ def test_references_that_lead_nowhere_are_all_said(folder: Path) -> None:
     ]
 
 
+@pytest.mark.fault(33)
 def test_a_key_that_stands_twice_is_said(folder: Path) -> None:
     text = changed(("  full: {}", "  full: {}\n  full: {from: 1990-01}"))
     assert problems(folder, text) == [
@@ -512,7 +516,6 @@ def test_one_name_in_two_sections_is_not_ambiguous(folder: Path) -> None:
     )
     study = load_study(write(folder, text))
     assert (study.sorts["ten"].rank_on, study.paper.main) == ("ten", "ten")
-
 
     text = changed(
         ("title: My study}", "title: My study, frequency: daily}"),

@@ -36,6 +36,7 @@ def rows_of(first: str, n: int) -> list[str]:
     return [f"A,{month}-28,0.05,,1,1" for month in months(first, n)]
 
 
+@pytest.mark.fault(28)
 def test_the_study_ends_at_the_last_common_month(tmp_path: Path) -> None:
     found = validate(
         tmp_path,

@@ -16,6 +16,8 @@ from lineproof.securities import coded, starts_of
 from lineproof.stats.betas import RollingBetas
 from lineproof.stats.windows import WindowEnds
 
+_NONE = "No beta can be estimated."
+
 
 def estimate_betas(
     panel: pd.DataFrame,
@@ -43,9 +45,13 @@ def estimate_betas(
 
     Where there are too few returns there is no row.
 
-    Raises KnownProblem when no security has enough periods for a single estimate, or the market's
-    return never changes.
+    Raises KnownProblem when the window is longer than the sample, no security has enough periods for
+    a single estimate, or the market's return never changes.
     """
+    if window > len(market):
+        nouns = FREQUENCIES[returns].nouns
+        found = f"a window of {window} {nouns} is longer than the sample, which has {len(market)}"
+        raise KnownProblem(_NONE, [Problem(f"betas.{name}.window", found, "shorten window")])
     periods = periods_of(returns, market["date"].to_numpy())
     rows = _rows(panel, market, periods)
     marks = _marks(rows, periods, dated)
@@ -59,9 +65,7 @@ def estimate_betas(
         ends=WindowEnds(marks.starts, marks.number),
     )
     if len(estimate.row) == 0:
-        raise KnownProblem(
-            "No beta can be estimated.", [_why_none(name, estimate, window, min_obs, returns)]
-        )
+        raise KnownProblem(_NONE, [_why_none(name, estimate, window, min_obs, returns)])
     row = marks.row[estimate.row]
     keys = pd.DataFrame(
         {

@@ -107,7 +107,11 @@ class Wiring:
     @property
     def panels(self) -> dict[str, str]:
         """The panel, and the panel of days beside it where a study of months is delivered days; by name."""
-        names = ["panel"] if self.study.returns_frequency == self.study.frequency else ["panel", "daily"]
+        names = (
+            ["panel"]
+            if self.study.returns_frequency == self.study.frequency
+            else ["panel", "daily"]
+        )
         return {name: self.path(f"data/{name}.parquet") for name in names}
 
     @property

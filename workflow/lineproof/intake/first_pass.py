@@ -28,7 +28,10 @@ from lineproof.store import Scratch
 NUMERIC = ("return", "final_return", "size", "price")
 _RETURNS = ("return", "final_return")
 _UNDECLARED_CODES = (-66.0, -77.0, -88.0, -99.0, -999.0)
-_LEAST = {"total": -1.0, "excess": -1.03}  # what a total loss is in excess of the highest plausible rate
+_LEAST = {
+    "total": -1.0,
+    "excess": -1.03,
+}  # what a total loss is in excess of the highest plausible rate
 _FIRST_DAY = np.datetime64("1800-01-01")
 _N_DAYS = 401 * 366
 

@@ -84,7 +84,9 @@ class Intake:
         self._leavers = Leavers(
             rules["missing_final_return"], rules["final_return_by_reason"], span.first, n_periods
         )
-        self._builds = {name: MarketBuild(kinds.build) for name in self._names} if kinds.build else {}
+        self._builds = (
+            {name: MarketBuild(kinds.build) for name in self._names} if kinds.build else {}
+        )
         self._alive = np.zeros(n_periods, np.int64)
         self._panel = _Counts()
         self._aside_examples: dict[int, list[dict[str, Any]]] = {}
@@ -123,7 +125,6 @@ class Intake:
             raise self._nothing_kept()
         self._judge()
 
-
     def _pieces(self, chunk: Chunk) -> dict[str, pd.DataFrame]:
         taken, rates = self._taken, self._delivered
         periods = rates.span.periods
@@ -141,7 +142,9 @@ class Intake:
         whole = self._within(months)
         if len(whole.months):
             n_days = whole.n_days
-            pieces["panel"] = self._piece(whole.months, leaves[whole.last], self._rates, "panel", n_days)
+            pieces["panel"] = self._piece(
+                whole.months, leaves[whole.last], self._rates, "panel", n_days
+            )
         return pieces
 
     def _within(self, months: Compounded) -> Compounded:
@@ -310,7 +313,9 @@ class Intake:
         by_security = {
             "what": "the same unit for every security",
             "found": "; ".join(others.examples)
-            or f"none of {counted(units['n_judged'], 'security')} stands out".replace("securitys", "securities"),
+            or f"none of {counted(units['n_judged'], 'security')} stands out".replace(
+                "securitys", "securities"
+            ),
             "verdict": "to be looked at" if others.n else "one unit throughout",
         }
         return [*scale_findings(self._scale, self._reading, self._stretches), by_security]
