@@ -19,7 +19,16 @@ Stretches = Iterator[tuple[int | None, Callable[[], Iterator[pa.Table]]]]
 _ROWS = 1 << 17  # rows read at a time
 
 
-class _FrameFormat(TypedFormat):
+class _PackagedFormat(TypedFormat):
+    """A file of a program whose numbers are neither whole nor not."""
+
+    @staticmethod
+    def text_of(value: Any) -> str:
+        whole = isinstance(value, float) and value.is_integer()
+        return TypedFormat.text_of(int(value) if whole else value)
+
+
+class _FrameFormat(_PackagedFormat):
     """A file that pandas reads chunk by chunk."""
 
     def _frames(self, n_rows: int) -> Iterator[pd.DataFrame]:
@@ -122,7 +131,7 @@ def _text(value: Any, dates: str) -> str:
     return str(value)
 
 
-class ExcelFormat(TypedFormat):
+class ExcelFormat(_PackagedFormat):
     """One sheet of an .xlsx workbook, the first unless `sheet` names another; rows are numbered as the sheet does.
 
     Row 1 is the header. A cell with a formula has the value that was last computed. A row without any value is no
