@@ -25,6 +25,7 @@ if TYPE_CHECKING:
 _KEPT = {"int2", "int4", "int8", "float4", "float8", "bool", "date", "timestamp", "timestamptz"}
 _SETTINGS = ("transaction read only", "local time zone 'UTC'", "local datestyle to 'ISO, YMD'")
 _PARTS = ("host", "hostaddr", "port", "user", "password", "passfile", "dbname", "service")
+_ERROR = re.compile(r"\bERROR:\s+(.+)")  # a refused connection is FATAL
 _WORD = re.compile(r"(\w+)\s*=\s*('(?:[^'\\]|\\.)*'|\S+)")
 
 
@@ -58,7 +59,7 @@ def _fetch(place: str, source: Source) -> None:
             schema, batches = _ask(cursor, source.query or "", place)
             store.write_batches_if_changed(schema, batches, source.files[0])
             connection.rollback()
-    except (postgres.Error, pa.ArrowException) as error:
+    except (postgres.Error, pa.ArrowException, _BrokenOff) as error:
         raise _refused(place, variable, secret, error) from None
 
 
@@ -67,9 +68,7 @@ def _ask(cursor: Any, query: str, place: str) -> tuple[pa.Schema, Iterator[pa.Re
     import pyarrow as pa
 
     inner = f"({query.strip().rstrip(';')}\n) as extract"
-    cursor.execute(f"select * from {inner} limit 0")
-    with cursor.fetch_record_batch() as probe:
-        fields = list(probe.schema)
+    fields = list(cursor.adbc_execute_schema(query))
     if not fields:
         raise stop(f"{place}, query", "its result has no column", "name the columns to select")
     kinds = [(field.metadata or {}).get(b"POSTGRESQL:type", b"").decode() for field in fields]
@@ -86,18 +85,36 @@ def _ask(cursor: Any, query: str, place: str) -> tuple[pa.Schema, Iterator[pa.Re
         [pa.field(f.name, g.type) for f, g in zip(fields, rows.schema, strict=True)],
         metadata={"query": query},
     )
-    return schema, (pa.RecordBatch.from_arrays(batch.columns, schema=schema) for batch in rows)
+    return schema, (pa.RecordBatch.from_arrays(b.columns, schema=schema) for b in _streamed(rows))
+
+
+class _BrokenOff(Exception):
+    """The server ended a result with an error; the text is what the driver says."""
+
+
+def _streamed(rows: pa.RecordBatchReader) -> Iterator[pa.RecordBatch]:
+    import pyarrow as pa
+
+    while True:
+        try:
+            batch = rows.read_next_batch()
+        except StopIteration:
+            return
+        except (OSError, pa.ArrowException) as error:  # told apart from a full disk
+            raise _BrokenOff(str(error)) from None
+        yield batch
 
 
 def _refused(place: str, variable: str, secret: str, error: Exception) -> KnownProblem:
     """What the server said, without anything that `secret` says; a failed connection is not quoted at all."""
     details = dict(getattr(error, "details", None) or [])
-    primary = details.get(b"PG_DIAG_MESSAGE_PRIMARY") or details.get("PG_DIAG_MESSAGE_PRIMARY")
-    if primary is None:
+    quoted = _ERROR.search(str(error))
+    said = details.get(b"PG_DIAG_MESSAGE_PRIMARY", b"").decode("utf-8", "replace")
+    said = said or (quoted[1] if quoted else "")
+    if not said:
         found = f"no answer could be had from the database to which {variable} leads"
         change = f"check {variable} (server, database, user, password) and that the server is up"
         return stop(f"{place}, connection", found, change)
-    said = primary.decode("utf-8", "replace") if isinstance(primary, bytes) else str(primary)
     state = f" (SQLSTATE {error.sqlstate})" if getattr(error, "sqlstate", None) else ""
     found = f"the database to which {variable} leads refused it: {_masked(said, secret)}{state}"
     return stop(f"{place}, query", found, "mend the query, or what the user may read")

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import codecs
 import lzma
+import struct
 import zipfile
 import zlib
 from collections.abc import Iterator
@@ -16,7 +17,10 @@ import pyarrow as pa
 from lineproof.intake.formats import check_beginning
 from lineproof.intake.stopping import stop
 
-_BROKEN_ZIP = (zipfile.BadZipFile, zlib.error, lzma.LZMAError, EOFError, RuntimeError, ValueError)
+_BROKEN_ZIP = (
+    *(zipfile.BadZipFile, zlib.error, lzma.LZMAError, struct.error),
+    *(EOFError, RuntimeError, ValueError, OverflowError),
+)
 
 
 def text_of(file: str, label: str, encoding: str | None, size: int) -> Iterator[bytes]:
@@ -45,9 +49,18 @@ def _opened(file: str, label: str) -> Iterator[Any]:
         with pa.input_stream(file, compression="detect") as stream:
             yield stream
         return
+    with (
+        _saying_what_is_broken(),
+        zipfile.ZipFile(file) as archive,
+        archive.open(member_of(archive, label)) as stream,
+    ):
+        yield stream
+
+
+@contextmanager
+def _saying_what_is_broken() -> Iterator[None]:
     try:
-        with zipfile.ZipFile(file) as archive, archive.open(member_of(archive, label)) as stream:
-            yield stream
+        yield
     except _BROKEN_ZIP as error:
         raise OSError(str(error) or type(error).__name__) from None
 
@@ -71,9 +84,9 @@ def member_of(archive: zipfile.ZipFile, label: str) -> str:
 
 def member_name(file: str, label: str) -> str:
     """The name that says the format of a text file: that of the member, in a zip archive."""
-    if not file.lower().endswith(".zip") or not zipfile.is_zipfile(file):
+    if not file.lower().endswith(".zip"):
         return Path(file).name
-    with zipfile.ZipFile(file) as archive:
+    with _saying_what_is_broken(), zipfile.ZipFile(file) as archive:
         return member_of(archive, label)
 
 

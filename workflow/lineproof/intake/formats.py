@@ -56,13 +56,12 @@ _BEGINNINGS = {
     b"%PDF": "a PDF",
 }
 _ENCODED = {b"\xff\xfe": "utf-16", b"\xfe\xff": "utf-16"}
+# Version and byte order of the Stata formats before 117.
+_OLD_STATA = [bytes([version, order]) for version in range(102, 116) for order in (1, 2)]
 _EXPECTED = {
     "parquet": (b"PAR1",),
     "feather": (b"ARROW1",),
-    "stata": (
-        b"<stata_dta>",
-        *(bytes([version]) for version in (*range(102, 106), 108, *range(110, 116))),
-    ),
+    "stata": (b"<stata_dta>", *_OLD_STATA),
     "sas": (_SAS,),
     "excel": (b"PK\x03\x04",),
 }

@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import datetime
+import os
 from collections.abc import Callable, Iterator
 from functools import cached_property, partial
 from itertools import islice
+from pathlib import Path
 from typing import Any
 
 import pandas as pd
@@ -16,10 +18,20 @@ from lineproof.intake.typedfile import TypedFormat, guarded
 from lineproof.schema import nearest
 
 Stretches = Iterator[tuple[int | None, Callable[[], Iterator[pa.Table]]]]
+_STATA, _STATA_END = b"<stata_dta>", b"</stata_dta>"
 _ROWS = 1 << 17  # rows read at a time
 
 
-class _FrameFormat(TypedFormat):
+class _PackagedFormat(TypedFormat):
+    """A file of a program whose numbers are neither whole nor not."""
+
+    @staticmethod
+    def text_of(value: Any) -> str:
+        whole = isinstance(value, float) and value.is_integer()
+        return TypedFormat.text_of(int(value) if whole else value)
+
+
+class _FrameFormat(_PackagedFormat):
     """A file that pandas reads chunk by chunk."""
 
     def _frames(self, n_rows: int) -> Iterator[pd.DataFrame]:
@@ -49,10 +61,19 @@ class StataFormat(_FrameFormat):
     """A .dta file. Months (%tm) are their first day; labelled values are their numbers; .a to .z are missing."""
 
     def _frames(self, n_rows: int) -> Iterator[pd.DataFrame]:
+        self._check_end()
         with pd.read_stata(
             self._file, chunksize=n_rows, convert_categoricals=False, preserve_dtypes=False
         ) as reader:
             yield from reader
+
+    def _check_end(self) -> None:
+        """The rows of a file that is cut off may be whole; its end mark is not."""
+        with open(self._file, "rb") as stream:
+            is_marked = stream.read(len(_STATA)) == _STATA
+            stream.seek(-min(len(_STATA_END), Path(self._file).stat().st_size), os.SEEK_END)
+            if is_marked and stream.read() != _STATA_END:
+                raise OSError("its end mark is missing")
 
 
 class SasFormat(_FrameFormat):
@@ -122,7 +143,7 @@ def _text(value: Any, dates: str) -> str:
     return str(value)
 
 
-class ExcelFormat(TypedFormat):
+class ExcelFormat(_PackagedFormat):
     """One sheet of an .xlsx workbook, the first unless `sheet` names another; rows are numbered as the sheet does.
 
     Row 1 is the header. A cell with a formula has the value that was last computed. A row without any value is no

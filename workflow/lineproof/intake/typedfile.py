@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import datetime
 import io
 from collections.abc import Callable, Iterator
 from typing import Any, TypeVar
@@ -80,7 +81,7 @@ class TypedFormat:
                 upto = int(np.searchsorted(places, row + len(table)))
                 found = table.take(places[done:upto] - row)
                 own = found.columns[:-1] if self.marks_blank_rows else found.columns
-                texts = [_texts(column) for column in own]
+                texts = [[self.text_of(value) for value in column.to_pylist()] for column in own]
                 if upto > done:
                     yield [[*fields, *folders] for fields in zip(*texts, strict=True)]
                 row, done = row + len(table), upto
@@ -93,6 +94,13 @@ class TypedFormat:
     def fields_of(self, row: list[str]) -> list[str]:
         return row
 
+    @staticmethod
+    def text_of(value: Any) -> str:
+        """A value as a line of text shows it."""
+        if isinstance(value, datetime.datetime) and value.time() == datetime.time():
+            value = value.date()
+        return "" if value is None else str(value)
+
     def _folders(self) -> dict[str, str]:
         own = set(self.names())
         return {key: text for key, text in partition_keys(self._label).items() if key not in own}
@@ -101,10 +109,6 @@ class TypedFormat:
 def _whole(column: pa.ChunkedArray) -> pa.Array:
     found = column.combine_chunks()
     return found.chunk(0) if isinstance(found, pa.ChunkedArray) else found
-
-
-def _texts(column: pa.ChunkedArray) -> list[str]:
-    return ["" if value is None else str(value) for value in column.to_pylist()]
 
 
 def guarded(items: Iterator[Item]) -> Iterator[Item]:
