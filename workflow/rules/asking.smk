@@ -23,10 +23,22 @@ def after_cutting(names):
     return after(["validate_returns", "cut_subperiods"], names)
 
 
+def raw(source):
+    """A raw file. Its digest says when it has changed, not its time; only the demo market's files are made here."""
+    return source.file if study.is_made(source) else ancient(source.file)
+
+
 def sort_inputs(wildcards):
     """What a set of test assets is made from: tables of ours, or a raw file."""
     checkpoints.validate_returns.get()
-    return list(wiring.sort_inputs(wildcards.sort).values())
+    supplied = study.sorts[wildcards.sort].source
+    return [raw(supplied)] if supplied else list(wiring.sort_inputs(wildcards.sort).values())
+
+
+def sort_digests(wildcards):
+    """The digests of the raw file that a set of test assets is made from, where it is."""
+    supplied = study.sorts[wildcards.sort].source
+    return wiring.raw_digests(f"portfolios.{wildcards.sort}") if supplied else []
 
 
 def priced(wildcards):

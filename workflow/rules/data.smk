@@ -3,9 +3,10 @@
 
 checkpoint validate_returns:
     input:
-        returns=study.returns.file,
-        market=study.market.file,
-        riskless=study.riskless.file,
+        returns=raw(study.returns),
+        market=raw(study.market),
+        riskless=raw(study.riskless),
+        digests=wiring.raw_digests("data.returns", "data.market", "data.riskless"),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
         code=wiring.code("validate_returns"),
