@@ -9,6 +9,7 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 
+from lineproof.locking import join_run
 from lineproof.problems import KnownProblem
 
 MESSAGE_ENDING = ".message"
@@ -21,6 +22,7 @@ def job(snakemake: object) -> Iterator[None]:
     Everything the job prints, and the traceback of what goes wrong, is in the rule's log; what the user is to read is
     in a file beside it, from where the program shows it.
     """
+    lock = join_run()
     log = Path(snakemake.log[0])
     message = log.with_suffix(MESSAGE_ENDING)
     message.unlink(missing_ok=True)
@@ -39,6 +41,9 @@ def job(snakemake: object) -> Iterator[None]:
     else:
         print("done")
         sys.stdout.flush()
+    finally:
+        if lock is not None:
+            lock.close()
 
 
 def _print_into(log: Path) -> None:

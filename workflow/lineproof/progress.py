@@ -57,7 +57,7 @@ class Progress:
             said = (
                 message.read_text(encoding="utf-8").rstrip()
                 if message.exists()
-                else "It stopped without a message."
+                else "It was ended from outside, or for want of memory; the same command goes on from there."
             )
             self.failures.append(f"{said}\n  (step: {name}; log: {log})")
 
