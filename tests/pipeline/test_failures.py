@@ -7,7 +7,6 @@ import os
 import signal
 import subprocess
 import sys
-import time
 
 import pytest
 from tests.pipeline.conftest import Project
@@ -94,9 +93,15 @@ def test_check_reads_the_data_and_runs_no_more(project: Project) -> None:
 
 
 @pytest.mark.fault(36)
-@pytest.mark.parametrize("after", [1.5, 3.0, 4.5, 6.0])
-def test_a_killed_run_is_finished_by_the_same_command(project: Project, after: float) -> None:
-    """Killed without warning at some moment, with all its jobs; the bytes are those of an undisturbed run."""
+@pytest.mark.parametrize("whole", [True, False], ids=["with its jobs", "alone"])
+@pytest.mark.parametrize("step", ["validate returns", "estimate betas", "price subperiod"])
+def test_a_killed_run_is_finished_by_the_same_command(
+    project: Project, step: str, whole: bool
+) -> None:
+    """Killed without warning as a step begins, with all its jobs or the main process alone, as for want of memory.
+
+    The bytes are those of an undisturbed run.
+    """
     parts = (
         "data",
         "betas",
@@ -111,19 +116,21 @@ def test_a_killed_run_is_finished_by_the_same_command(project: Project, after: f
     for part in (
         "data/panel.parquet",
         "betas/monthly36.parquet",
+        "pricing/full.parquet",
         "estimates.parquet",
         "report.html",
     ):
         (project.results / part).unlink()
-    running = subprocess.Popen(
+    with subprocess.Popen(
         [sys.executable, "-m", "lineproof", "study", "small.yaml", "--cores", "2"],
         cwd=project.folder,
         env={**os.environ, "PYTHONPATH": str(project.folder / "workflow")},
-        stderr=subprocess.DEVNULL,
+        stderr=subprocess.PIPE,
+        text=True,
         start_new_session=True,
-    )
-    time.sleep(after)
-    os.killpg(running.pid, signal.SIGKILL)
-    running.wait()
+    ) as running:
+        assert running.stderr is not None
+        assert any(step in line for line in running.stderr), f"{step} never began"
+        os.killpg(running.pid, signal.SIGKILL) if whole else running.kill()
     project.run()
     assert project.hashes(*parts) == before

@@ -104,8 +104,14 @@ def test_without_a_message_the_disk_is_looked_at(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     log = tmp_path / "a.log"
-    assert joblog.without_message(log) == "It stopped without a message."
-    assert joblog.without_message("nowhere/a.log") == "It stopped without a message."
+    assert (
+        joblog.without_message(log)
+        == "It was ended from outside, or for want of memory; the same command goes on from there."
+    )
+    assert (
+        joblog.without_message("nowhere/a.log")
+        == "It was ended from outside, or for want of memory; the same command goes on from there."
+    )
     usage = type("Usage", (), {"free": 4096})()
     monkeypatch.setattr(joblog.shutil, "disk_usage", lambda folder: usage)
     assert joblog.without_message(log) == FULL.format("a file")

@@ -349,20 +349,14 @@ def test_total_returns_need_a_riskless_rate(folder: Path) -> None:
     ]
 
 
-def test_options_of_validation_name_what_is_less_usual_only(folder: Path) -> None:
-    usual = Wiring(load_study(write(folder, GOOD))).options("validate_returns")
-    assert not {"returns_are", "market_build", "market_frequency", "riskless_frequency"} & set(
-        usual
-    )
+def test_a_market_to_be_built_is_told_to_the_validation(folder: Path) -> None:
     text = changed(
         (MARKET, "market: {build: size}"), ("rate: bill}", "rate: bill}, frequency: daily")
     )
     wiring = Wiring(load_study(write(folder, text)))
     found = wiring.options("validate_returns")
-    assert (found["market"], found["market_build"]) == (None, "size")
-    assert found["riskless_frequency"] == "daily"
-    assert wiring.series_files("market") == []
-    assert [Path(file).name for file in wiring.series_files("riskless")] == ["bills.csv"]
+    assert (found["series"]["market"], found["market_build"]) == (None, "size")
+    assert found["series"]["riskless_frequency"] == "daily"
 
 
 def plus_intake(options: str, *edits: tuple[str, str]) -> str:
@@ -402,8 +396,7 @@ def test_options_of_the_intake_and_their_defaults(folder: Path) -> None:
 
 def test_the_options_of_the_intake_are_those_of_the_validation(folder: Path) -> None:
     study = load_study(write(folder, GOOD))
-    passed = Wiring(study).options("validate_returns")
-    assert asdict(study.intake).items() <= passed.items()
+    assert Wiring(study).options("validate_returns")["rules"] == asdict(study.intake)
 
 
 def test_dates_may_be_left_to_the_data(folder: Path) -> None:

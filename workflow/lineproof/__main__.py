@@ -105,7 +105,7 @@ def _run(given: argparse.Namespace) -> int:
     os.chdir(ROOT)
     study = load_study(path.relative_to(ROOT) if path.is_relative_to(ROOT) else path)
     began = time.monotonic()
-    with only_run_of(study):
+    with only_run_of(study.folder):
         fetch_extracts(study)
         status, steps = _snakemake(
             given, study.path, "study" if given.command == "study" else "data"

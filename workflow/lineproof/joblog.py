@@ -11,6 +11,7 @@ from collections.abc import Iterator
 from contextlib import contextmanager, suppress
 from pathlib import Path
 
+from lineproof.locking import join_run
 from lineproof.problems import KnownProblem
 
 MESSAGE_ENDING = ".message"
@@ -24,6 +25,7 @@ def job(snakemake: object) -> Iterator[None]:
     Everything the job prints, and the traceback of what goes wrong, is in the rule's log; what the user is to read is
     in a file beside it, from where the program shows it.
     """
+    lock = join_run()
     log = Path(snakemake.log[0])
     message = log.with_suffix(MESSAGE_ENDING)
     try:
@@ -41,6 +43,9 @@ def job(snakemake: object) -> Iterator[None]:
     else:
         print("done")
         sys.stdout.flush()
+    finally:
+        if lock is not None:
+            lock.close()
 
 
 def _print_into(log: Path) -> None:
@@ -75,7 +80,7 @@ def without_message(log: str | os.PathLike) -> str:
     folder = Path(log).parent
     if folder.exists() and shutil.disk_usage(folder).free < _FULL:
         return file_trouble(OSError(errno.ENOSPC, os.strerror(errno.ENOSPC)))
-    return "It stopped without a message."
+    return "It was ended from outside, or for want of memory; the same command goes on from there."
 
 
 def _fail(message: Path, full: str, short: str) -> None:

@@ -2,6 +2,9 @@
 
 Options are given to a job as `params` and are also kept as small files that the job takes as input. So the state of
 a study is complete in its own folder: a changed option is noticed even when the scheduler's memory was deleted.
+
+Code, pins and raw files come in by the digests of their content, which are kept the same way; so their time stamps,
+which mean little for a file that was unpacked, copied or checked out, decide nothing.
 """
 
 from __future__ import annotations
@@ -15,10 +18,11 @@ from typing import Any
 
 from lineproof import store
 from lineproof.analyses import ANALYSES
+from lineproof.digests import Digests
 from lineproof.facts import facts
 from lineproof.paper import exhibits
 from lineproof.provenance import WORKFLOW, code_of
-from lineproof.study import Study
+from lineproof.study import Source, Study
 
 
 @dataclass(frozen=True)
@@ -35,20 +39,48 @@ class Wiring:
         """A path inside the study's results."""
         return f"{self.folder}/{name}"
 
-    def code(self, rule: str) -> list[str]:
-        """The code files a rule depends on, as inputs."""
-        return [_from_here(path) for path in code_of(WORKFLOW / "scripts" / f"{rule}.py")]
+    def code(self, rule: str) -> str:
+        """Where the digests of the code a rule depends on are kept."""
+        return self.path(f"digests/code-{rule}.json")
 
     @property
     def pins(self) -> str:
-        """The pinned packages, on which every number depends."""
-        return _from_here(WORKFLOW / "envs" / "requirements.txt")
+        """Where the digest of the pinned packages is kept, on which every output depends."""
+        return self.path("digests/pins.json")
+
+    def raw_digests(self, *places: str) -> list[str]:
+        """Where the digests of raw files are kept, by their places in the study file.
+
+        The demo market's files have none: a rule makes them, and what that depends on is known.
+        """
+        sources = self.study.sources()
+        return [
+            self.path(f"digests/{place}.json")
+            for place in places
+            if place in sources and not self.study.is_made(sources[place])
+        ]
 
     def keep_options(self) -> None:
         """Write the options of every job, each file only where it differs from what stands there."""
         for name, options in self._options.items():
-            text = json.dumps(options, indent=1, ensure_ascii=False, sort_keys=True) + "\n"
-            store.write_if_changed(text, self.options_file(name))
+            self._keep(options, self.options_file(name))
+
+    def keep_digests(self) -> None:
+        """Write the digests of code, pins and raw files, each file of them only where one has changed."""
+        digests = Digests(self.path("digests/known.json"))
+        for script in (WORKFLOW / "scripts").glob("*.py"):
+            files = code_of(script)
+            found = {str(file.relative_to(WORKFLOW)): digests.of(file) for file in files}
+            self._keep(found, self.code(script.stem))
+        self._keep(digests.of(WORKFLOW / "envs" / "requirements.txt"), self.pins)
+        for place, source in self.study.sources().items():
+            for kept in self.raw_digests(place):
+                self._keep([digests.of(file) for file in source.files], kept)
+        digests.keep()
+
+    def _keep(self, content: Any, file: str) -> None:
+        text = json.dumps(content, indent=1, ensure_ascii=False, sort_keys=True) + "\n"
+        store.write_if_changed(text, file)
 
     def options_file(self, name: str) -> str:
         """Where the options of a job are kept."""
@@ -123,11 +155,6 @@ class Wiring:
         )
         names = ["market", "market_daily"] if beside else ["market"]
         return {name: self.path(f"data/{name}.parquet") for name in names}
-
-    def series_files(self, name: str) -> list[str]:
-        """The raw files of the market or the riskless rate; none where the study has none."""
-        source = {"market": self.study.market, "riskless": self.study.riskless}[name]
-        return [] if source is None else list(source.files)
 
     def _sort(self, name: str) -> dict[str, Any]:
         spec = self.study.sorts[name]
@@ -204,8 +231,3 @@ class Wiring:
 def subperiod_names(index: str | os.PathLike) -> list[str]:
     """Names of the subperiods listed in an index file."""
     return [entry["name"] for entry in store.read_json(index)]
-
-
-def _from_here(path: Path) -> str:
-    """Relative to the working folder where the file lies in it, else absolute."""
-    return os.path.relpath(path) if path.is_relative_to(Path.cwd()) else str(path)

@@ -3,9 +3,10 @@
 
 checkpoint validate_returns:
     input:
-        returns=list(study.returns.files),
-        market=wiring.series_files("market"),
-        riskless=wiring.series_files("riskless"),
+        returns=raw(study.returns),
+        market=raw(study.market),
+        riskless=raw(study.riskless),
+        digests=wiring.raw_digests("data.returns", "data.market", "data.riskless"),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
         code=wiring.code("validate_returns"),

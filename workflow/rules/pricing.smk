@@ -45,6 +45,7 @@ rule gather_estimates:
     input:
         sample=after_cutting("sample.parquet"),
         subperiods=priced,
+        pins=wiring.pins,
         code=wiring.code("gather_estimates"),
     output:
         estimates=wiring.path("estimates.parquet"),
