@@ -22,7 +22,7 @@ from lineproof.digests import Digests
 from lineproof.facts import facts
 from lineproof.paper import exhibits
 from lineproof.provenance import WORKFLOW, code_of
-from lineproof.study import Source, Study
+from lineproof.study import Study
 
 
 @dataclass(frozen=True)

@@ -60,7 +60,7 @@ class Rates:
 
 @dataclass(frozen=True)
 class Supplied:
-    """The series of a study as read: the market's returns, or None where it is built, and the riskless rate, or None."""
+    """The series of a study as read: the market, None where it is built, and the riskless rate, None where there is none."""
 
     market: pd.DataFrame | None
     market_frequency: str
