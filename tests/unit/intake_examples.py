@@ -138,11 +138,19 @@ def validate(
     return run(
         folder,
         files,
+        frequency="monthly",
         returns=returns_reading(**changes),
-        market=reading("raw/market.csv", {"date": "month", "return": "mkt"}, **series),
-        market_is="total",
-        riskless=reading("raw/riskless.csv", {"date": "month", "rate": "rf"}, **series),
-        riskless_quoted="period_return",
+        returns_are="total",
+        returns_frequency="monthly",
+        market_build=None,
+        series={
+            "market": reading("raw/market.csv", {"date": "month", "return": "mkt"}, **series),
+            "market_is": "total",
+            "market_frequency": "monthly",
+            "riskless": reading("raw/riskless.csv", {"date": "month", "rate": "rf"}, **series),
+            "riskless_quoted": "period_return",
+            "riskless_frequency": "monthly",
+        },
         rules=rules,
     )
 
@@ -153,7 +161,7 @@ def run(folder: Path, files: dict[str, list[str]], **options: Any) -> Validated:
         found = validation.validate_returns(files, scratch, **options)
         return Validated(
             panel=pd.concat([piece["panel"] for piece in found.tables()], ignore_index=True),
-            market=found.market(),
+            market=found.markets()["market"],
             set_aside=pd.concat(
                 [piece["set_aside"] for piece in found.set_aside()], ignore_index=True
             ),

@@ -10,7 +10,8 @@ import pytest
 from tests.unit import intake_examples as examples
 from tests.unit.intake_examples import chunk_of, fault, lines, validate
 
-from lineproof.intake.delisting import exit_reasons, leaving_rows, with_final_returns
+from lineproof.intake.chunk import Chunk
+from lineproof.intake.delisting import Leavers, exit_reasons, leaving_rows
 from lineproof.intake.faults import Tally
 
 STAYS = [f"Z,2000-{m:02d}-28,0.01,,1,1" for m in range(1, 13)]
@@ -106,6 +107,12 @@ def test_survivors_only(tmp_path: Path) -> None:
 
 # By chunk: who leaves, and what stands in for a final return.
 
+
+def leavers(chunk: Chunk, otherwise: float | None, by_reason: dict[str, float]) -> Leavers:
+    first = int(chunk.period.min())
+    return Leavers(otherwise, by_reason, first, int(chunk.period.max()) - first + 1)
+
+
 ROWS = pd.DataFrame(
     {
         "security": list("AABCD"),
@@ -143,7 +150,7 @@ def test_who_was_seen_later_has_not_left() -> None:
 def test_final_returns_by_reason() -> None:
     chunk, tally = chunk_of(ROWS), Tally()
     leaves = np.array([False, True, True, True, True])
-    total = with_final_returns(chunk, leaves, -0.3, {"failed": -1.0, "merged": 0.0}, tally)
+    total = leavers(chunk, -0.3, {"failed": -1.0, "merged": 0.0}).with_final_returns(chunk, leaves, tally)
     # A 1.2 × 1 − 1; B and D, failed, lose all; C gives no reason: 1.1 × 0.7 − 1.
     np.testing.assert_allclose(total, [0.1, 0.2, -1.0, -0.23, -1.0], rtol=1e-15)
     (entry,) = tally.report()
@@ -152,10 +159,23 @@ def test_final_returns_by_reason() -> None:
     assert exit_reasons(chunk, np.array([1, 3])) == ["merged", ""]
 
 
+def test_what_final_returns_do_to_the_mean() -> None:
+    chunk = chunk_of(ROWS.assign(final_return=[np.nan, -0.5, np.nan, np.nan, np.nan]))
+    found = leavers(chunk, None, {"failed": -1.0})
+    found.with_final_returns(chunk, np.array([False, True, True, True, True]), Tally())
+    record = found.record()
+    assert (record["n_with"], record["n_without"], found.n) == (1, 3, 4)
+    assert record["by_reason"]["failed"] == {"n": 2, "n_with": 0, "n_without": 2, "stand_in": -1.0}
+    assert record["by_reason"]["merged"] == {"n": 1, "n_with": 1, "n_without": 0, "stand_in": None}
+    # January 0.1; February (0.2 + 0.1)/2, then (1.2 × 0.5 − 1 − 1)/2; March 0.1, then (0.1 − 1)/2.
+    np.testing.assert_allclose(record["mean_without"], (0.1 + 0.15 + 0.1) / 3, rtol=1e-15)
+    np.testing.assert_allclose(record["mean_with"], (0.1 - 0.7 - 0.45) / 3, rtol=1e-15)
+
+
 def test_a_reason_that_is_not_listed_leaves_the_return() -> None:
     chunk, tally = chunk_of(ROWS), Tally()
     leaves = np.array([False, True, True, False, False])
-    total = with_final_returns(chunk, leaves, None, {"failed": -0.5}, tally)
+    total = leavers(chunk, None, {"failed": -0.5}).with_final_returns(chunk, leaves, tally)
     np.testing.assert_allclose(total, [0.1, 0.2, -0.45, 0.1, np.nan], rtol=1e-15)
     assert tally.kinds[25] == {"left as it is": 1, "taken as -0.5": 1}
 
@@ -163,7 +183,7 @@ def test_a_reason_that_is_not_listed_leaves_the_return() -> None:
 def test_a_final_return_given_comes_before_the_reason() -> None:
     chunk = chunk_of(ROWS.assign(final_return=[np.nan, -0.5, np.nan, np.nan, np.nan]))
     leaves = np.array([False, True, False, False, False])
-    total = with_final_returns(chunk, leaves, -0.3, {"merged": 0.0}, Tally())
+    total = leavers(chunk, -0.3, {"merged": 0.0}).with_final_returns(chunk, leaves, Tally())
     np.testing.assert_allclose(total, [0.1, -0.4, 0.1, 0.1, np.nan], rtol=1e-15)
 
 

@@ -67,11 +67,17 @@ def _check_names(reading: dict[str, Any]) -> None:
 
 def _judge_frequency(taken: Taken, label: str, frequency: str) -> None:
     evidence = FrequencyEvidence()
-    for names, security, columns in taken.runs.stretches(_CHUNK, ["day"]):
+    for names, owner, columns in taken.runs.stretches(_CHUNK, ["day"]):
         day = columns["day"].astype("datetime64[D]")
-        month = day.astype("datetime64[M]").astype(np.int64)
-        if not ((np.diff(security) > 0) | ((np.diff(security) == 0) & (np.diff(month) >= 0))).all():
-            order = np.lexsort((month, security))
-            security, day = security[order], day[order]
-        evidence.add(np.searchsorted(security, np.arange(len(names) + 1)), day)
+        order = _by_month(owner, day)
+        evidence.add(np.searchsorted(owner[order], np.arange(len(names) + 1)), day[order])
     evidence.judge(label, frequency)
+
+
+def _by_month(owner: np.ndarray, day: np.ndarray) -> np.ndarray | slice:
+    """The order of rows by security and month; there is nothing to do where they are in it."""
+    month = day.astype("datetime64[M]").astype(np.int64)
+    step = np.diff(owner)
+    if ((step > 0) | ((step == 0) & (np.diff(month) >= 0))).all():
+        return slice(None)
+    return np.lexsort((month, owner))

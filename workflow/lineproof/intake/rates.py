@@ -60,7 +60,7 @@ class Rates:
 
 @dataclass(frozen=True)
 class Supplied:
-    """The series of a study as read: the market, None where it is built, and the riskless rate, None where there is none."""
+    """The series of a study as read; `market` is None where it is built, `rate` where returns are in excess of it."""
 
     market: pd.DataFrame | None
     market_frequency: str
