@@ -41,7 +41,7 @@ EXPECTED = """\
               1  a security that leaves without a final return: kept, flagged
                    1 left as it is
                    for a failure, a final return of −30 % is the usual assumption (Shumway 1997)
-                   B in 2000-01
+                   B on 2000-01-31
               1  no market or riskless return in that month: set aside
                    line 11
 
