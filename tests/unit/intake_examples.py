@@ -105,7 +105,9 @@ RULES: dict[str, Any] = {
     "same_month_rows": "set_aside",
     "stale_run": None,
     "return_after_hole": "keep",
-    "jump_and_reversal": "flag",
+    "outliers": {"jump_and_reversal": "flag"},
+    "allow_partial_last_month": False,
+    "other_unit_stop_above": 0.1,
 }
 
 

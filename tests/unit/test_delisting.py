@@ -150,7 +150,9 @@ def test_who_was_seen_later_has_not_left() -> None:
 def test_final_returns_by_reason() -> None:
     chunk, tally = chunk_of(ROWS), Tally()
     leaves = np.array([False, True, True, True, True])
-    total = leavers(chunk, -0.3, {"failed": -1.0, "merged": 0.0}).with_final_returns(chunk, leaves, tally)
+    total = leavers(chunk, -0.3, {"failed": -1.0, "merged": 0.0}).with_final_returns(
+        chunk, leaves, tally
+    )
     # A 1.2 × 1 − 1; B and D, failed, lose all; C gives no reason: 1.1 × 0.7 − 1.
     np.testing.assert_allclose(total, [0.1, 0.2, -1.0, -0.23, -1.0], rtol=1e-15)
     (entry,) = tally.report()

@@ -63,7 +63,7 @@ def test_jumps_that_reverse_set_aside(tmp_path: Path) -> None:
         *history("C", {12: 4.0}),
         *history("D", {1: -0.8}),
     ]
-    found = validate(tmp_path, lines(*rows), jump_and_reversal="set_aside")
+    found = validate(tmp_path, lines(*rows), outliers={"jump_and_reversal": "set_aside"})
     assert aside(found) == [
         (3, 22, f"{JUMP}: A on 2000-02-28", rows[1]),
         (4, 22, f"{JUMP}: A on 2000-03-28", rows[2]),
@@ -75,7 +75,10 @@ def test_jumps_that_reverse_set_aside(tmp_path: Path) -> None:
 def test_a_row_after_a_hole_is_set_aside_once(tmp_path: Path) -> None:
     rows = history("A", {1: 0.1, 3: 4.0, 4: -0.8})
     found = validate(
-        tmp_path, lines(*rows), return_after_hole="set_aside", jump_and_reversal="set_aside"
+        tmp_path,
+        lines(*rows),
+        return_after_hole="set_aside",
+        outliers={"jump_and_reversal": "set_aside"},
     )
     assert [row[:2] for row in aside(found)] == [(3, 20), (4, 22)]
     assert kept(found) == [("A", "2000-01")]

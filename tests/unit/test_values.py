@@ -19,7 +19,6 @@ from lineproof.intake.values import (
     as_digits,
     check_date_format,
     missing_codes,
-    share_with_decimal_comma,
     to_days,
     to_months,
     to_numbers,
@@ -132,11 +131,6 @@ def test_numbers_agree_with_a_slow_loop(written: list[str]) -> None:
 def test_percent_and_decimal() -> None:
     assert as_decimal(np.array([-100.0, 0.0, 250.0]), "percent").tolist() == [-1.0, 0.0, 2.5]
     assert as_decimal(np.array([-1.0, 0.5]), "decimal").tolist() == [-1.0, 0.5]
-
-
-def test_share_with_decimal_comma() -> None:
-    assert share_with_decimal_comma(text("0,015", "-,5", "1", "", "a,b")) == 0.5
-    assert share_with_decimal_comma(text("", "")) == 0.0
 
 
 @pytest.mark.parametrize(

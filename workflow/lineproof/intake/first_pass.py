@@ -11,8 +11,8 @@ import pyarrow as pa
 from numba import njit
 
 from lineproof.intake.blocks import RawBlock, RawFile
+from lineproof.intake.decimal_comma import DecimalComma
 from lineproof.intake.faults import Tally
-from lineproof.intake.plausible import check_decimal_comma
 from lineproof.intake.runs import Columns, Names, SortedRuns
 from lineproof.intake.setting_aside import FirstFault, SetAside
 from lineproof.intake.values import (
@@ -47,6 +47,7 @@ class Taken:
     runs: SortedRuns
     aside: SetAside
     tally: Tally
+    comma: DecimalComma
     texts: dict[str, Names]
     n_read: list[int] = field(default_factory=list)
     rows_by_day: np.ndarray = field(default_factory=lambda: np.zeros(_N_DAYS, np.int64))
@@ -82,8 +83,9 @@ def take_rows(
     Raises KnownProblem when a file cannot be used as a whole.
     """
     further = [name for name in reading["columns"] if name not in {"security", "date", *NUMERIC}]
-    taken = Taken(SortedRuns(scratch), SetAside(), Tally(), {name: Names() for name in further})
-    is_first, declared_point = True, reading.get("decimal", "point") == "point"
+    comma = DecimalComma(reading)
+    texts = {name: Names() for name in further}
+    taken = Taken(SortedRuns(scratch), SetAside(), Tally(), comma, texts)
     for number, file in enumerate(files):
         taken.n_read.append(0)
         for block in file.blocks():
@@ -92,10 +94,8 @@ def take_rows(
             taken.aside.add_rejects(number, block.rejects)
             if len(block.position) == 0:
                 continue
-            if is_first and "return" in block.columns and declared_point:
-                check_decimal_comma(block.columns["return"], reading)
-            is_first = False
             _take_block(block, number, reading, taken, see)
+    comma.judge()
     return taken
 
 
@@ -114,7 +114,7 @@ def _take_block(
     }
     for name in NUMERIC:
         if name in block.columns:
-            columns |= _numbers(name, block, reading, taken.tally, faults)
+            columns |= _numbers(name, block, reading, taken, faults)
     if "return_" in columns:
         see(day, columns["return_"])
     for name, known in taken.texts.items():
@@ -151,7 +151,7 @@ def _is_blank(code: np.ndarray, names: list[str]) -> np.ndarray:
 
 
 def _numbers(
-    name: str, block: RawBlock, reading: dict[str, Any], tally: Tally, faults: FirstFault
+    name: str, block: RawBlock, reading: dict[str, Any], taken: Taken, faults: FirstFault
 ) -> Columns:
     """The values of a numeric column under our name, with the codes for missing beside a return."""
     is_return = name in _RETURNS
@@ -161,10 +161,12 @@ def _numbers(
         thousands=not is_return,
         decimal=reading.get("decimal", "point"),
     )
+    if name == "return":
+        taken.comma.add(block.columns[name], numbers.is_text, numbers.code >= 0)
     said = _written(block, name, f"{reading['columns'][name]} is ")
     faults.note(numbers.is_text, 13, said)
     faults.note(numbers.is_not_finite, 14, said)
-    tally.add(7, numbers.had_thousands.sum())
+    taken.tally.add(7, numbers.had_thousands.sum())
     if not is_return:
         return {name: numbers.value}
     decimal = as_decimal(numbers.value, reading["unit"])

@@ -51,8 +51,8 @@ class SortedRuns:
         order, start = counting_order(rank[security], len(names))
         is_sorted = bool((order[1:] > order[:-1]).all())
         number, self._columns = len(self._runs), list(columns)
-        for name, values in columns.items():
-            self.scratch.keep(f"{number}-{name}", values if is_sorted else values[order])
+        for at, values in enumerate(columns.values()):
+            self.scratch.keep(f"{number}-{at}", values if is_sorted else values[order])
         self._runs.append((ordered, start))
 
     @property
@@ -84,7 +84,8 @@ class SortedRuns:
                     continue
                 security.append(np.repeat(at[low:high] - first, np.diff(start[low : high + 1])))
                 for name, found in pieces.items():
-                    found.append(self.scratch.part(f"{number}-{name}", start[low], start[high]))
+                    kept = f"{number}-{self._columns.index(name)}"
+                    found.append(self.scratch.part(kept, start[low], start[high]))
             together = {name: np.concatenate(found) for name, found in pieces.items()}
             yield names[first:last], np.concatenate(security), together
 

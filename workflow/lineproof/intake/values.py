@@ -17,7 +17,6 @@ from lineproof.intake.stopping import stop
 _PLAIN = r"^[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?$"
 _THOUSANDS = r"^[+-]?[1-9][0-9]{0,2}(?:,[0-9]{3})+(?:\.[0-9]*)?$"
 _NOT_FINITE = r"^[+-]?(?i:inf|infinity|nan)$"
-_DECIMAL_COMMA = r"^[+-]?[0-9]*,[0-9]+$"
 
 YEARS = (1800, 2200)
 _YEAR, _MONTH, _DAY = frozenset("Yy"), frozenset("mbBj"), frozenset("dj")
@@ -143,15 +142,6 @@ def _codes(value: np.ndarray, rest: np.ndarray, other: pa.Array, codes: list[str
 def as_decimal(value: np.ndarray, unit: str) -> np.ndarray:
     """Returns or rates as decimals; `unit` is "decimal" or "percent"."""
     return value / 100 if unit == "percent" else value
-
-
-def share_with_decimal_comma(column: pd.Series | pa.Array) -> float:
-    """Share of the values, blanks aside, that look like `0,015`."""
-    array = _as_array(column)
-    if not (pa.types.is_string(array.type) or pa.types.is_large_string(array.type)):
-        return 0.0
-    given = array.filter(pc.not_equal(array, ""))
-    return float(_matches(given, _DECIMAL_COMMA).mean()) if len(given) else 0.0
 
 
 def to_days(column: pd.Series | pa.Array, dates: str) -> np.ndarray:
