@@ -31,9 +31,11 @@ def main(words: list[str] | None = None) -> int:
     if rest:
         parser.error(f"unknown words: {' '.join(rest)}")
     if given.command == "compile":
-        from lineproof.stats.windows import warm_up
+        from lineproof.intake import frequency, scale
+        from lineproof.stats import windows
 
-        warm_up()
+        for module in (windows, scale, frequency):
+            module.warm_up()
         return 0
     try:
         return _run(given)
