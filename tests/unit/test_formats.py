@@ -403,3 +403,10 @@ def test_reading_can_stop_early(tmp_path: Path, monkeypatch: pytest.MonkeyPatch)
     next(blocks)
     blocks.close()
     assert sum(len(block.position) for block in opened.blocks()) == len(ROWS)
+
+
+def test_days_that_python_does_not_know_are_text_in_raw_rows(tmp_path: Path) -> None:
+    day = pa.array([2**31 - 1], pa.int32()).cast(pa.date32())
+    columns = {"id": ["1"], "day": day, "ret": [0.5], "cap": [1]}
+    file = examples.write_parquet(tmp_path / "r.parquet", columns)
+    assert raw_of(file, [1])[0].startswith("1,")

@@ -117,7 +117,8 @@ def _in_words(error: ValidationError) -> list[Finding]:
             wanted = f"give {' or '.join(_KINDS[kind] for kind in kinds)}"
             if "pattern" in schema and "description" in schema:
                 wanted = schema["description"]
-            return [(place, f"found {_shown(value)}", wanted)]
+            shown = "something else" if schema.get("is_secret") else _shown(value)
+            return [(place, f"found {shown}", wanted)]
         case "minimum" | "exclusiveMinimum" | "maximum" | "exclusiveMaximum":
             return [(place, f"{value} is out of range", _range(schema))]
         case "pattern":

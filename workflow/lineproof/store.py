@@ -219,10 +219,9 @@ def copy_as_csv(table: str | os.PathLike, path: str | os.PathLike) -> None:
     import pyarrow.parquet as pq
 
     with pq.ParquetFile(table) as file:
-        texts = [
-            batch.to_pandas().to_csv(index=False, lineterminator="\n", header=number == 0)
-            for number, batch in enumerate(file.iter_batches(_ROW_GROUP))
-        ] or [file.schema_arrow.empty_table().to_pandas().to_csv(index=False, lineterminator="\n")]
+        frames = (batch.to_pandas() for batch in file.iter_batches(_ROW_GROUP))
+        empty = file.schema_arrow.empty_table().to_pandas()
+        texts = [_as_csv(empty), *(_as_csv(frame, header=False) for frame in frames)]
     write_text("".join(texts), path)
 
 
@@ -280,9 +279,13 @@ def _evenly(schema: pa.Schema, batches: Iterable[pa.RecordBatch]) -> Iterator[pa
 
 def write_csv(frame: pd.DataFrame, path: str | os.PathLike) -> None:
     """Write a frame as CSV at full precision, with UTF-8 and Unix line ends; no text in it is a formula."""
+    write_text(_as_csv(frame), path)
+
+
+def _as_csv(frame: pd.DataFrame, header: bool = True) -> str:
     from lineproof.spreadsheet import texts_as_text
 
-    write_text(texts_as_text(frame).to_csv(index=False, lineterminator="\n"), path)
+    return texts_as_text(frame).to_csv(index=False, lineterminator="\n", header=header)
 
 
 def read_json(path: str | os.PathLike) -> Any:

@@ -15,7 +15,7 @@ from lineproof.intake.reading import open_files
 from lineproof.intake.scale import ScaleEvidence
 from lineproof.intake.stopping import stop
 from lineproof.intake.stream import Intake, Kinds
-from lineproof.intake.unit import judge_unit
+from lineproof.intake.unit import judge_scale
 from lineproof.periods import Months
 from lineproof.store import Scratch
 
@@ -52,10 +52,10 @@ def validate_returns(
     taken = take_rows(
         opened, returns, scratch, lambda day, decimal: scale.add(months.number(day), decimal)
     )
-    judge_unit(scale, returns, returns_frequency)
+    stretches = judge_scale(scale, returns, returns_frequency, rules["other_unit_stop_above"])
     _judge_frequency(taken, returns["label"], returns_frequency)
     kinds = Kinds(frequency, returns_frequency, returns_are, market_build)
-    return Intake(opened, returns, taken, supplied, kinds, rules, scale)
+    return Intake(opened, returns, taken, supplied, kinds, rules, scale, stretches)
 
 
 def _check_names(reading: dict[str, Any]) -> None:

@@ -147,7 +147,7 @@ class _Opened:
     def _saying_what_is_broken(self, items: Iterator[Any]) -> Iterator[Any]:
         try:
             yield from items
-        except (OSError, pa.ArrowException) as error:
+        except (OSError, pa.ArrowException, UnicodeError) as error:
             said = str(error).strip().split("\n")[0].rstrip(".").replace(self._file, self.label)
             change = "is it complete, and what its ending says?"
             raise stop(self.label, f"it cannot be read: {said}", change) from None

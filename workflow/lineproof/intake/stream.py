@@ -27,7 +27,7 @@ from lineproof.intake.screens import Screens
 from lineproof.intake.second_pass import Rules, Tracked, chunks
 from lineproof.intake.stopping import counted
 from lineproof.intake.thin import judge_thin_periods
-from lineproof.intake.unit import judge_stretches, scale_findings
+from lineproof.intake.unit import scale_findings
 from lineproof.intake.unit_by_security import UnitBySecurity
 from lineproof.intake.values import missing_codes
 from lineproof.problems import KnownProblem, Problem
@@ -64,9 +64,10 @@ class Intake:
         kinds: Kinds,
         rules: dict[str, Any],
         scale: ScaleEvidence,
+        stretches: Flag,
     ) -> None:
         self._files, self._reading, self._taken, self._kinds = files, reading, taken, kinds
-        self._rules, self._scale = rules, scale
+        self._rules, self._scale, self._stretches = rules, scale, stretches
         if not taken.n_dated:
             raise self._nothing_kept()
         days, counts = taken.days
@@ -193,9 +194,7 @@ class Intake:
     def _judge(self) -> None:
         """What can be said of the whole only. Raises KnownProblem."""
         label, tally, rules = self._reading["label"], self._taken.tally, self._rules
-        share = rules["other_unit_stop_above"]
-        self._stretches = judge_stretches(self._scale, label, share)
-        self._other_securities = self._units.judge(label, share)
+        self._other_securities = self._units.judge(label, rules["other_unit_stop_above"])
         flags = [self._stretches, self._other_securities, self._thin(), self._other_kind()]
         self._taken.aside.count(self._files, tally)
         for flag in flags:

@@ -81,7 +81,7 @@ class TypedFormat:
                 upto = int(np.searchsorted(places, row + len(table)))
                 found = table.take(places[done:upto] - row)
                 own = found.columns[:-1] if self.marks_blank_rows else found.columns
-                texts = [[self.text_of(value) for value in column.to_pylist()] for column in own]
+                texts = [[self.text_of(value) for value in _values(column)] for column in own]
                 if upto > done:
                     yield [[*fields, *folders] for fields in zip(*texts, strict=True)]
                 row, done = row + len(table), upto
@@ -109,6 +109,14 @@ class TypedFormat:
 def _whole(column: pa.ChunkedArray) -> pa.Array:
     found = column.combine_chunks()
     return found.chunk(0) if isinstance(found, pa.ChunkedArray) else found
+
+
+def _values(column: pa.ChunkedArray) -> list[Any]:
+    """The values of a column; text where there are dates that Python does not know, such as infinity."""
+    try:
+        return column.to_pylist()
+    except (OverflowError, ValueError):
+        return column.cast(pa.string()).to_pylist()
 
 
 def guarded(items: Iterator[Item]) -> Iterator[Item]:
