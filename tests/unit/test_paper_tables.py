@@ -197,6 +197,14 @@ def test_csv_keys_are_ascii() -> None:
         assert not name.endswith(".csv") or text.isascii()
 
 
+def test_no_row_of_latex_begins_with_what_the_row_before_would_swallow(context: Context) -> None:
+    r"""`\\` and the rules read on, over the line break, for `[` and `*`."""
+    for name, text in make_tables(context).items():
+        if name.endswith(".tex"):
+            assert not re.search(r"(\\|\[a-z]+rule|\addlinespace)\s*[\[*]", text)
+    assert latex.escape("[2] *food") == "{[}2] {*}food"
+
+
 def test_latex_is_balanced(context: Context) -> None:
     for name, text in make_tables(context).items():
         if not name.endswith(".tex"):

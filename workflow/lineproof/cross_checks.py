@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 from typing import Any
 
+from lineproof import demo_files
 from lineproof.schema import Finding, nearest
 from lineproof.yamlfile import Place, YamlFile
 
@@ -45,7 +46,9 @@ def _sort_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
         ranked_on = options.get("rank_on")
         if not supplied and ranked_on is not None and ranked_on not in content["betas"]:
             said = f"{ranked_on!r} is not declared under betas"
-            found.append(((*place, "rank_on"), said, nearest(ranked_on, list(content["betas"]))))
+            known = list(content["betas"])
+            change = nearest(ranked_on, known) if known else "declare it there"
+            found.append(((*place, "rank_on"), said, change))
         if not supplied and options["weights"] == "size" and not _has_size(content):
             said = "weights by size need a size column, and data.returns.columns has none"
             change = "add size under data.returns.columns, or use weights: equal"
@@ -55,6 +58,29 @@ def _sort_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
 
 def _has_size(content: dict[str, Any]) -> bool:
     return "size" in content["data"]["returns"]["columns"]
+
+
+_OURS = (
+    *("security", "date", "return", "size", "price", "final_return", "exit_reason"),
+    *("rate", "asset"),
+)
+
+
+def _column_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    """Two of our names for one column of a file; names of the user's own, for screens, may share one."""
+    mapped = {("data", name): options for name, options in content["data"].items()}
+    mapped |= {("portfolios", name): options for name, options in content["portfolios"].items()}
+    found: list[Finding] = []
+    for place, options in mapped.items():
+        taken: dict[str, str] = {}
+        for name, column in options.get("columns", {}).items():
+            if name not in _OURS or not isinstance(column, str):
+                continue
+            if taken.setdefault(column, name) != name:
+                said = f"{column!r} is the column of {taken[column]!r} already"
+                change = "one column cannot be both: change one of the two"
+                found.append(((*place, "columns", name), said, change))
+    return found
 
 
 def _subperiod_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
@@ -96,11 +122,8 @@ def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
 
 
 def _file_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
-    made_in = (
-        Path(results_folder(content["study"]["name"])).resolve() / "raw"
-        if "demo" in content
-        else None
-    )
+    made_in = Path(results_folder(content["study"]["name"])).resolve() / "raw"
+    made = {made_in / name for name in demo_files.RAW} if "demo" in content else set()
     named: list[tuple[Place, str]] = [
         (("data", name), content["data"][name]["file"]) for name in content["data"]
     ]
@@ -112,9 +135,11 @@ def _file_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
     found: list[Finding] = []
     for place, label in named:
         path = (file.path.parent / label).resolve()
-        if path.is_file() or path.parent == made_in:
+        if path in made or (path.is_file() and not (made and path.parent == made_in)):
             continue
         names = sorted(p.name for p in path.parent.iterdir()) if path.parent.is_dir() else []
+        if made and path.parent == made_in:
+            names = list(demo_files.RAW)
         change = (
             nearest(path.name, names)
             if names
@@ -122,6 +147,28 @@ def _file_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
         )
         found.append(((*place, "file"), f"there is no file {label}", change))
     return found
+
+
+def _demo_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    """A span that runs backwards, or is too short for a market of several eras."""
+    demo = content.get("demo")
+    if demo is None:
+        return []
+    first, last = demo["first"], demo["last"]
+    months = _count(last) - _count(first) + 1
+    if months < 1:
+        said, change = f"runs backwards, from {first} to {last}", "swap first and last"
+    elif months < demo_files.SHORTEST:
+        said = f"{first} to {last} is {months} months"
+        change = f"give a span of at least {demo_files.SHORTEST} months"
+    else:
+        return []
+    return [(("demo",), said, change)]
+
+
+def _count(month: str) -> int:
+    year, number = month.split("-")
+    return 12 * int(year) + int(number)
 
 
 # What the schema cannot see; a check runs when the sections it reads are sound.
@@ -132,4 +179,6 @@ CHECKS = (
     ({"intake", "data"}, _screen_findings),
     ({"paper", "portfolios", "subperiods"}, _paper_findings),
     ({"study", "demo", "data", "portfolios"}, _file_findings),
+    ({"data", "portfolios"}, _column_findings),
+    ({"demo"}, _demo_findings),
 )
