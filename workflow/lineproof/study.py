@@ -100,7 +100,6 @@ class Study:
     name: str
     title: str
     market_name: str
-    seed: int
     level: float
     demo: dict[str, Any] | None
     returns: Source
@@ -167,7 +166,7 @@ def _build(content: dict[str, Any], path: Path) -> Study:
     run = content["pricing"]["run"]
     return Study(
         path=path,
-        **{key: content["study"][key] for key in ("name", "title", "market_name", "seed", "level")},
+        **{key: content["study"][key] for key in ("name", "title", "market_name", "level")},
         demo=content.get("demo"),
         returns=_source(data["returns"], path),
         market=_source(data["market"], path),
