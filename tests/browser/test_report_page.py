@@ -12,7 +12,7 @@ from playwright.sync_api import Browser, Page, sync_playwright
 from tests.unit import paper_examples as examples
 
 from lineproof.paper.figures import draw_figures
-from lineproof.paper.report import make_report
+from lineproof.paper.report import write_report
 
 CHROMIUM = (
     shutil.which("chromium") or shutil.which("chromium-browser") or shutil.which("google-chrome")
@@ -36,7 +36,7 @@ def browser() -> Iterator[Browser]:
 def report(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory) -> Path:
     context = request.param()
     path = tmp_path_factory.mktemp("report") / "report.html"
-    path.write_text(make_report(context, draw_figures(context)), encoding="utf-8")
+    path.write_text(write_report(context, draw_figures(context)), encoding="utf-8")
     return path
 
 
