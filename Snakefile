@@ -6,6 +6,7 @@ from pathlib import Path
 HERE = Path(workflow.basedir)
 sys.path.insert(0, str(HERE / "workflow"))
 
+from lineproof import demo_files
 from lineproof.environment import settle
 from lineproof.problems import KnownProblem
 from lineproof.study import load_study

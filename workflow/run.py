@@ -1,7 +1,7 @@
 """Start Lineproof with nothing but Python: `python3 workflow/run.py study` sets up its environment and runs.
 
 Standard library only, since it runs before anything is installed. The environment lies in `.venv` of the project and
-is made again when the pins change.
+is made anew, from nothing, when the pins change.
 """
 
 import hashlib
@@ -44,17 +44,17 @@ def main(words: list[str]) -> int:
 
 def set_up(kind: str) -> str:
     """Make the environment unless it stands; returns what went wrong, in words, or nothing."""
-    enough = (
-        ("run", "test") if kind == "run" else ("test",)
-    )  # the tests' environment also runs studies
-    if any(_is_current(name) for name in enough):
+    # The tests' environment also runs studies.
+    if _is_current("test") or (kind == "run" and _is_current("run")):
         return ""
     print(
         f"Setting up the environment in {ENVIRONMENT.name}; this is done once and takes a minute.",
         file=sys.stderr,
     )
     try:
-        venv.EnvBuilder(with_pip=True, clear=not PYTHON.exists()).create(ENVIRONMENT)
+        # Packages for tests come on top of those of a run; anything else is cleared away first.
+        on_top = any(_is_current(name) for name in PINS)
+        venv.EnvBuilder(with_pip=True, clear=not on_top).create(ENVIRONMENT)
         _run(
             "-m", "pip", "install", "--quiet", "--no-compile", "--require-hashes", "-r", PINS[kind]
         )
@@ -70,14 +70,21 @@ def set_up(kind: str) -> str:
         )
         _run("-m", "lineproof", "compile")
     except (subprocess.CalledProcessError, OSError) as error:
-        said = (
-            error.stderr.strip().splitlines()[-3:]
-            if getattr(error, "stderr", None)
-            else [str(error)]
-        )
-        return "The environment could not be set up:\n  " + "\n  ".join(said)
+        return _said(error)
     _stamp(kind).write_text(_digest(kind), encoding="utf-8")
     return ""
+
+
+def _said(error: subprocess.CalledProcessError | OSError) -> str:
+    """What went wrong, and what to do where that is known; venv leaves the words of pip in `output`."""
+    words = [getattr(error, name, None) for name in ("stderr", "output")]
+    texts = [w.decode(errors="replace") if isinstance(w, bytes) else w for w in words if w]
+    lines = [line for text in texts for line in text.strip().splitlines()[-3:]] or [str(error)]
+    if "ensurepip" in f"{error}{texts}":
+        lines.append(
+            "→ Python lacks what makes environments. On Debian and Ubuntu: apt install python3-venv"
+        )
+    return "The environment could not be set up:\n  " + "\n  ".join(lines)
 
 
 def _stamp(kind: str) -> Path:
@@ -85,7 +92,10 @@ def _stamp(kind: str) -> Path:
 
 
 def _digest(kind: str) -> str:
-    return hashlib.sha256(PINS[kind].read_bytes() + sys.version.encode()).hexdigest()
+    """Of all pins an environment of this kind rests on: the tests' own are compiled on those of a run."""
+    rests_on = [PINS["run"], PINS["test"]] if kind == "test" else [PINS["run"]]
+    pins = b"".join(path.read_bytes() for path in rests_on)
+    return hashlib.sha256(pins + sys.version.encode()).hexdigest()
 
 
 def _is_current(kind: str) -> bool:

@@ -46,8 +46,3 @@ def test_true_size(
     assert _size("wald", n_periods, n_assets) == pytest.approx(wald, abs=0.0005)
     assert _size("lr", n_periods, n_assets) == pytest.approx(lr, abs=0.0005)
     assert _size("lr_corrected", n_periods, n_assets) == pytest.approx(lr_corrected, abs=0.0005)
-
-
-def test_the_f_has_exactly_its_nominal_size() -> None:
-    critical = joint_critical(0.05, 10, 49)
-    assert float(joint_p(critical, 10, 49)) == pytest.approx(0.05, rel=1e-9)

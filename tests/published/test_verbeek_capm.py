@@ -39,3 +39,10 @@ def test_standard_errors(fit: Regression) -> None:
 
 def test_r_squared(fit: Regression) -> None:
     np.testing.assert_allclose(r_squared(fit), [0.598, 0.739, 0.803], atol=PRINTED)
+
+
+def test_betas_without_intercept(fit: Regression) -> None:
+    """Printed as well: a line through the origin has the slope beta + alpha f / (f^2 + V), f and V the market's."""
+    mean, variance = fit.factors.mean(), fit.factor_covariance[0, 0]
+    slopes = fit.betas[0] + fit.alphas * mean / (mean**2 + variance)
+    np.testing.assert_allclose(slopes, [0.790, 1.113, 1.156], atol=PRINTED)

@@ -15,7 +15,7 @@ from lineproof.frequency import FREQUENCIES
 from lineproof.paper.context import Context
 from lineproof.pricing import price_subperiod
 
-HOSTILE = ["<script>alert(1);", "=cmd()|'calc'!A0", "R&D_50%", "{$x^2$}#~\\"]
+HOSTILE = ["<script>alert(1);", "=cmd()|'calc'!A0", "R&D_50%", "{$x^2$}#~\\", "[2] food", "*Star"]
 LONG = "The very long name of an index of everything that has ever been listed anywhere"
 _KEYS = ["sort", "subperiod", "analysis", "variant", "asset", "term", "se_kind"]
 
@@ -252,7 +252,7 @@ def usual() -> Context:
 @cache
 def hostile() -> Context:
     """Supplied assets alone, 25 of them with names meant to break the formats, in one subperiod."""
-    names = [*HOSTILE, LONG, *(f"Asset {place}" for place in range(6, 26))]
+    names = [*HOSTILE, LONG, *(f"Asset {place}" for place in range(8, 26))]
     sorts = {"given": ({"title": f"Supplied {HOSTILE[0]} & co", "design": "supplied"}, names)}
     intake = {**INTAKE, "faults": [], "screens": []}
     return study(

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 import statsmodels.api as sm
+from statsmodels.multivariate.multivariate_ols import _MultivariateOLS
 
 from lineproof.stats import Undefined
 from lineproof.stats.market_line import (
@@ -291,9 +292,33 @@ def test_joint_hypothesis_equals_its_definition(drawn: MarketLine, kind: str) ->
     covariance = LINE_COVARIANCES[kind](drawn, 3)
     gap = drawn.line.coefficients - [0.0, drawn.market.mean()]
     found = sharpe_lintner_wald(drawn, covariance)
-    expected = gap @ np.linalg.inv(covariance.against_market) @ gap
-    assert found.value == pytest.approx(expected, rel=CLOSE)
+    wald = gap @ np.linalg.inv(covariance.against_market) @ gap
+    # Six assets, 90 months.
+    factor, df2 = {"textbook": (1 / 2, 4), "monthly_slopes": (88 / 178, 88)}.get(kind, (1, np.nan))
+    assert found.value == pytest.approx(factor * wald, rel=CLOSE)
     assert found.df1 == 2
+    np.testing.assert_equal(found.df2, df2)
+
+
+def test_the_joint_hypothesis_with_textbook_errors_is_the_f_of_a_general_library() -> None:
+    drawn = _draw("ols", *_returns())
+    found = sharpe_lintner_wald(drawn, LINE_COVARIANCES["textbook"](drawn, 0))
+    wanted = (np.eye(2), np.array([0.0, drawn.market.mean()]))
+    expected = sm.OLS(drawn.line.means, drawn.line.design).fit().f_test(wanted)
+    assert found.value == pytest.approx(float(expected.fvalue), rel=CLOSE)
+    assert (found.df1, found.df2) == (expected.df_num, expected.df_denom)
+
+
+def test_the_joint_hypothesis_of_monthly_slopes_is_hotellings() -> None:
+    """The same F as that of a multivariate regression of the monthly coefficients on a constant."""
+    drawn = _draw("ols", *_returns())
+    found = sharpe_lintner_wald(drawn, LINE_COVARIANCES["monthly_slopes"](drawn, 0))
+    monthly = drawn.regression.returns @ drawn.line.projection.T
+    gaps = monthly - np.outer(drawn.market, [0.0, 1.0])
+    fit = _MultivariateOLS(gaps, np.ones((90, 1))).fit()
+    expected = fit.mv_test().results["x0"]["stat"].loc["Hotelling-Lawley trace"]
+    assert found.value == pytest.approx(float(expected["F Value"]), rel=CLOSE)
+    assert (found.df1, found.df2) == pytest.approx((expected["Num DF"], expected["Den DF"]))
 
 
 def test_pricing_errors_equal_the_pseudo_inverse(drawn: MarketLine) -> None:

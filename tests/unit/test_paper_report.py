@@ -15,7 +15,7 @@ from tests.unit import paper_examples as examples
 from lineproof.paper import answer, html_table
 from lineproof.paper.book import Number
 from lineproof.paper.exhibits import figure_files
-from lineproof.paper.report import make_report
+from lineproof.paper.report import write_report
 
 NAN = float("nan")
 SVG = b'<svg xmlns="x" viewBox="0 0 400 200" version="1.1"><g id="a"/></svg>'
@@ -41,7 +41,7 @@ class Page(HTMLParser):
 
 
 def report_of(context: examples.Context) -> str:
-    return make_report(context, dict.fromkeys(figure_files(context.facts), SVG))
+    return write_report(context, dict.fromkeys(figure_files(context.facts), SVG))
 
 
 @pytest.fixture(params=[examples.usual, examples.hostile], ids=lambda make: make.__name__)
@@ -179,11 +179,11 @@ def test_same_bytes_whatever_the_order_of_hashes() -> None:
         f"sys.path[:0] = {sys.path!r}\n"
         "from tests.unit import paper_examples as examples\n"
         "from lineproof.paper.exhibits import figure_files\n"
-        "from lineproof.paper.report import make_report\n"
-        "from lineproof.paper.tables import make_tables\n"
+        "from lineproof.paper.report import write_report\n"
+        "from lineproof.paper.tables import write_tables\n"
         "context = examples.usual()\n"
         f"figures = dict.fromkeys(figure_files(context.facts), {SVG!r})\n"
-        "text = make_report(context, figures) + ''.join(make_tables(context).values())\n"
+        "text = write_report(context, figures) + ''.join(write_tables(context).values())\n"
         "print(hashlib.sha256(text.encode()).hexdigest())"
     )
     digests = {
@@ -201,4 +201,4 @@ def test_same_bytes_whatever_the_order_of_hashes() -> None:
 
 def test_missing_figure_is_an_error() -> None:
     with pytest.raises(KeyError, match="market_lines"):
-        make_report(examples.usual(), {})
+        write_report(examples.usual(), {})

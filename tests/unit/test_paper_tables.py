@@ -19,7 +19,7 @@ from lineproof.paper.exhibits import table_files
 from lineproof.paper.rounding import printed
 from lineproof.paper.specification import Cell, Column, Panel, Row, Table, explained
 from lineproof.paper.symbols import SYMBOLS, Phrase, said
-from lineproof.paper.tables import build, make_tables
+from lineproof.paper.tables import build, write_tables
 
 STUDIES = [examples.usual, examples.hostile, examples.many]
 
@@ -85,11 +85,11 @@ def numbers_of_latex(text: str) -> Iterator[str]:
 
 
 def test_files_are_those_announced(context: Context) -> None:
-    assert list(make_tables(context)) == table_files(context.facts)
+    assert list(write_tables(context)) == table_files(context.facts)
 
 
 def test_every_number_is_the_rounded_estimate_at_its_address(context: Context) -> None:
-    tables = make_tables(context)
+    tables = write_tables(context)
     for name, table in build(context).items():
         page = Cells(tables[f"{name}.html"]).found
         assert page
@@ -111,7 +111,7 @@ def test_every_number_is_the_rounded_estimate_at_its_address(context: Context) -
 
 
 def test_formats_print_the_same_numbers(context: Context) -> None:
-    tables = make_tables(context)
+    tables = write_tables(context)
     for name in build(context):
         page = [bare(text) for *_, text in Cells(tables[f"{name}.html"]).found]
         sheet = [row["printed"] or "-" for row in rows_of_csv(tables[f"{name}.csv"])]
@@ -176,7 +176,7 @@ def test_latex_escapes(raw: str, tex: str) -> None:
 
 @pytest.mark.fault(38)
 def test_hostile_names_stay_text() -> None:
-    tables = make_tables(examples.hostile())
+    tables = write_tables(examples.hostile())
     for name, text in tables.items():
         if name.endswith(".html"):
             assert "script" not in Cells(text).tags
@@ -189,12 +189,20 @@ def test_hostile_names_stay_text() -> None:
 
 
 def test_csv_keys_are_ascii() -> None:
-    for name, text in make_tables(examples.usual()).items():
+    for name, text in write_tables(examples.usual()).items():
         assert not name.endswith(".csv") or text.isascii()
 
 
+def test_no_row_of_latex_begins_with_what_the_row_before_would_swallow(context: Context) -> None:
+    r"""`\\` and the rules read on, over the line break, for `[` and `*`."""
+    for name, text in write_tables(context).items():
+        if name.endswith(".tex"):
+            assert not re.search(r"(\\|\[a-z]+rule|\addlinespace)\s*[\[*]", text)
+    assert latex.escape("[2] *food") == "{[}2] {*}food"
+
+
 def test_latex_is_balanced(context: Context) -> None:
-    for name, text in make_tables(context).items():
+    for name, text in write_tables(context).items():
         if not name.endswith(".tex"):
             continue
         braces = re.sub(r"\\[{}]", "", text)
@@ -206,14 +214,14 @@ def test_latex_is_balanced(context: Context) -> None:
 
 
 def test_latex_rows_have_one_cell_for_each_column(context: Context) -> None:
-    for name, text in make_tables(context).items():
+    for name, text in write_tables(context).items():
         for letters, cells, _ in rows_of_latex(text) if name.endswith(".tex") else ():
             spans = re.findall(r"\\multicolumn\{(\d+)\}", " ".join(cells))
             assert len(cells) + sum(int(span) - 1 for span in spans) == len(letters)
 
 
 def test_long_tables_are_cut_into_pages_without_losing_a_row() -> None:
-    text = make_tables(examples.many())["alphas_betas.tex"]
+    text = write_tables(examples.many())["alphas_betas.tex"]
     assert text.count(r"\begin{table}") > 1
     assert text.count(r"\label{") == 1
     assert text.count(r"\begin{minipage}") == 1
@@ -257,7 +265,7 @@ def test_an_analysis_that_is_not_run_is_said_so() -> None:
         [examples.subperiod("full", "1990-01", "1999-12")],
         analyses=["describe"],
     )
-    tables = make_tables(context)
+    tables = write_tables(context)
     for name in ("alphas_betas", "joint_tests", "market_line"):
         assert "does not ask for" in tables[f"{name}.html"]
         assert r"\begin{table}" in tables[f"{name}.tex"]

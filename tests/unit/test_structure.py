@@ -74,12 +74,7 @@ def test_a_rule_and_its_script_share_a_name() -> None:
 def test_a_script_is_thin_and_calls_the_function_of_its_name(script: Path) -> None:
     statements = [line for line in script.read_text().splitlines() if line.strip()]
     assert len(statements) <= 15
-    renamed = {
-        "write_tables": "make_tables",
-        "write_report": "make_report",
-        "write_data_report": "make_data_report",
-    }
-    assert renamed.get(script.stem, script.stem) in called(script)
+    assert script.stem in called(script)
     assert not imported(script) & {"pandas", "numpy"}
 
 
@@ -118,7 +113,7 @@ def test_statistics_do_no_input_or_output_and_know_no_study(module: Path) -> Non
 
 
 def test_files_are_written_in_one_place() -> None:
-    """joblog and store_files of a run's own logs aside, only `store` writes."""
+    """Only `store` writes what a study gives; `joblog` writes the logs of its jobs, `locking` its locks."""
     writing = {"write_text", "write_bytes", "to_csv", "to_parquet", "savefig", "write_table"}
     may_write = {"store.py", "joblog.py"}
     found = {
@@ -165,7 +160,6 @@ def test_the_top_level_holds_nothing_unexpected() -> None:
             "workflow",
             "tests",
             "results",
-            "docs",
         ),
         *("pyproject.toml", "Makefile", "LICENSE", "CITATION.cff", ".ci", ".gitignore"),
     }

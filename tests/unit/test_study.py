@@ -134,6 +134,14 @@ def test_paths_are_relative_to_the_study_file(folder: Path) -> None:
             "    → Short name; results go to `results/<name>/`.",
         ),
         (
+            ("study: {", "study: {level: .nan, "),
+            "mine.yaml, line 1, study.level: not a finite number\n    → give a finite number",
+        ),
+        (
+            ("study: {", "study: {level: .inf, "),
+            "mine.yaml, line 1, study.level: not a finite number\n    → give a finite number",
+        ),
+        (
             ("  full: {}", "  Full: {}"),
             "mine.yaml, line 13, subperiods.Full: 'Full' cannot be a name\n"
             "    → a name starts with a small letter, then small letters, digits, _ or - only",
@@ -436,7 +444,7 @@ COLUMNS = "mine.yaml, line 5, data.returns.columns"
         ),
         (
             changed(("size: cap", "size: cap, price: cap")),
-            f"{COLUMNS}.price: the column 'cap' is named as size already\n"
+            f"{COLUMNS}.price: 'cap' is the column of 'size' already\n"
             "    → one column cannot be both: change one of the two",
         ),
         (
@@ -550,3 +558,93 @@ def test_daily_returns_must_exist_and_be_counted_in_days(
     folder: Path, edits: list[tuple[str, str]], expected: str
 ) -> None:
     assert problems(folder, changed(*edits)) == [expected]
+
+
+@pytest.mark.parametrize(
+    ("edit", "place"),
+    [
+        (
+            ("subperiods:", "intake: {screens: [{column: size, at_least: .nan}]}\nsubperiods:"),
+            "intake.screens.0.at_least",
+        ),
+        (
+            ("subperiods:", "intake: {screens: [{column: size, in: [1, -.inf]}]}\nsubperiods:"),
+            "intake.screens.0.in.1",
+        ),
+        (("window: 60", "window: .inf"), "betas.monthly60.window"),
+    ],
+)
+def test_numbers_are_finite_wherever_they_stand(
+    folder: Path, edit: tuple[str, str], place: str
+) -> None:
+    (found,) = problems(folder, changed(edit))
+    assert f"{place}: not a finite number\n    → give a finite number" in found
+
+
+@pytest.mark.parametrize(
+    ("span", "expected"),
+    [
+        ("first: 2024-01, last: 1950-01", "runs backwards, from 2024-01 to 1950-01"),
+        ("first: 2000-02, last: 2004-12", "2000-02 to 2004-12 is 59 months"),
+    ],
+)
+def test_a_demo_market_needs_its_months(folder: Path, span: str, expected: str) -> None:
+    found = problems(folder, changed(("data:\n", f"demo: {{{span}}}\ndata:\n")))
+    assert expected in "\n".join(found)
+    assert "demo" in found[0]
+
+
+def test_a_demo_study_reads_only_what_the_demo_makes(
+    folder: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Not even where an earlier run, or another program, left a file of that name."""
+    monkeypatch.chdir(folder)
+    raw = folder / "results" / "mine" / "raw"
+    raw.mkdir(parents=True)
+    (raw / "retruns.csv").touch()
+    text = changed(
+        ("data:\n", "demo: {}\ndata:\n"), ("returns.csv", "results/mine/raw/retruns.csv")
+    )
+    (found,) = problems(folder, text)
+    assert "there is no file results/mine/raw/retruns.csv\n    → did you mean returns.csv?" in found
+    right = text.replace("retruns", "returns")
+    assert load_study(write(folder, right)).returns.label == "results/mine/raw/returns.csv"
+
+
+@pytest.mark.parametrize(
+    ("edit", "place"),
+    [
+        (("size: cap", "size: ret"), "data.returns.columns.size: 'ret' is the column of 'return'"),
+        (("return: mkt", "return: month"), "data.market.columns.return: 'month' is the column of"),
+    ],
+)
+def test_one_column_is_not_two_things(folder: Path, edit: tuple[str, str], place: str) -> None:
+    (found,) = problems(folder, changed(edit))
+    assert place in found
+
+
+def test_a_column_may_serve_a_screen_as_well(folder: Path) -> None:
+    columns = load_study(
+        write(folder, changed(("size: cap", "size: cap, value: cap")))
+    ).returns.columns
+    assert columns["value"] == columns["size"]
+
+
+def test_a_ranking_without_any_betas_says_where_to_declare_them(folder: Path) -> None:
+    text = changed(("betas:\n  monthly60: {window: 60, min: 24}\n", ""))
+    assert (
+        "'monthly60' is not declared under betas\n    → declare it there"
+        in problems(folder, text)[0]
+    )
+
+
+def test_a_folder_is_no_study_file(tmp_path: Path) -> None:
+    with pytest.raises(KnownProblem, match="a folder\n    → give the study file itself"):
+        load_study(tmp_path)
+
+
+def test_a_byte_that_is_not_utf8_is_said_with_its_line(tmp_path: Path) -> None:
+    path = tmp_path / "mine.yaml"
+    path.write_bytes(GOOD.replace("My study", "Meine Studie \xfc").encode("latin-1"))
+    with pytest.raises(KnownProblem, match=r"mine\.yaml, line 1: a byte that is not UTF-8: 0xfc"):
+        load_study(path)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
+from lineproof import demo_files
 from lineproof.schema import Finding, nearest
 from lineproof.source_checks import source_findings
 from lineproof.yamlfile import Place, YamlFile
@@ -87,7 +88,9 @@ def _sort_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
         ranked_on = options.get("rank_on")
         if not supplied and ranked_on is not None and ranked_on not in content["betas"]:
             said = f"{ranked_on!r} is not declared under betas"
-            found.append(((*place, "rank_on"), said, nearest(ranked_on, list(content["betas"]))))
+            known = list(content["betas"])
+            change = nearest(ranked_on, known) if known else "declare it there"
+            found.append(((*place, "rank_on"), said, change))
         if not supplied and options["weights"] == "size" and not _has_size(content):
             said = "weights by size need a size column, and data.returns.columns has none"
             change = "add size under data.returns.columns, or use weights: equal"
@@ -180,22 +183,6 @@ def _screen_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     ]
 
 
-def _column_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
-    """Columns of the returns that an option needs, and columns that stand for two things."""
-    place: Place = ("data", "returns", "columns")
-    columns = content["data"]["returns"]["columns"]
-    found: list[Finding] = []
-    if isinstance(columns["return"], dict) and "price" not in columns:
-        said = "returns from prices need a price column, and there is none"
-        found.append(((*place, "return"), said, "add price under data.returns.columns"))
-    owners: dict[str, str] = {}
-    for name in (n for n in _MEANT_ONCE if isinstance(columns.get(n), str)):
-        if owners.setdefault(columns[name], name) != name:
-            said = f"the column {columns[name]!r} is named as {owners[columns[name]]} already"
-            found.append(((*place, name), said, "one column cannot be both: change one of the two"))
-    return found
-
-
 _MEANT_ONCE = ("security", "date", "return", "size", "price", "final_return", "exit_reason")
 
 
@@ -217,19 +204,6 @@ def _delisting_findings(content: dict[str, Any], file: YamlFile) -> list[Finding
     return found
 
 
-def _demo_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
-    demo = content.get("demo")
-    if demo is None or demo["first"] <= demo["last"]:
-        return []
-    return [
-        (
-            ("demo",),
-            f"runs backwards, from {demo['first']} to {demo['last']}",
-            "swap first and last",
-        )
-    ]
-
-
 def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     paper = content["paper"]
     return [
@@ -241,6 +215,51 @@ def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
         for key, among in (("main", "portfolios"), ("main_subperiod", "subperiods"))
         if paper.get(key) is not None and paper[key] not in content[among]
     ]
+
+
+_OURS = (
+    *("security", "date", "return", "size", "price", "final_return", "exit_reason"),
+    *("rate", "asset"),
+)
+
+
+def _column_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    """Two of our names for one column of a file; names of the user's own, for screens, may share one."""
+    mapped = {("data", name): options for name, options in content["data"].items()}
+    mapped |= {("portfolios", name): options for name, options in content["portfolios"].items()}
+    found: list[Finding] = []
+    for place, options in mapped.items():
+        taken: dict[str, str] = {}
+        for name, column in options.get("columns", {}).items():
+            if name not in _OURS or not isinstance(column, str):
+                continue
+            if taken.setdefault(column, name) != name:
+                said = f"{column!r} is the column of {taken[column]!r} already"
+                change = "one column cannot be both: change one of the two"
+                found.append(((*place, "columns", name), said, change))
+    return found
+
+
+def _demo_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    """A span that runs backwards, or is too short for a market of several eras."""
+    demo = content.get("demo")
+    if demo is None:
+        return []
+    first, last = demo["first"], demo["last"]
+    months = _count(last) - _count(first) + 1
+    if months < 1:
+        said, change = f"runs backwards, from {first} to {last}", "swap first and last"
+    elif months < demo_files.SHORTEST:
+        said = f"{first} to {last} is {months} months"
+        change = f"give a span of at least {demo_files.SHORTEST} months"
+    else:
+        return []
+    return [(("demo",), said, change)]
+
+
+def _count(month: str) -> int:
+    year, number = month.split("-")
+    return 12 * int(year) + int(number)
 
 
 # What the schema cannot see; a check runs when the sections it reads are sound.

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import copy
 import datetime
+import math
+from collections.abc import Iterator
 from difflib import get_close_matches
 from functools import lru_cache
 from pathlib import Path
@@ -71,9 +73,22 @@ Finding = tuple[Place, str, str]  # place, what was found, what to change
 def schema_findings(file: YamlFile) -> list[Finding]:
     """Every way in which the file breaks the schema."""
     found = [(place, "this key stands twice", "keep one of the two") for place in file.twice]
+    endless = set(_not_finite(file.content))
+    found += [(place, "not a finite number", "give a finite number") for place in endless]
     for error in Draft202012Validator(study_schema()).iter_errors(file.content):
-        found += _in_words(error)
+        if tuple(error.absolute_path) not in endless:
+            found += _in_words(error)
     return found
+
+
+def _not_finite(content: Any, place: Place = ()) -> Iterator[Place]:
+    """Where `.nan` or `.inf` stands: comparisons with limits let the first of them pass."""
+    if isinstance(content, float) and not math.isfinite(content):
+        yield place
+    elif isinstance(content, dict | list):
+        inside = content.items() if isinstance(content, dict) else enumerate(content)
+        for key, value in inside:
+            yield from _not_finite(value, (*place, key))
 
 
 def as_problems(findings: list[Finding], file: YamlFile) -> list[Problem]:

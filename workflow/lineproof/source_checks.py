@@ -6,6 +6,7 @@ import re
 from pathlib import Path
 from typing import Any
 
+from lineproof import demo_files
 from lineproof.intake.formats import given_files, is_pattern, kind_of, members
 from lineproof.problems import KnownProblem
 from lineproof.schema import Finding, nearest
@@ -78,6 +79,10 @@ def _file_findings(
         here = at if isinstance(given, str) else (*at, number)
         path = (folder / label).resolve()
         if path.parent == made_in:
+            if path.name not in demo_files.RAW:
+                found.append(
+                    (here, f"there is no file {label}", nearest(path.name, demo_files.RAW))
+                )
             continue
         inside = [file.resolve() for file, _ in members(folder.resolve() / label, label)]
         there = [file for file in inside if file.is_file()]

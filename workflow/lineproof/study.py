@@ -147,7 +147,6 @@ class Study:
     name: str
     title: str
     market_name: str
-    seed: int
     level: float
     frequency: str
     demo: dict[str, Any] | None
@@ -213,7 +212,7 @@ def load_study(path: str | os.PathLike) -> Study:
     return _build(filled, file.path)
 
 
-_SAME_NAME = ("name", "title", "market_name", "seed", "level", "frequency")
+_SAME_NAME = ("name", "title", "market_name", "level", "frequency")
 
 
 def _build(content: dict[str, Any], path: Path) -> Study:

@@ -49,8 +49,18 @@ def read_yaml(path: Path) -> YamlFile:
         raise KnownProblem(
             headline, [Problem(str(path), "no such file", "check the path")]
         ) from None
-    except (OSError, UnicodeDecodeError) as error:
-        raise KnownProblem(headline, [Problem(str(path), str(error))]) from None
+    except IsADirectoryError:
+        change = "give the study file itself, such as study.yaml in it"
+        raise KnownProblem(headline, [Problem(str(path), "a folder", change)]) from None
+    except UnicodeDecodeError as error:
+        line = error.object[: error.start].count(b"\n") + 1
+        found = f"a byte that is not UTF-8: 0x{error.object[error.start]:02x}"
+        where, change = f"{path.name}, line {line}", "save the file as UTF-8"
+        raise KnownProblem(headline, [Problem(where, found, change)]) from None
+    except OSError as error:
+        found = error.strerror or str(error)
+        problem = Problem(str(path), found, "check the file and its permissions")
+        raise KnownProblem(headline, [problem]) from None
     try:
         loader = SAFE_LOADER(text)
         node = loader.get_single_node()

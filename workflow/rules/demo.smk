@@ -8,11 +8,8 @@ if study.demo is not None:
             pins=wiring.pins,
             code=wiring.code("make_demo"),
         output:
-            raw=[
-                f"{study.raw}/{name}.csv"
-                for name in ("returns", "market", "riskless", "sector_indices")
-            ],
-            truth=[f"{study.raw}/truth_{name}.parquet" for name in ("eras", "betas", "faults")],
+            raw=[f"{study.raw}/{name}" for name in demo_files.RAW],
+            truth=[f"{study.raw}/{name}" for name in demo_files.TRUTH],
         log:
             wiring.path("logs/make_demo.log"),
         benchmark:

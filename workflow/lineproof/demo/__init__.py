@@ -21,9 +21,9 @@ from lineproof.demo.files import (
 )
 from lineproof.demo.securities import draw_panel
 from lineproof.demo.series import draw_market
+from lineproof.demo_files import SHORTEST
 
 SMALLEST, LARGEST = 40, 40_000
-SHORTEST = 60
 
 __all__ = ["make_demo"]
 

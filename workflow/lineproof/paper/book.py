@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from difflib import get_close_matches
 
 import pandas as pd
 
-from lineproof.addresses import KEY_COLUMNS, RESERVED_ASSETS, SEPARATOR
+from lineproof.addresses import KEY_COLUMNS, NUMBER_COLUMNS, RESERVED_ASSETS, SEPARATOR
+from lineproof.analyses import LINE_ERRORS
 
 
 @dataclass(frozen=True)
@@ -69,7 +70,8 @@ class Book:
         if address not in self._places:
             raise KeyError(f"no number at {address}; the nearest is {self._nearest(address)}")
         place = self._places[address]
-        return Number(address, **{name: each[place] for name, each in self._columns.items()})
+        number = Number(address, **{name: each[place] for name, each in self._columns.items()})
+        return _unless_too_short(number)
 
     def has(self, *parts: str) -> bool:
         """Whether there is a number, defined or not, at an address."""
@@ -101,3 +103,20 @@ class Book:
         most = max(shared.values(), default=0)
         close = [known for known, count in shared.items() if count == most]
         return (get_close_matches(address, close, n=1, cutoff=0.0) or ["none"])[0]
+
+
+def _unless_too_short(number: Number) -> Number:
+    """A coefficient of the market line is printed only where its months could support the joint tests.
+
+    With no more months than assets and market the estimates have standard errors, which the table of estimates keeps;
+    but those lean on variances of a handful of months, and a reader would take their t statistics at face value.
+    """
+    _, _, analysis, _, _, _, kind = number.address.split(SEPARATOR)
+    needed = number.n_assets + 2
+    enough = number.n_months >= needed or not number.defined
+    if analysis != "market_line" or kind not in LINE_ERRORS or enough:
+        return number
+    reason = f"needs at least {needed} months for {number.n_assets} assets, has {number.n_months}"
+    return replace(
+        number, **dict.fromkeys(NUMBER_COLUMNS, float("nan")), status="undefined", reason=reason
+    )

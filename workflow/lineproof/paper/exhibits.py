@@ -100,7 +100,7 @@ def figures(facts: Mapping[str, Any]) -> list[Exhibit]:
 
 
 def table_files(facts: Mapping[str, Any]) -> list[str]:
-    """Names of the files that `tables.make_tables` gives."""
+    """Names of the files that `tables.write_tables` gives."""
     return list(_files(tables(facts), TABLE_FORMATS))
 
 

@@ -35,6 +35,8 @@ _SPECIAL = {
     "|": r"\textbar{}",
     '"': r"\textquotedbl{}",
     "`": r"\textasciigrave{}",
+    "[": "{[}",  # the end of a row, and rules, look for either beyond the line break
+    "*": "{*}",
     "–": "--",
     "—": "---",
     "−": "$-$",

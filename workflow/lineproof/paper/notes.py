@@ -126,9 +126,19 @@ def line_hypothesis(context: Context) -> Phrase:
     return said(
         "By the CAPM {gamma0} is zero and {gamma1} is {fbar}, the market’s mean excess return. "
         "Critical values "
-        "are two-sided at the {level}{percent} level; joint {p} is of both hypotheses together.",
+        "are two-sided at the {level}{percent} level; joint {p} is of both hypotheses together{law}.",
         level=share(context.level),
+        law=_joint_law(context.facts["paper"]["line_errors"]),
     )
+
+
+def _joint_law(kind: str) -> Phrase:
+    """Which law the joint p value is taken from."""
+    laws = {
+        "textbook": said(", by {F} with 2 and {N} − 2 degrees of freedom"),
+        "monthly_slopes": said(", by {F} with 2 and {T} − 2 degrees of freedom"),
+    }
+    return laws.get(kind, said(", by {chi2} with 2 degrees of freedom"))
 
 
 def joint_hypothesis(context: Context) -> Phrase:

@@ -18,7 +18,7 @@ from lineproof.paper.specification import cell
 from lineproof.paper.symbols import Phrase, Symbol, said
 
 
-def make_report(context: Context, figures: Mapping[str, bytes]) -> str:
+def write_report(context: Context, figures: Mapping[str, bytes]) -> str:
     """The whole page, with the SVG files among those that `figures.draw_figures` gives.
 
     Raises KeyError if a figure of the study is not among them.

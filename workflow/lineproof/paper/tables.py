@@ -26,7 +26,7 @@ def build(context: Context) -> dict[str, Table]:
     return found
 
 
-def make_tables(context: Context) -> dict[str, str]:
+def write_tables(context: Context) -> dict[str, str]:
     """File name → text of every table: the names that `exhibits.table_files` lists."""
     return {
         f"{stem}.{ending}": RENDERERS[ending](table)

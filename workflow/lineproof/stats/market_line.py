@@ -187,24 +187,31 @@ class LineCovariance:
         coefficients: (2, 2) covariance of (intercept, slope).
         against_market: (2, 2) covariance of (intercept, slope - market mean).
         df: degrees of freedom of Student's t for single coefficients; NaN means standard normal.
+        joint_df: degrees of freedom of F below, for both coefficients; NaN means chi-square(2).
+        joint_factor: what the Wald statistic is multiplied by to follow F(2, joint_df).
     """
 
     coefficients: Floats
     against_market: Floats
     df: float = float("nan")
+    joint_df: float = float("nan")
+    joint_factor: float = 1.0
 
 
 def _textbook(drawn: MarketLine, lag: int) -> LineCovariance:
-    # Takes the market's mean as known as well.
-    covariance = textbook_covariance(drawn.line)
-    return LineCovariance(covariance, covariance, len(drawn.line.means) - 2)
+    # Takes the market's mean as known as well. One variance is estimated, so that half the Wald
+    # statistic is the F of a linear regression.
+    covariance, df = textbook_covariance(drawn.line), len(drawn.line.means) - 2
+    return LineCovariance(covariance, covariance, df, joint_df=df, joint_factor=0.5)
 
 
 def _by_period(drawn: MarketLine, lag: int) -> LineCovariance:
     n_periods = drawn.regression.n_periods
     own, gap = (long_run_sum(each, 0) for each in _slope_deviations(drawn))
     scale = n_periods * (n_periods - 1.0)
-    return LineCovariance(own / scale, gap / scale, n_periods - 1)
+    df = n_periods - 1
+    # A mean of two coefficients over its own estimated covariance: Hotelling's T squared.
+    return LineCovariance(own / scale, gap / scale, df, df - 1, (df - 1) / (2.0 * df))
 
 
 def _by_period_hac(drawn: MarketLine, lag: int) -> LineCovariance:
@@ -280,11 +287,17 @@ LINE_COVARIANCES: dict[str, Callable[[MarketLine, int], LineCovariance]] = {
 
 
 def sharpe_lintner_wald(drawn: MarketLine, covariance: LineCovariance) -> JointStatistic:
-    """Wald statistic of intercept zero and slope equal to the market's mean ~ chi-square(2)."""
+    """Are the intercept zero and the slope the market's mean? A Wald statistic W by its law.
+
+    W ~ chi-square(2) in large samples; with textbook errors W/2 ~ F(2, N-2), with the spread of
+    monthly slopes W (T-2)/(2(T-1)) ~ F(2, T-2) (Hotelling 1931), exact where betas are known and
+    returns are normal.
+    """
     precision = inverse(
         covariance.against_market, reason="the covariance of the coefficients is singular"
     )
-    return JointStatistic(float(drawn.against_market @ precision @ drawn.against_market), 2)
+    wald = float(drawn.against_market @ precision @ drawn.against_market)
+    return JointStatistic(covariance.joint_factor * wald, 2, covariance.joint_df)
 
 
 def pricing_error_chi2(drawn: MarketLine) -> JointStatistic:
