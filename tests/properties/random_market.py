@@ -12,7 +12,7 @@ WINDOW = {"window": 24, "min_obs": 8}
 def _trading_days() -> pd.DatetimeIndex:
     """Two years of a market that opens on Mondays and Thursdays, closed on a few of them within a month."""
     days = pd.date_range("1990-01-01", "1991-12-31", unit="ms")
-    days = days[days.weekday.isin([0, 3])]
+    days = days[days.day_of_week.isin([0, 3])]
     inside = np.append(days.month[1:] == days.month[:-1], False)
     return days[~(inside & (np.arange(len(days)) % 17 == 5))]
 
