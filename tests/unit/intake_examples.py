@@ -140,27 +140,39 @@ def validate(
     return run(
         folder,
         files,
-        frequency="monthly",
         returns=returns_reading(**changes),
-        returns_are="total",
-        returns_frequency="monthly",
-        market_build=None,
-        series={
-            "market": reading("raw/market.csv", {"date": "month", "return": "mkt"}, **series),
-            "market_is": "total",
-            "market_frequency": "monthly",
-            "riskless": reading("raw/riskless.csv", {"date": "month", "rate": "rf"}, **series),
-            "riskless_quoted": "period_return",
-            "riskless_frequency": "monthly",
-        },
+        market=reading("raw/market.csv", {"date": "month", "return": "mkt"}, **series),
+        riskless=reading("raw/riskless.csv", {"date": "month", "rate": "rf"}, **series),
         rules=rules,
     )
 
 
+OF_SERIES: dict[str, Any] = {
+    "market": None,
+    "market_is": "total",
+    "market_frequency": "monthly",
+    "riskless": None,
+    "riskless_quoted": "period_return",
+    "riskless_frequency": "monthly",
+}
+OF_RETURNS: dict[str, Any] = {
+    "frequency": "monthly",
+    "returns_are": "total",
+    "returns_frequency": "monthly",
+    "market_build": None,
+}
+
+
 def run(folder: Path, files: dict[str, list[str]], **options: Any) -> Validated:
-    """Everything that `validate_returns` gives, in the order in which it must be asked for."""
+    """Everything that `validate_returns` gives, in the order in which it must be asked for.
+
+    `options` are its own, those of its `series` among them; left out are the usual ones, as in
+    `OF_SERIES` and `OF_RETURNS`.
+    """
+    series = {name: options.pop(name, usual) for name, usual in OF_SERIES.items()}
+    whole = {**OF_RETURNS, "series": series, **options}
     with Scratch(folder) as scratch:
-        found = validation.validate_returns(files, scratch, **options)
+        found = validation.validate_returns(files, scratch, **whole)
         return Validated(
             panel=pd.concat([piece["panel"] for piece in found.tables()], ignore_index=True),
             market=found.markets()["market"],

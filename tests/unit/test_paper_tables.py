@@ -417,7 +417,7 @@ def test_without_a_riskless_rate_the_sample_shows_a_dash_and_says_why() -> None:
         "riskless_mean",
         "riskless_sd",
     ]
-    text = make_tables(study)["sample.html"]
+    text = write_tables(study)["sample.html"]
     why = "not defined: the study has returns in excess of a riskless rate that is not known"
     assert text.count(why) == 1
     assert (

@@ -111,7 +111,7 @@ def _market_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
         return [
             (place, f"the key {key!r} is missing", change)
             for key in ("file", "columns")
-            if key not in market
+            if key not in market and "columns" not in market
         ]
     change = "remove it, or remove build"
     found: list[Finding] = [

@@ -31,7 +31,7 @@ def source_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
     sources: list[tuple[Place, dict[str, Any], str]] = [
         (("data", name), options, "security" if name == "returns" else "")
         for name, options in content["data"].items()
-        if "build" not in options
+        if "build" not in options and "columns" in options
     ]
     sources += [
         (("portfolios", name), options, "asset")
@@ -55,7 +55,10 @@ def _origin_findings(place: Place, options: dict[str, Any]) -> list[Finding]:
     if {"file", "query"} <= has:
         found.append((place, "has both file and query", "keep one of the two"))
     if not has & {"file", "query"}:
-        found.append((place, "the key 'file' is missing", "add it, or query: with connection:"))
+        change = "add it, or query: with connection:"
+        if place == ("data", "market"):
+            change += ", or build: equal or size to make the market from the returns"
+        found.append((place, "the key 'file' is missing", change))
     if "query" in has and "connection" not in has:
         change = "add it: the name of the environment variable that holds how to connect"
         found.append((place, "the key 'connection' is missing", change))

@@ -106,17 +106,17 @@ class Book:
 
 
 def _unless_too_short(number: Number) -> Number:
-    """A coefficient of the market line is printed only where its months could support the joint tests.
+    """A coefficient of the market line is printed only where its periods could support the joint tests.
 
-    With no more months than assets and market the estimates have standard errors, which the table of estimates keeps;
-    but those lean on variances of a handful of months, and a reader would take their t statistics at face value.
+    With no more periods than assets and market the estimates have standard errors, which the table of estimates keeps;
+    but those lean on variances of a handful of periods, and a reader would take their t statistics at face value.
     """
     _, _, analysis, _, _, _, kind = number.address.split(SEPARATOR)
     needed = number.n_assets + 2
-    enough = number.n_months >= needed or not number.defined
+    enough = number.n_periods >= needed or not number.defined
     if analysis != "market_line" or kind not in LINE_ERRORS or enough:
         return number
-    reason = f"needs at least {needed} months for {number.n_assets} assets, has {number.n_months}"
+    reason = f"needs at least {needed} periods for {number.n_assets} assets, has {number.n_periods}"
     return replace(
         number, **dict.fromkeys(NUMBER_COLUMNS, float("nan")), status="undefined", reason=reason
     )
