@@ -10,7 +10,7 @@ from tests.browser.conftest import DESKTOP, PHONE, asked_and_said, opened, viola
 from tests.unit import record_examples as examples
 from tests.unit.paper_examples import facts, ranked_facts
 
-from lineproof.paper.data_report import make_data_report
+from lineproof.paper.data_report import write_data_report
 
 MAKERS = [examples.usual, examples.daily, examples.hostile, examples.clean]
 
@@ -18,7 +18,7 @@ MAKERS = [examples.usual, examples.daily, examples.hostile, examples.clean]
 @pytest.fixture(scope="module", params=MAKERS, ids=lambda make: make.__name__)
 def report(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory) -> Path:
     path = tmp_path_factory.mktemp("report") / "data_report.html"
-    text = make_data_report(request.param(), facts({"ten": ranked_facts()}))
+    text = write_data_report(request.param(), facts({"ten": ranked_facts()}))
     path.write_text(text, encoding="utf-8")
     return path
 

@@ -22,8 +22,8 @@ from lineproof.gathering import gather_estimates
 from lineproof.paper import exhibits
 from lineproof.paper.context import Context
 from lineproof.paper.figures import draw_figures
-from lineproof.paper.report import make_report
-from lineproof.paper.tables import make_tables
+from lineproof.paper.report import write_report
+from lineproof.paper.tables import write_tables
 from lineproof.periods import periods_of
 from lineproof.pricing import price_subperiod
 from lineproof.sampling import describe_sample
@@ -147,7 +147,7 @@ def test_numbers_count_days(made: Made) -> None:
 def test_the_paper_speaks_of_days(made: Made) -> None:
     figures = draw_figures(made.context)
     assert set(figures) == set(exhibits.figure_files(made.context.facts))
-    texts = [make_report(made.context, figures), *make_tables(made.context).values()]
+    texts = [write_report(made.context, figures), *write_tables(made.context).values()]
     # Months remain where groups are held for twelve of them.
     monthly = re.compile(r"monthly|(?<!12 )\bmonths?\b", re.IGNORECASE)
     for text in texts:
@@ -168,7 +168,7 @@ def test_the_paper_speaks_of_days(made: Made) -> None:
 
 
 def test_means_of_days_print_with_four_digits(made: Made) -> None:
-    table = make_tables(made.context)["market_line.csv"]
+    table = write_tables(made.context)["market_line.csv"]
     slope = made.context.book.at(
         *("four", "full", "market_line", "ols", "all", "slope", "errors_in_variables")
     )

@@ -14,7 +14,7 @@ import pytest
 from tests.unit import record_examples as examples
 from tests.unit.paper_examples import facts, ranked_facts
 
-from lineproof.paper.data_report import SECTIONS, make_data_report
+from lineproof.paper.data_report import SECTIONS, write_data_report
 
 FACTS = facts({"ten": ranked_facts()})
 MAKERS = [
@@ -94,7 +94,7 @@ def leaves(thing: Any, pointer: str = "") -> dict[str, float]:
 @pytest.fixture(params=MAKERS, ids=lambda make: make.__name__, scope="module")
 def case(request: pytest.FixtureRequest) -> tuple[dict[str, Any], str, Page]:
     intake = request.param()
-    text = make_data_report(intake, FACTS)
+    text = write_data_report(intake, FACTS)
     return intake, text, Page(text)
 
 
@@ -204,37 +204,37 @@ def test_rows_that_do_not_add_up_are_never_printed(key: str) -> None:
     for intake in (examples.usual(), examples.earlier()):
         (intake["files"][0] if "files" in intake else intake)[key] += 1
         with pytest.raises(ValueError, match=r"rows of raw/returns.csv do not add up"):
-            make_data_report(intake, FACTS)
+            write_data_report(intake, FACTS)
 
 
 def test_survivors_are_warned_of_before_all_else() -> None:
-    text = make_data_report(examples.daily(), FACTS)
+    text = write_data_report(examples.daily(), FACTS)
     main = text.split("<main>")[1]
     assert main.index("No security ever leaves.") < main.index("<h2")
     assert "there to the last day" in main
-    assert 'class="warning"' not in make_data_report(examples.usual(), FACTS)
+    assert 'class="warning"' not in write_data_report(examples.usual(), FACTS)
 
 
 def test_span_is_said() -> None:
-    words = Page(make_data_report(examples.usual(), FACTS)).words
+    words = Page(write_data_report(examples.usual(), FACTS)).words
     assert "where raw/market.csv ends: the study ends there." in words
 
 
 def test_effect_of_final_returns_is_taken_before_rounding() -> None:
     intake = examples.usual()
-    words = " ".join(Page(make_data_report(intake, FACTS)).words.split())
+    words = " ".join(Page(write_data_report(intake, FACTS)).words.split())
     assert (
         "0.8123 % a month with the final returns used, and 0.8877 % without any: a difference of −0.0753"
         in (words.replace("\N{NARROW NO-BREAK SPACE}", " "))
     )
     intake["delisting"]["mean_with"] = None
-    assert "difference of" not in make_data_report(intake, FACTS)
+    assert "difference of" not in write_data_report(intake, FACTS)
 
 
 def test_parts_without_evidence_are_left_out() -> None:
     every = [section.id for section in SECTIONS]
     shown = {
-        make: [i for i in Page(make_data_report(make(), FACTS)).ids if i in every]
+        make: [i for i in Page(write_data_report(make(), FACTS)).ids if i in every]
         for make in MAKERS
     }
     assert shown[examples.usual] == every
@@ -243,7 +243,7 @@ def test_parts_without_evidence_are_left_out() -> None:
 
 
 def test_clean_data_are_said_to_be() -> None:
-    words = Page(make_data_report(examples.clean(), FACTS)).words
+    words = Page(write_data_report(examples.clean(), FACTS)).words
     assert "No row had a fault." in words
     assert "No row is set aside." in words
 
@@ -266,7 +266,7 @@ def test_ids_are_unique_and_every_link_arrives(case) -> None:
 def test_names_from_the_data_are_text() -> None:
     intake = examples.hostile()
     intake["set_aside"][0]["examples"][0]["raw"] = f"A&amp;B,{examples.HOSTILE}"
-    text = make_data_report(intake, {**FACTS, "title": examples.HOSTILE})
+    text = write_data_report(intake, {**FACTS, "title": examples.HOSTILE})
     page = Page(text)
     assert "<script" not in text
     assert f"A&amp;B,{examples.HOSTILE}" in page.words
@@ -285,8 +285,8 @@ def test_same_bytes_whatever_the_order_of_hashes() -> None:
     code = (
         "import hashlib, sys\n"
         f"sys.path[:0] = {sys.path!r}\n"
-        "from tests.unit.test_data_report import FACTS, examples, make_data_report\n"
-        "print(hashlib.sha256(make_data_report(examples.usual(), FACTS).encode()).hexdigest())"
+        "from tests.unit.test_data_report import FACTS, examples, write_data_report\n"
+        "print(hashlib.sha256(write_data_report(examples.usual(), FACTS).encode()).hexdigest())"
     )
     digests = {
         subprocess.run(

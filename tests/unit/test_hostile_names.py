@@ -16,8 +16,8 @@ from lineproof.checking import describe_intake
 from lineproof.paper import latex
 from lineproof.paper.context import Context
 from lineproof.paper.exhibits import figure_files
-from lineproof.paper.report import make_report
-from lineproof.paper.tables import make_tables
+from lineproof.paper.report import write_report
+from lineproof.paper.tables import write_tables
 from lineproof.spreadsheet import as_text
 
 NAMES = ["<script>alert(1);", "=cmd()|'calc'!A0", "R&D_50%", "+1+1", "@SUM(1)", "-2-3"]
@@ -72,7 +72,7 @@ def context() -> Context:
 
 @pytest.mark.fault(38)
 def test_tables_print_them_as_text(context: Context) -> None:
-    tables = make_tables(context)
+    tables = write_tables(context)
     whole = {
         ending: "".join(text for file, text in tables.items() if file.endswith(ending))
         for ending in (".html", ".tex", ".csv")
@@ -92,6 +92,6 @@ def test_tables_print_them_as_text(context: Context) -> None:
 @pytest.mark.fault(38)
 def test_the_report_prints_them_as_text(context: Context) -> None:
     svg = b'<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 1 1"></svg>'
-    page = make_report(context, dict.fromkeys(figure_files(context.facts), svg))
+    page = write_report(context, dict.fromkeys(figure_files(context.facts), svg))
     assert "<script" not in page
     assert html.escape(NAMES[0]) in page

@@ -63,7 +63,7 @@ def test_a_line_of_too_few_months_is_kept_in_the_estimates_and_not_printed(
     assert found["status"].tolist() == ["ok"]
     number = book.at(address)
     assert not number.defined
-    assert number.reason == "needs at least 9 months for 7 assets, has 6"
+    assert number.reason == "needs at least 9 periods for 7 assets, has 6"
     assert not number.rejects(0.99)
     assert all(pd.isna(getattr(number, name)) for name in NUMBER_COLUMNS)
     assert book.at("sectors/short/market_line/-/all/market_mean/-").defined

@@ -33,7 +33,7 @@ class Section:
     build: Builder
 
 
-def make_data_report(intake: Intake, facts: dict[str, Any]) -> str:
+def write_data_report(intake: Intake, facts: dict[str, Any]) -> str:
     """The whole page from the record of the intake and what `lineproof.facts.facts` says of the study.
 
     Raises ValueError when the rows of a file do not add up.
