@@ -12,7 +12,7 @@ from lineproof.planning import most_steps
 from lineproof.problems import KnownProblem
 from lineproof.progress import CURRENT
 from lineproof.study import load_study
-from lineproof.wiring import Wiring, subperiod_names
+from lineproof.wiring import Wiring, raw_files, subperiod_names
 
 settle(os.environ)
 

@@ -41,7 +41,7 @@ def test_before_the_subperiods_are_cut_the_most_there_can_be_is_said() -> None:
     stream = io.StringIO()
     progress = Progress(stream)
     progress.most = Most(6, sure=True)
-    progress.planned({"validate_returns": 1, "cut_subperiods": 1, "study": 1})
+    progress.planned({"validate_returns": 1, "study": 1})
     steps = ["validate_returns", "cut_subperiods", "price_subperiod", "gather_estimates"]
     for job, (step, total) in enumerate(zip(steps, (3, 3, 5, 5), strict=True), start=1):
         progress.started(job, step, {})

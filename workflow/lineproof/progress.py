@@ -12,7 +12,7 @@ from lineproof.joblog import MESSAGE_ENDING
 from lineproof.planning import Most
 
 _TARGETS = {"study", "data"}
-_CHECKPOINTS = {"validate_returns", "cut_subperiods"}  # what runs below them is not known before
+_CHECKPOINTS = ("validate_returns", "cut_subperiods")  # what runs below them is not known before
 
 
 class Progress:
@@ -35,7 +35,9 @@ class Progress:
         self.total = max(self.total, self.done + steps)
         if "data" in stats:  # the target ends at its checkpoint
             self.most = None
-        self._ahead |= _CHECKPOINTS & set(stats)
+        for place, name in enumerate(_CHECKPOINTS):
+            if name in stats:  # those below it are not planned yet
+                self._ahead |= set(_CHECKPOINTS[place:])
 
     def started(self, job: int, rule: str, wildcards: Mapping[str, str]) -> None:
         """A job begins."""

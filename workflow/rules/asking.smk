@@ -23,22 +23,29 @@ def after_cutting(names):
     return after(["validate_returns", "cut_subperiods"], names)
 
 
-def raw(source):
-    """A raw file. Its digest says when it has changed, not its time; only the demo market's files are made here."""
-    return source.file if study.is_made(source) else ancient(source.file)
+def made(*sources):
+    """Those raw files that the demo market makes. Others are no inputs, whose times the scheduler would hold against
+    the outputs: their digests are."""
+    return [file for source in sources if study.is_made(source) for file in raw_files(source)]
 
 
 def sort_inputs(wildcards):
-    """What a set of test assets is made from: tables of ours, or a raw file."""
+    """What a set of test assets is made from: tables of ours, or a raw file if it is made here."""
     checkpoints.validate_returns.get()
     supplied = study.sorts[wildcards.sort].source
-    return [raw(supplied)] if supplied else list(wiring.sort_inputs(wildcards.sort).values())
+    return made(supplied) if supplied else list(wiring.sort_inputs(wildcards.sort).values())
 
 
 def sort_digests(wildcards):
-    """The digests of the raw file that a set of test assets is made from, where it is."""
+    """The digests of the raw files that a set of test assets is made from, where it is."""
     supplied = study.sorts[wildcards.sort].source
     return wiring.raw_digests(f"portfolios.{wildcards.sort}") if supplied else []
+
+
+def sort_sources(wildcards):
+    """Paths of what a set of test assets is made from."""
+    supplied = study.sorts[wildcards.sort].source
+    return raw_files(supplied) if supplied else list(wiring.sort_inputs(wildcards.sort).values())
 
 
 def priced(wildcards):

@@ -3,9 +3,7 @@
 
 checkpoint validate_returns:
     input:
-        returns=raw(study.returns),
-        market=raw(study.market),
-        riskless=raw(study.riskless),
+        made=made(study.returns, study.market, study.riskless),
         digests=wiring.raw_digests("data.returns", "data.market", "data.riskless"),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
@@ -21,6 +19,7 @@ checkpoint validate_returns:
     benchmark:
         wiring.path("benchmarks/validate_returns.tsv")
     params:
+        files={name: raw_files(getattr(study, name)) for name in ("returns", "market", "riskless")},
         options=wiring.options("validate_returns"),
     script:
         "../scripts/validate_returns.py"

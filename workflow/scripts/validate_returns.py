@@ -5,8 +5,7 @@ from lineproof.validation import validate_returns
 
 with joblog.job(snakemake), store.Scratch(Path(snakemake.output.panel).parent) as scratch:
     out = snakemake.output
-    files = {name: [snakemake.input[name]] for name in ("returns", "market", "riskless")}
-    found = validate_returns(files, scratch, **snakemake.params.options)
+    found = validate_returns(snakemake.params.files, scratch, **snakemake.params.options)
     store.write_together(found.tables(), {"panel": out.panel})
     store.write_table(found.market(), out.market, "market")
     store.write_together(found.set_aside(), {"set_aside": out.set_aside})
