@@ -8,7 +8,9 @@ sys.path.insert(0, str(HERE / "workflow"))
 
 from lineproof import demo_files
 from lineproof.environment import settle
+from lineproof.planning import most_steps
 from lineproof.problems import KnownProblem
+from lineproof.progress import CURRENT
 from lineproof.study import load_study
 from lineproof.wiring import Wiring, subperiod_names
 
@@ -45,6 +47,9 @@ include: "workflow/rules/portfolios.smk"
 include: "workflow/rules/subperiods.smk"
 include: "workflow/rules/pricing.smk"
 include: "workflow/rules/paper.smk"
+
+
+CURRENT.most = most_steps(study, [rule.wildcard_names for rule in workflow.rules if rule.script])
 
 
 rule study:

@@ -58,6 +58,31 @@ def test_tables_fit_a_desktop_page(browser: Browser, report: Path) -> None:
     assert wide == []
 
 
+@pytest.mark.parametrize("name", ["table-joint_tests", "table-market_line"])
+def test_columns_of_panels_line_up(browser: Browser, report: Path, name: str) -> None:
+    page = opened(browser, report, viewport=DESKTOP)
+    edges = page.evaluate(
+        f"[...document.querySelectorAll('#{name} table')].map(t =>"
+        " [...t.querySelectorAll('.heads > *')].map(c => c.getBoundingClientRect().right))"
+    )
+    assert edges
+    for others in edges[1:]:
+        # A pixel: where the page is narrow, text of another length moves a column by less than that.
+        assert others == pytest.approx(edges[0], abs=1.0)
+
+
+def test_a_label_that_is_set_in_keeps_its_indent_on_every_line(
+    browser: Browser, report: Path
+) -> None:
+    page = opened(browser, report, viewport=PHONE)
+    starts = page.evaluate(
+        "[...document.querySelectorAll('th.under')].map(c => { const r = document.createRange();"
+        " r.selectNodeContents(c); return [c.getBoundingClientRect().left,"
+        " ...[...r.getClientRects()].slice(1).map(b => b.left)]; })"
+    )
+    assert all(line > left + 5 for left, *lines in starts for line in lines)
+
+
 def test_the_page_has_no_script(browser: Browser, report: Path) -> None:
     page = opened(browser, report)
     handlers = "[...document.querySelectorAll('*')].flatMap(e => e.getAttributeNames())"

@@ -61,7 +61,9 @@ class Run:
 
     @property
     def steps(self) -> list[str]:
-        return re.findall(r"^\[\s*\d+/\d+\] (.+)$", self.text, flags=re.MULTILINE)
+        return re.findall(
+            r"^\[\s*\d+/(?:at most |about )?\d+\] (.+)$", self.text, flags=re.MULTILINE
+        )
 
     @property
     def rules(self) -> set[str]:

@@ -12,12 +12,12 @@ from lineproof.addresses import address
 from lineproof.analyses import ANALYSES
 from lineproof.pricing import price_subperiod
 from lineproof.stats.covariance import long_run_sum
+from lineproof.stats.fitted_line import fit_line
 from lineproof.stats.joint_alpha import ALPHA_STATISTICS, hac_wald, measure_alphas
 from lineproof.stats.market_line import (
     LINE_COVARIANCES,
     WEIGHTINGS,
     draw_line,
-    fit_line,
     pricing_error_chi2,
     sharpe_lintner_wald,
 )

@@ -15,7 +15,7 @@ import pytest
 
 from lineproof.forming import form_portfolios
 from lineproof.pricing import price_subperiod
-from lineproof.stats.market_line import fit_line, textbook_covariance
+from lineproof.stats.fitted_line import fit_line, textbook_covariance
 from lineproof.study import load_study
 from lineproof.subperiods import cut_subperiods
 from lineproof.wiring import Wiring

@@ -16,11 +16,11 @@ import numpy as np
 import pytest
 
 from lineproof.stats.distributions import joint_p
+from lineproof.stats.fitted_line import fit_line
 from lineproof.stats.market_line import (
     LINE_COVARIANCES,
     WEIGHTINGS,
     draw_line,
-    fit_line,
     pricing_error_chi2,
     pricing_error_f,
     sharpe_lintner_wald,

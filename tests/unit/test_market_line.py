@@ -8,18 +8,16 @@ import statsmodels.api as sm
 from statsmodels.multivariate.multivariate_ols import _MultivariateOLS
 
 from lineproof.stats import Undefined
+from lineproof.stats.fitted_line import fit_line, line_r_squared, textbook_covariance
 from lineproof.stats.market_line import (
     LINE_COVARIANCES,
     WEIGHTINGS,
     MarketLine,
     draw_line,
-    fit_line,
     influences,
-    line_r_squared,
     pricing_error_chi2,
     pricing_error_f,
     sharpe_lintner_wald,
-    textbook_covariance,
 )
 from lineproof.stats.time_series import regress
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import io
 from pathlib import Path
 
+from lineproof.planning import Most
 from lineproof.progress import Progress
 
 
@@ -33,6 +34,52 @@ def test_the_count_grows_when_more_steps_become_known() -> None:
     progress.finished(1)
     progress.counted(1, 8)  # seven jobs are left, one of which is the target
     assert (progress.done, progress.total) == (1, 7)
+
+
+def test_before_the_subperiods_are_cut_the_most_there_can_be_is_said() -> None:
+    """The denominator never grows: it is a bound at first, and the scheduler's count once that is complete."""
+    stream = io.StringIO()
+    progress = Progress(stream)
+    progress.most = Most(6, sure=True)
+    progress.planned({"validate_returns": 1, "study": 1})
+    steps = ["validate_returns", "cut_subperiods", "price_subperiod", "gather_estimates"]
+    for job, (step, total) in enumerate(zip(steps, (3, 3, 5, 5), strict=True), start=1):
+        progress.started(job, step, {})
+        progress.finished(job)
+        progress.counted(job, total)
+    assert stream.getvalue().splitlines() == [
+        "[1/at most 6] validate returns",
+        "[2/at most 6] cut subperiods",
+        "[3/at most 6] price subperiod",
+        "[4/4] gather estimates",
+    ]
+
+
+def test_a_bound_that_is_not_sure_is_about() -> None:
+    stream = io.StringIO()
+    progress = Progress(stream)
+    progress.most = Most(6, sure=False)
+    progress.planned({"cut_subperiods": 1, "study": 1})
+    progress.started(1, "cut_subperiods", {})
+    assert stream.getvalue() == "[1/about 6] cut subperiods\n"
+
+
+def test_without_a_checkpoint_ahead_the_count_is_exact() -> None:
+    stream = io.StringIO()
+    progress = Progress(stream)
+    progress.most = Most(6, sure=True)
+    progress.planned({"write_tables": 1, "write_report": 1, "study": 1})
+    progress.started(1, "write_tables", {})
+    assert stream.getvalue() == "[1/2] write tables\n"
+
+
+def test_a_check_ends_at_its_checkpoint() -> None:
+    stream = io.StringIO()
+    progress = Progress(stream)
+    progress.most = Most(6, sure=True)
+    progress.planned({"validate_returns": 1, "data": 1})
+    progress.started(1, "validate_returns", {})
+    assert stream.getvalue() == "[1/1] validate returns\n"
 
 
 def test_a_terminal_shows_one_line_that_is_rewritten_and_cleared() -> None:

@@ -27,6 +27,7 @@ from lineproof.stats import market_line as lines
 from lineproof.stats import time_series as series
 from lineproof.stats.covariance import COEFFICIENT_COVARIANCES, automatic_lag, deviations
 from lineproof.stats.distributions import JointStatistic
+from lineproof.stats.fitted_line import line_r_squared
 
 Floats = NDArray[np.float64]
 
@@ -290,7 +291,7 @@ def _line_rows(assets: _AllAssets, variant: str, weighting: lines.Weighting) -> 
         return _joint_numbers(test(draw()))
 
     def fit() -> dict[str, float]:
-        return {"estimate": lines.line_r_squared(draw().line, weighting.metric(assets.regression))}
+        return {"estimate": line_r_squared(draw().line, weighting.metric(assets.regression))}
 
     for term, (family, number) in LINE_TERMS.items():
         for kind in lines.LINE_COVARIANCES:

@@ -9,8 +9,10 @@ from pathlib import Path
 from typing import TextIO
 
 from lineproof.joblog import MESSAGE_ENDING, without_message
+from lineproof.planning import Most
 
 _TARGETS = {"study", "data"}
+_CHECKPOINTS = ("validate_returns", "cut_subperiods")  # what runs below them is not known before
 
 
 class Progress:
@@ -20,6 +22,10 @@ class Progress:
         self.stream = stream or sys.stderr
         self.running: dict[int, str] = {}
         self.done, self.total = 0, 0
+        self.most: Most | None = None  # steps of a whole run
+        self._ahead: set[str] = set()  # checkpoints that are still to be passed
+        self._open_until = 0  # steps done, after which the scheduler's count holds
+        self._rules: dict[int, str] = {}
         self.failures: list[str] = []
         self.other: list[str] = []
 
@@ -27,11 +33,17 @@ class Progress:
         """The scheduler's count of jobs by rule; targets are no steps."""
         steps = sum(n for rule, n in stats.items() if rule not in {*_TARGETS, "total"})
         self.total = max(self.total, self.done + steps)
+        if "data" in stats:  # the target ends at its checkpoint
+            self.most = None
+        for place, name in enumerate(_CHECKPOINTS):
+            if name in stats:  # those below it are not planned yet
+                self._ahead |= set(_CHECKPOINTS[place:])
 
     def started(self, job: int, rule: str, wildcards: Mapping[str, str]) -> None:
         """A job begins."""
         if rule in _TARGETS:
             return
+        self._rules[job] = rule
         self.running[job] = " ".join([rule.replace("_", " "), *map(str, wildcards.values())])
         if self._rewrites():
             self._rewrite()
@@ -42,6 +54,7 @@ class Progress:
         """A job is done."""
         if self.running.pop(job, None) is not None:
             self.done += 1
+            self._pass(self._rules.pop(job))
             if self._rewrites():
                 self._rewrite()
 
@@ -71,9 +84,24 @@ class Progress:
             self._line(text)
         return bool(self.failures or self.other)
 
+    def _pass(self, rule: str) -> None:
+        """What a checkpoint brings is in the scheduler's count when the step after it is done."""
+        if rule in self._ahead:
+            self._ahead.discard(rule)
+            self._open_until = self.done + 1
+
+    @property
+    def _is_open(self) -> bool:
+        """Whether more steps may become known than the scheduler has counted."""
+        return bool(self._ahead) or self.done < self._open_until
+
     def _count(self, step: int) -> str:
-        total = max(self.total, step)
-        return f"[{step:>{len(str(total))}}/{total}]"
+        if self.most is None or not self._is_open:
+            total, word = max(self.total, step), ""
+        else:
+            total = max(self.most.steps, self.total, step)
+            word = "at most " if self.most.sure and total == self.most.steps else "about "
+        return f"[{step:>{len(str(total))}}/{word}{total}]"
 
     def _rewrites(self) -> bool:
         return self.stream.isatty()

@@ -137,6 +137,13 @@ class Wiring:
         }
 
     @property
+    def raw_files(self) -> dict[str, list[str]]:
+        """The raw files of returns, market and riskless rate, none where the study has none."""
+        study = self.study
+        sources = {"returns": study.returns, "market": study.market, "riskless": study.riskless}
+        return {name: list(source.files) if source else [] for name, source in sources.items()}
+
+    @property
     def panels(self) -> dict[str, str]:
         """The panel, and the panel of days beside it where a study of months is delivered days; by name."""
         names = (

@@ -23,18 +23,18 @@ def after_cutting(names):
     return after(["validate_returns", "cut_subperiods"], names)
 
 
-def raw(source):
-    """Raw files. Their digests say when they have changed, not their times; only the demo market's are made here."""
-    if source is None:
-        return []
-    files = list(source.files)
-    return files if study.is_made(source) else [ancient(file) for file in files]
+def made(*sources):
+    """Those raw files that the demo market makes. Others are no inputs, whose times the scheduler would hold against
+    the outputs: their digests are."""
+    here = [source for source in sources if source is not None and study.is_made(source)]
+    return [file for source in here for file in source.files]
 
 
 def sort_inputs(wildcards):
-    """What a set of test assets is made from: tables of ours, or a raw file."""
+    """What a set of test assets is made from: tables of ours, or a raw file if it is made here."""
+    checkpoints.validate_returns.get()
     supplied = study.sorts[wildcards.sort].source
-    return raw(supplied) if supplied else wiring.sort_inputs(wildcards.sort)
+    return made(supplied) if supplied else wiring.sort_inputs(wildcards.sort)
 
 
 def beta_inputs(wildcards):
@@ -44,9 +44,15 @@ def beta_inputs(wildcards):
 
 
 def sort_digests(wildcards):
-    """The digests of the raw file that a set of test assets is made from, where it is."""
+    """The digests of the raw files that a set of test assets is made from, where it is."""
     supplied = study.sorts[wildcards.sort].source
     return wiring.raw_digests(f"portfolios.{wildcards.sort}") if supplied else []
+
+
+def sort_sources(wildcards):
+    """Paths of what a set of test assets is made from."""
+    supplied = study.sorts[wildcards.sort].source
+    return list(supplied.files) if supplied else wiring.sort_inputs(wildcards.sort)
 
 
 def priced(wildcards):

@@ -3,9 +3,7 @@
 
 checkpoint validate_returns:
     input:
-        returns=raw(study.returns),
-        market=raw(study.market),
-        riskless=raw(study.riskless),
+        made=made(study.returns, study.market, study.riskless),
         digests=wiring.raw_digests("data.returns", "data.market", "data.riskless"),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
@@ -21,8 +19,8 @@ checkpoint validate_returns:
     benchmark:
         wiring.path("benchmarks/validate_returns.tsv")
     params:
+        files=wiring.raw_files,
         options=wiring.options("validate_returns"),
-        files=["returns", "market", "riskless"],
     script:
         "../scripts/validate_returns.py"
 

@@ -17,6 +17,7 @@ rule form_portfolios:
     benchmark:
         wiring.path("benchmarks/form_portfolios-{sort}.tsv")
     params:
+        sources=sort_sources,
         options=lambda wildcards: wiring.options(f"form_portfolios-{wildcards.sort}"),
     script:
         "../scripts/form_portfolios.py"

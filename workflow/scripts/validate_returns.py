@@ -5,8 +5,7 @@ from lineproof.validation import validate_returns
 
 with joblog.job(snakemake), store.Scratch(Path(snakemake.output.panel).parent) as scratch:
     out, options = dict(snakemake.output.items()), snakemake.params.options
-    files = {name: list(snakemake.input.get(name, [])) for name in snakemake.params.files}
-    found = validate_returns(files, scratch, **options)
+    found = validate_returns(snakemake.params.files, scratch, **options)
     panels = {name: out[name] for name in ("panel", "daily") if name in out}
     store.write_together(found.tables(), panels, options["frequency"])
     for name, market in found.markets().items():

@@ -8,9 +8,10 @@ from pathlib import Path
 
 from lineproof.paper.rounding import DASH
 from lineproof.paper.specification import Cell, Panel, Row, Table
-from lineproof.paper.symbols import Phrase, Symbol
+from lineproof.paper.symbols import SYMBOLS, Phrase, Symbol
 
 TEMPLATES = Path(__file__).parent / "templates"
+_LONG_LABEL = 26  # characters of a row's label that may be broken into lines
 _KINDS = {"round": ' class="br"', "square": ' class="bs"'}
 
 
@@ -47,8 +48,10 @@ def _source(cell: Cell) -> str:
 def fragment(table: Table) -> str:
     """The table with caption, panels and notes as one element; its ids derive from its name."""
     name = f"table-{table.name}"
+    widths = _widths(table)
     panels = "".join(
-        _panel(panel, f"{name}-{place}") for place, panel in enumerate(table.panels, start=1)
+        _panel(panel, f"{name}-{place}", widths)
+        for place, panel in enumerate(table.panels, start=1)
     )
     notes = " ".join(phrase(note) for note in table.notes)
     return (
@@ -70,17 +73,39 @@ def document(table: Table) -> str:
     )
 
 
-def _panel(panel: Panel, name: str) -> str:
+def _widths(table: Table) -> list[int]:
+    """Characters to keep for each column where all panels have the same ones, so that they line up; else none."""
+    first, *others = table.panels or (None,)
+    if not others or any((p.stubs, p.columns) != (first.stubs, first.columns) for p in others):
+        return []
+    rows = [row for panel in table.panels for row in panel.rows]
+    labels = [
+        max(min(each.length, _LONG_LABEL) * 3 // 4 for each in column)
+        for column in zip(*(r.labels for r in rows), strict=True)
+    ]
+    cells = [
+        max(len(each.text) + sum(map(len, each.brackets)) for each in column)
+        for column in zip(*(r.cells for r in rows), strict=True)
+    ]
+    return [*labels, *cells]
+
+
+def _panel(panel: Panel, name: str, widths: list[int]) -> str:
     name = escape(name)
     caption = f"{name.rsplit('-', 1)[0]}-0"
     title = f'<p class="panel" id="{name}">{phrase(panel.title)}</p>\n' if panel.title else ""
     labelled = f"{caption} {name}" if panel.title else caption
     rows = "".join(_row(row) for row in panel.rows)
     columns = len(panel.columns)
+    kept = "".join(
+        f'<col style="width:calc({width}ch + {0.7 if columns > 9 else 1.0}rem)">'
+        for width in widths
+    )
+    kept = f"<colgroup>{kept}</colgroup>\n" if kept else ""
     kind = "scroll slim" if columns < 3 else "scroll wide" if columns > 9 else "scroll"
     return (
         f'{title}<div class="{kind}" tabindex="0" role="region" aria-labelledby="{labelled}">\n'
-        f"<table>\n<thead>\n{''.join(_head(panel))}</thead>\n<tbody>\n{rows}</tbody>\n</table>\n</div>\n"
+        f"<table>\n{kept}<thead>\n{''.join(_head(panel))}</thead>\n<tbody>\n{rows}</tbody>\n</table>\n</div>\n"
     )
 
 
@@ -110,9 +135,16 @@ def _long(label: Phrase, most: int) -> str:
     return ' class="long"' if label.length > most else ""
 
 
+def _label(label: Phrase) -> str:
+    """The classes of a row's label: one that is set in keeps its indent on every line."""
+    under = ["under"] if label[0] is SYMBOLS["indent"] else []
+    classes = " ".join([*(["long"] if label.length > _LONG_LABEL else []), *under])
+    return f' class="{classes}"' if classes else ""
+
+
 def _row(row: Row) -> str:
     labels = "".join(
-        f'<th scope="row"{_long(label, 26)}>{phrase(label)}</th>'
+        f'<th scope="row"{_label(label)}>{phrase(label)}</th>'
         if label
         else '<td class="stub"></td>'
         for label in row.labels
