@@ -15,12 +15,14 @@ settle(os.environ)
 
 try:
     study = load_study(config.get("study", HERE / "config" / "kestrel.yaml"))
+    wiring = Wiring(study)
+    # Once a run: what changes while jobs run must look changed at the next start.
+    if workflow.is_main_process:
+        wiring.keep_options()
+        wiring.keep_digests()
+        wiring.heal()
 except KnownProblem as problem:
     raise WorkflowError(str(problem)) from None
-
-wiring = Wiring(study)
-wiring.keep_options()
-wiring.heal()
 
 
 wildcard_constraints:

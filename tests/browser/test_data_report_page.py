@@ -1,4 +1,4 @@
-"""The data report in a real browser: quiet, offline, accessible, on a phone, in the dark and in print."""
+"""The data report in a real browser: offline, quiet, without scripts, accessible, on a phone, dark and printed."""
 
 from __future__ import annotations
 

@@ -6,6 +6,7 @@ import hashlib
 import os
 import re
 import shutil
+import signal
 import subprocess
 import sys
 import textwrap
@@ -17,6 +18,7 @@ import pytest
 from lineproof.demo import make_demo
 
 ROOT = Path(__file__).parents[2]
+HANG = 6 * 3600  # seconds; no measure of speed, only the end of a run that hangs
 LAST_OF_FIRST_DELIVERY = "2003-11"
 
 STUDY = textwrap.dedent(
@@ -86,16 +88,21 @@ class Project:
         known = {k: v for k, v in os.environ.items() if k not in ("PYTHONPATH", "NUMBA_CACHE_DIR")}
         env = {**known, "PYTHONPATH": str(self.folder / "workflow"), **environ}
         extra = ["--cores", str(cores)] if words[0] in ("study", "check") else []
-        done = subprocess.run(
+        with subprocess.Popen(
             [sys.executable, "-m", "lineproof", *words, *extra],
             cwd=self.folder,
             env=env,
-            capture_output=True,
+            stdout=subprocess.PIPE,
+            stderr=subprocess.PIPE,
             text=True,
-            timeout=300,
-            check=False,
-        )
-        return Run(done.returncode, done.stderr + done.stdout)
+            start_new_session=True,
+        ) as running:
+            try:
+                out, err = running.communicate(timeout=HANG)
+            except subprocess.TimeoutExpired:
+                os.killpg(running.pid, signal.SIGKILL)
+                raise
+        return Run(running.returncode, err + out)
 
     def run(self, **options: object) -> Run:
         """Run the study; it must succeed."""
@@ -146,13 +153,13 @@ def _after(line: str, last: str) -> bool:
     return month is not None and month[0] > last
 
 
-def copy_program(folder: Path) -> Project:
-    """The program without results, with the small study's file."""
+def copy_program(folder: Path, study: str = STUDY) -> Project:
+    """The program without results, with a small study's file."""
     ignored = shutil.ignore_patterns("__pycache__")
     shutil.copytree(ROOT / "workflow", folder / "workflow", ignore=ignored)
     shutil.copy2(ROOT / "Snakefile", folder / "Snakefile")
     project = Project(folder)
-    project.study.write_text(STUDY, encoding="utf-8")
+    project.study.write_text(study, encoding="utf-8")
     return project
 
 

@@ -7,12 +7,12 @@ import os
 import signal
 import subprocess
 import sys
-import time
 
 import pytest
 from tests.pipeline.conftest import Project
 
 
+@pytest.mark.fault(33)
 def test_an_unsound_study_file_runs_nothing(project: Project) -> None:
     project.edit("small.yaml", "groups: 5}", "grops: 5}")
     result = project.lineproof("study", "small.yaml")
@@ -56,6 +56,7 @@ def test_a_mended_file_makes_the_same_command_work(project: Project) -> None:
     assert project.hashes("estimates.parquet", "report.html", "data") == before
 
 
+@pytest.mark.fault(33)
 def test_a_subperiod_outside_the_data_is_said(project: Project) -> None:
     project.edit("small.yaml", "early: {to: 1997-12}", "early: {from: 1950-01, to: 1959-12}")
     result = project.lineproof("study", "small.yaml")
@@ -64,6 +65,7 @@ def test_a_subperiod_outside_the_data_is_said(project: Project) -> None:
     assert "Traceback" not in result.text
 
 
+@pytest.mark.fault(33)
 def test_more_groups_than_securities_is_said(project: Project) -> None:
     project.edit("small.yaml", "groups: 5}", "groups: 90}")
     result = project.lineproof("study", "small.yaml")
@@ -71,6 +73,7 @@ def test_more_groups_than_securities_is_said(project: Project) -> None:
     assert "portfolios.five.groups: 90 groups, but at most" in result.text
 
 
+@pytest.mark.fault(37)
 def test_a_second_run_of_a_study_leaves(project: Project) -> None:
     with (project.results / ".running").open("a") as handle:
         fcntl.flock(handle, fcntl.LOCK_EX)
@@ -89,9 +92,16 @@ def test_check_reads_the_data_and_runs_no_more(project: Project) -> None:
     assert "a date that does not parse" in result.text
 
 
-@pytest.mark.parametrize("after", [1.5, 3.0, 4.5, 6.0])
-def test_a_killed_run_is_finished_by_the_same_command(project: Project, after: float) -> None:
-    """Killed without warning at some moment, with all its jobs; the bytes are those of an undisturbed run."""
+@pytest.mark.fault(36)
+@pytest.mark.parametrize("whole", [True, False], ids=["with its jobs", "alone"])
+@pytest.mark.parametrize("step", ["validate returns", "estimate betas", "price subperiod"])
+def test_a_killed_run_is_finished_by_the_same_command(
+    project: Project, step: str, whole: bool
+) -> None:
+    """Killed without warning as a step begins, with all its jobs or the main process alone, as for want of memory.
+
+    The bytes are those of an undisturbed run.
+    """
     parts = (
         "data",
         "betas",
@@ -106,19 +116,21 @@ def test_a_killed_run_is_finished_by_the_same_command(project: Project, after: f
     for part in (
         "data/panel.parquet",
         "betas/monthly36.parquet",
+        "pricing/full.parquet",
         "estimates.parquet",
         "report.html",
     ):
         (project.results / part).unlink()
-    running = subprocess.Popen(
+    with subprocess.Popen(
         [sys.executable, "-m", "lineproof", "study", "small.yaml", "--cores", "2"],
         cwd=project.folder,
         env={**os.environ, "PYTHONPATH": str(project.folder / "workflow")},
-        stderr=subprocess.DEVNULL,
+        stderr=subprocess.PIPE,
+        text=True,
         start_new_session=True,
-    )
-    time.sleep(after)
-    os.killpg(running.pid, signal.SIGKILL)
-    running.wait()
+    ) as running:
+        assert running.stderr is not None
+        assert any(step in line for line in running.stderr), f"{step} never began"
+        os.killpg(running.pid, signal.SIGKILL) if whole else running.kill()
     project.run()
     assert project.hashes(*parts) == before

@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 import shutil
 
+import pytest
 from tests.pipeline.conftest import Project, deliver
 
 PAPER = {"write tables", "draw figures", "write report", "write data report"}
@@ -31,9 +32,46 @@ def test_nothing_changed_nothing_runs(project: Project) -> None:
     assert "nothing to do" in result.text
 
 
-def test_a_touched_raw_file_runs_nothing_below_validation(project: Project) -> None:
+def test_a_touched_raw_file_runs_nothing(project: Project) -> None:
     touch(project.folder / "raw" / "returns.csv")
-    assert project.run().rules <= {"validate returns"}
+    assert project.run().steps == []
+
+
+@pytest.mark.parametrize("forgetful", [False, True], ids=["memory", "no memory"])
+@pytest.mark.parametrize("years", [-30, 0, 30], ids=["older", "equal", "newer"])
+def test_other_raw_content_is_noticed_whatever_its_time(
+    project: Project, years: int, forgetful: bool
+) -> None:
+    """As when a file is unpacked or moved in that was made before the last run; `.snakemake` may be lost as well."""
+    path = project.folder / "raw" / "market.csv"
+    header, *rows = path.read_text().splitlines(keepends=True)
+    before = path.stat()
+    path.write_text("".join([header, *reversed(rows)]))
+    os.utime(path, ns=(before.st_atime_ns, before.st_mtime_ns + years * 365 * 86400 * 10**9))
+    if forgetful:
+        shutil.rmtree(project.folder / ".snakemake")
+    assert "validate returns" in project.lineproof("check", "small.yaml").rules
+    assert project.lineproof("check", "small.yaml").steps == []
+
+
+def test_a_supplied_file_of_older_date_forms_its_assets_again(project: Project) -> None:
+    path = project.folder / "raw" / "sector_indices.csv"
+    header, *rows = path.read_text().splitlines(keepends=True)
+    path.write_text("".join([header, *reversed(rows)]))
+    os.utime(path, (0, 0))
+    assert project.run().steps[:1] == ["form portfolios sectors"]
+
+
+def test_code_of_older_date_is_noticed(project: Project) -> None:
+    file = "workflow/lineproof/paper/latex.py"
+    project.append(file, "\n# An edit.\n")
+    os.utime(project.folder / file, (0, 0))
+    assert "write tables" in project.run().rules
+
+
+def test_other_pins_make_everything_anew(project: Project) -> None:
+    project.append("workflow/envs/requirements.txt", "# Another pin.\n")
+    assert {"validate returns", "gather estimates", *PAPER} <= project.run().rules
 
 
 def test_reordered_raw_rows_run_validation_only(project: Project) -> None:

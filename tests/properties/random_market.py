@@ -9,14 +9,28 @@ MONTHS = pd.date_range("1990-01-31", periods=66, freq="ME", unit="ms")
 WINDOW = {"window": 24, "min_obs": 8}
 
 
-def draw_market(seed: int) -> tuple[pd.DataFrame, pd.DataFrame]:
+def _trading_days() -> pd.DatetimeIndex:
+    """Two years of a market that opens on Mondays and Thursdays, closed on a few of them within a month."""
+    days = pd.date_range("1990-01-01", "1991-12-31", unit="ms")
+    days = days[days.weekday.isin([0, 3])]
+    inside = np.append(days.month[1:] == days.month[:-1], False)
+    return days[~(inside & (np.arange(len(days)) % 17 == 5))]
+
+
+DAYS = _trading_days()
+DATES = {"monthly": MONTHS, "daily": DAYS}
+WINDOWS = {"monthly": WINDOW, "daily": {"window": 40, "min_obs": 15}}
+
+
+def draw_market(seed: int, frequency: str = "monthly") -> tuple[pd.DataFrame, pd.DataFrame]:
     """Panel, sorted by security and date, and market of a few dozen securities; decimal returns."""
     rng = np.random.default_rng(seed)
+    dates = DATES[frequency]
     market = pd.DataFrame(
         {
-            "date": MONTHS,
-            "market_excess": rng.normal(0.005, 0.045, len(MONTHS)),
-            "riskless": rng.uniform(0.001, 0.006, len(MONTHS)),
+            "date": dates,
+            "market_excess": rng.normal(0.005, 0.045, len(dates)),
+            "riskless": rng.uniform(0.001, 0.006, len(dates)),
         }
     )
     parts = [_security(f"S{k:02d}", market, rng) for k in range(int(rng.integers(15, 30)))]

@@ -12,9 +12,9 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from tests.unit import intake_examples as examples
+from tests.unit.intake_examples import Validated
 
 from lineproof.problems import KnownProblem
-from lineproof.validation import Validated
 
 SCREENS = [{"column": "price", "at_least": 1}, {"column": "sector", "not_in": ["banks"]}]
 COLUMNS = {**examples.COLUMNS, "sector": "sector"}
@@ -95,18 +95,26 @@ def counts(found: Validated) -> dict[str, Any]:
 
 
 @settings(max_examples=60, deadline=None)
-@given(rows=deliveries, spoilt=spoilers, keep=st.sampled_from(["set_aside", "first", "last"]))
+@given(
+    rows=deliveries,
+    spoilt=spoilers,
+    keep=st.sampled_from(["set_aside", "first", "last"]),
+    at_most=st.sampled_from([1, 2, 5, 1000]),
+)
 def test_no_row_is_lost(
     tmp_path_factory: pytest.TempPathFactory,
     rows: list[tuple[str, ...]],
     spoilt: list[str],
     keep: str,
+    at_most: int,
 ) -> None:
     folder = tmp_path_factory.mktemp("delivery")
     written = [*map(as_line, rows), *spoilt]
     random.Random(len(written)).shuffle(written)
     text = examples.lines(*written, header=HEADER)
-    found = outcome(folder, text, same_month_rows=keep)
+    with pytest.MonkeyPatch.context() as patch:
+        examples.in_pieces(patch, at_most)
+        found = outcome(folder, text, same_month_rows=keep)
     if isinstance(found, list):
         return
     n_rows = sum(bool(line.strip()) for line in written)
@@ -138,6 +146,35 @@ def test_the_order_of_rows_does_not_matter(
     first = outcome(folder, examples.lines(*written, header=HEADER))
     random.Random(seed).shuffle(written)
     check_same(first, outcome(folder, examples.lines(*written, header=HEADER)))
+
+
+@settings(max_examples=40, deadline=None)
+@given(
+    # Whether a file has decimal commas is judged by its first piece, so none may look like it.
+    rows=deliveries.filter(lambda rows: all(fields[2] != "1,234" for fields in rows)),
+    spoilt=spoilers,
+    keep=st.sampled_from(["set_aside", "first", "last"]),
+    hole=st.sampled_from(["keep", "set_aside"]),
+    at_most=st.integers(1, 6),
+)
+def test_pieces_do_not_show(
+    tmp_path_factory: pytest.TempPathFactory,
+    rows: list[tuple[str, ...]],
+    spoilt: list[str],
+    keep: str,
+    hole: str,
+    at_most: int,
+) -> None:
+    folder = tmp_path_factory.mktemp("pieces")
+    text = examples.lines(*map(as_line, rows), *spoilt, header=HEADER)
+    options = {"same_month_rows": keep, "return_after_hole": hole, "stale_run": 2}
+    whole = outcome(folder, text, **options)
+    with pytest.MonkeyPatch.context() as patch:
+        examples.in_pieces(patch, at_most)
+        cut = outcome(folder, text, **options)
+    check_same(whole, cut)
+    if isinstance(whole, Validated) and isinstance(cut, Validated):
+        assert examples.aside(whole) == examples.aside(cut)
 
 
 @settings(max_examples=40, deadline=None)

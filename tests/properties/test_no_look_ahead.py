@@ -16,7 +16,7 @@ import pandas as pd
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from tests.properties.random_market import MONTHS, WINDOW, draw_market
+from tests.properties.random_market import DATES, WINDOWS, draw_market
 
 from lineproof import store
 from lineproof.designs import DESIGNS, WEIGHTS
@@ -26,8 +26,9 @@ from lineproof.forming import form_portfolios
 from lineproof.sorting import Sorted
 
 SEEDS = st.integers(0, 2**32 - 1)
-# Late enough for a first formation and a month held after it, early enough for months to change.
-CUTS = st.integers(30, len(MONTHS) - 2)
+# The place of the cut in the calendar: late enough for a first formation and a return after it in
+# any month of the year, early enough for later values to change.
+CUTS = st.floats(0.5, 1.0, exclude_max=True)
 FEW = settings(max_examples=15, deadline=None, derandomize=True)
 Market = tuple[pd.DataFrame, pd.DataFrame]
 
@@ -74,31 +75,47 @@ def changed_market(market: Market, change: str, cut: pd.Timestamp, seed: int) ->
     return panel, factor
 
 
+def cut_at(dates: pd.DatetimeIndex, at: float) -> pd.Timestamp:
+    """A date that has at least one later one of another month."""
+    last = int((dates < dates[-1].replace(day=1)).sum()) - 1
+    return dates[int(at * last)]
+
+
 @pytest.mark.parametrize("change", list(CHANGES))
+@pytest.mark.parametrize(
+    ("returns", "dated"), [("monthly", "monthly"), ("daily", "daily"), ("daily", "monthly")]
+)
 @pytest.mark.parametrize("estimator", list(ESTIMATORS))
 @FEW
 @given(seed=SEEDS, at=CUTS)
-def test_betas(estimator: str, change: str, seed: int, at: int) -> None:
-    market, cut = draw_market(seed), MONTHS[at]
+def test_betas(estimator: str, returns: str, dated: str, change: str, seed: int, at: float) -> None:
+    market, cut = draw_market(seed, returns), cut_at(DATES[returns], at)
+    if dated != returns:  # a month is dated by its last day, which is no trading day
+        cut += pd.offsets.MonthEnd(0)
+    options = {**WINDOWS[returns], "returns": returns, "dated": dated}
     before, after = (
-        estimate_betas(*each, name="short", estimator=estimator, **WINDOW)
+        estimate_betas(*each, name="short", estimator=estimator, **options)
         for each in (market, changed_market(market, change, cut, seed))
     )
     assert_identical_until(before, after, "date", cut)
     assert not before.equals(after)  # the change does reach what is dated later
 
 
-def single_window(market: Market, weights: str, form_month: int, folder: Path) -> Sorted:
+def single_window(
+    market: Market, frequency: str, weights: str, form_month: int, folder: Path
+) -> Sorted:
     panel, factor = market
-    betas = estimate_betas(panel, factor, name="short", estimator="ols", **WINDOW)
+    options = {**WINDOWS[frequency], "returns": frequency, "dated": frequency}
+    betas = estimate_betas(panel, factor, name="short", estimator="ols", **options)
     sources = [str(folder / "panel.parquet"), str(folder / "betas.parquet")]
     store.write_table(panel, sources[0], None)
-    store.write_table(betas, sources[1], "betas")
+    store.write_table(betas, sources[1], "betas", frequency)
     options = {"name": "three", "groups": 3, "form_month": form_month, "hold": 12}
+    options["frequency"] = frequency
     return form_portfolios(sources, factor, design="single_window", weights=weights, **options)
 
 
-def supplied(market: Market, weights: str, form_month: int, folder: Path) -> Sorted:
+def supplied(market: Market, frequency: str, weights: str, form_month: int, folder: Path) -> Sorted:
     """The first securities of the panel stand for supplied assets, which nobody weighs or forms."""
     panel, factor = market
     columns = {"asset": "security", "date": "date", "return": "total_return"}
@@ -118,7 +135,7 @@ def supplied(market: Market, weights: str, form_month: int, folder: Path) -> Sor
 
 
 # How each design is fed from a panel and a market. A new design needs a line here.
-FED: dict[str, Callable[[Market, str, int, Path], Sorted]] = {
+FED: dict[str, Callable[[Market, str, str, int, Path], Sorted]] = {
     "single_window": single_window,
     "supplied": supplied,
 }
@@ -130,16 +147,23 @@ def test_every_design_is_tried() -> None:
 
 @pytest.mark.parametrize("change", list(CHANGES))
 @pytest.mark.parametrize("weights", list(WEIGHTS))
-@pytest.mark.parametrize("design", list(DESIGNS))
+# Supplied series of days are the intake's to read.
+@pytest.mark.parametrize(
+    ("design", "frequency"),
+    [*((design, "monthly") for design in DESIGNS), ("single_window", "daily")],
+)
 @FEW
 @given(seed=SEEDS, at=CUTS, form_month=st.integers(1, 12))
 def test_test_assets(
-    design: str, weights: str, change: str, seed: int, at: int, form_month: int
+    design: str, frequency: str, weights: str, change: str, seed: int, at: float, form_month: int
 ) -> None:
-    market, cut = draw_market(seed), MONTHS[at]
+    if frequency == "daily":  # two years: a first estimate by May, and a month held before the cut
+        form_month = 5 + form_month % 6
+        at = 0.55 + 0.45 * at
+    market, cut = draw_market(seed, frequency), cut_at(DATES[frequency], at)
     with tempfile.TemporaryDirectory() as folder:
         before, after = (
-            FED[design](each, weights, form_month, Path(folder))
+            FED[design](each, frequency, weights, form_month, Path(folder))
             for each in (market, changed_market(market, change, cut, seed))
         )
     if len(before.members):

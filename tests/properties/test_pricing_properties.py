@@ -32,10 +32,10 @@ CLOSE = 1e-7
 
 def _fit(seed: int, n_factors: int = 1) -> Regression:
     rng = np.random.default_rng(seed)
-    n_months, n_assets = int(rng.integers(40, 90)), int(rng.integers(3, 8))
-    factors = rng.normal(0.005, 0.04, (n_months, n_factors))
+    n_periods, n_assets = int(rng.integers(40, 90)), int(rng.integers(3, 8))
+    factors = rng.normal(0.005, 0.04, (n_periods, n_factors))
     betas = rng.uniform(0.3, 1.7, (n_factors, n_assets))
-    noise = rng.normal(0.0, 0.03, (n_months, n_assets))
+    noise = rng.normal(0.0, 0.03, (n_periods, n_assets))
     return regress(0.003 + factors @ betas + noise, factors)
 
 
@@ -83,9 +83,9 @@ def test_factors_added_to_the_assets_change_no_alpha(seed: int) -> None:
 def test_large_sample_statistics_are_ordered(
     distance: float, n_assets: int, n_factors: int, spare: int
 ) -> None:
-    n_months = n_assets + n_factors + spare
+    n_periods = n_assets + n_factors + spare
     values = {
-        name: statistic(distance, n_months, n_assets, n_factors).value
+        name: statistic(distance, n_periods, n_assets, n_factors).value
         for name, statistic in ALPHA_STATISTICS.items()
     }
     assert values["lm"] <= values["lr"] <= values["wald"]
@@ -121,7 +121,7 @@ def test_pricing_errors_weigh_the_same_contrasts_whatever_the_weights(seed: int)
     values = [pricing_error_chi2(each).value * (1 + each.correction) for each in drawn]
     np.testing.assert_allclose(values, values[0], rtol=CLOSE)
     gls = drawn[-1].line
-    quadratic = fit.n_months * gls.residuals @ gls.weights @ gls.residuals
+    quadratic = fit.n_periods * gls.residuals @ gls.weights @ gls.residuals
     assert values[0] == pytest.approx(quadratic, rel=CLOSE)
 
 
@@ -133,24 +133,24 @@ def test_the_market_s_own_error_cancels_from_the_slope_less_its_mean(seed: int) 
         drawn = draw_line(fit, weighting)
         found = LINE_COVARIANCES["errors_in_variables"](drawn, 0)
         difference = found.coefficients - found.against_market
-        market = np.diag([0.0, fit.factors.var() / fit.n_months])
+        market = np.diag([0.0, fit.factors.var() / fit.n_periods])
         np.testing.assert_allclose(difference, market, rtol=CLOSE, atol=1e-18)
 
 
-def _cut(seed: int, n_months: int, n_assets: int, share_missing: float) -> pd.DataFrame:
+def _cut(seed: int, n_periods: int, n_assets: int, share_missing: float) -> pd.DataFrame:
     rng = np.random.default_rng(seed)
     # Coarse returns: ties, constants and copies happen.
-    returns = np.round(rng.normal(0.005, 0.05, (n_months, n_assets)), int(rng.integers(1, 6)))
+    returns = np.round(rng.normal(0.005, 0.05, (n_periods, n_assets)), int(rng.integers(1, 6)))
     returns[rng.random(returns.shape) < share_missing] = np.nan
     if n_assets > 1 and rng.random() < 0.3:
         returns[:, -1] = returns[:, 0]
-    market = np.round(rng.normal(0.005, 0.05, n_months), int(rng.integers(1, 6)))
-    market[rng.random(n_months) < share_missing / 4] = np.nan
-    dates = pd.date_range("1970-01-31", periods=n_months, freq="ME")
+    market = np.round(rng.normal(0.005, 0.05, n_periods), int(rng.integers(1, 6)))
+    market[rng.random(n_periods) < share_missing / 4] = np.nan
+    dates = pd.date_range("1970-01-31", periods=n_periods, freq="ME")
     return pd.DataFrame(
         {
             "sort": "some",
-            "asset": np.tile([f"p{number}" for number in range(n_assets)], n_months),
+            "asset": np.tile([f"p{number}" for number in range(n_assets)], n_periods),
             "date": np.repeat(dates, n_assets),
             "excess_return": returns.ravel(),
             "market_excess": np.repeat(market, n_assets),
@@ -162,9 +162,9 @@ def _cut(seed: int, n_months: int, n_assets: int, share_missing: float) -> pd.Da
 @settings(max_examples=80, deadline=None, derandomize=True)
 @given(SEEDS, st.integers(1, 14), st.integers(1, 6), st.sampled_from([0.0, 0.1, 0.5]))
 def test_any_sample_gives_numbers_or_reasons(
-    seed: int, n_months: int, n_assets: int, share_missing: float
+    seed: int, n_periods: int, n_assets: int, share_missing: float
 ) -> None:
-    cut = _cut(seed, n_months, n_assets, share_missing)
+    cut = _cut(seed, n_periods, n_assets, share_missing)
     priced = price_subperiod(
         cut, subperiod="full", level=0.05, hac_lag=None, analyses=list(ANALYSES)
     )

@@ -9,6 +9,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from lineproof.stats.betas import RollingBetas, rolling_ols
+from lineproof.stats.windows import WindowEnds
 
 SEEDS = st.integers(0, 2**32 - 1)
 MANY = settings(max_examples=60, deadline=None, derandomize=True)
@@ -156,3 +157,40 @@ def test_later_months_and_other_securities_leave_an_estimate_alone(seed: int) ->
     n = len(alone.row)
     for name in ("row", "n_obs", *FIELDS):
         assert getattr(whole, name)[:n].tobytes() == getattr(alone, name).tobytes()
+
+
+@MANY
+@given(SEEDS)
+def test_a_window_may_end_where_the_security_has_no_row(seed: int) -> None:
+    """Before its first row, in a hole or after its last row: the same as with an empty row there, to the last bit."""
+    case = draw(seed)
+    rng = np.random.default_rng(seed)
+    parts, ends, is_row = [], [], []
+    for first, last in zip(case.starts[:-1], case.starts[1:], strict=True):
+        rows = case.period[first:last]
+        span = np.arange(rows[0] - 3, rows[-1] + 2 * case.window)
+        wanted = np.sort(rng.choice(span, int(rng.integers(0, len(span))), replace=False))
+        ends.append(wanted)
+        parts.append(np.union1d(rows, wanted[wanted > rows[0]]))
+        is_row.append(np.isin(parts[-1], rows))
+    filled, there = np.concatenate(parts), np.concatenate(is_row)
+    excess, market = (np.full(len(filled), np.nan) for _ in range(2))
+    excess[there], market[there] = case.excess, case.market
+    starts = np.cumsum([0, *map(len, parts)])
+    options = {"window": case.window, "min_obs": case.min_obs}
+    whole = rolling_ols(starts, filled, excess, market, **options)
+    at = WindowEnds(np.cumsum([0, *map(len, ends)]), np.concatenate(ends))
+    found = rolling_ols(case.starts, case.period, case.excess, case.market, **options, ends=at)
+    owner = {
+        name: np.repeat(np.arange(len(of)), list(map(len, of)))
+        for name, of in (("all", parts), ("ends", ends))
+    }
+    place = {
+        (s, p): k
+        for k, (s, p) in enumerate(zip(owner["all"][whole.row], filled[whole.row], strict=True))
+    }
+    keys = list(zip(owner["ends"], at.period, strict=True))
+    assert [k for k in keys if k in place] == [keys[row] for row in found.row]
+    same = [place[keys[row]] for row in found.row]
+    for name in ("n_obs", *FIELDS):
+        assert getattr(found, name).tobytes() == getattr(whole, name)[same].tobytes(), name

@@ -13,12 +13,12 @@ import pandas as pd
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from tests.properties.random_market import WINDOW, draw_market
+from tests.properties.random_market import DATES, WINDOWS, draw_market
 
-from lineproof.calendar import month_number
 from lineproof.designs import WEIGHTS
 from lineproof.estimation import estimate_betas
-from lineproof.frames import MEMBERS, PORTFOLIO_RETURNS
+from lineproof.frames import contract
+from lineproof.periods import Periods, periods_of
 from lineproof.sorting import Sorted, sort_single_window
 
 SEEDS = st.integers(0, 2**32 - 1)
@@ -27,30 +27,41 @@ FEW = settings(max_examples=15, deadline=None, derandomize=True)
 CLOSE = {"rtol": 1e-12, "atol": 1e-14}
 
 
-def draw(seed: int) -> tuple[pd.DataFrame, pd.DataFrame, dict[str, Any]]:
+FREQUENCIES = pytest.mark.parametrize("frequency", list(DATES))
+
+
+def draw(
+    seed: int, frequency: str = "monthly"
+) -> tuple[pd.DataFrame, pd.DataFrame, dict[str, Any]]:
     """Panel, betas and options of a sort."""
-    panel, market = draw_market(seed)
-    betas = estimate_betas(panel, market, name="short", estimator="ols", **WINDOW)
+    panel, market = draw_market(seed, frequency)
+    how = {**WINDOWS[frequency], "returns": frequency, "dated": frequency}
+    betas = estimate_betas(panel, market, name="short", estimator="ols", **how)
     rng = np.random.default_rng(seed)
     options = {
         "name": "random",
         "groups": int(rng.integers(2, 6)),
         "form_month": int(rng.integers(1, 13)),
         "hold": int(rng.choice([12, 12, 6, 1])),
+        "periods": periods_of(frequency, market["date"].to_numpy()),
     }
     return panel, betas, options
 
 
 def form(panel: pd.DataFrame, betas: pd.DataFrame, options: dict[str, Any], weights: str) -> Sorted:
     found = sort_single_window(panel, betas, weights=weights, **options)
-    MEMBERS.validate(found.members)
-    PORTFOLIO_RETURNS.validate(found.returns)
+    frequency = "daily" if options["periods"].noun == "day" else "monthly"
+    contract("members", frequency).validate(found.members)
+    contract("portfolio_returns", frequency).validate(found.returns)
     return found
 
 
 @dataclass
 class SlowSort:
-    """The same portfolios one security, month and group at a time, from dictionaries."""
+    """The same portfolios one security, period and group at a time, from dictionaries.
+
+    A period is counted by its place in the calendar, the dates of the market.
+    """
 
     panel: pd.DataFrame
     betas: pd.DataFrame
@@ -58,30 +69,46 @@ class SlowSort:
     form_month: int
     hold: int
     weights: str
+    periods: Periods
     name: str = ""
 
     @cached_property
+    def calendar(self) -> list[pd.Timestamp]:
+        return list(DATES["daily" if self.periods.noun == "day" else "monthly"])
+
+    @cached_property
+    def places(self) -> dict[pd.Timestamp, int]:
+        return {date: place for place, date in enumerate(self.calendar)}
+
+    def month(self, place: int) -> int:
+        """Months since year 0 of a place in the calendar."""
+        return self.calendar[place].year * 12 + self.calendar[place].month - 1
+
+    def ends_month(self, place: int) -> bool:
+        return place + 1 == len(self.calendar) or self.month(place) < self.month(place + 1)
+
+    @cached_property
     def rows(self) -> dict[str, dict[int, Any]]:
-        """Rows of the panel by security and month."""
+        """Rows of the panel by security and place, in order."""
         found: dict[str, dict[int, Any]] = {}
-        months = month_number(self.panel["date"]).tolist()
-        for month, row in zip(months, self.panel.itertuples(index=False), strict=True):
-            found.setdefault(row.security, {})[month] = row
+        for row in self.panel.itertuples(index=False):
+            found.setdefault(row.security, {})[self.places[row.date]] = row
         return found
 
     @cached_property
     def formations(self) -> dict[int, dict[str, tuple[int, float]]]:
-        """Group and beta of each member by formation month."""
+        """Group and beta of each member by the place at whose end it is formed."""
         dated: dict[int, dict[str, float]] = {}
-        months = month_number(self.betas["date"]).tolist()
-        for month, row in zip(months, self.betas.itertuples(index=False), strict=True):
-            at = self.rows[row.security][month]
+        for row in self.betas.itertuples(index=False):
+            place = self.places[row.date]
+            at = self.rows[row.security][place]
             weighs = self.weights == "equal" or not isnan(at.size)
-            if month % 12 == self.form_month - 1 and at.eligible and weighs:
-                dated.setdefault(month, {})[row.security] = row.beta
+            forms = self.ends_month(place) and self.month(place) % 12 == self.form_month - 1
+            if forms and at.eligible and weighs:
+                dated.setdefault(place, {})[row.security] = row.beta
         return {
-            month: {s: (self.group(b, list(betas.values())), b) for s, b in betas.items()}
-            for month, betas in sorted(dated.items())
+            place: {s: (self.group(b, list(betas.values())), b) for s, b in betas.items()}
+            for place, betas in sorted(dated.items())
             if len(betas) >= self.groups
         }
 
@@ -96,11 +123,11 @@ class SlowSort:
             below += quantile < Fraction(beta)
         return below + 1
 
-    def lagged_size(self, security: str, month: int) -> float | None:
-        """The last known size before `month`, grown by the returns since."""
+    def lagged_size(self, security: str, place: int) -> float | None:
+        """The last known size before `place`, grown by the returns since."""
         known = None
-        for at, row in sorted(self.rows[security].items()):
-            if at >= month:
+        for at, row in self.rows[security].items():
+            if at >= place:
                 break
             if not isnan(row.size):
                 known = row.size
@@ -108,25 +135,25 @@ class SlowSort:
                 known *= 1 + row.total_return
         return known
 
-    def held(self, month: int) -> list[tuple[int, float, float, float | None]]:
+    def held(self, place: int) -> list[tuple[int, float, float, float | None]]:
         """Group, beta, excess return and lagged size of each member with a return."""
-        formed = max((s for s in self.formations if s < month), default=None)
-        if formed is None or month - formed > self.hold:
+        formed = max((s for s in self.formations if s < place), default=None)
+        if formed is None or self.month(place) - self.month(formed) > self.hold:
             return []
         return [
-            (group, beta, row.excess_return, self.lagged_size(security, month))
+            (group, beta, row.excess_return, self.lagged_size(security, place))
             for security, (group, beta) in self.formations[formed].items()
-            if (row := self.rows[security].get(month)) and not isnan(row.excess_return)
+            if (row := self.rows[security].get(place)) and not isnan(row.excess_return)
         ]
 
     def returns(self) -> list[list[float]]:
         """The columns of the contract after asset and date, in their order."""
-        first, last = min(self.formations) + 1, int(month_number(self.panel["date"]).max())
-        months = [m for m in range(first, last + 1) if self.held(m)]
+        held = {p: self.held(p) for p in range(min(self.formations) + 1, len(self.calendar))}
+        some = [place for place, members in held.items() if members]
         return [
-            self.portfolio([m for m in self.held(month) if m[0] == group])
+            self.portfolio([m for m in held[place] if m[0] == group])
             for group in range(1, self.groups + 1)
-            for month in range(months[0], months[-1] + 1)
+            for place in range(some[0], some[-1] + 1)
         ]
 
     def portfolio(self, members: list[tuple[int, float, float, float | None]]) -> list[float]:
@@ -140,22 +167,23 @@ class SlowSort:
         return [excess, len(members), mean_size, beta]
 
 
+@FREQUENCIES
 @pytest.mark.parametrize("weights", list(WEIGHTS))
 @FEW
 @given(seed=SEEDS)
-def test_equals_a_slow_loop(weights: str, seed: int) -> None:
-    panel, betas, options = draw(seed)
+def test_equals_a_slow_loop(weights: str, frequency: str, seed: int) -> None:
+    panel, betas, options = draw(seed, frequency)
     found, slow = (
         form(panel, betas, options, weights),
         SlowSort(panel, betas, **options, weights=weights),
     )
     members = [
-        (month, f"p{group:02d}", security, beta)
-        for month, at in slow.formations.items()
+        (slow.calendar[place], f"p{group:02d}", security, beta)
+        for place, at in slow.formations.items()
         for security, (group, beta) in at.items()
     ]
     got = found.members[["asset", "security", "ante_beta"]]
-    formed = month_number(found.members["formed"]).tolist()
+    formed = found.members["formed"].tolist()
     assert list(zip(formed, *(got[c] for c in got), strict=True)) == sorted(members)
     values = found.returns[["excess_return", "n_members", "mean_size", "ante_beta"]].to_numpy()
     np.testing.assert_allclose(values, slow.returns(), **CLOSE)
@@ -183,19 +211,23 @@ def test_groups_part_the_ranked_securities(weights: str, seed: int) -> None:
     np.testing.assert_allclose(total, 1.0, rtol=1e-14)
 
 
+@FREQUENCIES
 @FEW
-@given(SEEDS)
-def test_equally_weighted_groups_average_to_their_members(seed: int) -> None:
-    panel, betas, options = draw(seed)
+@given(seed=SEEDS)
+def test_equally_weighted_groups_average_to_their_members(frequency: str, seed: int) -> None:
+    panel, betas, options = draw(seed, frequency)
     returns = form(panel, betas, options, "equal").returns
     slow = SlowSort(panel, betas, **options, weights="equal")
     assert_rebuilt(returns, returns["n_members"], slow, lambda size: 1.0)
 
 
+@FREQUENCIES
 @FEW
-@given(SEEDS)
-def test_size_weighted_groups_rebuild_the_market_of_their_members(seed: int) -> None:
-    panel, betas, options = draw(seed)
+@given(seed=SEEDS)
+def test_size_weighted_groups_rebuild_the_market_of_their_members(
+    frequency: str, seed: int
+) -> None:
+    panel, betas, options = draw(seed, frequency)
     returns = form(panel, betas, options, "size").returns
     slow = SlowSort(panel, betas, **options, weights="size")
     total_size = returns["n_members"] * returns["mean_size"]  # every member has a size
@@ -209,8 +241,8 @@ def assert_rebuilt(returns: pd.DataFrame, total: pd.Series, slow: SlowSort, weig
     )
     sums = parts[parts["weight"] > 0].groupby("date").sum()
     expected = []
-    for month in month_number(sums.index).tolist():
-        held = [(weigh(size), excess) for _, _, excess, size in slow.held(month)]
+    for date in sums.index:
+        held = [(weigh(size), excess) for _, _, excess, size in slow.held(slow.places[date])]
         expected.append(sum(w * r for w, r in held) / sum(w for w, _ in held))
     np.testing.assert_allclose(sums["part"] / sums["weight"], expected, **CLOSE)
 

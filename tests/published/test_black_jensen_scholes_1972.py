@@ -28,31 +28,31 @@ MARKET = 0.0142
 ROUNDED_INPUTS = 0.00005
 
 
-def _returns(n_months: int = 420) -> tuple[np.ndarray, np.ndarray]:
+def _returns(n_periods: int = 420) -> tuple[np.ndarray, np.ndarray]:
     """Returns whose means, betas and alphas' t statistics are exactly the printed ones."""
     rng = np.random.default_rng(19311965)
-    moves = rng.standard_normal(n_months)
+    moves = rng.standard_normal(n_periods)
     moves -= moves.mean()
     moves *= 0.089 / moves.std()
-    design = np.column_stack([np.ones(n_months), moves])
-    noise = rng.standard_normal((n_months, len(BETAS)))
+    design = np.column_stack([np.ones(n_periods), moves])
+    noise = rng.standard_normal((n_periods, len(BETAS)))
     noise -= design @ np.linalg.lstsq(design, noise, rcond=None)[0]
     # Student's t of alpha is alpha over s times the root of 1/T + mean^2 / (T variance).
     errors = (MEANS - MARKET * BETAS) / T_OF_ALPHAS
-    wanted = errors / np.sqrt((1 + (MARKET / moves.std()) ** 2) / n_months)
-    noise *= np.abs(wanted) / np.sqrt((noise**2).sum(axis=0) / (n_months - 2))
+    wanted = errors / np.sqrt((1 + (MARKET / moves.std()) ** 2) / n_periods)
+    noise *= np.abs(wanted) / np.sqrt((noise**2).sum(axis=0) / (n_periods - 2))
     return MEANS + np.outer(moves, BETAS) + noise, MARKET + moves
 
 
 @pytest.fixture(scope="module")
 def priced() -> pd.DataFrame:
     returns, market = _returns()
-    n_months, n_assets = returns.shape
+    n_periods, n_assets = returns.shape
     cut = pd.DataFrame(
         {
             "sort": "supplied",
-            "asset": np.tile([str(number) for number in range(1, n_assets + 1)], n_months),
-            "date": np.repeat(pd.date_range("1931-01-31", periods=n_months, freq="ME"), n_assets),
+            "asset": np.tile([str(number) for number in range(1, n_assets + 1)], n_periods),
+            "date": np.repeat(pd.date_range("1931-01-31", periods=n_periods, freq="ME"), n_assets),
             "excess_return": returns.ravel(),
             "n_members": np.nan,
             "mean_size": np.nan,

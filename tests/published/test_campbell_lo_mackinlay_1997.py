@@ -15,21 +15,21 @@ from lineproof.stats.distributions import joint_critical, joint_p
 from lineproof.stats.joint_alpha import ALPHA_STATISTICS, exact_f
 
 
-def _size(name: str, n_months: int, n_assets: int) -> float:
+def _size(name: str, n_periods: int, n_assets: int) -> float:
     statistic = ALPHA_STATISTICS[name]
     critical = float(joint_critical(0.05, n_assets, float("nan")))
     reached = brentq(
-        lambda distance: statistic(distance, n_months, n_assets, 1).value - critical,
+        lambda distance: statistic(distance, n_periods, n_assets, 1).value - critical,
         0.0,
         1000.0,
         xtol=1e-14,
     )
-    exact = exact_f(reached, n_months, n_assets, 1)
+    exact = exact_f(reached, n_periods, n_assets, 1)
     return float(joint_p(exact.value, exact.df1, exact.df2))
 
 
 @pytest.mark.parametrize(
-    ("n_months", "n_assets", "wald", "lr", "lr_corrected"),
+    ("n_periods", "n_assets", "wald", "lr", "lr_corrected"),
     [
         (60, 10, 0.170, 0.096, 0.051),
         (60, 20, 0.462, 0.211, 0.057),
@@ -40,12 +40,12 @@ def _size(name: str, n_months: int, n_assets: int) -> float:
     ],
 )
 def test_true_size(
-    n_months: int, n_assets: int, wald: float, lr: float, lr_corrected: float
+    n_periods: int, n_assets: int, wald: float, lr: float, lr_corrected: float
 ) -> None:
     # Half a unit of the last printed digit.
-    assert _size("wald", n_months, n_assets) == pytest.approx(wald, abs=0.0005)
-    assert _size("lr", n_months, n_assets) == pytest.approx(lr, abs=0.0005)
-    assert _size("lr_corrected", n_months, n_assets) == pytest.approx(lr_corrected, abs=0.0005)
+    assert _size("wald", n_periods, n_assets) == pytest.approx(wald, abs=0.0005)
+    assert _size("lr", n_periods, n_assets) == pytest.approx(lr, abs=0.0005)
+    assert _size("lr_corrected", n_periods, n_assets) == pytest.approx(lr_corrected, abs=0.0005)
 
 
 def test_the_f_has_exactly_its_nominal_size() -> None:

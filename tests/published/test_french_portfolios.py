@@ -48,7 +48,7 @@ def test_standard_errors_agree(factors: list[str], kind: str) -> None:
 @pytest.mark.parametrize("factors", [["MktRF"], ["MktRF", "SMB", "HML"]])
 def test_the_joint_f_is_the_exact_multivariate_test(factors: list[str]) -> None:
     fit = _fit(factors)
-    found = exact_f(measure_alphas(fit).distance, fit.n_months, fit.n_assets, fit.n_factors)
+    found = exact_f(measure_alphas(fit).distance, fit.n_periods, fit.n_assets, fit.n_factors)
     test = _MultivariateOLS(fit.returns, fit.design).fit().mv_test()
     table = test.results["x0"]["stat"].loc["Wilks' lambda"]
     assert found.value == pytest.approx(float(table["F Value"]), rel=SAME)
@@ -61,6 +61,6 @@ def test_the_joint_f_is_the_exact_multivariate_test(factors: list[str]) -> None:
 
 def test_the_figure_on_record() -> None:
     fit = _fit(["MktRF"])
-    found = exact_f(measure_alphas(fit).distance, fit.n_months, fit.n_assets, fit.n_factors)
+    found = exact_f(measure_alphas(fit).distance, fit.n_periods, fit.n_assets, fit.n_factors)
     assert (found.df1, found.df2) == (9, 809)
     assert found.value == pytest.approx(7.7528, abs=0.00005)

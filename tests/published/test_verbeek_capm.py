@@ -26,7 +26,7 @@ def fit() -> Regression:
 
 
 def test_coefficients(fit: Regression) -> None:
-    assert fit.n_months == 516
+    assert fit.n_periods == 516
     np.testing.assert_allclose(fit.alphas, [0.339, 0.064, -0.053], atol=PRINTED)
     np.testing.assert_allclose(fit.betas[0], [0.783, 1.111, 1.157], atol=PRINTED)
 

@@ -4,16 +4,34 @@ from __future__ import annotations
 
 import bz2
 import gzip
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pandas as pd
 import pyarrow as pa
 import pyarrow.parquet as pq
 import pytest
 
+from lineproof import validation
+from lineproof.intake.blocks import RawBlock, RawFile
+from lineproof.intake.chunk import Chunk
+from lineproof.periods import Months
 from lineproof.problems import KnownProblem
-from lineproof.validation import Validated, validate_returns
+from lineproof.store import Scratch
+
+
+@dataclass(frozen=True)
+class Validated:
+    """What validation writes, whole; see `frames` for the columns. `intake` holds the counts."""
+
+    panel: pd.DataFrame
+    market: pd.DataFrame
+    set_aside: pd.DataFrame
+    intake: dict[str, Any]
+
 
 COLUMNS = {
     "security": "id",
@@ -80,39 +98,148 @@ def lines(*rows: str, header: str = HEADER) -> str:
     return "\n".join([header, *rows]) + "\n"
 
 
+RULES: dict[str, Any] = {
+    "screens": [],
+    "missing_final_return": None,
+    "final_return_by_reason": {},
+    "same_month_rows": "set_aside",
+    "stale_run": None,
+    "return_after_hole": "keep",
+    "outliers": {"jump_and_reversal": "flag"},
+    "allow_partial_last_month": False,
+    "other_unit_stop_above": 0.1,
+}
+
+
 def validate(
     folder: Path,
-    returns: str | bytes | Path,
+    returns: str | bytes | Path | Sequence[Path],
     *,
     market: dict[str, float | str] | None = None,
     riskless: dict[str, float | str] | None = None,
     name: str = "returns.csv",
-    same_month_rows: str = "set_aside",
-    screens: list[dict[str, Any]] | None = None,
-    missing_final_return: float | None = None,
     **changes: Any,
 ) -> Validated:
-    """Validate returns (a text, or a file that is there) with a market and a riskless rate.
+    """Validate returns (a text, or files that are there) with a market and a riskless rate.
 
-    Unless given, the market is 1 % and the riskless return 0.2 % in every month of 2000.
+    Unless given, the market is 1 % and the riskless return 0.2 % in every month of 2000. `changes` are
+    options of `RULES` and of the file of returns.
     """
     year = months("2000-01", 12)
-    file = str(returns) if isinstance(returns, Path) else write(folder / name, returns)
+    if isinstance(returns, str | bytes):
+        returns = Path(write(folder / name, returns))
     market = dict.fromkeys(year, 0.01) if market is None else market
     riskless = dict.fromkeys(year, 0.002) if riskless is None else riskless
     series = {"dates": "%Y-%m"}
-    return validate_returns(
-        file,
-        write(folder / "market.csv", monthly_file("mkt", market)),
-        write(folder / "riskless.csv", monthly_file("rf", riskless)),
+    files = {
+        "returns": [str(file) for file in ([returns] if isinstance(returns, Path) else returns)],
+        "market": [write(folder / "market.csv", monthly_file("mkt", market))],
+        "riskless": [write(folder / "riskless.csv", monthly_file("rf", riskless))],
+    }
+    rules = {rule: changes.pop(rule, usual) for rule, usual in RULES.items()}
+    return run(
+        folder,
+        files,
+        frequency="monthly",
         returns=returns_reading(**changes),
-        market=reading("raw/market.csv", {"date": "month", "return": "mkt"}, **series),
-        market_is="total",
-        riskless=reading("raw/riskless.csv", {"date": "month", "rate": "rf"}, **series),
-        riskless_quoted="period_return",
-        screens=screens or [],
-        missing_final_return=missing_final_return,
-        same_month_rows=same_month_rows,
+        returns_are="total",
+        returns_frequency="monthly",
+        market_build=None,
+        series={
+            "market": reading("raw/market.csv", {"date": "month", "return": "mkt"}, **series),
+            "market_is": "total",
+            "market_frequency": "monthly",
+            "riskless": reading("raw/riskless.csv", {"date": "month", "rate": "rf"}, **series),
+            "riskless_quoted": "period_return",
+            "riskless_frequency": "monthly",
+        },
+        rules=rules,
+    )
+
+
+def run(folder: Path, files: dict[str, list[str]], **options: Any) -> Validated:
+    """Everything that `validate_returns` gives, in the order in which it must be asked for."""
+    with Scratch(folder) as scratch:
+        found = validation.validate_returns(files, scratch, **options)
+        return Validated(
+            panel=pd.concat([piece["panel"] for piece in found.tables()], ignore_index=True),
+            market=found.markets()["market"],
+            set_aside=pd.concat(
+                [piece["set_aside"] for piece in found.set_aside()], ignore_index=True
+            ),
+            intake=found.counts(),
+        )
+
+
+@dataclass(frozen=True)
+class InPieces:
+    """A raw file under a name of its own, whose rows come a few at a time."""
+
+    file: RawFile
+    label: str
+    at_most: int
+
+    @property
+    def place(self) -> str:
+        return self.file.place
+
+    def blocks(self) -> Iterator[RawBlock]:
+        for block in self.file.blocks():
+            yield replace(block, columns={}, position=block.position[:0])  # counts and rejects
+            for first in range(0, len(block.position), self.at_most):
+                rows = slice(first, first + self.at_most)
+                yield RawBlock(
+                    {name: column[rows] for name, column in block.columns.items()},
+                    block.position[rows],
+                    [],
+                    0,
+                )
+
+    def line(self, positions: np.ndarray) -> np.ndarray:
+        return self.file.line(positions)
+
+    def raw(self, positions: np.ndarray) -> Iterator[list[str]]:
+        for texts in self.file.raw(positions):
+            yield from ([text] for text in texts)
+
+
+def in_pieces(patch: pytest.MonkeyPatch, at_most: int) -> None:
+    """Let raw files come so many rows at a time, be called by their names, and be judged as few at a time."""
+    opened = validation.open_files
+
+    def open_files(files: Sequence[str], options: dict[str, Any]) -> list[InPieces]:
+        both = zip(files, opened(files, options), strict=True)
+        return [InPieces(file, f"raw/{Path(path).name}", at_most) for path, file in both]
+
+    patch.setattr(validation, "open_files", open_files)
+    patch.setattr("lineproof.intake.second_pass._ROWS", at_most)
+
+
+_VALUES = ("return_", "final_return", "size", "price", "total_return")
+
+
+def chunk_of(rows: pd.DataFrame) -> Chunk:
+    """Rows (sorted by security and date) as a chunk of months: numbers by our names, all else text.
+
+    A missing return has the first code for missing unless there is a column `code`.
+    """
+    names, start = np.unique(rows["security"].to_numpy(object), return_index=True)
+    day = rows["date"].to_numpy().astype("datetime64[D]")
+    values = {name: rows[name].to_numpy(float) for name in _VALUES if name in rows}
+    code = np.where(np.isnan(values["return_"]), 0, -1) if "code" not in rows else rows["code"]
+    further = [name for name in rows if name not in {"security", "date", "code", *_VALUES}]
+    texts = {}
+    for name in further:
+        codes, distinct = pd.factorize(rows[name])
+        texts[name] = (codes.astype(np.int32), distinct.tolist())
+    return Chunk(
+        names=names,
+        start=np.append(start, len(rows)),
+        period=Months().number(day),
+        day=day,
+        values=values,
+        texts=texts,
+        code=np.asarray(code, np.int8),
     )
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import asdict
 from functools import cache
 from typing import Any
 
@@ -10,6 +11,7 @@ import numpy as np
 import pandas as pd
 
 from lineproof.analyses import ANALYSES
+from lineproof.frequency import FREQUENCIES
 from lineproof.paper.context import Context
 from lineproof.pricing import price_subperiod
 
@@ -49,7 +51,7 @@ def subperiod(name: str, first: str, last: str, title: str | None = None) -> dic
     """A subperiod as the pipeline lists it."""
     months = len(pd.period_range(first, last, freq="M"))
     title = title or f"{first[:4]}–{last[:4]}"
-    return {"name": name, "title": title, "first": first, "last": last, "n_months": months}
+    return {"name": name, "title": title, "first": first, "last": last, "n_periods": months}
 
 
 def counts(rows: list[tuple[str, str, str, str, str, float]]) -> pd.DataFrame:
@@ -57,7 +59,7 @@ def counts(rows: list[tuple[str, str, str, str, str, float]]) -> pd.DataFrame:
     frame = pd.DataFrame(
         rows, columns=["subperiod", "analysis", "variant", "asset", "term", "estimate"]
     )
-    frame = frame.assign(sort="-", se_kind="-", n_months=0, n_assets=0, status="ok", reason="")
+    frame = frame.assign(sort="-", se_kind="-", n_periods=0, n_assets=0, status="ok", reason="")
     for column in (
         "se",
         "statistic",
@@ -91,9 +93,9 @@ def sample_rows(
         rows.append(("-", "sample", "month", month, "n_with_beta", max(0, 200 + place % 150 - 24)))
     for each in periods:
         values = {
-            "n_months": each["n_months"],
+            "n_periods": each["n_periods"],
             "n_securities": 700,
-            "n_security_months": 253_112,
+            "n_security_periods": 253_112,
             "mean_alive": 281.25,
             "min_alive": 250,
             "max_alive": 1449,
@@ -122,8 +124,10 @@ def facts(sorts: dict[str, dict[str, Any]], **changes: Any) -> dict[str, Any]:
         "name": "example",
         "title": "Is beta priced on the Kestrel Sound Exchange?",
         "market_name": "the Kestrel Sound Exchange",
+        "market_build": None,
         "invented": True,
         "level": 0.05,
+        "period": asdict(FREQUENCIES["monthly"]),
         "hac_lag": None,
         "missing_final_return": None,
         "screens": [{"column": "price", "at_least": 1}],
@@ -154,6 +158,7 @@ def ranked_facts(title: str = "10 groups, equally weighted", groups: int = 10) -
         "hold": 12,
         "estimator_label": "ordinary least squares",
         "window": 60,
+        "window_periods": "months",
         "min_obs": 24,
     }
 
@@ -183,6 +188,7 @@ def study(
     *,
     analyses: Sequence[str] = tuple(ANALYSES),
     intake: dict[str, Any] = INTAKE,
+    has_riskless: bool = True,
     **changes: Any,
 ) -> Context:
     """Everything the paper needs for given sorts (facts and asset names) and subperiods."""
@@ -194,6 +200,8 @@ def study(
             for place, (name, (said, assets)) in enumerate(sorts.items())
         ]
     )
+    if not has_riskless:
+        whole["riskless"] = np.nan
     frames = []
     for each in periods:
         start, end = pd.Period(each["first"], "M"), pd.Period(each["last"], "M")

@@ -35,13 +35,13 @@ EXPECTED = """\
               4  a missing return: kept, flagged
                    3 empty, 1 NA
                    it stays missing; it is never taken as zero
-                   A in 2000-02, C in 2000-01, C in 2000-02, …
+                   A on 2000-02-28, C on 2000-01-28, C on 2000-02-28, …
               1  text in a number column: set aside
                    line 7
               1  a security that leaves without a final return: kept, flagged
                    1 left as it is
                    for a failure, a final return of −30 % is the usual assumption (Shumway 1997)
-                   B in 2000-01
+                   B on 2000-01-31
               1  no market or riskless return in that month: set aside
                    line 11
 

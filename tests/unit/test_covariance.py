@@ -18,18 +18,18 @@ from lineproof.stats.covariance import (
 CLOSE = 1e-11
 
 
-def _problem(seed: int, n_months: int = 40, n_factors: int = 2, n_assets: int = 3) -> tuple:
+def _problem(seed: int, n_periods: int = 40, n_factors: int = 2, n_assets: int = 3) -> tuple:
     rng = np.random.default_rng(seed)
-    design = np.column_stack([np.ones(n_months), rng.normal(0.5, 1.0, (n_months, n_factors))])
-    residuals = rng.normal(size=(n_months, n_assets)) * np.abs(design[:, 1:2])
+    design = np.column_stack([np.ones(n_periods), rng.normal(0.5, 1.0, (n_periods, n_factors))])
+    residuals = rng.normal(size=(n_periods, n_assets)) * np.abs(design[:, 1:2])
     return design, np.linalg.inv(design.T @ design), residuals
 
 
-def _scale(kind: str, leverage: float, n_months: int, n_coefficients: int) -> float:
+def _scale(kind: str, leverage: float, n_periods: int, n_coefficients: int) -> float:
     """Factor of a month's squared residual, as MacKinnon and White 1985 define the kinds."""
     return {
         "hc0": 1.0,
-        "hc1": n_months / (n_months - n_coefficients),
+        "hc1": n_periods / (n_periods - n_coefficients),
         "hc2": 1.0 / (1.0 - leverage),
         "hc3": 1.0 / (1.0 - leverage) ** 2,
     }[kind]
@@ -38,12 +38,12 @@ def _scale(kind: str, leverage: float, n_months: int, n_coefficients: int) -> fl
 @pytest.mark.parametrize("kind", ["hc0", "hc1", "hc2", "hc3"])
 def test_white_covariances_equal_a_loop_over_months(kind: str) -> None:
     design, bread, residuals = _problem(1)
-    n_months, n_coefficients = design.shape
+    n_periods, n_coefficients = design.shape
     found = COEFFICIENT_COVARIANCES[kind](design, bread, residuals, 0)
     for asset in range(residuals.shape[1]):
         meat = np.zeros_like(bread)
         for x, e in zip(design, residuals[:, asset], strict=True):
-            factor = _scale(kind, float(x @ bread @ x), n_months, n_coefficients)
+            factor = _scale(kind, float(x @ bread @ x), n_periods, n_coefficients)
             meat += factor * e**2 * np.outer(x, x)
         np.testing.assert_allclose(found[asset], bread @ meat @ bread, rtol=CLOSE)
 
@@ -82,7 +82,7 @@ def test_a_month_that_decides_the_fit_leaves_hc3_undefined() -> None:
     bread = np.linalg.inv(design.T @ design)
     residuals = np.array([[1.0], [-1.0], [1.0], [-1.0], [0.0]])
     for kind in ("hc2", "hc3"):
-        with pytest.raises(Undefined, match="one month alone"):
+        with pytest.raises(Undefined, match="one period alone"):
             COEFFICIENT_COVARIANCES[kind](design, bread, residuals, 0)
 
 
@@ -103,10 +103,10 @@ def test_long_run_sum_of_two_series_is_symmetric_and_right() -> None:
     np.testing.assert_allclose(long_run_sum(scores, 1), expected, rtol=1e-15)
 
 
-@pytest.mark.parametrize(("n_months", "lag"), [(60, 3), (100, 4), (120, 4), (420, 5), (840, 6)])
-def test_automatic_lag(n_months: int, lag: int) -> None:
+@pytest.mark.parametrize(("n_periods", "lag"), [(60, 3), (100, 4), (120, 4), (420, 5), (840, 6)])
+def test_automatic_lag(n_periods: int, lag: int) -> None:
     # 4 (T/100)^(2/9): 3.57, 4, 4.17, 5.50, 6.42.
-    assert automatic_lag(n_months) == lag
+    assert automatic_lag(n_periods) == lag
 
 
 def test_deviations_of_a_constant_are_exactly_zero() -> None:

@@ -7,7 +7,7 @@ import pandas as pd
 import pytest
 
 from lineproof.estimation import estimate_betas
-from lineproof.frames import BETAS
+from lineproof.frames import BETAS, contract
 from lineproof.problems import KnownProblem
 
 MONTHS = pd.date_range("2001-01-31", periods=40, freq="ME", unit="ms")
@@ -91,3 +91,97 @@ def test_no_estimate_at_all_says_what_to_change() -> None:
     with pytest.raises(KnownProblem) as flat:
         estimate_betas(panel_of({"A": series}), market_of(np.full(40, 0.1)), **OPTIONS)
     assert "the market's return is the same in every month" in str(flat.value)
+
+
+DAYS = pd.bdate_range("2001-01-02", "2001-08-31", unit="ms").delete([30, 31, 77])
+IN_DAYS = {"name": "short", "estimator": "ols", "window": 50, "min_obs": 20, "returns": "daily"}
+
+
+def draw_days(seed: int) -> tuple[np.ndarray, dict[str, pd.Series]]:
+    """A market of days and three securities: one whole, one with holes, one that leaves within a month."""
+    rng = np.random.default_rng(seed)
+    market = rng.normal(0.0004, 0.01, len(DAYS))
+    own = pd.Series(0.0001 + 1.2 * market + rng.normal(0, 0.02, len(DAYS)), DAYS)
+    missing = (0.3 * own).mask(rng.random(len(DAYS)) < 0.1)
+    holes = missing[rng.random(len(DAYS)) > 0.2]
+    return market, {"A": own, "B": holes, "C": own[DAYS <= "2001-06-11"]}
+
+
+def fit_slowly(
+    series: pd.Series, factor: pd.Series, until: pd.Timestamp
+) -> tuple[float, float, int] | None:
+    """Slope, intercept and number of days over the last trading days up to `until`."""
+    days = DAYS[until >= DAYS][-IN_DAYS["window"] :]
+    seen = series[series.index.isin(days)].dropna()
+    if len(seen) < IN_DAYS["min_obs"]:
+        return None
+    return (*np.polyfit(factor[seen.index], seen, 1), len(seen))
+
+
+@pytest.mark.parametrize("dated", ["daily", "monthly"])
+@pytest.mark.parametrize("seed", range(5))
+def test_daily_returns_give_estimates_at_ends_of_months(dated: str, seed: int) -> None:
+    market, securities = draw_days(seed)
+    table = estimate_betas(panel_of(securities), market_of(market, DAYS), dated=dated, **IN_DAYS)
+    contract("betas", dated).validate(table)
+    factor = pd.Series(market, DAYS)
+    expected = []
+    for name, series in securities.items():
+        for month in pd.period_range("2001-01", "2001-08", freq="M"):
+            last = max(day for day in DAYS if day.to_period("M") == month)
+            there = (
+                (series.index == last) if dated == "daily" else series.index.to_period("M") == month
+            )
+            found = fit_slowly(series, factor, last) if there.any() else None
+            if found is not None:
+                date = last if dated == "daily" else month.end_time.normalize()
+                expected.append((name, date, *found))
+    want = pd.DataFrame(expected, columns=["security", "date", "beta", "alpha", "n_obs"])
+    for column in ("security", "date", "n_obs"):
+        assert table[column].tolist() == want[column].tolist(), column
+    # Rounding of a least-squares fit on 20 to 50 well-spread days.
+    np.testing.assert_allclose(table["beta"], want["beta"], rtol=1e-10)
+    np.testing.assert_allclose(table["alpha"], want["alpha"], rtol=1e-8, atol=1e-14)
+
+
+def test_securities_may_be_categories() -> None:
+    market, securities = draw_days(6)
+    panel, factor = panel_of(securities), market_of(market, DAYS)
+    plain = estimate_betas(panel, factor, dated="daily", **IN_DAYS)
+    names = pd.CategoricalDtype(pd.Index(["Z", "C", "B", "A"], dtype="str"))
+    coded = estimate_betas(panel.astype({"security": names}), factor, dated="daily", **IN_DAYS)
+    assert isinstance(coded["security"].dtype, pd.CategoricalDtype)
+    pd.testing.assert_frame_equal(coded.astype({"security": str}), plain, check_exact=True)
+
+
+def test_a_day_on_which_the_market_is_closed_is_no_period() -> None:
+    market, securities = draw_days(7)
+    odd = pd.Series([9.0, 9.0], pd.to_datetime(["2001-03-03", "2001-09-03"]))
+    more = {"A": pd.concat([securities["A"], odd]).sort_index()}
+    with_odd, without = (
+        estimate_betas(panel_of(each), market_of(market, DAYS), dated="daily", **IN_DAYS)
+        for each in (more, {"A": securities["A"]})
+    )
+    pd.testing.assert_frame_equal(with_odd, without, check_exact=True)
+
+
+def test_messages_about_days_speak_of_days() -> None:
+    market, securities = draw_days(8)
+    short = panel_of({"A": securities["A"].iloc[:10]})
+    with pytest.raises(KnownProblem) as caught:
+        estimate_betas(short, market_of(market, DAYS), dated="daily", **IN_DAYS)
+    assert "no security has 20 days of returns within 50 days" in str(caught.value)
+
+
+@pytest.mark.fault(33)
+def test_a_window_longer_than_the_sample_is_refused() -> None:
+    market, series = draw(6)
+    panel = panel_of({"A": series})
+    assert len(estimate_betas(panel, market_of(market), **{**OPTIONS, "window": 40})) > 0
+    with pytest.raises(KnownProblem) as told:
+        estimate_betas(panel, market_of(market), **{**OPTIONS, "window": 41})
+    assert str(told.value) == (
+        "No beta can be estimated.\n"
+        "  betas.short.window: a window of 41 months is longer than the sample, which has 40\n"
+        "    → shorten window"
+    )

@@ -21,10 +21,10 @@ from lineproof.stats.time_series import Regression, regress, standard_errors
 CLOSE = 1e-9
 
 
-def _fit(seed: int, n_months: int = 60, n_assets: int = 5, n_factors: int = 1) -> Regression:
+def _fit(seed: int, n_periods: int = 60, n_assets: int = 5, n_factors: int = 1) -> Regression:
     rng = np.random.default_rng(seed)
-    factors = rng.normal(0.006, 0.045, (n_months, n_factors))
-    noise = rng.normal(0.0, 0.02, (n_months, n_assets)) @ rng.normal(size=(n_assets, n_assets))
+    factors = rng.normal(0.006, 0.045, (n_periods, n_factors))
+    noise = rng.normal(0.0, 0.02, (n_periods, n_assets)) @ rng.normal(size=(n_assets, n_assets))
     return regress(0.002 + factors.sum(axis=1, keepdims=True) + noise, factors)
 
 
@@ -54,7 +54,7 @@ def test_factors_cost_degrees_of_freedom() -> None:
 def test_of_one_asset_the_f_is_the_squared_t_of_its_alpha() -> None:
     fit = _fit(1, n_assets=1)
     t = fit.alphas[0] / standard_errors(fit, "classical", 0)[0, 0]
-    f = exact_f(measure_alphas(fit).distance, fit.n_months, 1, 1)
+    f = exact_f(measure_alphas(fit).distance, fit.n_periods, 1, 1)
     assert f.value == pytest.approx(t**2, rel=CLOSE)
     assert (f.df1, f.df2) == (1, 58)
 
@@ -121,10 +121,10 @@ def test_hac_wald_of_one_asset_is_its_squared_hac_t() -> None:
 @pytest.mark.parametrize("n_factors", [1, 2])
 def test_months_needed(n_factors: int) -> None:
     enough = 5 + n_factors + 1
-    assert measure_alphas(_fit(7, n_months=enough, n_factors=n_factors)).distance > 0
-    short = _fit(7, n_months=enough - 1, n_factors=n_factors)
+    assert measure_alphas(_fit(7, n_periods=enough, n_factors=n_factors)).distance > 0
+    short = _fit(7, n_periods=enough - 1, n_factors=n_factors)
     for measure in (measure_alphas, lambda fit: hac_wald(fit, 1)):
-        with pytest.raises(Undefined, match=f"at least {enough} months for 5 assets, has"):
+        with pytest.raises(Undefined, match=f"at least {enough} periods for 5 assets, has"):
             measure(short)
 
 
@@ -133,7 +133,7 @@ def test_months_needed(n_factors: int) -> None:
 )
 def test_redundant_assets_make_it_undefined(redundant: str) -> None:
     fit = _fit(8)
-    noise = np.random.default_rng(9).standard_normal(fit.n_months)
+    noise = np.random.default_rng(9).standard_normal(fit.n_periods)
     extra = {
         "the market": fit.factors[:, 0],
         # Residuals of a hundred-millionth: no rounding, and yet no return that anyone records.

@@ -26,12 +26,12 @@ from lineproof.stats.time_series import regress
 CLOSE = 1e-9
 
 
-def _returns(seed: int = 1, n_months: int = 90, n_assets: int = 6) -> tuple:
+def _returns(seed: int = 1, n_periods: int = 90, n_assets: int = 6) -> tuple:
     """Returns that fit no line exactly, with correlated residuals of unequal size."""
     rng = np.random.default_rng(seed)
-    market = 0.02 + 0.05 * rng.standard_normal(n_months)
+    market = 0.02 + 0.05 * rng.standard_normal(n_periods)
     spread = np.diag(np.linspace(0.5, 2.0, n_assets)) + 0.3 * rng.random((n_assets, n_assets))
-    noise = 0.03 * rng.standard_normal((n_months, n_assets)) @ spread
+    noise = 0.03 * rng.standard_normal((n_periods, n_assets)) @ spread
     betas = np.linspace(0.4, 1.6, n_assets)
     means = 0.01 + 0.01 * betas + 0.004 * rng.standard_normal(n_assets)
     return means + betas * (market[:, None] - 0.02) + noise, market[:, None]
@@ -129,7 +129,7 @@ def test_weights_need_residual_variance() -> None:
         _draw("wls", with_market, market)
     with pytest.raises(Undefined, match="singular"):
         _draw("gls", with_market, market)
-    with pytest.raises(Undefined, match="at least 8 months for 6 assets"):
+    with pytest.raises(Undefined, match="at least 8 periods for 6 assets"):
         _draw("gls", returns[:7], market[:7])
 
 
@@ -208,11 +208,11 @@ def _line_of_weighted_months(
 
 def _numerical_influences(name: str, returns: np.ndarray, market: np.ndarray) -> np.ndarray:
     """Derivative of the line, and of the market mean, in the probability of each month: (T, 3)."""
-    n_months, step = len(market), 1e-5
-    even = np.full(n_months, 1 / n_months)
+    n_periods, step = len(market), 1e-5
+    even = np.full(n_periods, 1 / n_periods)
     rows = []
-    for month in range(n_months):
-        towards = step * (np.eye(n_months)[month] - even)
+    for month in range(n_periods):
+        towards = step * (np.eye(n_periods)[month] - even)
         up, down = (
             _line_of_weighted_months(name, returns, market, even + sign * towards)
             for sign in (1, -1)
@@ -325,7 +325,7 @@ def test_only_gls_has_the_f() -> None:
 
 def test_pricing_errors_need_months_and_independent_assets() -> None:
     returns, market = _returns()
-    with pytest.raises(Undefined, match="at least 8 months"):
+    with pytest.raises(Undefined, match="at least 8 periods"):
         pricing_error_chi2(_draw("ols", returns[:7], market[:7]))
     # Of three assets one contrast is left; here it holds next to nothing but the market.
     second = 2 * returns[:, 0] - market[:, 0] + 1e-8 * returns[:, 1]

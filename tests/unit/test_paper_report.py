@@ -53,7 +53,7 @@ def number(estimate: float, p: float, status: str = "ok") -> Number:
     """A number with an estimate and a p value; the rest is out of play."""
     reason = "" if status == "ok" else "too few"
     return Number(
-        "a", estimate, NAN, NAN, NAN, NAN, p, NAN, NAN, NAN, n_months=9, n_assets=3,
+        "a", estimate, NAN, NAN, NAN, NAN, p, NAN, NAN, NAN, n_periods=9, n_assets=3,
         status=status, reason=reason,
     )  # fmt: skip
 
@@ -162,6 +162,7 @@ def test_the_intake_in_short_and_where_the_rest_is() -> None:
     assert "The study begins there &amp; ends." in section
 
 
+@pytest.mark.fault(38)
 def test_hostile_titles_are_escaped() -> None:
     page = report_of(examples.hostile())
     assert "<title>&lt;script&gt;alert(1); &amp; R&amp;D_50%</title>" in page

@@ -20,24 +20,24 @@ NUMBERS += ["p", "p_one_sided", "critical", "critical_one_sided"]
 ASSETS = ("low", "middle", "high", "top")
 
 
-def _cut(n_months: int = 60, assets: tuple[str, ...] = ASSETS, seed: int = 1) -> pd.DataFrame:
+def _cut(n_periods: int = 60, assets: tuple[str, ...] = ASSETS, seed: int = 1) -> pd.DataFrame:
     rng = np.random.default_rng(seed)
     n_assets = len(assets)
-    market = rng.normal(0.006, 0.045, n_months)
+    market = rng.normal(0.006, 0.045, n_periods)
     betas = np.linspace(0.5, 1.5, n_assets)
-    excess = 0.001 + np.outer(market, betas) + rng.normal(0.0, 0.02, (n_months, n_assets))
-    months = pd.date_range("1960-01-31", periods=n_months, freq="ME")
+    excess = 0.001 + np.outer(market, betas) + rng.normal(0.0, 0.02, (n_periods, n_assets))
+    months = pd.date_range("1960-01-31", periods=n_periods, freq="ME")
     return pd.DataFrame(
         {
             "sort": "ten",
-            "asset": np.tile(assets, n_months),
+            "asset": np.tile(assets, n_periods),
             "date": np.repeat(months, n_assets),
             "excess_return": excess.ravel(),
-            "n_members": np.tile(np.arange(10.0, 10.0 + n_assets), n_months),
+            "n_members": np.tile(np.arange(10.0, 10.0 + n_assets), n_periods),
             "mean_size": 250.0,
-            "ante_beta": np.tile(betas, n_months),
+            "ante_beta": np.tile(betas, n_periods),
             "market_excess": np.repeat(market, n_assets),
-            "riskless": np.repeat(rng.uniform(0.002, 0.004, n_months), n_assets),
+            "riskless": np.repeat(rng.uniform(0.002, 0.004, n_periods), n_assets),
         }
     )
 
@@ -84,9 +84,9 @@ def _but_market_mean(priced: pd.DataFrame) -> pd.DataFrame:
 def test_columns_and_types() -> None:
     priced = _price(_cut())
     assert list(priced.columns) == COLUMNS == [*KEY_COLUMNS, *NUMBERS, *COLUMNS[-4:]]
-    assert COLUMNS[-4:] == ["n_months", "n_assets", "status", "reason"]
+    assert COLUMNS[-4:] == ["n_periods", "n_assets", "status", "reason"]
     assert (priced[NUMBERS].dtypes == "float64").all()
-    assert (priced[["n_months", "n_assets"]].dtypes == "int64").all()
+    assert (priced[["n_periods", "n_assets"]].dtypes == "int64").all()
     assert (priced[[*KEY_COLUMNS, "status", "reason"]].dtypes == "str").all()
     assert (priced["status"] == "ok").all()
     assert (priced["reason"] == "").all()
@@ -157,7 +157,7 @@ def test_description() -> None:
     assert mean["se"] == pytest.approx(returns[:, 2].std(ddof=1) / np.sqrt(60), rel=1e-12)
     assert mean["statistic"] == pytest.approx(expected.statistic, rel=1e-12)
     assert mean["p"] == pytest.approx(expected.pvalue, rel=1e-9)
-    assert (mean["df1"], mean["n_months"], mean["n_assets"]) == (59, 60, 1)
+    assert (mean["df1"], mean["n_periods"], mean["n_assets"]) == (59, 60, 1)
     sd = _number(priced, "describe/-/market/sd/-")
     assert sd["estimate"] == pytest.approx(market.std(ddof=1), rel=1e-12)
     assert np.isnan(sd["p"])
@@ -186,7 +186,7 @@ def test_time_series_rows_are_the_library_s_numbers() -> None:
 
 
 def test_the_automatic_lag_follows_the_number_of_months() -> None:
-    cut = _cut(n_months=60)
+    cut = _cut(n_periods=60)
     # floor(4 x .6^(2/9)) = floor(3.57).
     pd.testing.assert_frame_equal(_price(cut), _price(cut, hac_lag=3))
     assert not _price(cut).equals(_price(cut, hac_lag=4))
@@ -199,7 +199,7 @@ def test_joint_and_line_rows_are_the_library_s_numbers() -> None:
     expected = exact_f(measure_alphas(fit).distance, 60, 4, 1)
     found = _number(priced, "joint_alpha/f/all/alpha/-")
     assert found["statistic"] == pytest.approx(expected.value, rel=1e-12)
-    assert (found["df1"], found["df2"], found["n_months"], found["n_assets"]) == (4, 55, 60, 4)
+    assert (found["df1"], found["df2"], found["n_periods"], found["n_assets"]) == (4, 55, 60, 4)
     assert np.isnan(found["estimate"])
     assert np.isnan(found["p_one_sided"])
     for variant, weighting in WEIGHTINGS.items():
@@ -260,7 +260,7 @@ def test_each_asset_keeps_its_own_months_and_joint_tests_the_common_ones() -> No
     holes = holes[~((holes["asset"] == "top") & (holes["date"] == last))]
     priced, inner = _price(holes), cut[~cut["date"].isin([first, last])]
 
-    months = priced[priced["analysis"] == "time_series"].groupby("asset")["n_months"].unique()
+    months = priced[priced["analysis"] == "time_series"].groupby("asset")["n_periods"].unique()
     assert {asset: list(each) for asset, each in months.items()} == {
         "low": [59],
         "middle": [60],
@@ -283,7 +283,7 @@ def test_each_asset_keeps_its_own_months_and_joint_tests_the_common_ones() -> No
 def test_a_month_without_market_counts_for_nothing_but_the_asset_s_own_mean() -> None:
     cut = _cut()
     cut.loc[cut["date"] == cut["date"].min(), "market_excess"] = np.nan
-    months = _price(cut).groupby("analysis")["n_months"].unique()
+    months = _price(cut).groupby("analysis")["n_periods"].unique()
     assert list(months["time_series"]) == list(months["market_line"]) == [59]
     assert sorted(months["describe"]) == [59, 60]
 
@@ -321,28 +321,30 @@ def test_the_line_is_compared_with_the_market_of_its_own_months() -> None:
     cut.loc[hole, "excess_return"] = np.nan
     _, market = _wide(cut)
     mean = _number(_price(cut), "market_line/-/all/market_mean/-")
-    assert mean["n_months"] == len(market) - 1
+    assert mean["n_periods"] == len(market) - 1
     # Both sides sum the same months in the same order: only the last bit may differ.
     assert mean["estimate"] == pytest.approx(market[1:].mean(), rel=1e-14)
     assert mean["se"] == pytest.approx(market[1:].std(ddof=1) / np.sqrt(len(market) - 1), rel=1e-13)
 
 
+@pytest.mark.fault(34)
 def test_too_few_months_for_anything() -> None:
-    priced = _price(_cut(n_months=2), "time_series", "joint_alpha", "market_line")
+    priced = _price(_cut(n_periods=2), "time_series", "joint_alpha", "market_line")
     assert _undefined_reason(_but_market_mean(priced)) == "needs at least 3 complete months, has 2"
-    assert set(priced["n_months"]) == {2}
+    assert set(priced["n_periods"]) == {2}
 
 
+@pytest.mark.fault(34)
 def test_too_few_months_for_the_joint_tests_only() -> None:
     # T = N + K = 5: below the six months that four assets and the market need.
-    priced = _price(_cut(n_months=5), "joint_alpha", "market_line")
+    priced = _price(_cut(n_periods=5), "joint_alpha", "market_line")
     alpha = priced[priced["term"].isin(["alpha", "sharpe2_best"])]
     assert _undefined_reason(alpha) == "needs at least 6 months for 4 assets, has 5"
     assert "6 months" in _undefined_reason(priced[priced["term"] == "pricing_errors"])
     assert "6 months" in _undefined_reason(priced[priced["variant"] == "gls"])
     line = priced[priced["variant"].isin(["ols", "wls"]) & (priced["term"] == "slope")]
     assert (line["status"] == "ok").all()
-    assert (_price(_cut(n_months=6), "joint_alpha")["status"] == "ok").all()
+    assert (_price(_cut(n_periods=6), "joint_alpha")["status"] == "ok").all()
 
 
 def test_two_assets_make_no_line() -> None:
@@ -436,3 +438,67 @@ def test_malformed_cuts_are_refused() -> None:
         other.loc[0, column] += 0.001
         with pytest.raises(ValueError, match=f"{column} differs between assets"):
             _price(other)
+
+
+def _in_days(cut: pd.DataFrame) -> pd.DataFrame:
+    """The same returns dated by consecutive weekdays instead of months."""
+    days = pd.bdate_range("1960-01-04", periods=cut["date"].nunique())
+    return cut.assign(date=np.repeat(days, cut["asset"].nunique()))
+
+
+def _price_days(cut: pd.DataFrame) -> pd.DataFrame:
+    return price_subperiod(
+        _in_days(cut),
+        subperiod="early",
+        level=0.05,
+        hac_lag=None,
+        analyses=list(ANALYSES),
+        frequency="daily",
+    )
+
+
+def test_days_are_priced_as_months_are_but_for_the_year() -> None:
+    """No statistic knows how long a period is, except an alpha a year: 252 trading days, not 12 months."""
+    monthly, daily = _price(_cut()), _price_days(_cut())
+    a_year = monthly["term"] == "alpha_year"
+    pd.testing.assert_frame_equal(daily[~a_year], monthly[~a_year], check_exact=True)
+    # One multiplication each.
+    np.testing.assert_allclose(
+        daily.loc[a_year, "estimate"], monthly.loc[a_year, "estimate"] * (252 / 12), rtol=1e-15
+    )
+
+
+def test_reasons_speak_of_days() -> None:
+    reasons = set(_price_days(_cut(n_periods=2))["reason"]) - {""}
+    assert "needs at least 3 complete days, has 2" in reasons
+    assert not any("month" in reason or "period" in reason for reason in reasons)
+    one = set(_price_days(_cut(n_periods=1))["reason"])
+    assert "needs at least 2 days, has 1" in one
+    absent = _cut()
+    absent.loc[absent["asset"] == "top", "excess_return"] = np.nan
+    assert "no day has returns of both the market and top" in set(_price_days(absent)["reason"])
+
+
+def test_two_rows_of_one_day_are_refused() -> None:
+    cut = _in_days(_cut())
+    with pytest.raises(ValueError, match="two rows in one day"):
+        price_subperiod(
+            pd.concat([cut, cut.iloc[:1]]),
+            subperiod="early",
+            level=0.05,
+            hac_lag=None,
+            analyses=["describe"],
+            frequency="daily",
+        )
+
+
+def test_without_a_riskless_rate_everything_else_is_the_same() -> None:
+    cut = _cut()
+    usual, without = _price(cut), _price(cut.assign(riskless=np.nan))
+    is_riskless = without["asset"] == "riskless"
+    assert is_riskless.sum() == 2
+    assert set(without.loc[is_riskless, "status"]) == {"undefined"}
+    assert set(without.loc[is_riskless, "reason"]) == {
+        "the study has returns in excess of a riskless rate that is not known"
+    }
+    pd.testing.assert_frame_equal(without[~is_riskless], usual[~is_riskless])

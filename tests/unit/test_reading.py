@@ -42,6 +42,7 @@ def rows_of(table: TextTable) -> list[tuple]:
 # Fault 1: missing, empty, header only, broken.
 
 
+@pytest.mark.fault(1)
 def test_missing_file(tmp_path: Path) -> None:
     with pytest.raises(KnownProblem) as caught:
         read_text(str(tmp_path / "none.csv"), examples.reading("raw/none.csv", COLUMNS))
@@ -52,6 +53,7 @@ def test_missing_file(tmp_path: Path) -> None:
     )
 
 
+@pytest.mark.fault(1)
 @pytest.mark.parametrize("name", ["r.csv", "r.csv.gz", "r.parquet"])
 def test_empty_file(tmp_path: Path, name: str) -> None:
     assert (
@@ -59,6 +61,7 @@ def test_empty_file(tmp_path: Path, name: str) -> None:
     )
 
 
+@pytest.mark.fault(1)
 @pytest.mark.parametrize("text", ["id,day,ret", "id,day,ret\n", "id,day,ret\r\n\r\n  \n"])
 def test_header_only(tmp_path: Path, text: str) -> None:
     said = "  raw/r.csv: there is a header but no row\n    → deliver it again"
@@ -70,6 +73,7 @@ def test_no_header(tmp_path: Path) -> None:
     assert message(tmp_path, "\n" + TEXT) == said
 
 
+@pytest.mark.fault(1)
 def test_cut_off_gzip(tmp_path: Path) -> None:
     whole = gzip.compress((TEXT * 1000).encode())
     (tmp_path / "r.csv.gz").write_bytes(whole[:-20])
@@ -87,13 +91,15 @@ def test_ending_says_gzip_but_it_is_text(tmp_path: Path) -> None:
         read_text(str(tmp_path / "r.csv.gz"), examples.reading("raw/r.csv.gz", COLUMNS))
 
 
+@pytest.mark.fault(1)
 @pytest.mark.parametrize(
     ("content", "what"),
     [
         (gzip.compress(TEXT.encode()), "compressed with gzip"),
         (b"PAR1\x15\x04", "a Parquet file"),
         (b"PK\x03\x04\x14", "a spreadsheet or a zip archive"),
-        (TEXT.encode("utf-16"), "UTF-16 text"),
+        (b"BZh91AY", "compressed with bzip2"),
+        (b"ARROW1\0\0", "a Feather (Arrow IPC) file"),
     ],
 )
 def test_ending_says_text_but_it_is_not(tmp_path: Path, content: bytes, what: str) -> None:
@@ -103,6 +109,13 @@ def test_ending_says_text_but_it_is_not(tmp_path: Path, content: bytes, what: st
     )
 
 
+def test_utf16_is_named_as_what_to_set(tmp_path: Path) -> None:
+    assert message(tmp_path, TEXT.encode("utf-16")) == (
+        "  raw/r.csv: its first bytes say it is UTF-16 text\n    → set encoding: utf-16"
+    )
+
+
+@pytest.mark.fault(1)
 def test_broken_parquet_footer(tmp_path: Path) -> None:
     examples.write_parquet(tmp_path / "whole.parquet", {"id": ["1"], "day": ["x"], "ret": [0.1]})
     broken = (tmp_path / "whole.parquet").read_bytes()[:-4]
@@ -114,14 +127,17 @@ def test_broken_parquet_footer(tmp_path: Path) -> None:
 # Faults 2, 3, 4 and 6: encoding, columns, separator.
 
 
+@pytest.mark.fault(2)
 def test_first_byte_that_is_not_utf8(tmp_path: Path) -> None:
     content = TEXT.encode() + "3,2000-01-31,é\n".encode("latin-1")
     position = content.index(b"\xe9") + 1
     assert message(tmp_path, content) == (
-        f"  raw/r.csv, line 4: byte {position} is not UTF-8 text\n    → save the file as UTF-8"
+        f"  raw/r.csv, line 4: byte {position} is not UTF-8 text\n"
+        "    → save the file as UTF-8, or set encoding: as in latin-1 or cp1252"
     )
 
 
+@pytest.mark.fault(3)
 def test_absent_columns_with_the_nearest_name(tmp_path: Path) -> None:
     assert message(tmp_path, "id,date,return\n1,2000-01-31,0.1\n") == (
         "  raw/r.csv: there is no column 'day'\n"
@@ -131,6 +147,7 @@ def test_absent_columns_with_the_nearest_name(tmp_path: Path) -> None:
     )
 
 
+@pytest.mark.fault(4)
 def test_column_twice(tmp_path: Path) -> None:
     assert message(tmp_path, "id,day,ret,note,note\n1,2,3,4,5\n") == (
         "  raw/r.csv: two columns are called 'note'\n    → rename one of them"
@@ -141,6 +158,7 @@ def test_columns_without_a_name_may_repeat(tmp_path: Path) -> None:
     assert rows_of(read(tmp_path, "id,day,ret,,\n1,2,3,,\n")) == [("1", "2", "3", 2)]
 
 
+@pytest.mark.fault(6)
 @pytest.mark.parametrize(
     ("separator", "name", "shown"),
     [(";", "semicolon", '";"'), ("\t", "tab", '"\\t"'), ("|", "bar", '"|"')],
@@ -163,6 +181,7 @@ def test_separator_that_cannot_be_one(tmp_path: Path) -> None:
 # Fault 5: fields that do not fit the header.
 
 
+@pytest.mark.fault(5)
 def test_rows_that_do_not_fit(tmp_path: Path) -> None:
     table = read(
         tmp_path,
@@ -180,6 +199,7 @@ def test_rows_that_do_not_fit(tmp_path: Path) -> None:
     assert table.n_read == 7
 
 
+@pytest.mark.fault(5)
 def test_unbalanced_quote_spoils_no_other_row(tmp_path: Path) -> None:
     table = read(tmp_path, 'id,day,ret\n1,"a,b\n2,c,d\n3,e,f\n4,"g,h\n5,i,j\n')
     assert [row[0] for row in rows_of(table)] == ["2", "3", "5"]
@@ -254,6 +274,7 @@ def test_what_a_csv_writer_quotes_is_read_back(
 # Fault 7: marks, blanks and line ends.
 
 
+@pytest.mark.fault(7)
 def test_bom_crlf_quotes_blanks_and_empty_lines(tmp_path: Path) -> None:
     text = '\ufeff"id", day ,ret\r\n"001" , 2000-01-31,0.1\r\n\r\n2,"a, ""b""",\u00a00.2  \r\n   \r\n3,,'
     table = read(tmp_path, text)

@@ -30,6 +30,11 @@ def noisy(scale: float, n: int = 60, mean: float = 0.0) -> list[str]:
 # Rows set aside.
 
 
+@pytest.mark.fault(8)
+@pytest.mark.fault(13)
+@pytest.mark.fault(14)
+@pytest.mark.fault(15)
+@pytest.mark.fault(23)
 def test_each_row_set_aside_with_its_reason(tmp_path: Path) -> None:
     rows = [
         SOUND,
@@ -108,6 +113,7 @@ def test_parquet_rows_are_counted_from_one(tmp_path: Path) -> None:
 # Faults 7, 10, 11, 23: what is read in spite of its looks.
 
 
+@pytest.mark.fault(23)
 def test_identifiers_are_text_without_blanks_and_quotes(tmp_path: Path) -> None:
     rows = ["007,2000-01-31,0.1,,1,1", " '007' ,2000-02-29,0.1,,1,1", '"7 ",2000-01-31,0.1,,1,1']
     found = validate(tmp_path, lines(*rows))
@@ -115,6 +121,7 @@ def test_identifiers_are_text_without_blanks_and_quotes(tmp_path: Path) -> None:
     assert fault(found, 7)["n"] == 3  # blanks twice, quotes once
 
 
+@pytest.mark.fault(7)
 def test_thousands_in_sizes_and_prices_only(tmp_path: Path) -> None:
     rows = ['A,2000-01-31,0.1,,"1,234.5","2,000"', 'A,2000-02-29,"1,234",,1,1']
     found = validate(tmp_path, lines(*rows))
@@ -123,6 +130,7 @@ def test_thousands_in_sizes_and_prices_only(tmp_path: Path) -> None:
     assert aside(found)[0][:3] == (3, 13, "text in a number column: ret is '1,234'")
 
 
+@pytest.mark.fault(11)
 @pytest.mark.parametrize(
     ("form", "written"), [("%Y%m%d", "20000331"), ("%Y%m", "200003"), ("%Y-%m-%d", "2000-03-30")]
 )
@@ -131,6 +139,7 @@ def test_integer_dates_and_last_trading_days(tmp_path: Path, form: str, written:
     assert found.panel["date"].dt.strftime("%Y-%m-%d").tolist() == ["2000-03-31"]
 
 
+@pytest.mark.fault(10)
 def test_integer_dates_in_parquet(tmp_path: Path) -> None:
     columns = {"security": "id", "date": "day", "return": "ret"}
     file = examples.write_parquet(
@@ -143,6 +152,7 @@ def test_integer_dates_in_parquet(tmp_path: Path) -> None:
 # Fault 12: missing codes.
 
 
+@pytest.mark.fault(12)
 def test_missing_returns_by_code(tmp_path: Path) -> None:
     rows = [
         *(f"A,2000-0{m}-28,{v},,1,1" for m, v in enumerate(["", "NA", "-99", "-99.0", "0"], 1)),
@@ -153,7 +163,7 @@ def test_missing_returns_by_code(tmp_path: Path) -> None:
     assert found.panel["total_return"].iloc[4] == 0.0
     entry = fault(found, 12)
     assert (entry["n"], entry["kinds"]) == (4, {"empty": 1, "NA": 1, "-99": 2})
-    assert entry["examples"] == ["A in 2000-01", "A in 2000-02", "A in 2000-03"]
+    assert entry["examples"] == ["A on 2000-01-28", "A on 2000-02-28", "A on 2000-03-28"]
     assert found.intake["n_missing_returns"] == 4
 
 
@@ -170,7 +180,7 @@ def test_codes_in_other_columns(tmp_path: Path) -> None:
 
 TWICE = [
     "A,2000-01-31,0.01,,1,1",
-    "A,2000-01-28,0.010,,1,1",  # the same month and values: an exact duplicate
+    "A,2000-01-31,0.010,,1,1",  # the same day and values: an exact duplicate
     "B,2000-01-31,0.01,,1,1",
     "B,2000-01-31,0.02,,1,1",
     "B,2000-01-31,0.01,,1,1",
@@ -178,15 +188,29 @@ TWICE = [
 ]
 
 
+@pytest.mark.fault(19)
 def test_different_rows_of_one_month_are_set_aside(tmp_path: Path) -> None:
     found = validate(tmp_path, lines(*TWICE))
-    said = "another, different row of the same security and month: B in 2000-01"
+    said = "another, different row of the same security and month: B on 2000-01-31"
     assert aside(found) == [(4, 19, said, TWICE[2]), (5, 19, said, TWICE[3])]
     assert found.intake["exact_duplicates"] == 2
     assert kept(found) == [("A", "2000-01"), ("C", "2000-01")]
     assert fault(found, 19)["n"] == 2
 
 
+def test_two_days_of_one_month_are_different_rows(tmp_path: Path) -> None:
+    rows = ["A,2000-01-31,0.01,,1,1", "A,2000-01-28,0.01,,1,1", SOUND]
+    found = validate(tmp_path, lines(*rows))
+    said = "another, different row of the same security and month: A on 2000-01"
+    assert aside(found) == [(2, 19, f"{said}-31", rows[0]), (3, 19, f"{said}-28", rows[1])]
+    assert found.intake["exact_duplicates"] == 0
+    assert kept(validate(tmp_path, lines(*rows), same_month_rows="last")) == [
+        ("000A", "2000-01"),
+        ("A", "2000-01"),
+    ]
+
+
+@pytest.mark.fault(19)
 @pytest.mark.parametrize("keep", ["first", "last"])
 def test_the_first_or_last_row_may_be_kept(tmp_path: Path, keep: str) -> None:
     found = validate(tmp_path, lines(*TWICE), same_month_rows=keep)
@@ -207,6 +231,7 @@ def test_first_and_last_differ_where_the_rows_do(tmp_path: Path) -> None:
 # Faults 6 (decimal comma), 17, 39 and 40: stops of the whole file.
 
 
+@pytest.mark.fault(6)
 def test_decimal_comma(tmp_path: Path) -> None:
     rows = ["A;2000-01-31;0,015;;1;1", "A;2000-02-29;-0,02;;1;1"]
     text = lines(*rows, header=examples.HEADER.replace(",", ";"))
@@ -217,6 +242,17 @@ def test_decimal_comma(tmp_path: Path) -> None:
     )
 
 
+def test_decimal_comma_declared(tmp_path: Path) -> None:
+    rows = ["A;2000-01-31;0,015;;1.234,5;1", "A;2000-02-29;-,02;;1;2,5", "A;2000-03-31;0.1;;1;1"]
+    text = lines(*rows, header=examples.HEADER.replace(",", ";"))
+    found = validate(tmp_path, text, separator=";", decimal="comma")
+    assert found.panel["total_return"].tolist() == [0.015, -0.02]
+    assert found.panel[["size", "price"]].to_numpy().tolist() == [[1234.5, 1.0], [1.0, 2.5]]
+    assert aside(found) == [(4, 13, "text in a number column: ret is '0.1'", rows[2])]
+    assert fault(found, 7)["n"] == 1
+
+
+@pytest.mark.fault(17)
 def test_percent_declared_decimal(tmp_path: Path) -> None:
     rows = noisy(5.0)
     size = np.abs([float(row.split(",")[2]) for row in rows])
@@ -230,6 +266,7 @@ def test_percent_declared_decimal(tmp_path: Path) -> None:
     assert len(validate(tmp_path, lines(*rows), unit="percent").panel) == 60
 
 
+@pytest.mark.fault(17)
 def test_decimal_declared_percent(tmp_path: Path) -> None:
     message = refused(tmp_path, lines(*noisy(0.05)), unit="percent")
     assert "column ret: read as percent, half of all returns exceed 0.0" in message
@@ -237,11 +274,13 @@ def test_decimal_declared_percent(tmp_path: Path) -> None:
     assert len(validate(tmp_path, lines(*noisy(0.05))).panel) == 60
 
 
+@pytest.mark.fault(39)
 @pytest.mark.parametrize("unit", ["decimal", "percent"])
 def test_prices_delivered_as_returns(tmp_path: Path, unit: str) -> None:
     message = refused(tmp_path, lines(*noisy(5.0, mean=150.0)), unit=unit)
     assert message.endswith(
-        "\n    → hardly any is negative: does the column hold prices, or 1 + return?"
+        "\n    → hardly any is negative: does the column hold prices, or 1 + return? "
+        "For prices, name their column under price: and set return: {from: price}"
     )
 
 
@@ -254,14 +293,15 @@ def test_few_returns_say_nothing_of_the_unit(tmp_path: Path) -> None:
     assert len(validate(tmp_path, lines(*grid(1, 3, "0.9"))).panel) == 3
 
 
+@pytest.mark.fault(40)
 def test_daily_data(tmp_path: Path) -> None:
     rows = [
         f"{s},2000-{m:02d}-{d:02d},0.01,,1,1" for s in "AB" for m in (1, 2) for d in range(1, 21)
     ]
     assert refused(tmp_path, lines(*rows)) == (
         "The raw data cannot be used; nothing was written.\n"
-        "  raw/returns.csv: 80 dates in 4 months of single securities: are these daily or weekly data?\n"
-        "    → compound the returns to months first; this study is monthly"
+        "  raw/returns.csv: declared monthly, but 80 dates in 4 months of single securities, 20 a month: daily data?\n"
+        "    → set frequency: daily under data.returns, and they are compounded to months"
     )
 
 
@@ -271,12 +311,14 @@ def test_a_file_delivered_three_times_is_not_daily(tmp_path: Path) -> None:
     assert (len(found.panel), found.intake["exact_duplicates"]) == (30, 60)
 
 
+@pytest.mark.fault(40)
 def test_quarterly_data(tmp_path: Path) -> None:
     rows = [f"{s},2000-{m:02d}-28,0.01,,1,1" for s in range(11) for m in (3, 6, 9, 12)]
     assert refused(tmp_path, lines(*rows)) == (
         "The raw data cannot be used; nothing was written.\n"
-        "  raw/returns.csv: a security's next row is typically 3 months on: are these quarterly or yearly data?\n"
-        "    → deliver monthly returns; this study is monthly"
+        "  raw/returns.csv: declared monthly, but a security's next row is typically 3 months on, "
+        "in 33 steps from row to row: quarterly data?\n"
+        "    → deliver monthly returns"
     )
 
 

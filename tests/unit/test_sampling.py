@@ -36,7 +36,7 @@ def span(first: str, last: str) -> list[str]:
 
 
 def subperiod(name: str, first: str, last: str) -> dict[str, Any]:
-    return {"name": name, "first": first, "last": last, "n_months": len(span(first, last))}
+    return {"name": name, "first": first, "last": last, "n_periods": len(span(first, last))}
 
 
 def numbers(frame: pd.DataFrame, name: str) -> dict[str, float]:
@@ -61,9 +61,9 @@ def count_slowly(panel: pd.DataFrame, sub: dict[str, Any]) -> dict[str, float]:
     histories = {s: sorted(m for name, m, _ in rows if name == s) for s, _, _ in rows}
     begin, end = min(m for _, m, _ in rows), max(m for _, m, _ in rows)
     return {
-        "n_months": len(months),
+        "n_periods": len(months),
         "n_securities": len({s for s, _, _ in inside}),
-        "n_security_months": len(inside),
+        "n_security_periods": len(inside),
         "mean_alive": mean(alive),
         "min_alive": min(alive),
         "max_alive": max(alive),
@@ -174,4 +174,17 @@ def test_what_came_in() -> None:
         ("screen", "screen-1", "n_securities"): 3,
         ("screen", "screen-2", "n_rows"): 4,
         ("screen", "screen-2", "n_securities"): 2,
+    }
+
+
+def test_a_study_without_total_returns_says_why_it_has_no_mean() -> None:
+    panel = panel_of({"a": span("2000-01", "2000-06"), "b": span("2000-01", "2000-06")})
+    found = describe_sample(
+        panel.assign(total_return=np.nan), None, [subperiod("all", "2000-01", "2000-06")], INTAKE
+    )
+    ESTIMATES.validate(found)
+    undefined = found[found["status"] == "undefined"]
+    assert undefined["term"].tolist() == ["mean_return", "sd_return"]
+    assert set(undefined["reason"]) == {
+        "the returns are in excess of a riskless rate that is not known"
     }

@@ -39,6 +39,7 @@ def test_values_are_decimal_and_sorted(tmp_path: Path) -> None:
     assert found["return"].tolist() == [-1.0, 0.025]
 
 
+@pytest.mark.fault(27)
 def test_months_missing_inside(tmp_path: Path) -> None:
     values = {m: 0.01 for m in YEAR if m not in {"2000-03", "2000-07"}} | {"2000-09": "NA"}
     assert refused(tmp_path, ROW, market=values) == (
@@ -63,6 +64,7 @@ def test_missing_values_at_the_ends_only_shorten(tmp_path: Path) -> None:
     assert len(found) == 10
 
 
+@pytest.mark.fault(31)
 def test_months_twice(tmp_path: Path) -> None:
     text = "month,mkt\n2000-02,0.1\n2000-01,0.1\n2000-01,0.2\n2000-02,0.1\n2000-02,0.1\n"
     assert message(tmp_path, text) == (
@@ -134,6 +136,7 @@ def test_riskless_return_by_hand() -> None:
     assert riskless_return(rate, "period_return").tolist() == rate.tolist()
 
 
+@pytest.mark.fault(29)
 @pytest.mark.parametrize(
     ("rate", "quoted", "unit", "said"),
     [
@@ -176,3 +179,144 @@ def test_a_high_but_plausible_rate_passes() -> None:
     dates = pd.to_datetime(["2000-01-31"])
     series = pd.DataFrame({"date": dates, "rate": [0.03], "riskless": [0.03]})
     check_riskless(series, examples.reading("r", {"rate": "rf"}), "period_return")
+
+
+# Series of days, and frequencies that are not as declared.
+
+
+def read_as(folder: Path, text: str, frequency: str, **changes: Any) -> pd.DataFrame:
+    file = examples.write(folder / "market.csv", text)
+    columns = changes.pop("columns", {"date": "date", "return": "mkt"})
+    return read_series(
+        file, examples.reading("raw/market.csv", columns, **changes), "return", frequency
+    )
+
+
+def refused_as(*arguments: Any, **options: Any) -> str:
+    with pytest.raises(KnownProblem) as caught:
+        read_as(*arguments, **options)
+    return str(caught.value)
+
+
+def daily_file(first: str, end: str, step: int = 1) -> str:
+    days = np.arange(first, end, dtype="datetime64[D]")
+    days = days[np.is_busday(days)][::step]
+    return "date,mkt\n" + "".join(f"{day},{0.001 * (-1) ** i}\n" for i, day in enumerate(days))
+
+
+def test_days_keep_their_dates(tmp_path: Path) -> None:
+    found = read_as(tmp_path, "date,mkt\n2000-02-29,0.2\n2000-01-03,0.1\n2000-01-04,NA\n", "daily")
+    assert found["date"].dt.strftime("%Y-%m-%d").tolist() == ["2000-01-03", "2000-02-29"]
+    assert found["return"].tolist() == [0.1, 0.2]
+    assert found["date"].dtype == "datetime64[ms]"
+
+
+def test_days_twice(tmp_path: Path) -> None:
+    text = "date,mkt\n2000-01-04,0.2\n2000-01-03,0.1\n2000-01-03,0.1\n"
+    assert refused_as(tmp_path, text, "daily") == (
+        f"{HEAD}  raw/market.csv: days that stand twice: 2000-01-03\n    → keep one row a day"
+    )
+
+
+def test_days_need_a_day(tmp_path: Path) -> None:
+    assert refused_as(tmp_path, "date,mkt\n2000-01,0.2\n", "daily", dates="%Y-%m") == (
+        f"{HEAD}  raw/market.csv, dates: '%Y-%m' gives no day\n"
+        "    → as in %Y-%m-%d, or set frequency: monthly"
+    )
+
+
+@pytest.mark.parametrize(
+    ("text", "frequency", "said"),
+    [
+        (
+            daily_file("2000-01-01", "2000-07-01"),
+            "monthly",
+            "declared monthly, but it has 130 dates in 6 months: are these daily or weekly data?\n"
+            "    → set frequency: daily, or deliver one value a month",
+        ),
+        (
+            "date,mkt\n"
+            + "".join(f"{y}-{m:02d}-28,0.1\n" for y in (2000, 2001) for m in (3, 6, 9, 12)),
+            "monthly",
+            "declared monthly, but a value is typically 3 months from the next: are these quarterly or yearly data?\n"
+            "    → deliver monthly values",
+        ),
+        (
+            "date,mkt\n" + "".join(f"{month}-28,0.1\n" for month in YEAR),
+            "daily",
+            "declared daily, but it has 12 dates in 12 months: are these monthly data?\n"
+            "    → set frequency: monthly",
+        ),
+        (
+            daily_file("2000-01-01", "2000-07-01", step=5),
+            "daily",
+            "declared daily, but it has 26 dates in 6 months: are these weekly data?\n"
+            "    → deliver daily data",
+        ),
+    ],
+    ids=["daily", "quarterly", "monthly", "weekly"],
+)
+def test_another_frequency_than_declared(
+    tmp_path: Path, text: str, frequency: str, said: str
+) -> None:
+    assert refused_as(tmp_path, text, frequency) == f"{HEAD}  raw/market.csv: {said}"
+
+
+def test_test_assets_of_another_frequency(tmp_path: Path) -> None:
+    rows = daily_file("2000-01-01", "2000-07-01").splitlines()[1:]
+    text = "date,mkt,name\n" + "".join(f"{row},{name}\n" for name in "ab" for row in rows)
+    columns = {"date": "date", "return": "mkt", "asset": "name"}
+    assert refused_as(tmp_path, text, "monthly", columns=columns) == (
+        f"{HEAD}  raw/market.csv: declared monthly, but it has 260 dates in 12 months of 2 series: "
+        "are these daily or weekly data?\n    → set frequency: daily, or deliver one value a month"
+    )
+
+
+def test_a_month_that_stands_twice_is_no_daily_series(tmp_path: Path) -> None:
+    text = "date,mkt\n" + "".join(f"{month}-28,0.1\n" for month in [*YEAR, YEAR[3]])
+    assert "months that stand twice: 2000-04" in refused_as(tmp_path, text, "monthly")
+
+
+@pytest.mark.parametrize(
+    ("unit", "size", "said"),
+    [
+        ("decimal", 1.0, "read as decimal, half of all returns exceed"),
+        ("percent", 0.01, "read as percent, half of all returns exceed"),
+    ],
+)
+def test_daily_returns_in_another_unit(tmp_path: Path, unit: str, size: float, said: str) -> None:
+    rng = np.random.default_rng(2)
+    rows = daily_file("2000-01-01", "2000-07-01").splitlines()
+    values = rng.normal(0, size, len(rows) - 1)
+    lines_of = [f"{row.split(',')[0]},{v:.6f}" for row, v in zip(rows[1:], values, strict=True)]
+    text = "\n".join([rows[0], *lines_of]) + "\n"
+    assert said in refused_as(tmp_path, text, "daily", unit=unit)
+    other = "percent" if unit == "decimal" else "decimal"
+    assert len(read_as(tmp_path, text, "daily", unit=other)) == len(values)
+
+
+def test_several_files_are_one_series(tmp_path: Path) -> None:
+    files = [
+        examples.write(
+            tmp_path / f"{year}.csv",
+            monthly_file("mkt", dict.fromkeys(months(f"{year}-01", 12), 0.01)),
+        )
+        for year in (2001, 2000)
+    ]
+    reading = examples.reading("raw/*.csv", {"date": "month", "return": "mkt"}, dates="%Y-%m")
+    found = read_series(files, reading, "return")
+    assert len(found) == 24
+    assert found["date"].is_monotonic_increasing
+    with pytest.raises(KnownProblem) as caught:
+        read_series(
+            [files[0], examples.write(tmp_path / "bad.csv", "month,mkt\n2000-01,x\n")],
+            reading,
+            "return",
+        )
+    assert str(caught.value) == (
+        f"{HEAD}  bad.csv, line 2, column mkt: 'x' is not a number\n    → mend it, or list it under missing:"
+    )
+    with pytest.raises(
+        KnownProblem, match=r"raw/\*\.csv: months that stand twice: 2001-01, 2001-02"
+    ):
+        read_series([files[0], files[0]], reading, "return")

@@ -15,7 +15,13 @@ import pytest
 
 from lineproof.frames import MEMBERS, PORTFOLIO_RETURNS
 from lineproof.problems import KnownProblem
-from lineproof.sorting import Sorted, asset_names, sort_single_window, take_supplied
+from lineproof.sorting import (
+    Sorted,
+    _lagged_size,
+    asset_names,
+    sort_single_window,
+    take_supplied,
+)
 
 OPTIONS = {"name": "two", "groups": 2, "weights": "equal", "form_month": 12, "hold": 12}
 MONTHS = ["2000-12", "2001-01", "2001-02", "2001-03", "2001-04"]
@@ -273,6 +279,7 @@ def test_sizes_of_one_security_do_not_reach_the_next() -> None:
     assert column(found, "p01", "mean_size") == [100, 110]
 
 
+@pytest.mark.fault(33)
 def test_too_many_groups() -> None:
     with pytest.raises(KnownProblem) as told:
         form_tiny(groups=5)
@@ -328,3 +335,30 @@ def test_supplied_assets(kind: str, expected: list[float]) -> None:
 def test_supplied_assets_of_another_time() -> None:
     with pytest.raises(KnownProblem, match="no month in common with the market"):
         take_supplied(supplied().iloc[3:], market(), returns_are="total")
+
+
+def test_supplied_total_returns_need_a_riskless_rate() -> None:
+    unknown = market().assign(riskless=np.nan)
+    with pytest.raises(KnownProblem) as caught:
+        take_supplied(supplied(), unknown, returns_are="total")
+    assert str(caught.value) == (
+        "Excess returns cannot be taken.\n  the supplied test assets: total returns need a riskless rate\n"
+        "    → add data.riskless, or set is: excess if they are in excess of it"
+    )
+    found = take_supplied(supplied(), unknown, returns_are="excess")
+    assert found.returns["excess_return"].tolist() == [0.05, 0.02, 0.03]
+
+
+def test_sizes_grow_by_excess_returns_where_no_total_is_known() -> None:
+    panel = pd.DataFrame(
+        {
+            "security": ["a"] * 4 + ["b"] * 2,
+            "date": month_ends(["2001-01", "2001-02", "2001-03", "2001-04", "2001-01", "2001-02"]),
+            "total_return": np.nan,
+            "excess_return": [0.1, 0.5, np.nan, 0.2, 0.1, 0.1],
+            "size": [100.0, np.nan, np.nan, np.nan, np.nan, 8.0],
+        }
+    )
+    found = _lagged_size(panel)
+    # A product of numbers that are no binary fractions: one rounding.
+    np.testing.assert_allclose(found, [np.nan, 100, 150, 150, np.nan, np.nan], rtol=1e-15)

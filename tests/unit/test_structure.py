@@ -20,6 +20,7 @@ REGISTRIES = (
     "lineproof.designs:DESIGNS",
     "lineproof.designs:WEIGHTS",
     "lineproof.analyses:ANALYSES",
+    "lineproof.quotings:QUOTINGS",
     "lineproof.paper.exhibits:TABLES",
     "lineproof.paper.exhibits:FIGURES",
     "lineproof.intake.observers:OBSERVERS",

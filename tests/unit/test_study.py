@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import textwrap
+from dataclasses import asdict
 from pathlib import Path
 
 import pytest
 
 from lineproof.problems import KnownProblem
-from lineproof.study import load_study
+from lineproof.study import IntakeSpec, load_study
+from lineproof.wiring import Wiring
 
 GOOD = textwrap.dedent(
     """\
@@ -83,10 +85,11 @@ def test_defaults_are_those_of_the_schema(folder: Path) -> None:
 
 def test_paths_are_relative_to_the_study_file(folder: Path) -> None:
     study = load_study(write(folder, GOOD))
-    assert Path(study.returns.file) == (folder / "returns.csv").resolve()
+    assert study.returns.files == (str((folder / "returns.csv").resolve()),)
     assert study.returns.label == "returns.csv"
 
 
+@pytest.mark.fault(33)
 @pytest.mark.parametrize(
     ("edit", "expected"),
     [
@@ -147,6 +150,7 @@ def test_one_problem_is_said_with_its_place(
     assert problems(folder, changed(edit)) == [expected]
 
 
+@pytest.mark.fault(33)
 def test_all_problems_are_said_at_once_in_the_order_of_the_file(folder: Path) -> None:
     text = changed(
         ("title: My study", "titel: My study"),
@@ -162,6 +166,7 @@ def test_all_problems_are_said_at_once_in_the_order_of_the_file(folder: Path) ->
     ]
 
 
+@pytest.mark.fault(33)
 def test_references_that_lead_nowhere_are_all_said(folder: Path) -> None:
     text = changed(("rank_on: monthly60", "rank_on: m60")) + textwrap.dedent(
         """\
@@ -178,6 +183,7 @@ def test_references_that_lead_nowhere_are_all_said(folder: Path) -> None:
     ]
 
 
+@pytest.mark.fault(33)
 def test_a_key_that_stands_twice_is_said(folder: Path) -> None:
     text = changed(("  full: {}", "  full: {}\n  full: {from: 1990-01}"))
     assert problems(folder, text) == [
@@ -251,3 +257,296 @@ def test_what_is_sound_is_checked_further_although_another_section_is_not(folder
         "mine.yaml, line 9, betas.monthly60.windw: unknown key 'windw'",
         "mine.yaml, line 13, subperiods.full: has both split and every",
     ]
+
+
+MARKET = "market: {file: market.csv, columns: {date: month, return: mkt}}"
+RISKLESS = "  riskless: {file: bills.csv, columns: {date: month, rate: bill}}\n"
+
+
+def test_a_market_that_is_built(folder: Path) -> None:
+    study = load_study(write(folder, changed((MARKET, "market: {build: size}"))))
+    assert (study.market, study.market_build, study.market_is) == (None, "size", "total")
+    assert list(study.sources()) == ["data.returns", "data.riskless"]
+
+
+@pytest.mark.parametrize(
+    ("edits", "expected"),
+    [
+        (
+            [(MARKET, "market: {build: sise}")],
+            [
+                "mine.yaml, line 6, data.market.build: 'sise' is not one of the choices\n    → did you mean size?"
+            ],
+        ),
+        (
+            [(MARKET, "market: {build: size}"), (", size: cap", "")],
+            [
+                "mine.yaml, line 6, data.market.build: a market weighted by size needs a size column, and "
+                "data.returns.columns has none\n    → add size under data.returns.columns, or use build: equal"
+            ],
+        ),
+        (
+            [(MARKET, "market: {build: equal, file: market.csv, unit: percent}")],
+            [
+                "mine.yaml, line 6, data.market.file: a market that is built does not use 'file'\n"
+                "    → remove it, or remove build",
+                "mine.yaml, line 6, data.market.unit: a market that is built does not use 'unit'\n"
+                "    → remove it, or remove build",
+            ],
+        ),
+        (
+            [(MARKET, "market: {unit: percent}")],
+            [
+                "mine.yaml, line 6, data.market: the key 'columns' is missing\n"
+                "    → add it, or build: equal or size to make the market from the returns",
+                "mine.yaml, line 6, data.market: the key 'file' is missing\n"
+                "    → add it, or build: equal or size to make the market from the returns",
+            ],
+        ),
+    ],
+)
+def test_a_market_is_read_or_built(
+    folder: Path, edits: list[tuple[str, str]], expected: list[str]
+) -> None:
+    assert problems(folder, changed(*edits)) == expected
+
+
+def test_a_study_of_excess_returns_needs_no_riskless_rate(folder: Path) -> None:
+    text = changed(
+        ("size: cap}", "size: cap}\n    is: excess"),
+        ("return: mkt}", "return: mkt}, is: excess"),
+        (RISKLESS, ""),
+    )
+    study = load_study(write(folder, text))
+    assert (study.returns_are, study.market_is, study.riskless) == ("excess", "excess", None)
+    assert list(study.sources()) == ["data.returns", "data.market"]
+
+
+def test_a_market_built_of_excess_returns_is_one(folder: Path) -> None:
+    text = changed(
+        ("size: cap}", "size: cap}\n    is: excess"),
+        (MARKET, "market: {build: equal}"),
+        (RISKLESS, ""),
+    )
+    study = load_study(write(folder, text))
+    assert (study.market_is, study.market_build, study.riskless) == ("excess", "equal", None)
+
+
+def test_total_returns_need_a_riskless_rate(folder: Path) -> None:
+    supplied = "{design: supplied, file: market.csv, columns: {asset: a, date: d, return: r}}"
+    text = changed((RISKLESS, ""), ("{rank_on: monthly60}", supplied))
+    change = "    → add data.riskless, or set is: excess if they are in excess of it"
+    assert problems(folder, text) == [
+        f"mine.yaml, line 3, data.returns: total returns need a riskless rate\n{change}",
+        f"mine.yaml, line 6, data.market: a total return needs a riskless rate\n{change}",
+        f"mine.yaml, line 10, portfolios.ten: total returns need a riskless rate\n{change}",
+    ]
+    one = text.replace("size: cap}", "size: cap}\n    is: excess").replace(
+        "mkt}", "mkt}, is: excess"
+    )
+    assert problems(folder, one) == [
+        f"mine.yaml, line 11, portfolios.ten: total returns need a riskless rate\n{change}"
+    ]
+
+
+def test_a_market_to_be_built_is_told_to_the_validation(folder: Path) -> None:
+    text = changed(
+        (MARKET, "market: {build: size}"), ("rate: bill}", "rate: bill}, frequency: daily")
+    )
+    wiring = Wiring(load_study(write(folder, text)))
+    found = wiring.options("validate_returns")
+    assert (found["series"]["market"], found["market_build"]) == (None, "size")
+    assert found["series"]["riskless_frequency"] == "daily"
+
+
+def plus_intake(options: str, *edits: tuple[str, str]) -> str:
+    return changed(*edits) + f"intake:\n  {options}\n"
+
+
+def test_options_of_the_intake_and_their_defaults(folder: Path) -> None:
+    assert load_study(write(folder, GOOD)).intake == IntakeSpec(
+        screens=(),
+        outliers={"jump_and_reversal": "flag"},
+        return_after_hole="keep",
+        stale_run=None,
+        missing_final_return=None,
+        final_return_by_reason={},
+        allow_partial_last_month=False,
+        other_unit_stop_above=0.1,
+        same_month_rows="set_aside",
+    )
+    text = plus_intake(
+        "{outliers: {jump_and_reversal: set_aside}, return_after_hole: set_aside, stale_prices: {run: 6}, "
+        'delisting: {missing_final_return: -1, by_reason: {500: -0.3, "007": 0}}, '
+        "allow_partial_last_month: yes, other_unit_stop_above: 0, same_month_rows: last}",
+        ("size: cap", "size: cap, exit_reason: why"),
+    )
+    assert load_study(write(folder, text)).intake == IntakeSpec(
+        screens=(),
+        outliers={"jump_and_reversal": "set_aside"},
+        return_after_hole="set_aside",
+        stale_run=6,
+        missing_final_return=-1.0,
+        final_return_by_reason={"500": -0.3, "007": 0.0},
+        allow_partial_last_month=True,
+        other_unit_stop_above=0.0,
+        same_month_rows="last",
+    )
+
+
+def test_the_options_of_the_intake_are_those_of_the_validation(folder: Path) -> None:
+    study = load_study(write(folder, GOOD))
+    assert Wiring(study).options("validate_returns")["rules"] == asdict(study.intake)
+
+
+def test_dates_may_be_left_to_the_data(folder: Path) -> None:
+    assert load_study(write(folder, GOOD)).returns.reading()["dates"] is None
+    text = changed(("riskless: {file", 'riskless: {dates: "%m/%Y", file'))
+    assert load_study(write(folder, text)).riskless.reading()["dates"] == "%m/%Y"
+
+
+@pytest.mark.fault(39)
+def test_returns_may_be_computed_from_prices(folder: Path) -> None:
+    text = changed(("return: ret, size: cap", "return: {from: price}, price: px"))
+    returns = load_study(write(folder, text)).returns
+    assert returns.return_from == returns.reading()["return_from"] == "price"
+    assert returns.columns == {"security": "id", "date": "date", "price": "px"}
+    assert load_study(write(folder, GOOD)).returns.return_from is None
+
+
+COLUMNS = "mine.yaml, line 5, data.returns.columns"
+
+
+@pytest.mark.fault(33)
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        (
+            changed(("return: ret", "return: {from: price}")),
+            f"{COLUMNS}.return: returns from prices need a price column, and there is none\n"
+            "    → add price under data.returns.columns",
+        ),
+        (
+            changed(("return: ret", "return: {from: prize}, price: px")),
+            f"{COLUMNS}.return.from: 'prize' is not one of the choices\n    → did you mean price?",
+        ),
+        (
+            changed(("return: ret", "return: 5")),
+            f"{COLUMNS}.return: found 5\n    → give text or a mapping of keys",
+        ),
+        (
+            changed(("size: cap", "size: cap, price: cap")),
+            f"{COLUMNS}.price: the column 'cap' is named as size already\n"
+            "    → one column cannot be both: change one of the two",
+        ),
+        (
+            plus_intake("delisting: {by_reason: {A: -0.3}}"),
+            "mine.yaml, line 15, intake.delisting.by_reason: final returns by reason need a column exit_reason, "
+            "and data.returns.columns has none\n"
+            "    → add exit_reason under data.returns.columns, or remove by_reason",
+        ),
+        (
+            plus_intake("delisting: {by_reason: {007: -0.3}}", ("size: cap", "exit_reason: why")),
+            "mine.yaml, line 15, intake.delisting.by_reason: a code that YAML takes for 7 is not what is written\n"
+            "    → put it in quotes",
+        ),
+        (
+            plus_intake("delisting: {by_reason: {A: -30}}", ("size: cap", "exit_reason: why")),
+            "mine.yaml, line 15, intake.delisting.by_reason.A: -30 is out of range\n"
+            "    → give at least -1 and at most 1",
+        ),
+        (
+            plus_intake("stale_prices: {}"),
+            "mine.yaml, line 15, intake.stale_prices: the key 'run' is missing\n"
+            "    → add it: Rows within runs of at least so many zero returns do not pass.",
+        ),
+        (
+            plus_intake("stale_prices: {run: 1}"),
+            "mine.yaml, line 15, intake.stale_prices.run: 1 is out of range\n"
+            "    → give at least 2 and at most 10000 periods",
+        ),
+        (
+            plus_intake("return_after_hole: set_asid"),
+            "mine.yaml, line 15, intake.return_after_hole: 'set_asid' is not one of the choices\n"
+            "    → did you mean set_aside?",
+        ),
+        (
+            plus_intake("allow_partial_last_month: perhaps"),
+            "mine.yaml, line 15, intake.allow_partial_last_month: found 'perhaps'\n    → give yes or no",
+        ),
+        (
+            plus_intake("other_unit_stop_above: 10"),
+            "mine.yaml, line 15, intake.other_unit_stop_above: 10 is out of range\n"
+            "    → give at least 0 and at most 1",
+        ),
+        (
+            plus_intake("outlier: {}"),
+            "mine.yaml, line 15, intake.outlier: unknown key 'outlier'\n    → did you mean outliers?",
+        ),
+        (
+            changed(("  full: {}", "  full: {split: 2}\n  full-1: {}")),
+            "mine.yaml, line 14, subperiods.full-1: two subperiods would be called full-1: this one and one of full\n"
+            "    → rename one of them",
+        ),
+        (
+            changed(("subperiods:", "pricing: {run: [time_series, time_series]}\nsubperiods:")),
+            "mine.yaml, line 12, pricing.run: 'time_series' stands twice\n    → name each once",
+        ),
+        (
+            changed(("data:", "demo: {first: 1999-01, last: 1990-01}\ndata:")),
+            "mine.yaml, line 2, demo: runs backwards, from 1999-01 to 1990-01\n    → swap first and last",
+        ),
+    ],
+)
+def test_problems_of_single_options(folder: Path, text: str, expected: str) -> None:
+    assert problems(folder, text) == [expected]
+
+
+def test_one_name_in_two_sections_is_not_ambiguous(folder: Path) -> None:
+    """`rank_on` looks among the betas only, `paper.main` among the portfolios only."""
+    text = changed(
+        ("  monthly60: {window", "  ten: {window"), ("rank_on: monthly60", "rank_on: ten")
+    )
+    study = load_study(write(folder, text))
+    assert (study.sorts["ten"].rank_on, study.paper.main) == ("ten", "ten")
+
+    text = changed(
+        ("title: My study}", "title: My study, frequency: daily}"),
+        ("monthly60: {window: 60, min: 24}", "monthly60: {window: 250, min: 120}"),
+    )
+    study = load_study(write(folder, text))
+    assert (study.frequency, study.betas["monthly60"].returns) == ("daily", "daily")
+    assert load_study(write(folder, GOOD)).betas["monthly60"].returns == "monthly"
+
+
+@pytest.mark.parametrize(
+    ("edits", "expected"),
+    [
+        (
+            [("window: 60, min: 24", "returns: daily, window: 250, min: 120")],
+            "mine.yaml, line 9, betas.monthly60.returns: daily returns are asked for, and the study has monthly ones "
+            "only\n    → declare data.returns.frequency: daily if the file has days, or use returns: own",
+        ),
+        (
+            [("My study}", "My study, frequency: daily}"), ("window: 60, min: 24", "window: 250")],
+            "mine.yaml, line 9, betas.monthly60: the key 'min' is missing\n"
+            "    → betas from daily returns need it, in trading days",
+        ),
+        (
+            [("window: 60, min: 24", "window: 601, min: 24")],
+            "mine.yaml, line 9, betas.monthly60.window: 601 is out of range\n    → give at most 600 months",
+        ),
+        (
+            [
+                ("title: My study}", "title: My study, frequency: daily}\ndemo: {}"),
+                ("window: 60, min: 24", "window: 250, min: 120"),
+            ],
+            "mine.yaml, line 1, study.frequency: the invented market has monthly returns only\n"
+            "    → use frequency: monthly, or leave out the section demo",
+        ),
+    ],
+)
+def test_daily_returns_must_exist_and_be_counted_in_days(
+    folder: Path, edits: list[tuple[str, str]], expected: str
+) -> None:
+    assert problems(folder, changed(*edits)) == [expected]

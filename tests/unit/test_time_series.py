@@ -31,17 +31,19 @@ def worked() -> Regression:
     return regress(RETURNS, MARKET)
 
 
-def _data(seed: int, n_months: int, n_assets: int, n_factors: int) -> tuple[np.ndarray, np.ndarray]:
+def _data(
+    seed: int, n_periods: int, n_assets: int, n_factors: int
+) -> tuple[np.ndarray, np.ndarray]:
     rng = np.random.default_rng(seed)
-    factors = rng.normal(0.005, 0.04, (n_months, n_factors))
+    factors = rng.normal(0.005, 0.04, (n_periods, n_factors))
     betas = rng.uniform(0.3, 1.6, (n_factors, n_assets))
-    return 0.001 + factors @ betas + rng.normal(0.0, 0.03, (n_months, n_assets)), factors
+    return 0.001 + factors @ betas + rng.normal(0.0, 0.03, (n_periods, n_assets)), factors
 
 
 def test_coefficients_worked_by_hand(worked: Regression) -> None:
     np.testing.assert_allclose(worked.coefficients[:, 0], [0.9, 1.2], rtol=EXACT)
     np.testing.assert_allclose(worked.residuals[:, 0], [0.3, 0.1, -1.1, 0.7], rtol=EXACT)
-    assert (worked.n_months, worked.n_assets, worked.n_factors, worked.df) == (4, 1, 1, 2)
+    assert (worked.n_periods, worked.n_assets, worked.n_factors, worked.df) == (4, 1, 1, 2)
 
 
 def test_moments_divide_by_the_number_of_months(worked: Regression) -> None:
@@ -120,7 +122,7 @@ def test_a_constant_return_has_no_r_squared() -> None:
 
 
 def test_too_few_months() -> None:
-    with pytest.raises(Undefined, match="needs at least 3 complete months, has 2"):
+    with pytest.raises(Undefined, match="needs at least 3 complete periods, has 2"):
         regress(np.zeros((2, 1)), np.array([[0.1], [0.2]]))
     assert regress(RETURNS[:3], MARKET[:3]).df == 1
 

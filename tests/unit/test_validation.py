@@ -12,6 +12,7 @@ import pandas as pd
 import pytest
 from tests.unit import intake_examples as examples
 from tests.unit.intake_examples import (
+    Validated,
     aside,
     fault,
     kept,
@@ -24,7 +25,6 @@ from tests.unit.intake_examples import (
 
 from lineproof.demo import make_demo
 from lineproof.frames import CONTRACTS
-from lineproof.validation import Validated, validate_returns
 
 ROW = "A,2000-01-31,0.01,,1,1"
 
@@ -36,6 +36,7 @@ def rows_of(first: str, n: int) -> list[str]:
     return [f"A,{month}-28,0.05,,1,1" for month in months(first, n)]
 
 
+@pytest.mark.fault(28)
 def test_the_study_ends_at_the_last_common_month(tmp_path: Path) -> None:
     found = validate(
         tmp_path,
@@ -89,22 +90,25 @@ def test_no_month_in_common(tmp_path: Path) -> None:
 
 
 def test_excess_returns_by_hand(tmp_path: Path) -> None:
+    texts = {
+        "returns": lines("A,2000-01-31,3,,1,1"),
+        "market": monthly_file("mkt", {"2000-01": 0.02}),
+        "riskless": monthly_file("rf", {"2000-01": 6.0}),
+    }
+    files = {n: [examples.write(tmp_path / f"{n}.csv", text)] for n, text in texts.items()}
     options: dict[str, Any] = {
-        "returns_file": examples.write(tmp_path / "returns.csv", lines("A,2000-01-31,3,,1,1")),
-        "market_file": examples.write(tmp_path / "m.csv", monthly_file("mkt", {"2000-01": 0.02})),
-        "riskless_file": examples.write(tmp_path / "f.csv", monthly_file("rf", {"2000-01": 6.0})),
         "returns": examples.returns_reading(unit="percent"),
         "market": examples.reading("m", {"date": "month", "return": "mkt"}, dates="%Y-%m"),
         "riskless": examples.reading(
             "f", {"date": "month", "rate": "rf"}, dates="%Y-%m", unit="percent"
         ),
         "riskless_quoted": "annual_yield",
-        "screens": [],
-        "missing_final_return": None,
-        "same_month_rows": "set_aside",
+        "rules": examples.RULES,
     }
     riskless = 0.004867550565343048  # 1.06^(1/12) − 1
-    total, excess = (validate_returns(**options, market_is=kind) for kind in ("total", "excess"))
+    total, excess = (
+        examples.run(tmp_path, files, **options, market_is=kind) for kind in ("total", "excess")
+    )
     # Differences of numbers below 0.1 are right to a few units of 1e-17.
     np.testing.assert_allclose(total.market["riskless"], [riskless], rtol=0, atol=5e-16)
     np.testing.assert_allclose(total.market["market_excess"], [0.02 - riskless], rtol=0, atol=5e-16)
@@ -136,25 +140,24 @@ def demo() -> dict[str, Any]:
 @pytest.fixture(scope="module")
 def found(demo: dict[str, Any], tmp_path_factory: pytest.TempPathFactory) -> Validated:
     folder = tmp_path_factory.mktemp("demo")
-    files = [
-        examples.write(folder / f"{name}.csv", demo[f"{name}.csv"])
+    files = {
+        name: [examples.write(folder / f"{name}.csv", demo[f"{name}.csv"])]
         for name in ("returns", "market", "riskless")
-    ]
+    }
     monthly = {"dates": "%Y-%m", "unit": "percent"}
     columns = {
         **{name: name for name in ("security", "date", "price", "size", "sector")},
         **{"return": "ret", "final_return": "final_ret", "exit_reason": "exit_code"},
     }
-    return validate_returns(
-        *files,
+    return examples.run(
+        folder,
+        files,
         returns=examples.reading("returns.csv", columns, missing=["", "NA", "-99"]),
         market=examples.reading("m", {"date": "month", "return": "total_return"}, **monthly),
         market_is="total",
         riskless=examples.reading("f", {"date": "month", "rate": "annual_yield"}, **monthly),
         riskless_quoted="annual_yield",
-        screens=[{"column": "price", "at_least": 1}],
-        missing_final_return=None,
-        same_month_rows="set_aside",
+        rules={**examples.RULES, "screens": [{"column": "price", "at_least": 1}]},
     )
 
 

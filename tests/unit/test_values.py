@@ -8,6 +8,7 @@ import re
 
 import numpy as np
 import pandas as pd
+import pyarrow as pa
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
@@ -15,12 +16,12 @@ from tests.unit import intake_examples as examples
 
 from lineproof.intake.values import (
     as_decimal,
+    as_digits,
     check_date_format,
     missing_codes,
-    share_with_decimal_comma,
+    to_days,
     to_months,
     to_numbers,
-    without_codes,
 )
 from lineproof.problems import KnownProblem
 
@@ -132,13 +133,156 @@ def test_percent_and_decimal() -> None:
     assert as_decimal(np.array([-1.0, 0.5]), "decimal").tolist() == [-1.0, 0.5]
 
 
-def test_codes_in_text_columns_are_blanked() -> None:
-    assert without_codes(text("NA", "banks", ""), CODES).tolist() == ["", "banks", ""]
+@pytest.mark.parametrize(
+    ("written", "value"),
+    [
+        ("0,05", 0.05),
+        ("-,5", -0.5),
+        ("5,", 5.0),
+        ("12", 12.0),
+        ("1e-3", 0.001),
+        ("1,5E+2", 150.0),
+    ],
+)
+def test_decimal_commas(written: str, value: float) -> None:
+    numbers = to_numbers(text(written), CODES, decimal="comma")
+    assert numbers.value.tolist() == [value]
+    assert not numbers.is_text.any()
 
 
-def test_share_with_decimal_comma() -> None:
-    assert share_with_decimal_comma(text("0,015", "-,5", "1", "", "a,b")) == 0.5
-    assert share_with_decimal_comma(text("", "")) == 0.0
+@pytest.mark.parametrize("written", ["0.05", "1.234", "1,2,3", "1 234", ",", "-1.000,5"])
+def test_points_beside_decimal_commas(written: str) -> None:
+    """A point parts thousands there, and no return has them."""
+    numbers = to_numbers(text(written), CODES, decimal="comma")
+    assert numbers.is_text.tolist() == [True]
+    assert np.isnan(numbers.value).all()
+
+
+@pytest.mark.parametrize(
+    ("written", "value"),
+    [
+        ("1.234,5", 1234.5),
+        ("12.345.678", 12345678.0),
+        ("1 234,5", 1234.5),
+        ("1\u00a0234", 1234.0),
+        ("1\u202f234", 1234.0),
+    ],
+)
+def test_thousands_beside_decimal_commas(written: str, value: float) -> None:
+    numbers = to_numbers(text(written), CODES, thousands=True, decimal="comma")
+    assert numbers.value.tolist() == [value]
+    assert numbers.had_thousands.tolist() == [True]
+
+
+def test_codes_beside_decimal_commas() -> None:
+    numbers = to_numbers(
+        text("n.a.", "-99,9", "-99,90", "-99.9", ""), ["n.a.", "-99,9"], decimal="comma"
+    )
+    assert numbers.code.tolist() == [1, 2, 2, -1, 0]
+    assert numbers.is_text.tolist() == [False, False, False, True, False]
+
+
+@pytest.mark.parametrize(
+    ("column", "value", "code"),
+    [
+        (pa.array([1, None, -99, 0], pa.int64()), [1.0, None, None, 0.0], [-1, 0, 2, -1]),
+        (pa.array([0.5, None, -99.0, math.nan]), [0.5, None, None, None], [-1, 0, 2, 0]),
+        (pa.array([0.5, 0.25], pa.float32()), [0.5, 0.25], [-1, -1]),
+        (pa.array([], pa.float64()), [], []),
+    ],
+    ids=["whole numbers", "numbers", "single precision", "none"],
+)
+def test_numbers_that_the_file_holds(
+    column: pa.Array, value: list[float | None], code: list[int]
+) -> None:
+    numbers = to_numbers(column, CODES)
+    wanted = [math.nan if each is None else each for each in value]
+    np.testing.assert_array_equal(numbers.value, wanted)
+    assert numbers.code.tolist() == code
+    assert not (numbers.is_text | numbers.is_not_finite | numbers.had_thousands).any()
+
+
+def test_infinite_numbers_that_the_file_holds() -> None:
+    numbers = to_numbers(pa.array([math.inf, -math.inf, 1.0]), CODES)
+    assert numbers.is_not_finite.tolist() == [True, True, False]
+    np.testing.assert_array_equal(numbers.value, [math.nan, math.nan, 1.0])
+
+
+@pytest.mark.parametrize("kind", [pa.string(), pa.large_string()])
+def test_text_in_arrays_and_pieces_of_arrays(kind: pa.DataType) -> None:
+    whole = pa.array(["junk", "1", "-99", "x", "2.5", "junk"], kind)
+    numbers = to_numbers(whole[1:5], CODES)
+    np.testing.assert_array_equal(numbers.value, [1.0, math.nan, math.nan, 2.5])
+    assert numbers.code.tolist() == [-1, 2, -1, -1]
+    assert numbers.is_text.tolist() == [False, False, True, False]
+    pieces = pa.chunked_array([whole[1:2], whole[2:5]])
+    np.testing.assert_array_equal(to_numbers(pieces, CODES).value, numbers.value)
+
+
+def test_an_array_is_not_changed() -> None:
+    array = pa.array([1.0, -99.0, math.inf])
+    to_numbers(array, CODES)
+    assert array.to_pylist() == [1.0, -99.0, math.inf]
+
+
+@pytest.mark.parametrize(
+    ("number", "digits"),
+    [(10, "10"), (10.0, "10"), (-0.0, "0"), (1.5, "1.5"), (1e20, "1" + "0" * 20), (None, ""),
+     (math.nan, ""), (math.inf, "inf"), ("007", "007")],
+)  # fmt: skip
+def test_digits(number: float | str | None, digits: str) -> None:
+    assert as_digits(number) == digits
+
+
+@pytest.mark.parametrize(
+    ("column", "form", "expected"),
+    [
+        (pa.array([20000131, 2000131, None]), "%Y%m%d", ["2000-01-31", None, None]),
+        (pa.array([200001, 20001]), "%Y%m", ["2000-01-01", None]),
+        (
+            pa.array([20000131.0, math.nan, math.inf, 20000131.5]),
+            "%Y%m%d",
+            ["2000-01-31", None, None, None],
+        ),
+        (pa.array([2000, 1999.0]), "%Y", ["2000-01-01", "1999-01-01"]),
+        (
+            pa.array([datetime.date(2000, 1, 31), None, datetime.date(1700, 1, 1)]),
+            "%d/%m/%Y",
+            ["2000-01-31", None, None],
+        ),
+        (pa.array([datetime.date(1850, 2, 3)], pa.date64()), "%Y", ["1850-02-03"]),
+        (
+            pa.array([datetime.datetime(1999, 12, 31, 23, 59), None]),
+            "%Y",
+            ["1999-12-31", None],
+        ),
+        (pa.array(["31.01.2000", "", "x"]), "%d.%m.%Y", ["2000-01-31", None, None]),
+        (pa.array(["2000-01-31"], pa.large_string()), "%Y-%m-%d", ["2000-01-31"]),
+        (pa.array([], pa.string()), "%Y-%m-%d", []),
+        (pa.array([None, None], pa.int64()), "%Y%m%d", [None, None]),
+    ],
+)
+def test_days_of_typed_arrays(column: pa.Array, form: str, expected: list[str | None]) -> None:
+    found = to_days(column, form)
+    assert found.dtype == "datetime64[D]"
+    assert [None if np.isnat(day) else str(day) for day in found] == expected
+
+
+@pytest.mark.parametrize("unit", ["s", "ms", "us", "ns"])
+@pytest.mark.parametrize("zone", [None, "UTC"])
+def test_the_last_moment_of_a_day_is_that_day(unit: str, zone: str | None) -> None:
+    """Also before 1970, where moments are negative numbers and rounding towards zero gives the next day."""
+    ends = pd.period_range("1965-03", periods=120, freq="M").to_timestamp(how="end")
+    moments = pa.array(ends.tz_localize(zone)).cast(pa.timestamp("ns", zone))
+    floored = pa.array(ends.floor(unit).tz_localize(zone)).cast(pa.timestamp(unit, zone))
+    for column in (moments, floored):
+        assert to_days(column, "%Y").tolist() == [end.date() for end in ends]
+
+
+def test_days_of_a_piece_of_an_array() -> None:
+    whole = pa.array(["x", "2000-01-31", "2000-02-29", "2000-01-31", "y"])
+    found = to_days(whole[1:4], "%Y-%m-%d")
+    assert [str(day) for day in found] == ["2000-01-31", "2000-02-29", "2000-01-31"]
 
 
 def ends(dates: pd.Series) -> list[str]:
@@ -213,3 +357,10 @@ def test_formats_that_give_no_month(form: str, said: str) -> None:
 def test_formats_that_do(form: str) -> None:
     check_date_format(examples.reading("raw/r.csv", {}, dates=form))
     to_months(text("x"), form)
+
+
+def test_daily_data_need_a_day() -> None:
+    for form in ("%Y-%m-%d", "%Y-%j"):
+        check_date_format(examples.reading("raw/r.csv", {}, dates=form), daily=True)
+    with pytest.raises(KnownProblem, match="'%Y-%m' gives no day"):
+        check_date_format(examples.reading("raw/r.csv", {}, dates="%Y-%m"), daily=True)

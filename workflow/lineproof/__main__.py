@@ -31,11 +31,11 @@ def main(words: list[str] | None = None) -> int:
     if rest:
         parser.error(f"unknown words: {' '.join(rest)}")
     if given.command == "compile":
-        from lineproof.intake import observers
+        from lineproof.intake import warm_up
         from lineproof.stats import windows
 
+        warm_up.warm_up()
         windows.warm_up()
-        observers.warm_up()
         return 0
     try:
         return _run(given)
@@ -97,6 +97,7 @@ def _develop(name: str, more: list[str]) -> int:
 
 
 def _run(given: argparse.Namespace) -> int:
+    from lineproof.extracts import fetch_extracts
     from lineproof.locking import only_run_of
     from lineproof.study import load_study
 
@@ -104,7 +105,8 @@ def _run(given: argparse.Namespace) -> int:
     os.chdir(ROOT)
     study = load_study(path.relative_to(ROOT) if path.is_relative_to(ROOT) else path)
     began = time.monotonic()
-    with only_run_of(study):
+    with only_run_of(study.folder):
+        fetch_extracts(study)
         status, steps = _snakemake(
             given, study.path, "study" if given.command == "study" else "data"
         )

@@ -13,11 +13,11 @@ NUMBER_COLUMNS = [
     *("estimate", "se", "statistic", "df1", "df2"),
     *("p", "p_one_sided", "critical", "critical_one_sided"),
 ]
-COLUMNS = [*KEY_COLUMNS, *NUMBER_COLUMNS, "n_months", "n_assets", "status", "reason"]
+COLUMNS = [*KEY_COLUMNS, *NUMBER_COLUMNS, "n_periods", "n_assets", "status", "reason"]
 DTYPES = {
     **dict.fromkeys([*KEY_COLUMNS, "status", "reason"], "str"),
     **dict.fromkeys(NUMBER_COLUMNS, "float64"),
-    **dict.fromkeys(["n_months", "n_assets"], "int64"),
+    **dict.fromkeys(["n_periods", "n_assets"], "int64"),
 }
 SEPARATOR = "/"
 

@@ -31,10 +31,11 @@ LINE_WEIGHTS: dict[str, str] = {
     "gls": "generalised least squares with the residual covariance matrix",
 }
 
+# Templates that the notes fill in with the study's period, a `frequency.Frequency`.
 LINE_ERRORS: dict[str, str] = {
     "textbook": "textbook errors, which take betas and the market's mean as known",
-    "monthly_slopes": "the spread of monthly slopes (Fama and MacBeth 1973)",
-    "monthly_slopes_hac": "monthly slopes with Bartlett weights (Newey and West 1987)",
+    "monthly_slopes": "the spread of {period.adjective} slopes (Fama and MacBeth 1973)",
+    "monthly_slopes_hac": "{period.adjective} slopes with Bartlett weights (Newey and West 1987)",
     "errors_in_variables": "corrected for estimated betas (Shanken 1992)",
     "misspecification_robust": "robust to misspecification (Kan, Robotti and Shanken 2013)",
     "misspecification_robust_hac": "robust to misspecification, with Bartlett weights "

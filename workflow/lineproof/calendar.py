@@ -19,6 +19,11 @@ def month_end(month: str | pd.Period) -> pd.Timestamp:
     return pd.Period(month, freq="M").to_timestamp(how="end").normalize().as_unit("ms")
 
 
+def within_months(dates: pd.Series, first: str, last: str) -> pd.Series:
+    """Whether each date lies in the months `first` to `last`, both included, as `YYYY-MM`."""
+    return dates.between(pd.Timestamp(first), month_end(last))
+
+
 def month_name(date: pd.Timestamp) -> str:
     """`YYYY-MM` of a date."""
     return pd.Timestamp(date).strftime("%Y-%m")

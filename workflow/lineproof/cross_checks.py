@@ -2,31 +2,73 @@
 
 from __future__ import annotations
 
-from pathlib import Path
 from typing import Any
 
 from lineproof.schema import Finding, nearest
+from lineproof.source_checks import source_findings
 from lineproof.yamlfile import Place, YamlFile
 
 
-def results_folder(name: str) -> str:
-    """Folder of a study's results, relative to the working folder."""
-    return f"results/{name}"
+def beta_returns(options: dict[str, Any], content: dict[str, Any]) -> str:
+    """The frequency of the returns that an entry under `betas` is estimated from, "monthly" or "daily"."""
+    return content["study"]["frequency"] if options["returns"] == "own" else options["returns"]
 
 
-def _beta_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+def _beta_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
+    found: list[Finding] = []
+    for name, options in content["betas"].items():
+        place: Place = ("betas", name)
+        daily = beta_returns(options, content) == "daily"
+        nouns = "trading days" if daily else "months"
+        if options["min"] > options["window"]:
+            said = f"min {options['min']} is longer than the window of {options['window']} {nouns}"
+            found.append(((*place, "min"), said, "lower min or lengthen window"))
+        for key in ("window", "min"):
+            if daily and key not in file.content["betas"][name]:
+                said = f"the key {key!r} is missing"
+                found.append((place, said, "betas from daily returns need it, in trading days"))
+            elif not daily and options[key] > _MOST_MONTHS:
+                said = f"{options[key]} is out of range"
+                found.append(((*place, key), said, f"give at most {_MOST_MONTHS} months"))
+        if daily and not _has_days(content, "returns"):
+            said = "daily returns are asked for, and the study has monthly ones only"
+            change = (
+                "declare data.returns.frequency: daily if the file has days, or use returns: own"
+            )
+            found.append(((*place, "returns"), said, change))
+        elif daily and not _has_days(content, "market"):
+            said = "daily returns are asked for, and the market has monthly ones only"
+            found.append(((*place, "returns"), said, "deliver a daily market, or build it"))
+    return found
+
+
+_MOST_MONTHS = 600
+
+
+def _has_days(content: dict[str, Any], source: str) -> bool:
+    """Whether the returns, or the market, are delivered by the day."""
+    of_returns = content["data"]["returns"].get("frequency", content["study"]["frequency"])
+    return content["data"][source].get("frequency", of_returns) == "daily"
+
+
+def _frequency_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    if content["study"]["frequency"] != "daily":
+        return []
+    if "demo" in content:
+        said = "the invented market has monthly returns only"
+        change = "use frequency: monthly, or leave out the section demo"
+        return [(("study", "frequency"), said, change)]
     return [
-        (
-            ("betas", name, "min"),
-            f"min {options['min']} is longer than the window of {options['window']} months",
-            "lower min or lengthen window",
-        )
-        for name, options in content["betas"].items()
-        if options["min"] > options["window"]
+        (("data", name, "frequency"), "a daily study cannot be made of months", "deliver days")
+        for name in ("returns", "market")
+        if content["data"][name].get("frequency") == "monthly"
     ]
 
 
-_ONLY_SUPPLIED = ("file", "columns", "is", "unit", "missing", "dates", "separator")
+_ONLY_SUPPLIED = (
+    *("file", "columns", "is", "unit", "missing", "dates", "separator"),
+    *("decimal", "encoding", "sheet", "layout", "leave_out"),
+)
 _ONLY_RANKED = ("rank_on", "groups", "weights", "form_each", "form_month", "hold")
 
 
@@ -57,6 +99,49 @@ def _has_size(content: dict[str, Any]) -> bool:
     return "size" in content["data"]["returns"]["columns"]
 
 
+def _market_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
+    """A market is read from a file or built from the returns, not both and not neither."""
+    place: Place = ("data", "market")
+    market, given = content["data"]["market"], file.content["data"]["market"]
+    if "build" not in market:
+        change = "add it, or build: equal or size to make the market from the returns"
+        return [
+            (place, f"the key {key!r} is missing", change)
+            for key in ("file", "columns")
+            if key not in market
+        ]
+    change = "remove it, or remove build"
+    found: list[Finding] = [
+        ((*place, key), f"a market that is built does not use {key!r}", change)
+        for key in given
+        if key != "build"
+    ]
+    if market["build"] == "size" and not _has_size(content):
+        said = "a market weighted by size needs a size column, and data.returns.columns has none"
+        change = "add size under data.returns.columns, or use build: equal"
+        found.append(((*place, "build"), said, change))
+    return found
+
+
+def _riskless_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    """Without a riskless rate every return must be in excess of it already."""
+    data = content["data"]
+    if "riskless" in data:
+        return []
+    change = "add data.riskless, or set is: excess if they are in excess of it"
+    found: list[Finding] = []
+    if data["returns"]["is"] == "total":
+        found.append((("data", "returns"), "total returns need a riskless rate", change))
+    if "build" not in data["market"] and data["market"]["is"] == "total":
+        found.append((("data", "market"), "a total return needs a riskless rate", change))
+    found += [
+        (("portfolios", name), "total returns need a riskless rate", change)
+        for name, options in content["portfolios"].items()
+        if options["design"] == "supplied" and options["is"] == "total"
+    ]
+    return found
+
+
 def _subperiod_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     found: list[Finding] = []
     for name, options in content["subperiods"].items():
@@ -66,6 +151,19 @@ def _subperiod_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
             found.append((("subperiods", name), said, "swap from and to"))
         if "split" in options and "every" in options:
             found.append((("subperiods", name), "has both split and every", "keep one of the two"))
+    return found + _name_findings(content["subperiods"])
+
+
+def _name_findings(subperiods: dict[str, Any]) -> list[Finding]:
+    """Parts of a split that would share a name. Those of `every` depend on the data, and are told when they are cut."""
+    found: list[Finding] = []
+    owners: dict[str, str] = {}
+    for name, options in subperiods.items():
+        parts = [f"{name}-{index}" for index in range(1, options.get("split", 0) + 1)]
+        for part in parts or [name]:
+            if "every" not in options and owners.setdefault(part, name) != name:
+                said = f"two subperiods would be called {part}: this one and one of {owners[part]}"
+                found.append((("subperiods", name), said, "rename one of them"))
     return found
 
 
@@ -82,6 +180,56 @@ def _screen_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     ]
 
 
+def _column_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    """Columns of the returns that an option needs, and columns that stand for two things."""
+    place: Place = ("data", "returns", "columns")
+    columns = content["data"]["returns"]["columns"]
+    found: list[Finding] = []
+    if isinstance(columns["return"], dict) and "price" not in columns:
+        said = "returns from prices need a price column, and there is none"
+        found.append(((*place, "return"), said, "add price under data.returns.columns"))
+    owners: dict[str, str] = {}
+    for name in (n for n in _MEANT_ONCE if isinstance(columns.get(n), str)):
+        if owners.setdefault(columns[name], name) != name:
+            said = f"the column {columns[name]!r} is named as {owners[columns[name]]} already"
+            found.append(((*place, name), said, "one column cannot be both: change one of the two"))
+    return found
+
+
+_MEANT_ONCE = ("security", "date", "return", "size", "price", "final_return", "exit_reason")
+
+
+def _delisting_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
+    place: Place = ("intake", "delisting", "by_reason")
+    by_reason = content["intake"]["delisting"]["by_reason"]
+    found: list[Finding] = []
+    if by_reason and "exit_reason" not in content["data"]["returns"]["columns"]:
+        said = (
+            "final returns by reason need a column exit_reason, and data.returns.columns has none"
+        )
+        found.append(
+            (place, said, "add exit_reason under data.returns.columns, or remove by_reason")
+        )
+    for code in by_reason:
+        if (*place, str(code)) not in file.lines:  # as 007, which YAML takes for 7
+            said = f"a code that YAML takes for {code!r} is not what is written"
+            found.append((place, said, "put it in quotes"))
+    return found
+
+
+def _demo_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
+    demo = content.get("demo")
+    if demo is None or demo["first"] <= demo["last"]:
+        return []
+    return [
+        (
+            ("demo",),
+            f"runs backwards, from {demo['first']} to {demo['last']}",
+            "swap first and last",
+        )
+    ]
+
+
 def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     paper = content["paper"]
     return [
@@ -95,41 +243,18 @@ def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     ]
 
 
-def _file_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
-    made_in = (
-        Path(results_folder(content["study"]["name"])).resolve() / "raw"
-        if "demo" in content
-        else None
-    )
-    named: list[tuple[Place, str]] = [
-        (("data", name), content["data"][name]["file"]) for name in content["data"]
-    ]
-    named += [
-        (("portfolios", name), options["file"])
-        for name, options in content["portfolios"].items()
-        if "file" in options
-    ]
-    found: list[Finding] = []
-    for place, label in named:
-        path = (file.path.parent / label).resolve()
-        if path.is_file() or path.parent == made_in:
-            continue
-        names = sorted(p.name for p in path.parent.iterdir()) if path.parent.is_dir() else []
-        change = (
-            nearest(path.name, names)
-            if names
-            else f"the folder {Path(label).parent} is empty or absent"
-        )
-        found.append(((*place, "file"), f"there is no file {label}", change))
-    return found
-
-
 # What the schema cannot see; a check runs when the sections it reads are sound.
 CHECKS = (
-    ({"betas"}, _beta_findings),
+    ({"betas", "study", "data"}, _beta_findings),
+    ({"study", "demo", "data"}, _frequency_findings),
     ({"portfolios", "betas", "data"}, _sort_findings),
+    ({"data"}, _market_findings),
+    ({"data", "portfolios"}, _riskless_findings),
     ({"subperiods"}, _subperiod_findings),
+    ({"data"}, _column_findings),
     ({"intake", "data"}, _screen_findings),
+    ({"intake", "data"}, _delisting_findings),
+    ({"demo"}, _demo_findings),
     ({"paper", "portfolios", "subperiods"}, _paper_findings),
-    ({"study", "demo", "data", "portfolios"}, _file_findings),
+    ({"study", "demo", "data", "portfolios"}, source_findings),
 )

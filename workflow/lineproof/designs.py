@@ -9,9 +9,12 @@ DESIGNS: dict[str, Entry] = {
     "supplied": Entry("lineproof.forming:from_supplied", "supplied as return series"),
 }
 
+# A label is a template that `facts` fills in with the study's period, a `frequency.Frequency`.
 WEIGHTS: dict[str, Entry] = {
-    "equal": Entry("lineproof.stats.weights:equal", "equally weighted, rebalanced monthly"),
+    "equal": Entry(
+        "lineproof.stats.weights:equal", "equally weighted, rebalanced {period.adjective}"
+    ),
     "size": Entry(
-        "lineproof.stats.weights:by_size", "weighted by size at the end of the month before"
+        "lineproof.stats.weights:by_size", "weighted by size at the end of the {period.noun} before"
     ),
 }

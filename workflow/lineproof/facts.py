@@ -7,6 +7,7 @@ from typing import Any
 
 from lineproof.designs import WEIGHTS
 from lineproof.estimators import ESTIMATORS
+from lineproof.frequency import FREQUENCIES
 from lineproof.study import SortSpec, Study
 
 
@@ -17,11 +18,13 @@ def facts(study: Study) -> dict[str, Any]:
         "name": study.name,
         "title": study.title,
         "market_name": study.market_name,
+        "market_build": study.market_build,
         "invented": study.demo is not None,
         "level": study.level,
+        "period": asdict(FREQUENCIES[study.frequency]),
         "hac_lag": study.hac_lag,
-        "missing_final_return": study.missing_final_return,
-        "screens": list(study.screens),
+        "missing_final_return": study.intake.missing_final_return,
+        "screens": list(study.intake.screens),
         "sources": [
             {
                 "place": place,
@@ -46,10 +49,11 @@ def _sort_facts(sort: SortSpec, study: Study) -> dict[str, Any]:
         **said,
         "groups": sort.groups,
         "weights": sort.weights,
-        "weights_label": WEIGHTS[sort.weights].label,
+        "weights_label": WEIGHTS[sort.weights].label.format(period=FREQUENCIES[study.frequency]),
         "form_month": sort.form_month,
         "hold": sort.hold,
         "estimator_label": ESTIMATORS[betas.estimator].label,
         "window": betas.window,
+        "window_periods": FREQUENCIES[betas.returns].counted,
         "min_obs": betas.min_obs,
     }

@@ -9,7 +9,9 @@ import pandas as pd
 
 from lineproof import catalog, store
 from lineproof.designs import DESIGNS
+from lineproof.frequency import FREQUENCIES
 from lineproof.intake.series import read_series
+from lineproof.periods import periods_of
 from lineproof.sorting import Sorted, sort_single_window, take_supplied
 
 _PANEL_COLUMNS = ["security", "date", "total_return", "excess_return", "size", "eligible"]
@@ -22,16 +24,27 @@ def form_portfolios(
     return catalog.load(DESIGNS[design])(sources, market, **options)
 
 
-def from_single_window(sources: Sequence[str], market: pd.DataFrame, **options: Any) -> Sorted:
+def from_single_window(
+    sources: Sequence[str], market: pd.DataFrame, *, frequency: str = "monthly", **options: Any
+) -> Sorted:
     """Ranked on one estimate: the sources are the panel and the betas."""
+    periods = periods_of(frequency, market["date"].to_numpy())
     panel = store.read_table(sources[0], _PANEL_COLUMNS)
     betas = store.read_table(sources[1], ["security", "date", "beta"])
-    return sort_single_window(panel, betas, **options)
+    return sort_single_window(panel, betas, periods=periods, **options)
 
 
 def from_supplied(
-    sources: Sequence[str], market: pd.DataFrame, *, reading: dict[str, Any], returns_are: str
+    sources: Sequence[str],
+    market: pd.DataFrame,
+    *,
+    reading: dict[str, Any],
+    returns_are: str,
+    frequency: str = "monthly",
 ) -> Sorted:
-    """Supplied as return series: the source is one raw file."""
-    supplied = read_series(sources[0], reading, "return").rename(columns={"return": "return_"})
-    return take_supplied(supplied, market, returns_are=returns_are)
+    """Supplied as return series: the sources are raw files."""
+    supplied = read_series(list(sources), reading, "return", frequency).rename(
+        columns={"return": "return_"}
+    )
+    noun = FREQUENCIES[frequency].noun
+    return take_supplied(supplied, market, returns_are=returns_are, noun=noun)

@@ -1,10 +1,14 @@
 """The contract between stages: one pandera schema for each table on disk.
 
+Dates of a monthly table are month ends, those of a daily one any days: see `contract`.
 Nothing is coerced or dropped here: a frame that does not fit is an error of ours, found where it is written.
 """
 
 from __future__ import annotations
 
+from functools import cache
+
+import numpy as np
 import pandas as pd
 import pandera.pandas as pa
 
@@ -13,6 +17,18 @@ from lineproof.addresses import KEY_COLUMNS
 
 def _text(**options: object) -> pa.Column:
     return pa.Column(str, nullable=False, **options)
+
+
+def _name() -> pa.Column:
+    """Text, or a categorical of text: a large table holds each name once."""
+    return pa.Column(None, pa.Check(_is_text, name="is text"), nullable=False)
+
+
+def _is_text(column: pd.Series) -> bool:
+    dtype = column.dtype
+    if isinstance(dtype, pd.CategoricalDtype):
+        dtype = dtype.categories.dtype
+    return isinstance(dtype, pd.StringDtype)
 
 
 def _number(*checks: pa.Check, nullable: bool = True) -> pa.Column:
@@ -27,6 +43,18 @@ def _month_end(dates: pd.Series) -> bool:
     return bool(dates.dt.is_month_end.all())
 
 
+def _whole_day(dates: pd.Series) -> bool:
+    return bool((dates == dates.dt.normalize()).all())
+
+
+def _ranks(column: pd.Series) -> np.ndarray:
+    """Numbers in the order of text by code point; int (n_rows,)."""
+    if not isinstance(column.dtype, pd.CategoricalDtype):
+        return pd.factorize(column, sort=True)[0]
+    names = column.cat.categories.to_series(index=range(len(column.cat.categories)))
+    return pd.factorize(names, sort=True)[0][column.cat.codes.to_numpy()]
+
+
 def _sorted_unique(*keys: str) -> pa.Check:
     """Rows strictly increase in `keys`: sorted and unique, checked by comparing neighbours."""
 
@@ -35,10 +63,8 @@ def _sorted_unique(*keys: str) -> pa.Check:
         tied = pd.Series(True, index=frame.index)
         for key in keys:
             column = frame[key]
-            if isinstance(
-                column.dtype, pd.StringDtype
-            ):  # sorts by code point, like the text itself
-                column = pd.Series(pd.factorize(column, sort=True)[0], index=frame.index)
+            if _is_text(column):
+                column = pd.Series(_ranks(column), index=frame.index)
             before = column.shift()
             below |= tied & (column > before)
             tied &= column == before
@@ -48,11 +74,16 @@ def _sorted_unique(*keys: str) -> pa.Check:
 
 
 _DATE = pa.Column("datetime64[ms]", pa.Check(_month_end, name="dates are month ends"))
+_DAY = pa.Column("datetime64[ms]", pa.Check(_whole_day, name="dates have no time of day"))
 _HAS_ROWS = pa.Check(lambda frame: len(frame) > 0, name="has rows")
+_RISKLESS = pa.Check(  # a study of excess returns may have no riskless rate, and then in no period
+    lambda frame: frame["riskless"].isna().nunique() <= 1,
+    name="a riskless return in every period or in none",
+)
 
 PANEL = pa.DataFrameSchema(
     {
-        "security": _text(),
+        "security": _name(),
         "date": _DATE,
         "total_return": _number(pa.Check.ge(-1)),
         "excess_return": _number(),
@@ -60,6 +91,8 @@ PANEL = pa.DataFrameSchema(
         "price": _number(),
         "eligible": pa.Column(bool),
         "leaves": pa.Column(bool),
+        # Days with a return, where the months are made from days.
+        "n_days": pa.Column("int64", pa.Check.in_range(0, 31), required=False),
     },
     checks=[_HAS_ROWS, _sorted_unique("security", "date")],
     strict=False,
@@ -69,9 +102,9 @@ MARKET = pa.DataFrameSchema(
     {
         "date": _DATE,
         "market_excess": _number(nullable=False),
-        "riskless": _number(nullable=False),
+        "riskless": _number(),
     },
-    checks=[_HAS_ROWS, _sorted_unique("date")],
+    checks=[_HAS_ROWS, _sorted_unique("date"), _RISKLESS],
     strict=True,
 )
 
@@ -88,7 +121,7 @@ SET_ASIDE = pa.DataFrameSchema(
 
 BETAS = pa.DataFrameSchema(
     {
-        "security": _text(),
+        "security": _name(),
         "date": _DATE,
         "beta": _number(nullable=False),
         "alpha": _number(nullable=False),
@@ -132,9 +165,9 @@ SUBPERIOD = pa.DataFrameSchema(
         "sort": _text(),
         **PORTFOLIO_RETURNS.columns,
         "market_excess": _number(nullable=False),
-        "riskless": _number(nullable=False),
+        "riskless": _number(),
     },
-    checks=[_HAS_ROWS],
+    checks=[_HAS_ROWS, _RISKLESS],
     strict=True,
 )
 
@@ -156,7 +189,7 @@ ESTIMATES = pa.DataFrameSchema(
         "p_one_sided": _number(pa.Check.in_range(0, 1)),
         "critical": _number(),
         "critical_one_sided": _number(),
-        "n_months": _count(),
+        "n_periods": _count(),
         "n_assets": _count(),
         "status": _text(checks=pa.Check.isin(["ok", "undefined"])),
         "reason": _text(),
@@ -170,9 +203,12 @@ ESTIMATES = pa.DataFrameSchema(
     ordered=True,
 )
 
+# By name, as of a monthly study; `daily` and `market_daily` are the days beside a study of months.
 CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "panel": PANEL,
     "market": MARKET,
+    "daily": PANEL,
+    "market_daily": MARKET,
     "set_aside": SET_ASIDE,
     "betas": BETAS,
     "members": MEMBERS,
@@ -180,3 +216,27 @@ CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "subperiod": SUBPERIOD,
     "estimates": ESTIMATES,
 }
+_ALWAYS_DAILY = ("daily", "market_daily")
+
+
+@cache
+def contract(name: str, frequency: str = "monthly") -> pa.DataFrameSchema:
+    """The contract of a table by name, for the dates of a monthly or a daily one.
+
+    Raises KeyError for an unknown name.
+    """
+    schema = CONTRACTS[name]
+    dated = [key for key, column in schema.columns.items() if str(column.dtype) == str(_DATE.dtype)]
+    if (frequency == "monthly" and name not in _ALWAYS_DAILY) or not dated:
+        return schema
+    return schema.update_columns({key: {"checks": _DAY.checks} for key in dated})
+
+
+def check_batch(
+    name: str, frequency: str, batch: pd.DataFrame, before: pd.DataFrame | None
+) -> None:
+    """Check a piece of a table larger than memory against its contract, and that it goes on from the row before it."""
+    whole = contract(name, frequency)
+    whole.validate(batch)
+    if before is not None and len(batch):
+        whole.validate(pd.concat([before, batch.iloc[:1]], ignore_index=True))

@@ -1,11 +1,11 @@
 """What each pricing analysis of a sample reports, as rows.
 
-Single coefficients are compared with Student's t: T-1 degrees of freedom for means and monthly
-slopes, T-2 for time-series regressions whatever the standard error, N-2 for the textbook market
+Single coefficients are compared with Student's t: T-1 degrees of freedom for means and the slopes
+of single periods, T-2 for time-series regressions whatever the standard error, N-2 for the textbook market
 line; errors-in-variables and misspecification-robust standard errors hold in large samples only and
 go with the standard normal.
 
-A month counts where both the asset and the market have a return. Lags run over the months that
+A period counts where both the asset and the market have a return. Lags run over the periods that
 count, so a hole in the middle of a sample takes no time.
 """
 
@@ -19,8 +19,9 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from lineproof.frequency import FREQUENCIES, Frequency
 from lineproof.pricing_rows import NAN, Row, attempt
-from lineproof.stats import Undefined
+from lineproof.stats import PERIOD, Undefined
 from lineproof.stats import joint_alpha as joint
 from lineproof.stats import market_line as lines
 from lineproof.stats import time_series as series
@@ -29,7 +30,7 @@ from lineproof.stats.distributions import JointStatistic
 
 Floats = NDArray[np.float64]
 
-MONTHS_A_YEAR = 12
+NO_RISKLESS = "the study has returns in excess of a riskless rate that is not known"
 
 
 @dataclass(frozen=True)
@@ -39,14 +40,15 @@ class Sample:
     Attributes:
         sort: name of the sort.
         subperiod: name of the subperiod.
-        dates: (T,) months, datetime64[M].
+        dates: (T,) periods, datetime64.
         assets: N names.
-        excess: (T, N) excess returns, decimal per month, NaN where an asset is missing.
+        excess: (T, N) excess returns, decimal per period, NaN where an asset is missing.
         market: (T,) market excess returns.
-        riskless: (T,) riskless returns.
+        riskless: (T,) riskless returns, NaN throughout where the study has none.
         extras: other (T, N) columns of the cut by name.
         level: significance level of the critical values.
-        hac_lag: truncation lag; None chooses it by the number of months.
+        hac_lag: truncation lag; None chooses it by the number of periods.
+        frequency: how long a period is, and what reasons call it.
     """
 
     sort: str
@@ -59,56 +61,63 @@ class Sample:
     extras: Mapping[str, Floats]
     level: float
     hac_lag: int | None
+    frequency: Frequency = FREQUENCIES["monthly"]
 
     @property
     def counted(self) -> NDArray[np.bool_]:
         """(T, N): where both the asset and the market have a return."""
         return np.isfinite(self.excess) & np.isfinite(self.market)[:, None]
 
-    def lag(self, n_months: int) -> int:
-        """Truncation lag for `n_months` months."""
-        return automatic_lag(n_months) if self.hac_lag is None else self.hac_lag
+    def lag(self, n_periods: int) -> int:
+        """Truncation lag for `n_periods` periods."""
+        return automatic_lag(n_periods) if self.hac_lag is None else self.hac_lag
 
 
 def describe(sample: Sample) -> Iterator[Row]:
     """Mean and standard deviation (divisor T-1) of each series, with the mean's t statistic; mean
     characteristics of the assets that have any."""
     for column, asset in enumerate(sample.assets):
-        yield from _moments(asset, sample.excess[:, column], "signed")
+        yield from _moments(sample, asset, sample.excess[:, column], "signed")
         for name, values in sample.extras.items():
             observed = values[np.isfinite(values[:, column]), column]
             if observed.size:
                 mean = float(observed.mean())
                 yield Row("-", asset, name, "-", observed.size, 1, estimate=mean)
-    yield from _moments("market", sample.market, "signed")
-    yield from _moments("riskless", sample.riskless, "")
+    yield from _moments(sample, "market", sample.market, "signed")
+    yield from _riskless(sample)
 
 
-def _moments(asset: str, returns: Floats, family: str) -> Iterator[Row]:
+def _riskless(sample: Sample) -> Iterator[Row]:
+    if np.isfinite(sample.riskless).any():
+        yield from _moments(sample, "riskless", sample.riskless, "")
+        return
+    for term in ("mean", "sd"):
+        yield Row("-", "riskless", term, "-", 0, 1, reason=NO_RISKLESS)
+
+
+def _moments(sample: Sample, asset: str, returns: Floats, family: str) -> Iterator[Row]:
     """Mean and standard deviation; the mean is compared with zero if `family` is given."""
     observed = returns[np.isfinite(returns)]
-    n_months = observed.size
-    reason = "" if n_months > 1 else f"needs at least 2 months, has {n_months}"
+    n_periods = observed.size
+    nouns = sample.frequency.nouns
+    reason = "" if n_periods > 1 else f"needs at least 2 {nouns}, has {n_periods}"
     mean = sd = se = NAN
     if not reason:
         mean = float(observed.mean())
-        sd = float(np.sqrt((deviations(observed) ** 2).sum() / (n_months - 1)))
-        se = sd / np.sqrt(n_months) if family else NAN
-    df = n_months - 1.0 if family else NAN
-    yield Row("-", asset, "mean", "-", n_months, 1, family, mean, se, df1=df, reason=reason)
-    yield Row("-", asset, "sd", "-", n_months, 1, estimate=sd, reason=reason)
+        sd = float(np.sqrt((deviations(observed) ** 2).sum() / (n_periods - 1)))
+        se = sd / np.sqrt(n_periods) if family else NAN
+    df = n_periods - 1.0 if family else NAN
+    yield Row("-", asset, "mean", "-", n_periods, 1, family, mean, se, df1=df, reason=reason)
+    yield Row("-", asset, "sd", "-", n_periods, 1, estimate=sd, reason=reason)
 
 
-def _alpha_year(regression: series.Regression) -> Floats:
-    return MONTHS_A_YEAR * regression.alphas
-
-
-FITS: dict[str, Callable[[series.Regression], Floats]] = {
-    "r2": series.r_squared,
-    "correlation": series.correlation,
-    "residual_sd": series.residual_sd,
-    "residual_ac1": series.residual_autocorrelation,
-    "alpha_year": _alpha_year,
+# A number that sums a regression up, from it and from how many periods a year has.
+FITS: dict[str, Callable[[series.Regression, int], Floats]] = {
+    "r2": lambda fit, _: series.r_squared(fit),
+    "correlation": lambda fit, _: series.correlation(fit),
+    "residual_sd": lambda fit, _: series.residual_sd(fit),
+    "residual_ac1": lambda fit, _: series.residual_autocorrelation(fit),
+    "alpha_year": lambda fit, a_year: a_year * fit.alphas,
 }
 
 
@@ -122,38 +131,40 @@ class _Fit(NamedTuple):
 
 
 def time_series(sample: Sample) -> Iterator[Row]:
-    """Alpha and beta of each asset over its own months, under every kind of standard error."""
+    """Alpha and beta of each asset over its own periods, under every kind of standard error."""
     rows: dict[int, list[Row]] = {}
-    # Assets that count in the same months share one regression.
+    # Assets that count in the same periods share one regression.
     patterns, pattern_of = np.unique(sample.counted, axis=1, return_inverse=True)
-    for pattern, months in enumerate(patterns.T):
+    for pattern, counted in enumerate(patterns.T):
         columns = np.flatnonzero(pattern_of == pattern)
-        n_months = int(months.sum())
-        returns = sample.excess[np.ix_(months, columns)]
-        fit = _fit(returns, sample.market[months, None], sample.lag(n_months))
+        n_periods = int(counted.sum())
+        returns = sample.excess[np.ix_(counted, columns)]
+        fit = _fit(returns, sample.market[counted, None], sample)
         for place, column in enumerate(columns):
-            rows[column] = list(_fit_rows(fit, place, sample.assets[column], n_months))
+            rows[column] = list(_fit_rows(fit, place, sample.assets[column], n_periods))
     for column in range(len(sample.assets)):
         yield from rows[column]
 
 
-def _fit(returns: Floats, factors: Floats, lag: int) -> _Fit:
-    regression, reason = attempt(series.regress, returns, factors)
+def _fit(returns: Floats, factors: Floats, sample: Sample) -> _Fit:
+    noun, lag = sample.frequency.noun, sample.lag(len(returns))
+    regression, reason = attempt(noun, series.regress, returns, factors)
     if regression is None:
         return _Fit(None, reason, dict.fromkeys(COEFFICIENT_COVARIANCES, (None, reason)), {})
     errors = {
-        kind: attempt(series.standard_errors, regression, kind, lag)
+        kind: attempt(noun, series.standard_errors, regression, kind, lag)
         for kind in COEFFICIENT_COVARIANCES
     }
-    summaries = {term: summary(regression) for term, summary in FITS.items()}
+    a_year = sample.frequency.a_year
+    summaries = {term: summary(regression, a_year) for term, summary in FITS.items()}
     return _Fit(regression, "", errors, summaries)
 
 
-def _fit_rows(fit: _Fit, place: int, asset: str, n_months: int) -> Iterator[Row]:
+def _fit_rows(fit: _Fit, place: int, asset: str, n_periods: int) -> Iterator[Row]:
     """Rows of the asset in column `place` of the regression."""
     for number, term in enumerate(("alpha", "beta")):
         for kind, (errors, reason) in fit.errors.items():
-            row = Row("market", asset, term, kind, n_months, 1, "signed", reason=reason)
+            row = Row("market", asset, term, kind, n_periods, 1, "signed", reason=reason)
             if errors is not None:
                 estimate = float(fit.regression.coefficients[number, place])
                 se = float(errors[number, place])
@@ -161,16 +172,16 @@ def _fit_rows(fit: _Fit, place: int, asset: str, n_months: int) -> Iterator[Row]
             yield row
     for term in FITS:
         estimate = NAN if fit.reason else float(fit.summaries[term][place])
-        yield Row("market", asset, term, "-", n_months, 1, estimate=estimate, reason=fit.reason)
+        yield Row("market", asset, term, "-", n_periods, 1, estimate=estimate, reason=fit.reason)
 
 
 class _AllAssets:
-    """The regression of all assets over their common months, and rows about it."""
+    """The regression of all assets over their common periods, and rows about it."""
 
     def __init__(self, sample: Sample) -> None:
         self.sample = sample
-        self.months = sample.counted.all(axis=1)
-        self.lag = sample.lag(int(self.months.sum()))
+        self.counted = sample.counted.all(axis=1)
+        self.lag = sample.lag(int(self.counted.sum()))
 
     @cached_property
     def regression(self) -> series.Regression:
@@ -178,17 +189,17 @@ class _AllAssets:
         ever = self.sample.counted.any(axis=0)
         absent = [name for name, seen in zip(self.sample.assets, ever, strict=True) if not seen]
         if absent:
-            raise Undefined(f"no month has returns of both the market and {', '.join(absent)}")
+            raise Undefined(f"no {PERIOD} has returns of both the market and {', '.join(absent)}")
         return series.regress(
-            self.sample.excess[self.months], self.sample.market[self.months, None]
+            self.sample.excess[self.counted], self.sample.market[self.counted, None]
         )
 
     def row(
         self, variant: str, term: str, kind: str, family: str, find: Callable[[], dict[str, float]]
     ) -> Row:
         """A row with the numbers that `find` returns, or with the reason why it finds none."""
-        counts = (int(self.months.sum()), len(self.sample.assets))
-        numbers, reason = attempt(find)
+        counts = (int(self.counted.sum()), len(self.sample.assets))
+        numbers, reason = attempt(self.sample.frequency.noun, find)
         row = Row(variant, "all", term, kind, *counts, family, reason=reason)
         return row._replace(**(numbers or {}))
 
@@ -204,7 +215,7 @@ def joint_alpha(sample: Sample) -> Iterator[Row]:
     def from_distance(statistic: joint.AlphaStatistic) -> dict[str, float]:
         fit = assets.regression
         distance = joint.measure_alphas(fit).distance
-        return _joint_numbers(statistic(distance, fit.n_months, fit.n_assets, fit.n_factors))
+        return _joint_numbers(statistic(distance, fit.n_periods, fit.n_assets, fit.n_factors))
 
     def robust() -> dict[str, float]:
         return _joint_numbers(joint.hac_wald(assets.regression, assets.lag))
@@ -254,10 +265,10 @@ LINE_TERMS: dict[str, tuple[str, LineTerm]] = {
 def market_line(sample: Sample) -> Iterator[Row]:
     """The line by every weighting and kind of standard error, its hypotheses and pricing errors.
 
-    With it the market's mean excess return over the line's own months, to compare the slope with.
+    With it the market's mean excess return over the line's own periods, to compare the slope with.
     """
     assets = _AllAssets(sample)
-    mean, _ = _moments("all", np.where(assets.months, sample.market, NAN), "signed")
+    mean, _ = _moments(sample, "all", np.where(assets.counted, sample.market, NAN), "signed")
     yield mean._replace(term="market_mean", n_assets=len(sample.assets))
     for variant, weighting in lines.WEIGHTINGS.items():
         yield from _line_rows(assets, variant, weighting)

@@ -30,7 +30,7 @@ class Row(NamedTuple):
     asset: str
     term: str
     se_kind: str
-    n_months: int
+    n_periods: int
     n_assets: int
     family: str = ""
     estimate: float = NAN
@@ -41,12 +41,17 @@ class Row(NamedTuple):
     reason: str = ""
 
 
-def attempt(function: Callable[..., Value], *arguments: object) -> tuple[Value | None, str]:
-    """The function's result and no reason or, where it is undefined, no result and the reason."""
+def attempt(
+    noun: str, function: Callable[..., Value], *arguments: object
+) -> tuple[Value | None, str]:
+    """The function's result and no reason or, where it is undefined, no result and the reason.
+
+    `noun` is what the reason calls a period.
+    """
     try:
         return function(*arguments), ""
     except Undefined as undefined:
-        return None, str(undefined)
+        return None, undefined.reason(noun)
 
 
 def finish(rows: Sequence[Row], keys: Mapping[str, str], level: float) -> pd.DataFrame:

@@ -8,7 +8,7 @@ from collections.abc import Mapping
 from pathlib import Path
 from typing import TextIO
 
-from lineproof.joblog import MESSAGE_ENDING
+from lineproof.joblog import MESSAGE_ENDING, without_message
 
 _TARGETS = {"study", "data"}
 
@@ -54,11 +54,8 @@ class Progress:
         name = rule.replace("_", " ")
         for log in logs:
             message = Path(log).with_suffix(MESSAGE_ENDING)
-            said = (
-                message.read_text(encoding="utf-8").rstrip()
-                if message.exists()
-                else "It stopped without a message."
-            )
+            said = message.read_text(encoding="utf-8").rstrip() if message.exists() else ""
+            said = said or without_message(log)
             self.failures.append(f"{said}\n  (step: {name}; log: {log})")
 
     def said(self, text: str) -> None:

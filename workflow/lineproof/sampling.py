@@ -3,13 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 import pandas as pd
 
 from lineproof.addresses import COLUMNS, DTYPES
-from lineproof.calendar import month_end, month_name, month_number
+from lineproof.calendar import month_name, month_number, within_months
+from lineproof.periods import ABSENT, Months, Periods
+from lineproof.securities import coded, starts_of
 
 
 def describe_sample(
@@ -17,20 +20,63 @@ def describe_sample(
     estimated: pd.DataFrame | None,
     subperiods: Sequence[dict[str, Any]],
     intake: dict[str, Any],
+    periods: Periods | None = None,
 ) -> pd.DataFrame:
     """What came in, who was there in each month, and the sample of each subperiod.
 
-    `estimated` has the security and date of the betas that the main test assets are ranked on, or
-    is None.
+    `panel` is sorted by security and date, and has a row a period of `periods` (months if None).
+    `estimated` has the date of each of the betas that the main test assets are ranked on, or is
+    None.
     """
-    rows = _intake_rows(intake) + _month_rows(panel, estimated)
-    spans = _spans(panel)
+    periods = Months() if periods is None else periods
+    sample = _sample(panel, periods)
+    rows = _intake_rows(intake) + _month_rows(sample, estimated, periods)
     for subperiod in subperiods:
-        rows += _subperiod_rows(panel, spans, subperiod)
-    return _as_estimates(rows)
+        rows += _subperiod_rows(sample, subperiod)
+    no_totals = panel["total_return"].isna().all()
+    too_few = f"too few {periods.noun}s with returns in the subperiod"
+    return _as_estimates(rows, _NO_TOTALS if no_totals else too_few)
 
 
-_ROW = ["subperiod", "analysis", "variant", "asset", "term", "estimate", "n_months"]
+_NO_TOTALS = "the returns are in excess of a riskless rate that is not known"
+
+
+@dataclass(frozen=True)
+class _Sample:
+    """The panel counted once.
+
+    `code` and `month` are (n_rows,): security and calendar month. `alive` and `mean` are Series by
+    date: rows, and the mean of the returns. `first` and `last` are the (n_securities,) numbers of
+    the periods in which each has its first and last row.
+    """
+
+    code: np.ndarray
+    month: np.ndarray
+    alive: pd.Series
+    mean: pd.Series
+    first: np.ndarray
+    last: np.ndarray
+    periods: Periods
+
+
+def _sample(panel: pd.DataFrame, periods: Periods) -> _Sample:
+    number = periods.number(panel["date"].to_numpy())
+    if (number == ABSENT).any():
+        panel, number = panel[number != ABSENT], number[number != ABSENT]
+    code, _ = coded(panel["security"])
+    starts = starts_of(code)
+    return _Sample(
+        code=code,
+        month=periods.month(number),
+        alive=panel["date"].value_counts().sort_index(),
+        mean=panel.groupby("date")["total_return"].mean(),
+        first=number[starts[:-1]],
+        last=number[starts[1:] - 1],
+        periods=periods,
+    )
+
+
+_ROW = ["subperiod", "analysis", "variant", "asset", "term", "estimate", "n_periods"]
 Row = tuple[str, str, str, str, str, float, int]  # in the order of _ROW
 
 
@@ -46,9 +92,10 @@ def _intake_rows(intake: dict[str, Any]) -> list[Row]:
     return [("-", "intake", *each, 0) for each in found]
 
 
-def _month_rows(panel: pd.DataFrame, estimated: pd.DataFrame | None) -> list[Row]:
-    """Securities with a row, and with a beta, in each month that has any."""
-    alive = panel["date"].value_counts().sort_index()
+def _month_rows(sample: _Sample, estimated: pd.DataFrame | None, periods: Periods) -> list[Row]:
+    """Securities with a row, and with a beta, at the end of each month that has any."""
+    closes = periods.closes_month(periods.number(sample.alive.index.to_numpy()))
+    alive = sample.alive[closes]
     dated = alive.iloc[:0] if estimated is None else estimated["date"].value_counts()
     with_beta = dated.reindex(alive.index, fill_value=0)
     counts = pd.DataFrame({"n_securities": alive, "n_with_beta": with_beta})
@@ -59,49 +106,44 @@ def _month_rows(panel: pd.DataFrame, estimated: pd.DataFrame | None) -> list[Row
     ]
 
 
-def _spans(panel: pd.DataFrame) -> pd.DataFrame:
-    """First and last month number of each security: columns min and max."""
-    month = pd.Series(month_number(panel["date"]), index=panel.index)
-    return month.groupby(panel["security"], sort=False).agg(["min", "max"])
-
-
-def _subperiod_rows(
-    panel: pd.DataFrame, spans: pd.DataFrame, subperiod: dict[str, Any]
-) -> list[Row]:
+def _subperiod_rows(sample: _Sample, subperiod: dict[str, Any]) -> list[Row]:
     """The sample between two months.
 
     An entry is a security whose first row lies in the subperiod, unless the panel begins with it;
     an exit one whose last row does, unless the panel ends with it. A hole is neither.
     """
-    first, last = month_end(subperiod["first"]), month_end(subperiod["last"])
-    part = panel[panel["date"].between(first, last)]
-    alive = part["date"].value_counts()
-    by_month = part.groupby("date")["total_return"].mean()
-    start, end = month_number([first, last])
-    beginning, ending = spans["min"].min(), spans["max"].max()
-    n_months = subperiod["n_months"]
-    entered = spans["min"].between(start, end) & (spans["min"] > beginning)
-    left = spans["max"].between(start, end) & (spans["max"] < ending)
+    first, last = subperiod["first"], subperiod["last"]
+    start, end = month_number([pd.Timestamp(first), pd.Timestamp(last)])
+
+    def within(months: np.ndarray) -> np.ndarray:
+        return (months >= start) & (months <= end)
+
+    here = within(sample.month)
+    alive = sample.alive[within_months(sample.alive.index.to_series(), first, last)]
+    mean = sample.mean[within_months(sample.mean.index.to_series(), first, last)]
+    n_periods, n_rows = subperiod["n_periods"], int(here.sum())
+    entered = within(sample.periods.month(sample.first)) & (sample.first > sample.first.min())
+    left = within(sample.periods.month(sample.last)) & (sample.last < sample.last.max())
     values = {
-        "n_months": n_months,
-        "n_securities": part["security"].nunique(),
-        "n_security_months": len(part),
-        "mean_alive": len(part) / n_months,
-        "min_alive": alive.min() if len(alive) == n_months else 0,
+        "n_periods": n_periods,
+        "n_securities": len(np.unique(sample.code[here])),
+        "n_security_periods": n_rows,
+        "mean_alive": n_rows / n_periods,
+        "min_alive": alive.min() if len(alive) == n_periods else 0,
         "max_alive": alive.max() if len(alive) else 0,
         "n_entries": entered.sum(),
         "n_exits": left.sum(),
-        "mean_return": by_month.mean(),
-        "sd_return": by_month.std(),
+        "mean_return": mean.mean(),
+        "sd_return": mean.std(),
     }
     name = subperiod["name"]
-    return [(name, "sample", "panel", "all", *each, n_months) for each in values.items()]
+    return [(name, "sample", "panel", "all", *each, n_periods) for each in values.items()]
 
 
-def _as_estimates(rows: list[Row]) -> pd.DataFrame:
+def _as_estimates(rows: list[Row], why_undefined: str) -> pd.DataFrame:
     frame = pd.DataFrame(rows, columns=_ROW).assign(sort="-", se_kind="-", n_assets=0)
     frame["estimate"] = frame["estimate"].astype(float)
     undefined = frame["estimate"].isna()
     frame["status"] = np.where(undefined, "undefined", "ok")
-    frame["reason"] = np.where(undefined, "too few months with returns in the subperiod", "")
+    frame["reason"] = np.where(undefined, why_undefined, "")
     return frame.reindex(columns=COLUMNS).astype(DTYPES)

@@ -117,11 +117,15 @@ def _in_words(error: ValidationError) -> list[Finding]:
             wanted = f"give {' or '.join(_KINDS[kind] for kind in kinds)}"
             if "pattern" in schema and "description" in schema:
                 wanted = schema["description"]
-            return [(place, f"found {_shown(value)}", wanted)]
+            shown = "something else" if schema.get("is_secret") else _shown(value)
+            return [(place, f"found {shown}", wanted)]
         case "minimum" | "exclusiveMinimum" | "maximum" | "exclusiveMaximum":
             return [(place, f"{value} is out of range", _range(schema))]
         case "pattern":
             return [_pattern(error, place)]
+        case "uniqueItems":
+            twice = next(item for item in value if value.count(item) > 1)
+            return [(place, f"{twice!r} stands twice", "name each once")]
         case "minItems" | "minProperties" | "minLength":
             return [(place, "nothing is given here", schema.get("description", ""))]
         case _:

@@ -5,45 +5,287 @@ The heavy packages are imported where they are used, because the Snakefile write
 
 from __future__ import annotations
 
+import filecmp
 import json
 import os
-from collections.abc import Collection, Iterable, Mapping
+import shutil
+import tempfile
+from collections.abc import Collection, Iterable, Iterator, Mapping
+from concurrent.futures import Future, ThreadPoolExecutor
+from contextlib import ExitStack
 from pathlib import Path
+from types import TracebackType
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    import numpy as np
     import pandas as pd
     import pyarrow as pa
 
+_ROW_GROUP = 1 << 20  # rows
+_IN_MEMORY = 1 << 28  # bytes of scratch before it goes to disk
+_SCRATCH = ".scratch-"
+
 
 def read_table(path: str | os.PathLike, columns: list[str] | None = None) -> pd.DataFrame:
-    """Read a Parquet table of ours, all columns or some."""
+    """Read a Parquet table of ours, all columns or some; `security` is a categorical, its names held once."""
     import pyarrow.parquet as pq
 
-    return pq.read_table(path, columns=columns).to_pandas()
+    return pq.read_table(path, columns=columns, read_dictionary=["security"]).to_pandas()
 
 
-def write_table(frame: pd.DataFrame, path: str | os.PathLike, contract: str | None) -> None:
-    """Check a frame against its contract and write it as Parquet: the same frame gives the same bytes.
+def write_table(
+    frame: pd.DataFrame,
+    path: str | os.PathLike,
+    contract: str | None,
+    frequency: str = "monthly",
+) -> None:
+    """Check a frame against its contract and write it as Parquet: the same content gives the same bytes.
 
-    `contract` names a table of `frames.CONTRACTS`; None is for tables outside the pipeline, such as the demo's truth.
+    `contract` names a table of `frames.CONTRACTS`, and `frequency` says how its rows are dated; None is for tables
+    outside the pipeline, such as the demo's truth. A categorical of text is written as the text.
     """
     import pyarrow as pa
     import pyarrow.parquet as pq
 
-    from lineproof.frames import CONTRACTS
+    from lineproof import frames
 
     if contract is not None:
-        frame = CONTRACTS[contract].validate(frame)
-    table = pa.Table.from_pandas(frame, preserve_index=False)
+        frame = frames.contract(contract, frequency).validate(frame)
+    table = _plain(pa.Table.from_pandas(frame, preserve_index=False))
     sink = pa.BufferOutputStream()
-    pq.write_table(table, sink, compression="zstd")
+    pq.write_table(table, sink, row_group_size=_ROW_GROUP, **_encoding(table.schema))
     write_bytes(sink.getvalue(), path)
 
 
+def _encoding(schema: pa.Schema) -> dict[str, Any]:
+    """Numbers seldom repeat: looking for repetitions costs more than writing them, split by byte, does."""
+    import pyarrow as pa
+
+    floats = [field.name for field in schema if pa.types.is_floating(field.type)]
+    others = [field.name for field in schema if field.name not in floats]
+    return {"compression": "zstd", "use_dictionary": others, "use_byte_stream_split": floats}
+
+
+def write_together(
+    batches: Iterable[Mapping[str, pd.DataFrame]],
+    paths: Mapping[str, str | os.PathLike],
+    frequency: str = "monthly",
+) -> None:
+    """Write tables larger than memory, each under the contract of its name, from batches that hold a piece of each.
+
+    The same rows give the same bytes however they are cut into batches. When the batches raise an error, no file is
+    left behind.
+    """
+    with ExitStack() as stack:
+        writers = {
+            name: stack.enter_context(_Writer(name, frequency, Path(path)))
+            for name, path in paths.items()
+        }
+        for batch in batches:
+            for name, frame in batch.items():
+                writers[name].add(frame)
+        for writer in writers.values():
+            writer.finish()
+        for writer in writers.values():
+            writer.place()
+
+
+class _Writer:
+    """A table on its way to disk; it takes its place only when it is finished."""
+
+    def __init__(self, contract: str, frequency: str, path: Path) -> None:
+        self._contract, self._frequency, self._path = contract, frequency, path
+        self._beside = path.with_name(f".{path.name}.{os.getpid()}.part")
+        self._held: pa.Table | None = None
+        self._last: pd.DataFrame | None = None
+        self._writer: Any = None
+        self._writing = ThreadPoolExecutor(1)  # one at a time, so in order
+        self._pending: Future | None = None
+
+    def __enter__(self) -> _Writer:
+        self._path.parent.mkdir(parents=True, exist_ok=True)
+        return self
+
+    def __exit__(
+        self,
+        kind: type[BaseException] | None,
+        error: BaseException | None,
+        trace: TracebackType | None,
+    ) -> None:
+        self._writing.shutdown()
+        try:
+            if self._writer is not None:
+                self._writer.close()
+        finally:  # closing fails where the disk is full
+            self._beside.unlink(missing_ok=True)
+
+    def add(self, frame: pd.DataFrame) -> None:
+        """Check rows against the contract, together with the row before them, and write what fills a row group."""
+        import pyarrow as pa
+
+        from lineproof.frames import check_batch
+
+        check_batch(self._contract, self._frequency, frame, self._last)
+        self._last = frame.iloc[-1:] if len(frame) else self._last
+        table = pa.Table.from_pandas(frame, preserve_index=False)
+        self._held = table if self._held is None else pa.concat_tables([self._held, table])
+        while len(self._held) >= _ROW_GROUP:
+            self._write(self._held.slice(0, _ROW_GROUP))
+            self._held = self._held.slice(_ROW_GROUP)
+
+    def finish(self) -> None:
+        """Write what is left."""
+        if self._held is None:
+            raise ValueError(f"no rows for {self._path}, not even an empty batch")
+        if len(self._held) or self._writer is None:
+            self._write(self._held)
+        self._wait()
+        self._writer.close()
+        self._writer = None
+
+    def place(self) -> None:
+        """Put the finished file in its place."""
+        self._beside.replace(self._path)
+
+    def _write(self, table: pa.Table) -> None:
+        """Write while the next rows are made; an error shows with the next write."""
+        import pyarrow.parquet as pq
+
+        self._wait()
+        if self._writer is None:
+            self._writer = pq.ParquetWriter(self._beside, table.schema, **_encoding(table.schema))
+        whole = table.combine_chunks()  # a page may otherwise end where a batch does
+        self._pending = self._writing.submit(
+            self._writer.write_table, whole, row_group_size=_ROW_GROUP
+        )
+
+    def _wait(self) -> None:
+        if self._pending is not None:
+            self._pending.result()
+            self._pending = None
+
+
+class Scratch:
+    """Arrays by name for the length of a stage, in memory or, where they are many, in a folder that goes with it."""
+
+    def __init__(self, folder: str | os.PathLike) -> None:
+        self._where = Path(folder)
+        self._arrays: dict[str, np.ndarray] = {}
+        self._files: dict[str, np.dtype] = {}
+        self._n_bytes = 0
+        self._folder: Path | None = None
+
+    def __enter__(self) -> Scratch:
+        for stale in self._where.glob(f"{_SCRATCH}*"):  # of a run that was killed
+            shutil.rmtree(stale, ignore_errors=True)
+        return self
+
+    def __exit__(
+        self,
+        kind: type[BaseException] | None,
+        error: BaseException | None,
+        trace: TracebackType | None,
+    ) -> None:
+        self._arrays.clear()
+        if self._folder is not None:
+            shutil.rmtree(self._folder, ignore_errors=True)
+
+    def keep(self, name: str, values: np.ndarray) -> None:
+        """Keep an array (n,) under a name."""
+        self._n_bytes += values.nbytes
+        if self._n_bytes <= _IN_MEMORY:
+            self._arrays[name] = values
+            return
+        if self._folder is None:
+            self._where.mkdir(parents=True, exist_ok=True)
+            self._folder = Path(tempfile.mkdtemp(prefix=_SCRATCH, dir=self._where))
+        values.tofile(self._folder / name)
+        self._files[name] = values.dtype
+
+    def part(self, name: str, first: int, last: int) -> np.ndarray:
+        """Elements `first` to `last` (exclusive) of an array."""
+        import numpy as np
+
+        if name in self._arrays:
+            return self._arrays[name][first:last]
+        dtype = self._files[name]
+        assert self._folder is not None
+        return np.fromfile(self._folder / name, dtype, last - first, offset=first * dtype.itemsize)
+
+
+def copy_as_csv(table: str | os.PathLike, path: str | os.PathLike) -> None:
+    """Write a Parquet table of ours as CSV too, as `write_csv` does, a row group at a time."""
+    import pyarrow.parquet as pq
+
+    with pq.ParquetFile(table) as file:
+        frames = (batch.to_pandas() for batch in file.iter_batches(_ROW_GROUP))
+        empty = file.schema_arrow.empty_table().to_pandas()
+        texts = [_as_csv(empty), *(_as_csv(frame, header=False) for frame in frames)]
+    write_text("".join(texts), path)
+
+
+def _plain(table: pa.Table) -> pa.Table:
+    """The table without dictionaries, with the notes that pandas leaves for a frame of plain text."""
+    import pyarrow as pa
+
+    coded = [field.name for field in table.schema if pa.types.is_dictionary(field.type)]
+    if not coded:
+        return table
+    for name in coded:
+        place = table.column_names.index(name)
+        table = table.set_column(place, name, table[name].cast(pa.large_string()))
+    like = pa.Table.from_pandas(
+        table.slice(0, 0).to_pandas(ignore_metadata=True), preserve_index=False
+    )
+    return table.cast(like.schema)
+
+
+def write_batches_if_changed(
+    schema: pa.Schema, batches: Iterable[pa.RecordBatch], path: str | os.PathLike
+) -> None:
+    """Write rows as Parquet as they come, unless the file holds them already: then it keeps its time.
+
+    The same rows give the same bytes, however they are cut into batches.
+    """
+    import pyarrow.parquet as pq
+
+    path = Path(path)
+    path.parent.mkdir(parents=True, exist_ok=True)
+    beside = path.with_name(f".{path.name}.{os.getpid()}.part")
+    try:
+        with pq.ParquetWriter(beside, schema, compression="zstd") as writer:
+            for table in _evenly(schema, batches):
+                writer.write_table(table, row_group_size=_ROW_GROUP)
+        if not path.exists() or not filecmp.cmp(beside, path, shallow=False):
+            beside.replace(path)
+    finally:
+        beside.unlink(missing_ok=True)
+
+
+def _evenly(schema: pa.Schema, batches: Iterable[pa.RecordBatch]) -> Iterator[pa.Table]:
+    """The same rows in tables of `_ROW_GROUP` rows, the last one shorter."""
+    import pyarrow as pa
+
+    waiting = pa.Table.from_batches([], schema)
+    for batch in batches:
+        waiting = pa.concat_tables([waiting, pa.Table.from_batches([batch], schema)])
+        while len(waiting) >= _ROW_GROUP:
+            yield waiting.slice(0, _ROW_GROUP).combine_chunks()
+            waiting = waiting.slice(_ROW_GROUP)
+    if len(waiting):
+        yield waiting.combine_chunks()
+
+
 def write_csv(frame: pd.DataFrame, path: str | os.PathLike) -> None:
-    """Write a frame as CSV at full precision, with UTF-8 and Unix line ends."""
-    write_text(frame.to_csv(index=False, lineterminator="\n"), path)
+    """Write a frame as CSV at full precision, with UTF-8 and Unix line ends; no text in it is a formula."""
+    write_text(_as_csv(frame), path)
+
+
+def _as_csv(frame: pd.DataFrame, header: bool = True) -> str:
+    from lineproof.spreadsheet import texts_as_text
+
+    return texts_as_text(frame).to_csv(index=False, lineterminator="\n", header=header)
 
 
 def read_json(path: str | os.PathLike) -> Any:
@@ -69,13 +311,18 @@ def write_if_changed(text: str, path: str | os.PathLike) -> None:
 
 
 def write_bytes(content: bytes | memoryview | pa.Buffer, path: str | os.PathLike) -> None:
-    """Write to a file beside `path`, then rename: no reader and no killed run ever sees half a file."""
+    """Write to a file beside `path`, then rename: no reader and no killed run ever sees half a file.
+
+    Raises OSError that names `path`, such as for a disk that is full.
+    """
     path = Path(path)
     path.parent.mkdir(parents=True, exist_ok=True)
     beside = path.with_name(f".{path.name}.{os.getpid()}.part")
     try:
         beside.write_bytes(content)
         beside.replace(path)
+    except OSError as error:
+        raise OSError(error.errno, error.strerror, str(path)) from error
     finally:
         beside.unlink(missing_ok=True)
 

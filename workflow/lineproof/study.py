@@ -7,26 +7,44 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from lineproof.cross_checks import CHECKS, results_folder
+from lineproof.cross_checks import CHECKS, beta_returns
+from lineproof.intake.formats import given_files, members
 from lineproof.problems import KnownProblem, Problem
 from lineproof.schema import as_problems, schema_findings, with_defaults
+from lineproof.source_checks import results_folder
 from lineproof.yamlfile import read_yaml
 
 
 @dataclass(frozen=True)
 class Source:
-    """A raw file and how to read it; `label` is the path as written in the study file."""
+    """Raw data and how to read them: files, or the result of a query.
 
-    file: str
+    `label` is what the study file says, and `labels` is what messages call each of the `files`. `connection` names the
+    environment variable with the way to the database; `names` is what a column of a wide file is, security or asset.
+    `dates` is None where their format is to be found out. `return_from` names the column that returns are computed
+    from, and then `columns` has no return.
+    """
+
+    files: tuple[str, ...]
+    labels: tuple[str, ...]
     label: str
+    query: str | None
+    connection: str | None
     columns: dict[str, str]
+    names: str
+    layout: str
+    leave_out: tuple[str, ...]
+    decimal: str
+    encoding: str | None
+    sheet: str | None
     unit: str
     missing: tuple[str, ...]
-    dates: str
+    dates: str | None
     separator: str | None
     source: str
     access: str
     may_share: bool
+    return_from: str | None = None
 
     def reading(self) -> dict[str, Any]:
         """What a reader needs to know, as plain values."""
@@ -37,15 +55,44 @@ class Source:
             "missing": list(self.missing),
             "dates": self.dates,
             "separator": self.separator,
+            "return_from": self.return_from,
+            "decimal": self.decimal,
+            "encoding": self.encoding,
+            "sheet": self.sheet,
+            "layout": self.layout,
+            "leave_out": list(self.leave_out),
+            "names": self.names,
+            "labels": list(self.labels),
+            "query": self.query,
         }
 
 
 @dataclass(frozen=True)
+class IntakeSpec:
+    """What becomes of questionable rows: the keyword arguments of the validation, all returns decimal.
+
+    `stale_run` is the length of a run of zero returns from which rows are not eligible, None for no such screen;
+    `final_return_by_reason` goes before `missing_final_return`, which is None to leave a last return as it is.
+    """
+
+    screens: tuple[dict[str, Any], ...]
+    outliers: dict[str, str]
+    return_after_hole: str
+    stale_run: int | None
+    missing_final_return: float | None
+    final_return_by_reason: dict[str, float]
+    allow_partial_last_month: bool
+    other_unit_stop_above: float
+    same_month_rows: str
+
+
+@dataclass(frozen=True)
 class BetaSpec:
-    """Options of one rolling estimate of beta; `window` and `min_obs` in months."""
+    """Options of one rolling estimate of beta; `window` and `min_obs` in periods of `returns`, "monthly" or "daily"."""
 
     name: str
     estimator: str
+    returns: str
     window: int
     min_obs: int
 
@@ -102,15 +149,19 @@ class Study:
     market_name: str
     seed: int
     level: float
+    frequency: str
     demo: dict[str, Any] | None
     returns: Source
-    market: Source
+    returns_are: str
+    returns_frequency: str
+    market: Source | None  # None where it is built from the returns
     market_is: str
-    riskless: Source
+    market_build: str | None
+    market_frequency: str
+    riskless: Source | None  # None where every return is in excess of it already
     riskless_quoted: str
-    screens: tuple[dict[str, Any], ...]
-    missing_final_return: float | None
-    same_month_rows: str
+    riskless_frequency: str
+    intake: IntakeSpec
     betas: dict[str, BetaSpec]
     sorts: dict[str, SortSpec]
     subperiods: dict[str, SubperiodSpec]
@@ -130,13 +181,15 @@ class Study:
 
     def is_made(self, source: Source) -> bool:
         """Whether the demo market makes this raw file."""
-        return self.demo is not None and Path(source.file).parent == Path(self.raw)
+        made = Path(self.raw)
+        return self.demo is not None and all(Path(file).parent == made for file in source.files)
 
     def sources(self) -> dict[str, Source]:
         """Every raw file by its place in the study file."""
         supplied = {f"portfolios.{n}": s.source for n, s in self.sorts.items() if s.source}
         core = {"returns": self.returns, "market": self.market, "riskless": self.riskless}
-        return {**{f"data.{name}": source for name, source in core.items()}, **supplied}
+        named = {f"data.{name}": source for name, source in core.items() if source is not None}
+        return {**named, **supplied}
 
 
 def load_study(path: str | os.PathLike) -> Study:
@@ -160,28 +213,28 @@ def load_study(path: str | os.PathLike) -> Study:
     return _build(filled, file.path)
 
 
+_SAME_NAME = ("name", "title", "market_name", "seed", "level", "frequency")
+
+
 def _build(content: dict[str, Any], path: Path) -> Study:
-    data, intake, paper = content["data"], content["intake"], content["paper"]
-    missing_final = intake["delisting"]["missing_final_return"]
+    data, paper = content["data"], content["paper"]
     lag = content["pricing"]["hac_lag"]
     run = content["pricing"]["run"]
     return Study(
         path=path,
-        **{key: content["study"][key] for key in ("name", "title", "market_name", "seed", "level")},
+        **{key: content["study"][key] for key in _SAME_NAME},
         demo=content.get("demo"),
-        returns=_source(data["returns"], path),
-        market=_source(data["market"], path),
-        market_is=data["market"]["is"],
-        riskless=_source(data["riskless"], path),
-        riskless_quoted=data["riskless"]["quoted"],
-        screens=tuple(intake["screens"]),
-        missing_final_return=None if missing_final == "leave" else float(missing_final),
-        same_month_rows=intake["same_month_rows"],
+        returns=_source(data["returns"], path, content["study"]["name"], "returns"),
+        **_series(data, path, content["study"]["name"], content["study"]["frequency"]),
+        intake=_intake(content["intake"]),
         betas={
-            name: BetaSpec(name, o["estimator"], o["window"], o["min"])
+            name: BetaSpec(name, o["estimator"], beta_returns(o, content), o["window"], o["min"])
             for name, o in content["betas"].items()
         },
-        sorts={name: _sort(name, options, path) for name, options in content["portfolios"].items()},
+        sorts={
+            name: _sort(name, options, path, content["study"]["name"])
+            for name, options in content["portfolios"].items()
+        },
         subperiods={
             name: SubperiodSpec(
                 name, o["from"], o["to"], o.get("split"), o.get("every"), o.get("title")
@@ -200,11 +253,46 @@ def _build(content: dict[str, Any], path: Path) -> Study:
     )
 
 
+def _series(data: dict[str, Any], path: Path, study: str, frequency: str) -> dict[str, Any]:
+    """What the study says of the market, the riskless rate, and which returns are in excess of it."""
+    market, riskless = data["market"], data.get("riskless")
+    returns_are = data["returns"]["is"]
+    delivered = data["returns"].get("frequency", frequency)
+    return {
+        "returns_are": returns_are,
+        "returns_frequency": delivered,
+        "market": None if "build" in market else _source(market, path, study, "market"),
+        "market_is": returns_are if "build" in market else market["is"],
+        "market_build": market.get("build"),
+        "market_frequency": market.get("frequency", delivered),
+        "riskless": None if riskless is None else _source(riskless, path, study, "riskless"),
+        "riskless_quoted": "period_return" if riskless is None else riskless["quoted"],
+        "riskless_frequency": (riskless or {}).get("frequency", delivered),
+    }
+
+
+def _intake(options: dict[str, Any]) -> IntakeSpec:
+    leaving = options["delisting"]
+    missing = leaving["missing_final_return"]
+    return IntakeSpec(
+        screens=tuple(options["screens"]),
+        outliers=dict(options["outliers"]),
+        stale_run=options.get("stale_prices", {}).get("run"),
+        missing_final_return=None if missing == "leave" else float(missing),
+        final_return_by_reason={str(code): float(r) for code, r in leaving["by_reason"].items()},
+        other_unit_stop_above=float(options["other_unit_stop_above"]),
+        **{
+            key: options[key]
+            for key in ("return_after_hole", "allow_partial_last_month", "same_month_rows")
+        },
+    )
+
+
 def _choice(value: str | list[str]) -> str | tuple[str, ...]:
     return value if isinstance(value, str) else tuple(value)
 
 
-def _sort(name: str, options: dict[str, Any], path: Path) -> SortSpec:
+def _sort(name: str, options: dict[str, Any], path: Path, study: str) -> SortSpec:
     supplied = options["design"] == "supplied"
     weighted = "size-weighted" if options["weights"] == "size" else "equally weighted"
     title = options.get("title") or (
@@ -220,22 +308,40 @@ def _sort(name: str, options: dict[str, Any], path: Path) -> SortSpec:
         form_month=options["form_month"],
         hold=options["hold"],
         returns_are=options["is"],
-        source=_source(options, path) if supplied else None,
+        source=_source(options, path, study, name) if supplied else None,
     )
 
 
-def _source(options: dict[str, Any], path: Path) -> Source:
+def _source(options: dict[str, Any], path: Path, study: str, name: str) -> Source:
+    """A source as the study file gives it, by its name; `study` is the name of the study."""
+    columns = dict(options["columns"])
+    computed = columns.pop("return")["from"] if isinstance(columns.get("return"), dict) else None
+    if "query" in options:
+        label = f"query {name}"
+        found = [(Path(results_folder(study)) / "extracts" / f"{name}.parquet", label)]
+    else:
+        given = given_files(options["file"])
+        found = [m for each in given for m in members(path.resolve().parent / each, each)]
+        label = ", ".join(given)
     return Source(
-        file=_from_here((path.parent / options["file"]).resolve()),
-        label=options["file"],
-        columns=dict(options["columns"]),
+        files=tuple(_from_here(file.parent.resolve() / file.name) for file, _ in found),
+        labels=tuple(label for _, label in found),
+        label=label,
+        query=options.get("query"),
+        connection=options.get("connection"),
+        columns=columns,
+        names="asset" if "design" in options else "security",
+        layout=options.get("layout", "long"),
+        leave_out=tuple(options.get("leave_out", ())),
         unit=options["unit"],
         missing=tuple(options["missing"]),
-        dates=options["dates"],
-        separator=options.get("separator"),
+        dates=options.get("dates"),
+        return_from=computed,
         source=options["source"],
         access=options["access"],
         may_share=options["may_share"],
+        decimal=options["decimal"],
+        **{key: options.get(key) for key in ("separator", "encoding", "sheet")},
     )
 
 

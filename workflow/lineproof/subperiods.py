@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import asdict, dataclass
 from itertools import pairwise
 from typing import Any
 
 import pandas as pd
 
-from lineproof.calendar import month_end, month_name
+from lineproof.calendar import month_name, within_months
+from lineproof.periods import periods_of
 from lineproof.problems import KnownProblem, Problem
 
 
@@ -104,9 +105,9 @@ def cut_subperiods(
     """The subperiods in the study's order, and in each the returns of all test assets.
 
     The market's returns stand beside them. "first" and "last" are the first and last month of the
-    main test assets; others may have fewer months in a subperiod, and their results say how many.
+    main test assets; others may have fewer periods in a subperiod, and their results say how many.
 
-    Raises KnownProblem as `resolve_subperiods` does, and when no test asset has a month in a
+    Raises KnownProblem as `resolve_subperiods` does, and when no test asset has a return in a
     subperiod.
     """
     months = sorts[main].loc[sorts[main]["excess_return"].notna(), "date"]
@@ -119,12 +120,21 @@ def cut_subperiods(
     cuts = {s.name: _between(whole, s) for s in subperiods}
     empty = [name for name, cut in cuts.items() if cut.empty]
     if empty:
-        said = "no test asset has a month in it"
+        said = "no test asset has a return in it"
         problems = [Problem(f"subperiods.{name}", said, "change or remove it") for name in empty]
         raise KnownProblem("The subperiods do not fit the data.", problems)
     return subperiods, cuts
 
 
 def _between(whole: pd.DataFrame, subperiod: Subperiod) -> pd.DataFrame:
-    within = whole["date"].between(month_end(subperiod.first), month_end(subperiod.last))
-    return whole[within].reset_index(drop=True)
+    return whole[within_months(whole["date"], subperiod.first, subperiod.last)].reset_index(
+        drop=True
+    )
+
+
+def listed(
+    subperiods: Sequence[Subperiod], market: pd.DataFrame, frequency: str = "monthly"
+) -> list[dict[str, Any]]:
+    """The subperiods as the index of the cuts lists them, each with its number of periods."""
+    periods = periods_of(frequency, market["date"].to_numpy())
+    return [{**asdict(s), "n_periods": periods.n_between(s.first, s.last)} for s in subperiods]

@@ -2,6 +2,9 @@
 
 Options are given to a job as `params` and are also kept as small files that the job takes as input. So the state of
 a study is complete in its own folder: a changed option is noticed even when the scheduler's memory was deleted.
+
+Code, pins and raw files come in by the digests of their content, which are kept the same way; so their time stamps,
+which mean little for a file that was unpacked, copied or checked out, decide nothing.
 """
 
 from __future__ import annotations
@@ -15,6 +18,7 @@ from typing import Any
 
 from lineproof import store
 from lineproof.analyses import ANALYSES
+from lineproof.digests import Digests
 from lineproof.facts import facts
 from lineproof.paper import exhibits
 from lineproof.provenance import WORKFLOW, code_of
@@ -35,20 +39,48 @@ class Wiring:
         """A path inside the study's results."""
         return f"{self.folder}/{name}"
 
-    def code(self, rule: str) -> list[str]:
-        """The code files a rule depends on, as inputs."""
-        return [_from_here(path) for path in code_of(WORKFLOW / "scripts" / f"{rule}.py")]
+    def code(self, rule: str) -> str:
+        """Where the digests of the code a rule depends on are kept."""
+        return self.path(f"digests/code-{rule}.json")
 
     @property
     def pins(self) -> str:
-        """The pinned packages, on which every number depends."""
-        return _from_here(WORKFLOW / "envs" / "requirements.txt")
+        """Where the digest of the pinned packages is kept, on which every output depends."""
+        return self.path("digests/pins.json")
+
+    def raw_digests(self, *places: str) -> list[str]:
+        """Where the digests of raw files are kept, by their places in the study file.
+
+        The demo market's files have none: a rule makes them, and what that depends on is known.
+        """
+        sources = self.study.sources()
+        return [
+            self.path(f"digests/{place}.json")
+            for place in places
+            if place in sources and not self.study.is_made(sources[place])
+        ]
 
     def keep_options(self) -> None:
         """Write the options of every job, each file only where it differs from what stands there."""
         for name, options in self._options.items():
-            text = json.dumps(options, indent=1, ensure_ascii=False, sort_keys=True) + "\n"
-            store.write_if_changed(text, self.options_file(name))
+            self._keep(options, self.options_file(name))
+
+    def keep_digests(self) -> None:
+        """Write the digests of code, pins and raw files, each file of them only where one has changed."""
+        digests = Digests(self.path("digests/known.json"))
+        for script in (WORKFLOW / "scripts").glob("*.py"):
+            files = code_of(script)
+            found = {str(file.relative_to(WORKFLOW)): digests.of(file) for file in files}
+            self._keep(found, self.code(script.stem))
+        self._keep(digests.of(WORKFLOW / "envs" / "requirements.txt"), self.pins)
+        for place, source in self.study.sources().items():
+            for kept in self.raw_digests(place):
+                self._keep([digests.of(file) for file in source.files], kept)
+        digests.keep()
+
+    def _keep(self, content: Any, file: str) -> None:
+        text = json.dumps(content, indent=1, ensure_ascii=False, sort_keys=True) + "\n"
+        store.write_if_changed(text, file)
 
     def options_file(self, name: str) -> str:
         """Where the options of a job are kept."""
@@ -64,20 +96,23 @@ class Wiring:
         found: dict[str, dict[str, Any]] = {
             "validate_returns": self._validation(),
             "cut_subperiods": {
+                "frequency": study.frequency,
                 "main": study.paper.main,
                 "specs": {name: asdict(spec) for name, spec in study.subperiods.items()},
             },
             "price_subperiod": {
+                "frequency": study.frequency,
                 "level": study.level,
                 "hac_lag": study.hac_lag,
                 "analyses": list(ANALYSES) if study.analyses == "all" else list(study.analyses),
             },
+            "describe_sample": {"frequency": study.frequency},
             "write_paper": {"facts": facts(study)},
         }
         if study.demo is not None:
             found["make_demo"] = dict(study.demo)
         for name, spec in study.betas.items():
-            found[f"estimate_betas-{name}"] = asdict(spec)
+            found[f"estimate_betas-{name}"] = {**asdict(spec), "dated": study.frequency}
         for name in study.sorts:
             found[f"form_portfolios-{name}"] = self._sort(name)
         return found
@@ -85,39 +120,73 @@ class Wiring:
     def _validation(self) -> dict[str, Any]:
         study = self.study
         return {
+            "frequency": study.frequency,
             "returns": study.returns.reading(),
-            "market": study.market.reading(),
-            "market_is": study.market_is,
-            "riskless": study.riskless.reading(),
-            "riskless_quoted": study.riskless_quoted,
-            "screens": list(study.screens),
-            "missing_final_return": study.missing_final_return,
-            "same_month_rows": study.same_month_rows,
+            "returns_are": study.returns_are,
+            "returns_frequency": study.returns_frequency,
+            "market_build": study.market_build,
+            "series": {
+                "market": study.market and study.market.reading(),
+                "market_is": study.market_is,
+                "market_frequency": study.market_frequency,
+                "riskless": study.riskless and study.riskless.reading(),
+                "riskless_quoted": study.riskless_quoted,
+                "riskless_frequency": study.riskless_frequency,
+            },
+            "rules": asdict(study.intake),
         }
+
+    @property
+    def panels(self) -> dict[str, str]:
+        """The panel, and the panel of days beside it where a study of months is delivered days; by name."""
+        names = (
+            ["panel"]
+            if self.study.returns_frequency == self.study.frequency
+            else ["panel", "daily"]
+        )
+        return {name: self.path(f"data/{name}.parquet") for name in names}
+
+    @property
+    def markets(self) -> dict[str, str]:
+        """The market, and the market's days beside it where there are such."""
+        study = self.study
+        beside = study.returns_frequency != study.frequency and (
+            study.market_build is not None or study.market_frequency == "daily"
+        )
+        names = ["market", "market_daily"] if beside else ["market"]
+        return {name: self.path(f"data/{name}.parquet") for name in names}
 
     def _sort(self, name: str) -> dict[str, Any]:
         spec = self.study.sorts[name]
         if spec.source is not None:
             return {
                 "design": spec.design,
+                "frequency": self.study.frequency,
                 "reading": spec.source.reading(),
                 "returns_are": spec.returns_are,
             }
         return {
             "design": spec.design,
+            "frequency": self.study.frequency,
             "name": name,
             **{key: getattr(spec, key) for key in ("groups", "weights", "form_month", "hold")},
         }
 
-    def sort_inputs(self, name: str) -> dict[str, str]:
+    def beta_inputs(self, name: str) -> dict[str, str]:
+        """The panel and the market that an entry under `betas` is estimated from."""
+        study = self.study
+        if study.betas[name].returns == study.frequency:
+            tables = {"panel": "panel", "market": "market"}
+        else:
+            tables = {"panel": "daily", "market": "market_daily"}
+        return {key: self.path(f"data/{table}.parquet") for key, table in tables.items()}
+
+    def sort_inputs(self, name: str) -> list[str]:
         """The tables or files a set of test assets is made from."""
         spec = self.study.sorts[name]
         if spec.source is not None:
-            return {"supplied": spec.source.file}
-        return {
-            "panel": self.path("data/panel.parquet"),
-            "betas": self.path(f"betas/{spec.rank_on}.parquet"),
-        }
+            return list(spec.source.files)
+        return [self.path("data/panel.parquet"), self.path(f"betas/{spec.rank_on}.parquet")]
 
     @property
     def tables_between(self) -> list[str]:
@@ -162,8 +231,3 @@ class Wiring:
 def subperiod_names(index: str | os.PathLike) -> list[str]:
     """Names of the subperiods listed in an index file."""
     return [entry["name"] for entry in store.read_json(index)]
-
-
-def _from_here(path: Path) -> str:
-    """Relative to the working folder where the file lies in it, else absolute."""
-    return os.path.relpath(path) if path.is_relative_to(Path.cwd()) else str(path)

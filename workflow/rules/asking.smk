@@ -23,10 +23,30 @@ def after_cutting(names):
     return after(["validate_returns", "cut_subperiods"], names)
 
 
+def raw(source):
+    """Raw files. Their digests say when they have changed, not their times; only the demo market's are made here."""
+    if source is None:
+        return []
+    files = list(source.files)
+    return files if study.is_made(source) else [ancient(file) for file in files]
+
+
 def sort_inputs(wildcards):
     """What a set of test assets is made from: tables of ours, or a raw file."""
+    supplied = study.sorts[wildcards.sort].source
+    return raw(supplied) if supplied else wiring.sort_inputs(wildcards.sort)
+
+
+def beta_inputs(wildcards):
+    """The panel and the market that betas are estimated from, by name."""
     checkpoints.validate_returns.get()
-    return list(wiring.sort_inputs(wildcards.sort).values())
+    return wiring.beta_inputs(wildcards.estimate)
+
+
+def sort_digests(wildcards):
+    """The digests of the raw file that a set of test assets is made from, where it is."""
+    supplied = study.sorts[wildcards.sort].source
+    return wiring.raw_digests(f"portfolios.{wildcards.sort}") if supplied else []
 
 
 def priced(wildcards):

@@ -3,8 +3,7 @@
 
 rule estimate_betas:
     input:
-        panel=after_validation("data/panel.parquet"),
-        market=after_validation("data/market.parquet"),
+        unpack(beta_inputs),
         options=wiring.options_file("estimate_betas-{estimate}"),
         pins=wiring.pins,
         code=wiring.code("estimate_betas"),

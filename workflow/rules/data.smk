@@ -3,15 +3,16 @@
 
 checkpoint validate_returns:
     input:
-        returns=study.returns.file,
-        market=study.market.file,
-        riskless=study.riskless.file,
+        returns=raw(study.returns),
+        market=raw(study.market),
+        riskless=raw(study.riskless),
+        digests=wiring.raw_digests("data.returns", "data.market", "data.riskless"),
         options=wiring.options_file("validate_returns"),
         pins=wiring.pins,
         code=wiring.code("validate_returns"),
     output:
-        panel=wiring.path("data/panel.parquet"),
-        market=wiring.path("data/market.parquet"),
+        **wiring.panels,
+        **wiring.markets,
         set_aside=wiring.path("data/set_aside.parquet"),
         set_aside_csv=wiring.path("data/set_aside.csv"),
         intake=wiring.path("data/intake.json"),
@@ -21,6 +22,7 @@ checkpoint validate_returns:
         wiring.path("benchmarks/validate_returns.tsv")
     params:
         options=wiring.options("validate_returns"),
+        files=["returns", "market", "riskless"],
     script:
         "../scripts/validate_returns.py"
 

@@ -5,6 +5,7 @@ if study.demo is not None:
     rule make_demo:
         input:
             options=wiring.options_file("make_demo"),
+            pins=wiring.pins,
             code=wiring.code("make_demo"),
         output:
             raw=[

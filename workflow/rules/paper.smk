@@ -7,6 +7,7 @@ rule write_tables:
         index=after_cutting("subperiods/index.json"),
         intake=after_cutting("data/intake.json"),
         options=wiring.options_file("write_paper"),
+        pins=wiring.pins,
         code=wiring.code("write_tables"),
     output:
         tables=[wiring.path(name) for name in wiring.tables],
@@ -26,6 +27,7 @@ rule draw_figures:
         index=after_cutting("subperiods/index.json"),
         intake=after_cutting("data/intake.json"),
         options=wiring.options_file("write_paper"),
+        pins=wiring.pins,
         code=wiring.code("draw_figures"),
     output:
         figures=[wiring.path(name) for name in wiring.figures],
@@ -46,6 +48,7 @@ rule write_report:
         intake=after_cutting("data/intake.json"),
         figures=after_cutting(wiring.figures),
         options=wiring.options_file("write_paper"),
+        pins=wiring.pins,
         code=wiring.code("write_report"),
     output:
         report=wiring.path("report.html"),

@@ -4,6 +4,7 @@
 rule form_portfolios:
     input:
         sources=sort_inputs,
+        digests=sort_digests,
         market=after_validation("data/market.parquet"),
         options=wiring.options_file("form_portfolios-{sort}"),
         pins=wiring.pins,

@@ -22,9 +22,11 @@ rule price_subperiod:
 rule describe_sample:
     input:
         panel=after_cutting("data/panel.parquet"),
+        market=after_cutting("data/market.parquet"),
         intake=after_cutting("data/intake.json"),
         index=after_cutting("subperiods/index.json"),
         betas=after_cutting([f"betas/{name}.parquet" for name in wiring.main_betas]),
+        options=wiring.options_file("describe_sample"),
         pins=wiring.pins,
         code=wiring.code("describe_sample"),
     output:
@@ -33,6 +35,8 @@ rule describe_sample:
         wiring.path("logs/describe_sample.log"),
     benchmark:
         wiring.path("benchmarks/describe_sample.tsv")
+    params:
+        options=wiring.options("describe_sample"),
     script:
         "../scripts/describe_sample.py"
 
@@ -41,6 +45,7 @@ rule gather_estimates:
     input:
         sample=after_cutting("sample.parquet"),
         subperiods=priced,
+        pins=wiring.pins,
         code=wiring.code("gather_estimates"),
     output:
         estimates=wiring.path("estimates.parquet"),

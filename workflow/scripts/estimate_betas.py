@@ -4,5 +4,6 @@ from lineproof.estimation import estimate_betas
 with joblog.job(snakemake):
     panel = store.read_table(snakemake.input.panel, ["security", "date", "excess_return"])
     market = store.read_table(snakemake.input.market)
-    betas = estimate_betas(panel, market, **snakemake.params.options)
-    store.write_table(betas, snakemake.output.betas, "betas")
+    options = snakemake.params.options
+    betas = estimate_betas(panel, market, **options)
+    store.write_table(betas, snakemake.output.betas, "betas", options["dated"])

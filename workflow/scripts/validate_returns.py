@@ -1,13 +1,16 @@
+from pathlib import Path
+
 from lineproof import joblog, store
 from lineproof.validation import validate_returns
 
-with joblog.job(snakemake):
-    files, out = snakemake.input, snakemake.output
-    found = validate_returns(
-        files.returns, files.market, files.riskless, **snakemake.params.options
-    )
-    store.write_table(found.panel, out.panel, "panel")
-    store.write_table(found.market, out.market, "market")
-    store.write_table(found.set_aside, out.set_aside, "set_aside")
-    store.write_csv(found.set_aside, out.set_aside_csv)
-    store.write_json(found.intake, out.intake)
+with joblog.job(snakemake), store.Scratch(Path(snakemake.output.panel).parent) as scratch:
+    out, options = dict(snakemake.output.items()), snakemake.params.options
+    files = {name: list(snakemake.input.get(name, [])) for name in snakemake.params.files}
+    found = validate_returns(files, scratch, **options)
+    panels = {name: out[name] for name in ("panel", "daily") if name in out}
+    store.write_together(found.tables(), panels, options["frequency"])
+    for name, market in found.markets().items():
+        store.write_table(market, out[name], name, options["frequency"])
+    store.write_together(found.set_aside(), {"set_aside": out["set_aside"]})
+    store.copy_as_csv(out["set_aside"], out["set_aside_csv"])
+    store.write_json(found.counts(), out["intake"])

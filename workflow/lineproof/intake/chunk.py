@@ -56,6 +56,25 @@ class Chunk:
         """Whether the row before is the same security's in the period before, bool (n_rows,)."""
         return ~self.is_first & (self.absent == 0)
 
+    def only(self, mask: np.ndarray) -> Chunk:
+        """The rows of a mask (n_rows,); securities without rows are left out."""
+        if mask.all():
+            return self
+        n_each = np.bincount(self.owner[mask], minlength=len(self.names))
+        held = n_each > 0
+        return Chunk(
+            names=self.names[held],
+            start=np.append(0, np.cumsum(n_each[held])),
+            period=self.period[mask],
+            day=self.day[mask],
+            values={name: values[mask] for name, values in self.values.items()},
+            texts={name: (codes[mask], texts) for name, (codes, texts) in self.texts.items()},
+            code=self.code[mask],
+        )
+
     def where(self, rows: np.ndarray) -> list[str]:
         """Security and date of some rows, by index, as in `000123 on 2001-05-31`."""
-        return [f"{self.names[i]} on {day}" for i, day in zip(self.owner[rows], self.day[rows], strict=True)]
+        return [
+            f"{self.names[i]} on {day}"
+            for i, day in zip(self.owner[rows], self.day[rows], strict=True)
+        ]

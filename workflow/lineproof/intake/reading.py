@@ -1,33 +1,33 @@
-"""Read a raw file as text: every row with its place, and every row that does not fit its header."""
+"""Open raw files in whatever format: their rows block by block, every row with its place, and every row that does
+not fit its header."""
 
 from __future__ import annotations
 
-import csv
-import io
-import json
+from collections.abc import Iterator
 from dataclasses import dataclass
-from difflib import get_close_matches
-from itertools import chain
+from functools import cached_property
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 import pandas as pd
 import pyarrow as pa
-import pyarrow.compute as pc
-import pyarrow.csv
-import pyarrow.parquet as pq
 
-from lineproof.intake.lines import Block, find_misfits, read_blocks
-from lineproof.intake.stopping import UNUSABLE, stop
-from lineproof.problems import KnownProblem, Problem
+from lineproof.catalog import load
+from lineproof.intake.arrays import as_text, settled, trimmed
+from lineproof.intake.blocks import RawBlock, RawFile
+from lineproof.intake.formats import FORMATS, check_beginning, kind_of, members
+from lineproof.intake.headers import Mapping, match
+from lineproof.intake.pieces import Format, Piece
+from lineproof.intake.stopping import stop
+from lineproof.intake.wide import as_rows, raw_cell
 
-_SEPARATORS = {",": "comma", ";": "semicolon", "\t": "tab", "|": "bar"}
+_LONGEST_BEGINNING = 32
 
 
 @dataclass(frozen=True)
 class TextTable:
-    """A raw file as text.
+    """A whole raw file as text, for files that are small.
 
     `rows` has the columns of the study file under our names, trimmed of blanks, and `line`;
     `rejects` has `line` and `reason` of each row whose fields do not fit the header. `line` counts
@@ -46,195 +46,171 @@ class TextTable:
         return len(self.rows) + len(self.rejects)
 
 
-def read_text(file: str, reading: dict[str, Any]) -> TextTable:
-    """Read CSV or TSV (also .gz, .bz2, .zst) or Parquet, keeping the columns the study file names.
+def open_files(files: str | list[str], reading: dict[str, Any]) -> list[RawFile]:
+    """The raw files of one source, in order; a folder stands for the Parquet files in it.
 
-    Raises KnownProblem when the file is missing, empty, broken, not UTF-8 or lacks a column.
+    `reading` is what `Source.reading()` gives; of its keys only `label` and `columns` must be there.
+    Several files may hold no row each; a single one may not.
+
+    Raises KnownProblem when a file is missing, empty, or not what its ending says.
     """
-    label, path = reading["label"], Path(file)
+    given = [files] if isinstance(files, str) else list(files)
+    labels = reading.get("labels") or _labels(given, reading["label"])
+    found = [
+        member
+        for file, label in zip(given, labels, strict=True)
+        for member in members(Path(file), label)
+    ]
+    if not found:
+        raise stop(reading["label"], "there is no file", "check the path in the study file")
+    return [_Opened(str(path), label, reading, len(found) > 1) for path, label in found]
+
+
+def _labels(files: list[str], label: str) -> list[str]:
+    return [label] if len(files) == 1 else [f"{label}, {Path(file).name}" for file in files]
+
+
+class _Opened:
+    """A `RawFile`. What is wrong with the file is said when its rows are asked for."""
+
+    def __init__(self, file: str, label: str, reading: dict[str, Any], may_be_empty: bool) -> None:
+        self.label = label
+        self._file, self._reading, self._may_be_empty = file, reading, may_be_empty
+        self._kind = _checked_kind(Path(file), label, reading)
+
+    @property
+    def place(self) -> str:
+        return "line" if self._kind == "text" else "row"
+
+    @cached_property
+    def _format(self) -> Format:
+        return load(FORMATS[self._kind])(self._file, self.label, self._reading)
+
+    @cached_property
+    def _header(self) -> list[str]:
+        return self._format.header()
+
+    @cached_property
+    def _mapping(self) -> Mapping:
+        return match(self._header, self._reading, self.label)
+
+    def blocks(self) -> Iterator[RawBlock]:
+        """See `RawFile`."""
+        n_read = 0
+        for block in self._saying_what_is_broken(self._blocks()):
+            n_read += block.n_read
+            yield block
+        if not n_read and not self._may_be_empty:
+            raise stop(self.label, "there is a header but no row", "deliver it again")
+
+    def _blocks(self) -> Iterator[RawBlock]:
+        mapping = self._mapping
+        for piece in self._format.pieces(mapping.wanted):
+            if mapping.cells is None:
+                yield _long(piece, mapping, self._reading, self.label)
+            else:
+                yield as_rows(piece, mapping, len(self._header), self._reading, self.label)
+
+    def line(self, positions: np.ndarray) -> np.ndarray:
+        """See `RawFile`."""
+        wide = self._reading.get("layout") == "wide"
+        return positions // len(self._header) if wide else np.asarray(positions, np.int64)
+
+    def raw(self, positions: np.ndarray) -> Iterator[list[str]]:
+        """See `RawFile`."""
+        positions = np.asarray(positions, np.int64)
+        yield from self._saying_what_is_broken(self._raw(positions))
+
+    def _raw(self, positions: np.ndarray) -> Iterator[list[str]]:
+        shape = self._format
+        if not len(positions):
+            return
+        if self._reading.get("layout") != "wide":
+            for rows in shape.rows(positions):
+                yield [shape.line_of(row) for row in rows]
+            return
+        lines, column = np.divmod(positions, len(self._header))
+        places, n_cells = np.unique(lines, return_counts=True)
+        date, cell, place = self._mapping.ours["date"], 0, 0
+        for rows in shape.rows(places):
+            texts = []
+            for row in rows:
+                text, fields = shape.line_of(row), shape.fields_of(row)
+                upto = cell + int(n_cells[place])
+                texts += [
+                    raw_cell(text, fields, self._header, c, date)
+                    for c in column[cell:upto].tolist()
+                ]
+                cell, place = upto, place + 1
+            yield texts
+
+    def _saying_what_is_broken(self, items: Iterator[Any]) -> Iterator[Any]:
+        try:
+            yield from items
+        except (OSError, pa.ArrowException, UnicodeError) as error:
+            said = str(error).strip().split("\n")[0].rstrip(".").replace(self._file, self.label)
+            change = "is it complete, and what its ending says?"
+            raise stop(self.label, f"it cannot be read: {said}", change) from None
+
+
+def _checked_kind(path: Path, label: str, reading: dict[str, Any]) -> str:
     if not path.is_file():
         raise stop(label, "there is no such file", "check the path in the study file")
     if path.stat().st_size == 0:
         raise stop(label, "the file is empty", "deliver it again")
-    try:
-        table = _read_parquet(file, reading) if _is_parquet(file) else _read_csv(file, reading)
-    except (OSError, pa.ArrowException) as error:
-        said = str(error).strip().split("\n")[0].rstrip(".")
-        change = "is it complete, and what its ending says?"
-        raise stop(label, f"it cannot be read: {said}", change) from None
-    if table.n_read == 0:
-        raise stop(label, "there is a header but no row", "deliver it again")
-    return table
+    kind = kind_of(path, label)
+    if kind != "text":
+        try:
+            with path.open("rb") as stream:
+                check_beginning(stream.read(_LONGEST_BEGINNING), kind, label)
+        except OSError as error:
+            raise stop(
+                label, f"it cannot be read: {error.strerror}", "check its permissions"
+            ) from None
+    return kind
 
 
-def raw_rows(file: str, wanted: np.ndarray) -> list[str]:
-    """The text of the given lines (ascending, as in `TextTable.line`), without line ends.
+def _long(piece: Piece, mapping: Mapping, reading: dict[str, Any], label: str) -> RawBlock:
+    columns, n_trimmed = {}, 0
+    for ours, position in mapping.ours.items():
+        where = f"{label}, column {reading['columns'][ours]}"
+        array = settled(piece.columns[position], ours, reading, where)
+        columns[ours], n_blanks = trimmed(array)
+        n_trimmed += n_blanks
+    return RawBlock(columns, piece.place, piece.rejects, n_trimmed)
 
-    A row of Parquet is written as a line of CSV.
+
+def read_text(files: str | list[str], reading: dict[str, Any]) -> TextTable:
+    """Read whole files as text, keeping the columns the study file names.
+
+    Raises KnownProblem when a file is missing, empty, broken, in another encoding or lacks a column.
     """
-    if len(wanted) == 0:
-        return []
-    if _is_parquet(file):
-        rows = pq.read_table(file).take(wanted - 1).to_pylist()
-        return [_as_line(row.values()) for row in rows]
-    found: list[str] = []
-    for block in read_blocks(file, file):
-        upto = np.searchsorted(wanted, block.first + len(block))
-        found += [block.line(index) for index in wanted[len(found) : upto] - block.first]
-        if upto == len(wanted):
-            break
-    return found
-
-
-def _as_line(values: Any) -> str:
-    line = io.StringIO()
-    csv.writer(line, lineterminator="").writerow(values)
-    return line.getvalue()
-
-
-def _is_parquet(file: str) -> bool:
-    return Path(file).suffix.lower() == ".parquet"
-
-
-def _read_csv(file: str, reading: dict[str, Any]) -> TextTable:
-    label = reading["label"]
-    separator = _separator(file, reading)
-    blocks = read_blocks(file, label)
-    first = next(blocks, None)
-    if first is None:
-        raise stop(label, "the file is empty", "deliver it again")
-    header = next(csv.reader([first.line(0)], delimiter=separator), [])
-    if not any(name.strip() for name in header):
-        raise stop(f"{label}, line 1", "there are no column names", "give a header in line 1")
-    wanted = _match([name.strip() for name in header], reading, separator, first.line(0))
-    texts, lines, rejects = [], [], []
-    for block in chain([first], blocks):
-        blank, reasons = find_misfits(block, separator, len(header))
-        if block is first:
-            blank[0] = True  # the header is no row
-            reasons.pop(0, None)
-        fits = ~blank
-        fits[list(reasons)] = False
-        texts.append(_split(block, fits, separator, len(header), sorted(set(wanted.values()))))
-        lines.append(np.flatnonzero(fits) + block.first)
-        rejects += [(block.first + index, said) for index, said in reasons.items()]
-    columns = _named(pa.concat_tables(texts), wanted)
-    return _as_table(label, "line", columns, np.concatenate(lines), rejects)
-
-
-def _separator(file: str, reading: dict[str, Any]) -> str:
-    given = reading["separator"]
-    if given is None:
-        return "\t" if ".tsv" in Path(file.lower()).suffixes else ","
-    if not given.isascii() or given in '"\r\n':
-        found = f"the character {given!r} cannot part the fields of a file"
-        raise stop(f"{reading['label']}, separator", found, "use , or ; or | or a tab")
-    return given
-
-
-def _split(
-    block: Block, fits: np.ndarray, separator: str, n_fields: int, wanted: list[int]
-) -> pa.Table:
-    """The wanted fields, by position, of the lines that fit: text columns named by position."""
-    names = [str(position) for position in range(n_fields)]
-    kept = [str(position) for position in wanted]
-    if not fits.any():
-        return pa.table({name: pa.array([], pa.string()) for name in kept})
-    text = block.only(fits)
-    table = pyarrow.csv.read_csv(
-        pa.BufferReader(text),
-        read_options=pyarrow.csv.ReadOptions(column_names=names, block_size=len(text)),
-        parse_options=pyarrow.csv.ParseOptions(delimiter=separator),
-        convert_options=pyarrow.csv.ConvertOptions(
-            column_types=dict.fromkeys(names, pa.string()), include_columns=kept
-        ),
-    )
-    if len(table) != fits.sum():
-        raise AssertionError(f"{fits.sum()} lines gave {len(table)} rows")
-    return table
-
-
-def _read_parquet(file: str, reading: dict[str, Any]) -> TextTable:
-    names = pq.read_schema(file).names
-    wanted = _match(names, reading, None, "")
-    table = pq.read_table(file, columns=sorted({names[position] for position in wanted.values()}))
-    columns = {
-        ours: _as_text(table[names[position]], reading["dates"], ours in _INTEGERS)
-        for ours, position in wanted.items()
-    }
-    return _as_table(reading["label"], "row", columns, np.arange(1, len(table) + 1), [])
-
-
-_INTEGERS = ("security", "date")  # whole numbers that missing values may have turned to floats
-
-
-def _as_text(column: pa.ChunkedArray, dates: str, is_integer: bool) -> pa.ChunkedArray:
-    """A typed column as it would stand in a CSV file, missing values as empty text."""
-    if pa.types.is_date(column.type) or pa.types.is_timestamp(column.type):
-        column = pc.strftime(column.cast(pa.timestamp("s"), safe=False), format=dates)
-    elif pa.types.is_floating(column.type):
-        column = pc.if_else(pc.is_nan(column), None, column)
-        if is_integer and pc.all(pc.equal(column, pc.floor(column))).as_py():
-            column = column.cast(pa.int64())
-    return pc.fill_null(column.cast(pa.string()), "")
-
-
-def _named(table: pa.Table, wanted: dict[str, int]) -> dict[str, pa.ChunkedArray]:
-    return {ours: table[str(position)] for ours, position in wanted.items()}
-
-
-def _as_table(
-    label: str,
-    place: str,
-    columns: dict[str, pa.ChunkedArray],
-    lines: np.ndarray,
-    rejects: list[tuple[int, str]],
-) -> TextTable:
-    trimmed = {name: pc.utf8_trim_whitespace(column) for name, column in columns.items()}
-    n_trimmed = sum(
-        pc.sum(pc.not_equal(trimmed[name], column)).as_py() or 0 for name, column in columns.items()
-    )
-    rows = pa.table(trimmed).to_pandas().assign(line=lines.astype(np.int64))
+    opened = open_files(files, reading)
+    parts, rejects, n_trimmed = [], [], 0
+    for file in opened:
+        for block in file.blocks():
+            texts = {name: as_text(array, reading) for name, array in block.columns.items()}
+            parts.append(pa.table({**texts, "line": file.line(block.position)}))
+            at = file.line(np.array([position for position, _ in block.rejects], np.int64))
+            rejects += zip(at.tolist(), [why for _, why in block.rejects], strict=True)
+            n_trimmed += block.n_trimmed
+    rows = pa.concat_tables(parts).to_pandas() if parts else pd.DataFrame()
+    if not len(rows) and not rejects:
+        raise stop(reading["label"], "there is a header but no row", "deliver it again")
     frame = pd.DataFrame(
         {
             "line": pd.Series([line for line, _ in rejects], dtype="int64"),
             "reason": pd.Series([said for _, said in rejects], dtype=str),
         }
     )
-    return TextTable(label, place, rows, frame, n_trimmed)
+    return TextTable(reading["label"], opened[0].place, rows, frame, n_trimmed)
 
 
-def _match(
-    header: list[str], reading: dict[str, Any], separator: str | None, first_line: str
-) -> dict[str, int]:
-    """The position of each of our columns, after checking that every name is there, and once."""
-    label, columns = reading["label"], reading["columns"]
-    absent = [theirs for theirs in dict.fromkeys(columns.values()) if theirs not in header]
-    if separator is not None and len(header) == 1 and absent:
-        _check_separator(label, separator, first_line)
-    problems = [
-        Problem(label, f"there is no column {theirs!r}", _columns_found(theirs, header))
-        for theirs in absent
-    ]
-    twice = sorted({name for name in header if name and header.count(name) > 1})
-    problems += [
-        Problem(label, f"two columns are called {name!r}", "rename one of them") for name in twice
-    ]
-    if problems:
-        raise KnownProblem(UNUSABLE, problems)
-    return {ours: header.index(theirs) for ours, theirs in columns.items()}
+def raw_rows(files: str | list[str], wanted: np.ndarray) -> list[str]:
+    """The text of the given lines (ascending, as in `TextTable.line`) of one long file, without line ends.
 
-
-def _columns_found(absent: str, header: list[str]) -> str:
-    close = get_close_matches(absent, header, n=1)
-    near = f"did you mean {close[0]}? " if close else ""
-    return f"{near}The columns are: {', '.join(header)}"
-
-
-def _check_separator(label: str, separator: str, first_line: str) -> None:
-    better = max(_SEPARATORS, key=first_line.count)
-    if first_line.count(better):
-        found = (
-            f"its header has no {_SEPARATORS.get(separator, separator)} but a {_SEPARATORS[better]}"
-        )
-        raise stop(label, found, f"set separator: {json.dumps(better)}")
+    A row of a typed file is written as a line of CSV.
+    """
+    name = files if isinstance(files, str) else files[0]
+    opened = open_files(files, {"label": name, "columns": {}})
+    return [text for texts in opened[0].raw(wanted) for text in texts]

@@ -1,58 +1,129 @@
-"""Read a series with one value a month (the market, the riskless rate) or one an asset and month."""
+"""Read a series with one value a period (the market, the riskless rate) or one an asset and period."""
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
 from typing import Any
 
 import numpy as np
 import pandas as pd
 
 from lineproof.addresses import refused_asset_names
-from lineproof.calendar import month_name, month_number
-from lineproof.intake.plausible import check_unit
+from lineproof.calendar import month_number
 from lineproof.intake.reading import TextTable, read_text
-from lineproof.intake.stopping import UNUSABLE, counted, stop
-from lineproof.intake.values import Numbers, as_decimal, check_date_format, to_months, to_numbers
+from lineproof.intake.riskless import check_riskless as check_riskless
+from lineproof.intake.riskless import riskless_return as riskless_return
+from lineproof.intake.series_dates import check_series_dates, check_series_frequency, to_days
+from lineproof.intake.stopping import N_SHOWN, UNUSABLE, counted, few, stop
+from lineproof.intake.values import Numbers, as_decimal, to_numbers
 from lineproof.problems import KnownProblem, Problem
 
-_MOST_PLAUSIBLE_RATE = 0.03  # riskless return of one month
-_N_SHOWN = 12
+_FEWEST = 30  # values on which to judge a unit
+# Half of the sizes of all returns above the first: not decimal. Not one in twenty above the second: not in per cent.
+# Each is about ten times away from any market's returns, and from those in the other unit.
+_SIZES = {"monthly": (0.5, 0.005), "daily": (0.1, 0.0005)}
 
 
-def read_series(file: str, reading: dict[str, Any], value: str) -> pd.DataFrame:
-    """`date` (month end) and `value` (decimal), sorted; with `asset` where the columns name one.
+def read_series(
+    files: str | Sequence[str], reading: dict[str, Any], value: str, frequency: str = "monthly"
+) -> pd.DataFrame:
+    """`date` and `value` (decimal), sorted; with `asset` where the columns name one.
 
-    Every row must be sound: a series has no spare months, so a fault stops the run. A row whose
-    value is missing counts as absent.
+    `files` is one path, or several whose rows are one series. A date is the month's end or, where `frequency` is
+    "daily", the day as delivered: the days of the market are the trading calendar of a daily study.
 
-    Raises KnownProblem listing the rows whose date or value cannot be read, months that stand twice and months
-    missing inside the series, or when returns are in another unit than declared.
+    Every row must be sound: a series has no spare periods, so a fault stops the run. A row whose value is missing
+    counts as absent.
+
+    Raises KnownProblem listing the rows whose date or value cannot be read, periods that stand twice (fault 31) and
+    months missing inside the series (27); or when the dates are not as frequent as declared (40), or returns are in
+    another unit. Which days are missing from a daily series no reader can know: see `riskless` and `trading_days`.
     """
-    check_date_format(reading)
-    table = read_text(file, reading)
-    rows = table.rows
-    date = to_months(rows["date"], reading["dates"])
-    numbers = to_numbers(rows[value], reading["missing"])
-    problems = _row_problems(table, date, numbers, reading, value)
+    check_series_dates(reading, frequency)
+    paths = [files] if isinstance(files, str) else list(files)
+    parsed = [_parsed(file, reading, value, len(paths) > 1) for file in paths]
+    problems = [problem for each in parsed for problem in each.problems]
     if problems:
         raise KnownProblem(UNUSABLE, problems)
-    decimal = as_decimal(numbers.value, reading["unit"])
+    day, decimal, asset = (
+        np.concatenate([getattr(each, name) for each in parsed])
+        for name in ("day", "decimal", "asset")
+    )
     if value == "return":
-        check_unit(decimal, reading)
-    series = pd.DataFrame({"date": date, value: decimal})
+        _check_unit(decimal, reading, frequency)
+    check_series_frequency(day, pd.factorize(asset)[0], frequency, reading)
+    series = pd.DataFrame({"date": _dates(day, frequency), value: decimal})
     keys = ["date"]
-    if "asset" in rows:
+    if "asset" in reading["columns"]:
         keys = ["asset", "date"]
-        series.insert(0, "asset", rows["asset"])
-        _check_names(rows["asset"].unique().tolist(), reading)
+        series.insert(0, "asset", pd.Series(asset, dtype=str))
+        _check_names(series["asset"].unique().tolist(), reading)
     series = series[series[value].notna()].sort_values(keys, ignore_index=True)
-    _check_months(series, keys, reading["label"])
+    _check_periods(series, keys, reading["label"], frequency)
     return series
 
 
+@dataclass(frozen=True)
+class _Parsed:
+    """The rows of one file, each array (n_rows,), and what is wrong with single rows."""
+
+    day: np.ndarray
+    decimal: np.ndarray
+    asset: np.ndarray
+    problems: list[Problem]
+
+
+def _parsed(file: str, reading: dict[str, Any], value: str, is_one_of_several: bool) -> _Parsed:
+    if is_one_of_several:  # a message about a row must name its own file
+        reading = {**reading, "label": Path(file).name}
+    table = read_text(file, reading)
+    rows = table.rows
+    day = to_days(rows["date"], reading["dates"])
+    numbers = to_numbers(rows[value], reading["missing"])
+    return _Parsed(
+        day=day,
+        decimal=as_decimal(numbers.value, reading["unit"]),
+        asset=rows["asset"].to_numpy(object) if "asset" in rows else np.full(len(rows), ""),
+        problems=_row_problems(table, np.isnat(day), numbers, reading, value),
+    )
+
+
+def _dates(day: np.ndarray, frequency: str) -> np.ndarray:
+    if frequency == "daily":
+        return day.astype("datetime64[ms]")
+    following = (day.astype("datetime64[M]") + 1).astype("datetime64[D]")
+    return (following - 1).astype("datetime64[ms]")
+
+
+def _check_unit(decimal: np.ndarray, reading: dict[str, Any], frequency: str) -> None:
+    """Stop when the size of typical returns says that the unit is the other one. Raises KnownProblem."""
+    given = np.abs(decimal[np.isfinite(decimal) & (decimal != 0)])
+    if len(given) < _FEWEST:
+        return
+    middle, high = np.quantile(given, [0.5, 0.95])
+    largest_middle, smallest_high = _SIZES[frequency]
+    if middle > largest_middle:
+        is_decimal = reading["unit"] == "decimal"
+        change = "set unit: percent" if is_decimal else "is this the column of the returns?"
+    elif high < smallest_high and reading["unit"] == "percent":
+        change = "set unit: decimal"
+    else:
+        return
+    found = (
+        f"read as {reading['unit']}, half of all returns exceed {100 * middle:.3g} % in size "
+        f"and one in twenty exceeds {100 * high:.3g} %"
+    )
+    raise stop(f"{reading['label']}, column {reading['columns']['return']}", found, change)
+
+
 def _row_problems(
-    table: TextTable, date: pd.Series, numbers: Numbers, reading: dict[str, Any], value: str
+    table: TextTable,
+    undated: np.ndarray,
+    numbers: Numbers,
+    reading: dict[str, Any],
+    value: str,
 ) -> list[Problem]:
     """A problem for each row that cannot be read, the first few of each kind."""
     rows, theirs = table.rows, reading["columns"]
@@ -61,7 +132,7 @@ def _row_problems(
         ("", table.rejects, "it has {}", "mend the row"),
         (
             f", column {theirs['date']}",
-            rows.loc[date.isna(), ["line", "date"]],
+            rows.loc[undated, ["line", "date"]],
             f"{{!r}} is not a date of the form {reading['dates']}",
             "mend it, or set dates:",
         ),
@@ -74,11 +145,11 @@ def _row_problems(
     )
     problems = []
     for column, found, said, change in kinds:
-        for line, text in found.head(_N_SHOWN).itertuples(index=False):
+        for line, text in found.head(N_SHOWN).itertuples(index=False):
             where = f"{table.label}, {table.place} {line}{column}"
             problems.append(Problem(where, said.format(text), change))
-        if len(found) > _N_SHOWN:
-            more = f"{counted(len(found) - _N_SHOWN, 'more row')} like this"
+        if len(found) > N_SHOWN:
+            more = f"{counted(len(found) - N_SHOWN, 'more row')} like this"
             problems.append(Problem(f"{table.label}{column}", more))
     return problems
 
@@ -86,56 +157,26 @@ def _row_problems(
 def _check_names(names: list[str], reading: dict[str, Any]) -> None:
     refused = refused_asset_names(names)
     if refused:
-        found = f"test assets may not be called {_few(map(repr, refused))}"
+        found = f"test assets may not be called {few(map(repr, refused))}"
         change = (
             "these names stand for other rows of the estimates, and / parts an address: rename them"
         )
         raise stop(f"{reading['label']}, column {reading['columns']['asset']}", found, change)
 
 
-def _check_months(series: pd.DataFrame, keys: list[str], label: str) -> None:
-    """Stop at months that stand twice; and, in a series of its own, at months that are missing."""
+def _check_periods(series: pd.DataFrame, keys: list[str], label: str, frequency: str) -> None:
+    """Stop at periods that stand twice; and, in a monthly series of its own, at months that are missing."""
     if series.empty:
         raise stop(label, "no row has both a date and a value", "deliver it again")
+    noun, form = ("day", "%Y-%m-%d") if frequency == "daily" else ("month", "%Y-%m")
     twice = series.loc[series.duplicated(keys), keys].drop_duplicates()
     if len(twice):
-        named = [" ".join([*row[:-1], month_name(row[-1])]) for row in twice.to_numpy().tolist()]
-        raise stop(label, f"months that stand twice: {_few(named)}", "keep one row a month")
-    if keys == ["date"]:
+        named = [" ".join([*row[:-1], row[-1].strftime(form)]) for row in twice.to_numpy().tolist()]
+        raise stop(label, f"{noun}s that stand twice: {few(named)}", f"keep one row a {noun}")
+    if keys == ["date"] and frequency == "monthly":
         present = month_number(series["date"])
         absent = np.setdiff1d(np.arange(present[0], present[-1]), present)
         if len(absent):
             named = [f"{month // 12}-{month % 12 + 1:02d}" for month in absent.tolist()]
-            found = f"{counted(len(absent), 'month')} missing inside the series: {_few(named)}"
+            found = f"{counted(len(absent), 'month')} missing inside the series: {few(named)}"
             raise stop(label, found, "deliver them, or shorten the series")
-
-
-def _few(names: Iterable[str]) -> str:
-    listed = list(names)
-    more = f" and {len(listed) - _N_SHOWN:,} more" if len(listed) > _N_SHOWN else ""
-    return ", ".join(listed[:_N_SHOWN]) + more
-
-
-def riskless_return(rate: pd.Series, quoted: str) -> pd.Series:
-    """Riskless return of one month from the rate as quoted, both decimal.
-
-    A compound annual yield y gives (1 + y)^(1/12) − 1; a period return is taken as it is. A yield
-    below −100 % gives NaN.
-    """
-    return (1 + rate) ** (1 / 12) - 1 if quoted == "annual_yield" else rate
-
-
-def check_riskless(series: pd.DataFrame, reading: dict[str, Any], quoted: str) -> None:
-    """Stop when a month's riskless return is beyond what any rate so quoted could be.
-
-    `series` has date, rate and riskless, decimal. Raises KnownProblem.
-    """
-    beyond = series[~(series["riskless"].abs() <= _MOST_PLAUSIBLE_RATE)]
-    if len(beyond):
-        worst = beyond.loc[beyond["rate"].abs().idxmax()]
-        found = (
-            f"read as {quoted} in {reading['unit']}, {counted(len(beyond), 'month')} would earn beyond 3 % "
-            f"without risk; the rate of {month_name(worst['date'])} would be {100 * worst['rate']:.4g} %"
-        )
-        where = f"{reading['label']}, column {reading['columns']['rate']}"
-        raise stop(where, found, "check unit: and quoted:")

@@ -2,16 +2,26 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
+
 from lineproof.problems import KnownProblem, Problem
 
+N_SHOWN = 12  # of a long list in a message
 UNUSABLE = "The raw data cannot be used; nothing was written."
 
 
-def stop(where: str, found: str, change: str) -> KnownProblem:
+def stop(where: str, found: str, change: str, headline: str = UNUSABLE) -> KnownProblem:
     """The error to raise for one fault: where it is, what was found, what to change."""
-    return KnownProblem(UNUSABLE, [Problem(where, found, change)])
+    return KnownProblem(headline, [Problem(where, found, change)])
 
 
 def counted(n: int, noun: str) -> str:
     """A number with its noun, as in `1 month` or `1,200 months`."""
     return f"{n:,} {noun}" + ("" if n == 1 else "s")
+
+
+def few(names: Iterable[str]) -> str:
+    """The first dozen names, and how many more there are."""
+    listed = list(names)
+    more = f" and {len(listed) - N_SHOWN:,} more" if len(listed) > N_SHOWN else ""
+    return ", ".join(listed[:N_SHOWN]) + more

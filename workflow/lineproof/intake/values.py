@@ -1,4 +1,4 @@
-"""Turn text into dates and numbers, saying of each value what is wrong with it."""
+"""Turn columns of a raw file into days and numbers, saying of each value what is wrong with it."""
 
 from __future__ import annotations
 
@@ -11,15 +11,16 @@ import pandas as pd
 import pyarrow as pa
 import pyarrow.compute as pc
 
+from lineproof.intake.plain import find_plain
 from lineproof.intake.stopping import stop
 
 _PLAIN = r"^[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?$"
 _THOUSANDS = r"^[+-]?[1-9][0-9]{0,2}(?:,[0-9]{3})+(?:\.[0-9]*)?$"
 _NOT_FINITE = r"^[+-]?(?i:inf|infinity|nan)$"
-_DECIMAL_COMMA = r"^[+-]?[0-9]*,[0-9]+$"
 
 YEARS = (1800, 2200)
-_YEAR, _MONTH, _OTHER = frozenset("Yy"), frozenset("mbBj"), frozenset("daAHMSf%")
+_YEAR, _MONTH, _DAY = frozenset("Yy"), frozenset("mbBj"), frozenset("dj")
+_OTHER = frozenset("daAHMSf%")
 _WIDTH = {"%Y": 4, "%m": 2, "%d": 2}
 
 
@@ -44,26 +45,35 @@ def missing_codes(missing: list[str]) -> list[str]:
     return list(dict.fromkeys(["", *missing]))
 
 
-def to_numbers(text: pd.Series, missing: list[str], *, thousands: bool = False) -> Numbers:
-    """Parse a column of trimmed text.
+def to_numbers(
+    column: pd.Series | pa.Array,
+    missing: list[str],
+    *,
+    thousands: bool = False,
+    decimal: str = "point",
+) -> Numbers:
+    """Parse a column of trimmed text, or take one of numbers.
 
     A code that is a number stands for every way to write it: with -99 declared, -99.0 is missing.
-    With `thousands`, commas between groups of three digits are read; they never are in a return,
-    where 0,123 is a decimal comma.
+    With `thousands`, separators between groups of three digits are read; they never are in a
+    return, where 0,123 is a decimal comma. `decimal` is "point" or "comma".
     """
-    array = _as_array(text)
-    plain = _matches(array, _PLAIN)
-    value = np.full(len(array), np.nan)
-    value[plain] = _parsed(array.filter(plain))
+    array = _as_array(column)
+    codes = missing_codes(missing)
+    if not (pa.types.is_string(array.type) or pa.types.is_large_string(array.type)):
+        return _typed(array, codes)
+    if decimal == "comma":
+        array = _with_points(array)
+        codes = _with_points(pa.array(codes)).to_pylist()
+    value, plain = _plain_numbers(array)
     rest = np.flatnonzero(~plain)
     other = array.take(rest)
-    spelt = np.zeros(len(array), bool)
+    spelt, grouped = (np.zeros(len(array), bool) for _ in range(2))
     spelt[rest] = _matches(other, _NOT_FINITE)
-    grouped = np.zeros(len(array), bool)
     if thousands:
         grouped[rest] = _matches(other, _THOUSANDS)
         value[grouped] = _parsed(pc.replace_substring(array.filter(grouped), ",", ""))
-    code = _codes(array, value, missing_codes(missing))
+    code = _codes(value, rest, other, codes)
     is_missing = code >= 0
     too_large = np.isinf(value)
     value[is_missing | too_large] = np.nan
@@ -76,9 +86,37 @@ def to_numbers(text: pd.Series, missing: list[str], *, thousands: bool = False) 
     )
 
 
-def _as_array(text: pd.Series) -> pa.Array:
-    array = pa.array(text, pa.large_string())
-    return array.combine_chunks() if isinstance(array, pa.ChunkedArray) else array
+def _typed(array: pa.Array, codes: list[str]) -> Numbers:
+    """Numbers that the file holds as numbers: null or NaN is the empty field."""
+    value = array.cast(pa.float64(), safe=False).to_numpy(zero_copy_only=False).copy()
+    code = _codes(value, np.array([], int), pa.array([], pa.string()), codes)
+    code[np.isnan(value)] = codes.index("")
+    infinite = np.isinf(value) & (code < 0)
+    value[infinite | (code >= 0)] = np.nan
+    none = np.zeros(len(array), bool)
+    return Numbers(value, code, none, infinite, none)
+
+
+def _with_points(array: pa.Array) -> pa.Array:
+    """Decimal commas become points; points and blanks between thousands become commas."""
+    held = pc.replace_substring_regex(array, r"[.\x{a0}\x{202f} ]", "\x00")
+    return pc.replace_substring(pc.replace_substring(held, ",", "."), "\x00", ",")
+
+
+def _as_array(column: pd.Series | pa.Array) -> pa.Array:
+    if isinstance(column, pd.Series):
+        column = pa.array(column, pa.large_string() if column.dtype != float else None)
+    return column.combine_chunks() if isinstance(column, pa.ChunkedArray) else column
+
+
+def _plain_numbers(array: pa.Array) -> tuple[np.ndarray, np.ndarray]:
+    """Values of the texts that are plain numbers, NaN elsewhere, and which they are."""
+    plain = find_plain(array)
+    value = np.full(len(array), np.nan)
+    if plain.all():
+        return _parsed(array).copy(), plain
+    value[plain] = _parsed(array.filter(plain))
+    return value, plain
 
 
 def _matches(array: pa.Array, pattern: str) -> np.ndarray:
@@ -86,17 +124,18 @@ def _matches(array: pa.Array, pattern: str) -> np.ndarray:
 
 
 def _parsed(array: pa.Array) -> np.ndarray:
-    bare = pc.utf8_ltrim(array, "+")
-    return bare.cast(pa.float64()).to_numpy(zero_copy_only=False)
+    if len(array) and pc.any(pc.starts_with(array, "+")).as_py():
+        array = pc.utf8_ltrim(array, "+")
+    return array.cast(pa.float64()).to_numpy(zero_copy_only=False)
 
 
-def _codes(array: pa.Array, value: np.ndarray, codes: list[str]) -> np.ndarray:
-    found = np.full(len(array), -1, np.int16)
+def _codes(value: np.ndarray, rest: np.ndarray, other: pa.Array, codes: list[str]) -> np.ndarray:
+    """The position of each value's code; `other` are the texts, at `rest`, that are no plain numbers."""
+    found = np.full(len(value), -1, np.int8)
     for position, code in reversed(list(enumerate(codes))):
-        same = pc.equal(array, code).to_numpy(zero_copy_only=False)
+        found[rest[pc.equal(other, code).to_numpy(zero_copy_only=False)]] = position
         if re.match(_PLAIN, code):
-            same |= value == float(code)
-        found[same] = position
+            found[value == float(code)] = position
     return found
 
 
@@ -105,38 +144,50 @@ def as_decimal(value: np.ndarray, unit: str) -> np.ndarray:
     return value / 100 if unit == "percent" else value
 
 
-def without_codes(text: pd.Series, missing: list[str]) -> pd.Series:
-    """A column of text in which every code for a missing value is the empty text."""
-    return text.mask(text.isin(missing), "")
+def to_days(column: pd.Series | pa.Array, dates: str) -> np.ndarray:
+    """The day of each date, datetime64[D], NaT where it does not parse or lies outside 1800–2200.
+
+    A typed date is taken as it is; a number is read as its digits. A format without a day gives
+    the first of the month. Dates without separators, such as 20000131, must have all their digits.
+    """
+    array = _as_array(column)
+    if pa.types.is_temporal(array.type):
+        return _within(array.to_numpy(zero_copy_only=False))
+    coded = array.dictionary_encode()
+    distinct = pd.Series([as_digits(value) for value in coded.dictionary.to_pylist()], dtype=str)
+    parsed = pd.to_datetime(distinct, format=dates, errors="coerce", exact=True, utc="%z" in dates)
+    days = _within(pd.DatetimeIndex(parsed).tz_localize(None).to_numpy())
+    parts = re.findall("%.", dates)
+    if "".join(parts) == dates and set(parts) <= set(_WIDTH):
+        short = (distinct.str.len() != sum(_WIDTH[part] for part in parts)).to_numpy()
+        days[short] = np.datetime64("NaT")
+    index = pc.fill_null(coded.indices, len(days)).to_numpy(zero_copy_only=False)
+    return np.append(days, np.datetime64("NaT"))[index]
 
 
-def share_with_decimal_comma(text: pd.Series) -> float:
-    """Share of the values, blanks aside, that look like `0,015`."""
-    array = _as_array(text)
-    given = array.filter(pc.not_equal(array, ""))
-    return float(_matches(given, _DECIMAL_COMMA).mean()) if len(given) else 0.0
+def as_digits(value: Any) -> str:
+    """A number as the digits it is written with: a whole one without a point, nothing for NaN or None."""
+    if value is None or value != value:
+        return ""
+    return str(int(value)) if isinstance(value, float) and value.is_integer() else str(value)
+
+
+def _within(moments: np.ndarray) -> np.ndarray:
+    days = moments.astype("datetime64[D]")
+    years = days.astype("datetime64[Y]").astype(np.int64) + 1970
+    days[(years < YEARS[0]) | (years > YEARS[1])] = np.datetime64("NaT")
+    return days
 
 
 def to_months(text: pd.Series, dates: str) -> pd.Series:
-    """The last day of the month of each date, NaT where it does not parse or lies outside 1800–2200.
-
-    Dates without separators, such as 20000131, must have all their digits.
-    """
-    coded = _as_array(text).dictionary_encode()
-    distinct = coded.dictionary.to_pandas()
-    parsed = pd.DatetimeIndex(pd.to_datetime(distinct, format=dates, errors="coerce", exact=True))
-    parsed = parsed.as_unit("ms")
-    within = (parsed.year >= YEARS[0]) & (parsed.year <= YEARS[1])
-    parts = re.findall("%.", dates)
-    if "".join(parts) == dates and set(parts) <= set(_WIDTH):
-        within &= (distinct.str.len() == sum(_WIDTH[part] for part in parts)).to_numpy()
-    ends = parsed.where(within).to_period("M").to_timestamp(how="end").normalize().as_unit("ms")
-    found = ends.take(coded.indices.to_numpy(zero_copy_only=False))
-    return pd.Series(found, index=text.index, name="date")
+    """The last day of the month of each date, NaT where there is none: see `to_days`."""
+    months = to_days(text, dates).astype("datetime64[M]")
+    ends = (months + 1).astype("datetime64[D]") - 1
+    return pd.Series(ends.astype("datetime64[ms]"), index=text.index, name="date")
 
 
-def check_date_format(reading: dict[str, Any]) -> None:
-    """Stop when `dates` is no format, or gives no month.
+def check_date_format(reading: dict[str, Any], *, daily: bool = False) -> None:
+    """Stop when `dates` is no format, or gives no month, or no day where the data are daily.
 
     Raises KnownProblem.
     """
@@ -147,6 +198,7 @@ def check_date_format(reading: dict[str, Any]) -> None:
     if unknown or twice:
         wrong = f"%{unknown[0]} is not known" if unknown else f"%{twice[0]} stands twice"
         raise stop(where, f"{dates!r} is no format for dates: {wrong}", "as in %Y-%m-%d")
-    if not (_YEAR & set(parts) and _MONTH & set(parts)):
-        found = f"{dates!r} gives no {'month' if _YEAR & set(parts) else 'year'}"
-        raise stop(where, found, "as in %Y-%m-%d")
+    wanted = {"year": _YEAR, "month": _MONTH, **({"day": _DAY} if daily else {})}
+    for what, found in wanted.items():
+        if not found & set(parts):
+            raise stop(where, f"{dates!r} gives no {what}", "as in %Y-%m-%d")

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections import Counter
 from itertools import pairwise
 
-from lineproof.analyses import LINE_ERRORS
 from lineproof.paper import notes
 from lineproof.paper.book import Number
 from lineproof.paper.context import Context, Subperiod
@@ -70,10 +69,11 @@ def _headline(context: Context, period: Subperiod) -> Phrase:
         return said("{title}: the market line gives no answer.", title=period.title)
     slope, difference = numbers
     return said(
-        "{title}: {reading}. The line’s slope is {slope}{percent} a month ({t}{equals}{slope_t}){premium}.",
+        "{title}: {reading}. The line’s slope is {slope}{percent} a {noun} ({t}{equals}{slope_t}){premium}.",
         title=period.title,
+        noun=context.period.noun,
         reading=reading(slope, difference, context.level),
-        slope=cell(slope, "percent"),
+        slope=cell(slope, context.period.mean_format),
         slope_t=cell(slope, "number", "statistic"),
         premium=_premium(context, period),
     )
@@ -83,7 +83,8 @@ def _premium(context: Context, period: Subperiod) -> Phrase:
     sort = context.sorts[0]
     market = context.book.at(sort, period.name, "market_line", "-", "all", "market_mean", "-")
     return said(
-        ", against a mean market premium of {premium}{percent}", premium=cell(market, "percent")
+        ", against a mean market premium of {premium}{percent}",
+        premium=cell(market, context.period.mean_format),
     )
 
 
@@ -95,16 +96,17 @@ def _line_sentence(context: Context, period: Subperiod) -> Phrase:
     if not slope.defined:
         return said("The market line is not defined: {reason}.", reason=slope.reason)
     return said(
-        "The line’s slope is {slope}{percent} a month ({t}{equals}{slope_t}){premium}: {reading}. The difference of "
+        "The line’s slope is {slope}{percent} a {noun} ({t}{equals}{slope_t}){premium}: {reading}. The difference of "
         "{difference}{percent} has a standard error of {se}{percent} ({errors}{lag}), "
         "{t}{equals}{statistic}.",
-        slope=cell(slope, "percent"),
+        noun=context.period.noun,
+        slope=cell(slope, context.period.mean_format),
         slope_t=cell(slope, "number", "statistic"),
         premium=_premium(context, period),
         reading=reading(slope, difference, context.level),
-        difference=cell(difference, "percent"),
-        se=cell(difference, "percent", "se"),
-        errors=LINE_ERRORS[context.facts["paper"]["line_errors"]],
+        difference=cell(difference, context.period.mean_format),
+        se=cell(difference, context.period.mean_format, "se"),
+        errors=notes.line_errors(context),
         lag=notes.line_lag(context),
         statistic=cell(difference, "number", "statistic"),
     )

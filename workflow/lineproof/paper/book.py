@@ -27,7 +27,7 @@ class Number:
     p_one_sided: float
     critical: float
     critical_one_sided: float
-    n_months: int
+    n_periods: int
     n_assets: int
     status: str
     reason: str

@@ -9,6 +9,7 @@ from typing import Any
 
 import pandas as pd
 
+from lineproof.frequency import Frequency
 from lineproof.paper.book import Book
 
 MONTHS = [
@@ -54,7 +55,7 @@ class Context:
 
     Attributes:
         estimates: one row a number, as `book.Book` reads it.
-        subperiods: dictionaries with name, title, first, last ("1955-01") and n_months.
+        subperiods: dictionaries with name, title, first, last ("1955-01") and n_periods.
         facts: what `lineproof.facts.facts` says of the study.
         intake: labels of the data's faults and screens, under "faults" and "screens".
     """
@@ -85,6 +86,11 @@ class Context:
         exact = [each for each in self.periods if each.name == wanted]
         parts = [each for each in self.periods if each.name.startswith(f"{wanted}-")]
         return (exact or parts or self.periods)[0]
+
+    @property
+    def period(self) -> Frequency:
+        """What a period of the study is called, and how what it earns is printed."""
+        return Frequency(**self.facts["period"])
 
     @property
     def level(self) -> float:

@@ -6,6 +6,7 @@ import csv
 import io
 
 from lineproof.paper.specification import Table
+from lineproof.spreadsheet import as_text
 
 HEADER = (
     "table",
@@ -21,11 +22,6 @@ HEADER = (
 )
 
 
-def escape(text: str) -> str:
-    """Text that no spreadsheet takes for a formula."""
-    return f"'{text}" if text.startswith(("=", "+", "-", "@", "\t", "\r")) else text
-
-
 def render(table: Table) -> str:
     """The table's numbers in reading order, without empty cells; undefined values are empty."""
     sink = io.StringIO()
@@ -35,10 +31,10 @@ def render(table: Table) -> str:
         if cell.value is None:
             continue
         value = "" if cell.undefined else repr(float(cell.value))
-        keys = [escape(key) for key in (table.name, panel.key, row.key, column.key)]
+        keys = [as_text(key) for key in (table.name, panel.key, row.key, column.key)]
         status = "undefined" if cell.undefined else "ok"
         shown = "" if cell.undefined else cell.text
         writer.writerow(
-            [*keys, cell.column, value, cell.format, shown, status, escape(cell.address)]
+            [*keys, cell.column, value, cell.format, shown, status, as_text(cell.address)]
         )
     return sink.getvalue()

@@ -33,7 +33,7 @@ FIGURES: dict[str, Entry] = {
     "market_lines": Entry(
         "lineproof.paper.figures:market_lines",
         "Market lines by subperiod",
-        "Mean excess returns of the test assets ({assets}) on their betas of the same months. "
+        "Mean excess returns of the test assets ({assets}) on their betas of the same {periods}. "
         "Solid: "
         "the line fitted by {weights}. Dashed: the line of the CAPM, through the origin and the "
         "market. All panels have the same scales.",
@@ -47,7 +47,7 @@ FIGURES: dict[str, Entry] = {
     "coverage": Entry(
         "lineproof.paper.figures:coverage",
         "Coverage of the sample",
-        "Securities with a row in each month, and those of them with an estimated beta.",
+        "Securities with a row {at} each month, and those of them with an estimated beta.",
     ),
 }
 

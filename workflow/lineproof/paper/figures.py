@@ -53,7 +53,7 @@ def draw_figures(context: Context) -> dict[str, bytes]:
 def market_lines(context: Context, sort: str) -> Figure:
     """Mean excess returns on betas in each subperiod, with the fitted line and the CAPM's."""
     periods = context.periods
-    figure, panels = _grid(periods, "Beta", "Mean excess return, % a month")
+    figure, panels = _grid(periods, "Beta", f"Mean excess return, % a {context.period.noun}")
     points = {each.name: _points(context, sort, each) for each in periods}
     betas = [beta for each in points.values() for beta, _ in each]
     right = 1.06 * max([1.0, *betas])
@@ -74,7 +74,7 @@ def market_lines(context: Context, sort: str) -> Figure:
 def alphas(context: Context, sort: str) -> Figure:
     """Alpha of each test asset in each subperiod, with its interval."""
     periods = context.periods
-    figure, panels = _grid(periods, "", "Alpha, % a month")
+    figure, panels = _grid(periods, "", f"Alpha, % a {context.period.noun}")
     assets = context.assets(sort)
     for axes, period in zip(panels, periods, strict=True):
         axes.axhline(0.0, color=LIGHT["soft"], lw=0.6)
@@ -91,7 +91,7 @@ def alphas(context: Context, sort: str) -> Figure:
 
 
 def coverage(context: Context, sort: str) -> Figure:
-    """Securities alive in each month, and those of them with a beta."""
+    """Securities alive in or at the end of each month, and those of them with a beta."""
     figure = Figure(figsize=(style.NARROW, 0.5 * style.NARROW), layout="constrained")
     axes = figure.add_subplot()
     months = context.book.months()

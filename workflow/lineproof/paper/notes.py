@@ -6,14 +6,24 @@ from lineproof.analyses import ALPHA_ERRORS, ANALYSES, LINE_ERRORS, LINE_WEIGHTS
 from lineproof.paper.context import MONTHS, Context, Subperiod
 from lineproof.paper.rounding import share
 from lineproof.paper.symbols import Phrase, said
+from lineproof.quotings import BUILDS
 
 
 def data(context: Context) -> Phrase:
     """Which market, and whether it exists."""
     invented = ", an invented market" if context.facts["invented"] else ""
     return said(
-        "Monthly returns on {market}{invented}.", market=_market(context), invented=invented
+        "{adjective} returns on {market}{invented}.",
+        adjective=context.period.adjective.capitalize(),
+        market=_market(context),
+        invented=invented,
     )
+
+
+def built_market(context: Context) -> list[Phrase]:
+    """What the market is, where it was not supplied."""
+    build = context.facts["market_build"]
+    return [] if build is None else [said("The market is {label}.", label=BUILDS[build])]
 
 
 def months(period: Subperiod) -> Phrase:
@@ -28,13 +38,14 @@ def formation(context: Context, sort: str) -> Phrase:
         return said("{title}: test assets supplied as return series.", title=facts["title"])
     return said(
         "{title}: at the end of each {month}, securities are ranked on the beta of their last "
-        "{window} months "
-        "({estimator}; at least {least} months) and parted at its quantiles into {groups} groups, "
+        "{window} {periods} "
+        "({estimator}; at least {least} {periods}) and parted at its quantiles into {groups} groups, "
         "held for "
         "{hold} months; returns are {weights}. Group 1 has the lowest betas.",
         title=facts["title"],
         month=MONTHS[facts["form_month"] - 1],
         window=str(facts["window"]),
+        periods=facts["window_periods"],
         estimator=facts["estimator_label"],
         least=str(facts["min_obs"]),
         groups=str(facts["groups"]),
@@ -66,9 +77,12 @@ def formations(context: Context, sorts: list[str]) -> list[Phrase]:
     return found
 
 
-def excess_units() -> Phrase:
+def excess_units(context: Context) -> Phrase:
     """Units of returns."""
-    return said("Returns are in excess of the riskless rate, in per cent a month.")
+    return said(
+        "Returns are in excess of the riskless rate, in per cent a {noun}.",
+        noun=context.period.noun,
+    )
 
 
 def alpha_errors(context: Context) -> Phrase:
@@ -86,13 +100,19 @@ def line_estimation(context: Context) -> Phrase:
     """How the market line is fitted, and its standard errors."""
     paper = context.facts["paper"]
     return said(
-        "Mean excess returns of the test assets on their betas of the same months, by {weights}: "
+        "Mean excess returns of the test assets on their betas of the same {periods}, by {weights}: "
         "intercept "
         "{gamma0}, slope {gamma1}. Standard errors: {errors}{lag}.",
         weights=LINE_WEIGHTS[paper["line_weights"]],
-        errors=LINE_ERRORS[paper["line_errors"]],
+        periods=context.period.nouns,
+        errors=line_errors(context),
         lag=line_lag(context),
     )
+
+
+def line_errors(context: Context) -> str:
+    """What the market line's standard errors are."""
+    return LINE_ERRORS[context.facts["paper"]["line_errors"]].format(period=context.period)
 
 
 def line_lag(context: Context) -> Phrase:
@@ -114,13 +134,14 @@ def line_hypothesis(context: Context) -> Phrase:
 def joint_hypothesis(context: Context) -> Phrase:
     """What the joint tests test, and when each is exact."""
     return said(
-        "Each tests that the alphas of all {N} test assets are zero in {T} months. {F} is exact "
+        "Each tests that the alphas of all {N} test assets are zero in {T} {periods}. {F} is exact "
         "if residuals are "
         "normal (Gibbons, Ross and Shanken 1989); the others are {chi2} with {N} degrees of "
         "freedom in large "
         "samples, the corrected likelihood ratio after Jobson and Korkie (1982), the last robust "
         "to "
         "heteroskedasticity and autocorrelation (Hansen 1982){lag}. {p} values in square brackets.",
+        periods=context.period.nouns,
         lag=_lag(context),
     )
 

@@ -13,12 +13,13 @@ PAGE_CHARACTERS, STATISTIC_CHARACTERS, GAP_CHARACTERS = 101, 5, 1.5
 LABEL_CHARACTERS, NARROWEST, WIDEST = 34, 5.5, 12
 
 _REGRESSION = "Market model"
+# The format "mean" is that of the study's mean returns.
 _RANKED = (
     # key, heading, spanner, analysis, variant, term, se_kind, column, format
-    ("mean", "Mean", "Excess return", "describe", "-", "mean", "-", "estimate", "percent"),
+    ("mean", "Mean", "Excess return", "describe", "-", "mean", "-", "estimate", "mean"),
     ("sd", "SD", "Excess return", "describe", "-", "sd", "-", "estimate", "percent"),
     ("beta", "{beta}", _REGRESSION, "time_series", "market", "beta", "*", "estimate", "number"),
-    ("alpha", "{alpha}", _REGRESSION, "time_series", "market", "alpha", "*", "estimate", "percent"),
+    ("alpha", "{alpha}", _REGRESSION, "time_series", "market", "alpha", "*", "estimate", "mean"),
     (
         "t_alpha",
         "{t}({alpha})",
@@ -103,7 +104,7 @@ def ranked_portfolios(context: Context, sort: str) -> Table:
 def _ranked_notes(
     context: Context, sort: str, period: Subperiod, shown: list[str]
 ) -> tuple[Phrase, ...]:
-    found = [notes.months(period), notes.formation(context, sort), notes.excess_units()]
+    found = [notes.months(period), notes.formation(context, sort), notes.excess_units(context)]
     if "beta" in shown:
         found.append(notes.alpha_errors(context))
         found.append(said("{rho}: first-order autocorrelation of residuals."))
@@ -113,7 +114,8 @@ def _ranked_notes(
     if "mean" not in shown:
         found.append(notes.not_run("describe"))
     if "ante_beta" in shown:
-        found.append(said("Prior {beta}: of the months before formation."))
+        window = context.facts["sorts"][sort]["window_periods"]
+        found.append(said("Prior {beta}: of the {window} before formation.", window=window))
     return tuple(found)
 
 
@@ -138,7 +140,8 @@ def _ranked_cell(
     keys = _keys(context, sort, period, asset, spec)
     if not context.book.has(*keys):  # the market is not regressed on itself
         return EMPTY
-    return cell(context.book.at(*keys), spec[-1], spec[-2])
+    form = context.period.mean_format if spec[-1] == "mean" else spec[-1]
+    return cell(context.book.at(*keys), form, spec[-2])
 
 
 def alphas_betas(context: Context, sort: str) -> Table:
@@ -159,7 +162,10 @@ def alphas_betas(context: Context, sort: str) -> Table:
         panels=tuple(panels),
         notes=(
             notes.formation(context, sort),
-            said("{alpha} in per cent a month, its {t} statistic in parentheses, and {beta}."),
+            said(
+                "{alpha} in per cent a {noun}, its {t} statistic in parentheses, and {beta}.",
+                noun=context.period.noun,
+            ),
             notes.alpha_errors(context),
             *notes.without_assets(context, sort, context.periods),
             *([] if periods else [notes.not_run("time_series")]),
@@ -227,7 +233,7 @@ def _period_rows(context: Context, sort: str, period: Subperiod, assets: list[st
         Row(
             f"{period.name}:alpha",
             (Phrase([period.title]), said("{alpha}")),
-            cells("alpha", "percent"),
+            cells("alpha", context.period.mean_format),
             gap=True,
         ),
         Row(

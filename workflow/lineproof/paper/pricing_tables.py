@@ -18,7 +18,7 @@ _JOINT = (
     ("lm", said("LM"), said("Large-sample {chi2}")),
     ("hac_wald", said("Robust"), said("Large-sample {chi2}")),
 )
-_SIZES = (Column("months", said("{T}")), Column("assets", said("{N}")))
+_SIZES = (Column("periods", said("{T}")), Column("assets", said("{N}")))
 _JOINT_COLUMNS = (
     *_SIZES,
     *(Column(variant, heading, spanner) for variant, heading, spanner in _JOINT),
@@ -48,7 +48,7 @@ def joint_tests(context: Context, sort: str) -> Table:
         panels=panels,
         notes=(
             notes.joint_hypothesis(context),
-            said("Mean |{alpha}| in per cent a month."),
+            said("Mean |{alpha}| in per cent a {noun}.", noun=context.period.noun),
             *_notes_on_sorts(context, "joint_alpha", panels),
         ),
     )
@@ -65,7 +65,8 @@ def market_line(context: Context, sort: str) -> Table:
             notes.line_estimation(context),
             notes.line_hypothesis(context),
             said(
-                "{gamma0}, {gamma1} and {fbar} in per cent a month; {t} statistics in parentheses."
+                "{gamma0}, {gamma1} and {fbar} in per cent a {noun}; {t} statistics in parentheses.",
+                noun=context.period.noun,
             ),
             said("Textbook errors take betas and {fbar} as known."),
             *_notes_on_sorts(context, "market_line", panels),
@@ -120,7 +121,7 @@ def _joint_rows(context: Context, sort: str, period: Subperiod) -> list[Row]:
     sizes = _sizes(numbers[0])
     statistics = [cell(number, "number", "statistic") for number in numbers]
     p_values = [cell(number, "p", "p", "square") if number.defined else EMPTY for number in numbers]
-    mean = cell(at("-", "mean_abs_alpha"), "percent")
+    mean = cell(at("-", "mean_abs_alpha"), context.period.mean_format)
     return [
         Row(
             f"{period.name}:statistic",
@@ -142,13 +143,14 @@ def _line_rows(context: Context, sort: str, period: Subperiod) -> list[Row]:
     intercept, slope, difference = (at(t) for t in ("intercept", "slope", "slope_minus_market"))
     textbook = at("slope_minus_market", "textbook")
     market = context.book.at(sort, period.name, "market_line", "-", "all", "market_mean", "-")
-    premium = cell(market, "percent"), _beneath(market)
+    form = context.period.mean_format
+    premium = cell(market, form), _beneath(market)
     first = (
         *_sizes(slope),
-        cell(intercept, "percent"),
-        cell(slope, "percent"),
+        cell(intercept, form),
+        cell(slope, form),
         premium[0],
-        cell(difference, "percent"),
+        cell(difference, form),
         cell(difference, "number", "critical"),
         cell(at("intercept_and_slope_minus_market"), "p", "p"),
         cell(textbook, "number", "statistic"),
@@ -167,7 +169,7 @@ def _line_rows(context: Context, sort: str, period: Subperiod) -> list[Row]:
 
 
 def _sizes(number: Number) -> tuple[Cell, Cell]:
-    return cell(number, "count", "n_months"), cell(number, "count", "n_assets")
+    return cell(number, "count", "n_periods"), cell(number, "count", "n_assets")
 
 
 def _beneath(number: Number) -> Cell:

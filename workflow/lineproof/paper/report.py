@@ -97,6 +97,8 @@ def _figure_words(context: Context, sort: str) -> dict[str, Any]:
         "assets": context.title(sort),
         "weights": LINE_WEIGHTS[paper["line_weights"]],
         "confidence": share(1 - context.level),
+        "periods": context.period.nouns,
+        "at": "in" if context.period.noun == "month" else "at the end of",
         "alpha_errors": ALPHA_ERRORS[paper["alpha_errors"]],
     }
 

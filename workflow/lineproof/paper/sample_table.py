@@ -9,9 +9,9 @@ from lineproof.paper.specification import EMPTY, Cell, Column, Panel, Row, Table
 from lineproof.paper.symbols import Phrase, said
 
 _COUNTS = (
-    ("n_months", "Months", "count"),
+    ("n_periods", "{periods}", "count"),
     ("n_securities", "Securities", "count"),
-    ("n_security_months", "Security-months", "count"),
+    ("n_security_periods", "Security-{nouns}", "count"),
     ("n_entries", "Entries", "count"),
     ("n_exits", "Exits", "count"),
 )
@@ -30,6 +30,7 @@ def sample(context: Context, sort: str) -> Table:
         panels=(_rows_panel(context), _securities_panel(context), _returns_panel(context, sort)),
         notes=(
             notes.data(context),
+            *notes.built_market(context),
             said(
                 "Rows read are rows kept, rows set aside and exact duplicates. Rows that fail a "
                 "screen are kept, "
@@ -37,11 +38,13 @@ def sample(context: Context, sort: str) -> Table:
                 "above it pass."
             ),
             said(
-                "Alive: securities with a row in the month. Entries and exits: first and last "
+                "Alive: securities with a row {on_the}. Entries and exits: first and last "
                 "rows other than "
-                "the file’s first and last month. Returns in per cent a month; the average "
+                "the file’s first and last {noun}. Returns in per cent a {noun}; the average "
                 "security is the equally "
-                "weighted mean of all."
+                "weighted mean of all.",
+                on_the=context.period.on_the,
+                noun=context.period.noun,
             ),
         ),
     )
@@ -95,8 +98,11 @@ def _flags(context: Context, heading: str, faults: list[dict]) -> list[Row]:
 
 
 def _securities_panel(context: Context) -> Panel:
-    columns = [Column(term, said(label)) for term, label, _ in _COUNTS]
-    columns += [Column(term, said(label), said("Alive in a month")) for term, label, _ in _ALIVE]
+    nouns = context.period.nouns
+    words = {"periods": nouns.capitalize(), "nouns": nouns}
+    columns = [Column(term, said(label, **words)) for term, label, _ in _COUNTS]
+    alive = said("Alive {on_a}", on_a=context.period.on_a)
+    columns += [Column(term, said(label), alive) for term, label, _ in _ALIVE]
     rows = [
         Row(
             period.name,
@@ -131,8 +137,10 @@ def _returns_panel(context: Context, sort: str) -> Panel:
 
 
 def _returns(context: Context, sort: str, period: Subperiod) -> tuple[Cell, ...]:
+    form = context.period.mean_format
     security = [
-        cell(_panel(context, period, f"{term}_return"), "percent") for term in ("mean", "sd")
+        cell(_panel(context, period, "mean_return"), form),
+        cell(_panel(context, period, "sd_return"), "percent"),
     ]
     if not context.book.ran(sort, period.name, "describe"):
         return (*security, *[EMPTY] * 5)
@@ -141,8 +149,8 @@ def _returns(context: Context, sort: str, period: Subperiod) -> tuple[Cell, ...]
         for asset in ("market", "riskless")
         for term in ("mean", "sd")
     )
-    market = [cell(mean, "percent"), cell(sd, "percent"), cell(mean, "number", "statistic")]
-    return (*security, *market, cell(riskless, "percent"), cell(riskless_sd, "percent"))
+    market = [cell(mean, form), cell(sd, "percent"), cell(mean, "number", "statistic")]
+    return (*security, *market, cell(riskless, form), cell(riskless_sd, form))
 
 
 def _panel(context: Context, period: Subperiod, term: str) -> Number:

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from lineproof.stats.windows import pair_moments
+from lineproof.stats.windows import WindowEnds, pair_moments
 
 # A market whose standard deviation is below this, relative to its level (and to 1), only rounds.
 _ROUNDING = 1e-12
@@ -14,9 +14,10 @@ _ROUNDING = 1e-12
 
 @dataclass(frozen=True)
 class RollingBetas:
-    """Estimates at the rows numbered `row`, each array (n_estimates,); returns decimal per period.
+    """Estimates of the windows numbered `row`, each array (n_estimates,); decimal per period.
 
-    `n_too_few` and `n_no_variation` count the rows without an estimate, by reason.
+    Unless window ends are given, windows are numbered as the rows they end at. `n_too_few` and
+    `n_no_variation` count the windows without an estimate, by reason.
     """
 
     row: np.ndarray
@@ -38,20 +39,22 @@ def rolling_ols(
     *,
     window: int,
     min_obs: int,
+    ends: WindowEnds | None = None,
 ) -> RollingBetas:
-    """Least-squares slope of excess returns on [1, market] over the window that ends at each row.
+    """Least-squares slope of excess returns on [1, market] over each window.
 
     Parameters
     ----------
     starts, period : rows of each security and their calendar periods, as in `windows.pair_moments`.
     excess, market : (n_rows,) excess returns of the security and of the market in the same period.
     window, min_obs : periods in a window, and fewest complete pairs (at least 3) for an estimate.
+    ends : where windows end; at each row if None.
 
     Notes
     -----
     The standard error is the classical one with n − 2 degrees of freedom; the residual standard
-    deviation has the same divisor. R² is 0 where the security's returns are constant. A row whose
-    window has too few pairs, or a market without variation, gets no estimate and is counted.
+    deviation has the same divisor. R² is 0 where the security's returns are constant. A window
+    that has too few pairs, or a market without variation, gets no estimate and is counted.
 
     Raises
     ------
@@ -60,7 +63,7 @@ def rolling_ols(
     """
     if min_obs < 3:
         raise ValueError(f"at least 3 observations are needed for a standard error, not {min_obs}")
-    moments = pair_moments(starts, period, market, excess, window)
+    moments = pair_moments(starts, period, market, excess, window, ends)
     enough = moments.n >= min_obs
     varies = moments.sxx > _ROUNDING**2 * moments.n * (1 + moments.mean_x**2)
     row = np.flatnonzero(enough & varies)

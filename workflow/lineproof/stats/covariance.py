@@ -1,6 +1,6 @@
 """Covariance matrices of regression coefficients and means, and an inverse that knows its limits.
 
-Shapes: T months, N assets, p coefficients (intercept and K factors). All assets share one design.
+Shapes: T periods, N assets, p coefficients (intercept and K factors). All assets share one design.
 """
 
 from __future__ import annotations
@@ -11,7 +11,7 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
-from lineproof.stats import Undefined
+from lineproof.stats import PERIOD, Undefined
 
 Floats = NDArray[np.float64]
 
@@ -54,9 +54,9 @@ def inverse(matrix: Floats, *, reason: str, scale: Floats | None = None) -> Floa
     return (scaled / values) @ scaled.T
 
 
-def automatic_lag(n_months: int) -> int:
+def automatic_lag(n_periods: int) -> int:
     """Truncation lag floor(4 (T/100)^(2/9)) (Newey and West 1994)."""
-    return math.floor(4.0 * (n_months / 100.0) ** (2.0 / 9.0))
+    return math.floor(4.0 * (n_periods / 100.0) ** (2.0 / 9.0))
 
 
 def long_run_sum(scores: Floats, lag: int) -> Floats:
@@ -84,10 +84,12 @@ def _sandwich(design: Floats, bread: Floats, squares: Floats) -> Floats:
 
 
 def _spare(design: Floats, bread: Floats) -> Floats:
-    """One minus each month's leverage, as a (T, 1) column."""
+    """One minus each period's leverage, as a (T, 1) column."""
     spare = 1.0 - np.einsum("tp,pq,tq->t", design, bread, design)
     if spare.min() <= ROUNDING:
-        raise Undefined("one month alone decides the fit, so its residual carries no information")
+        raise Undefined(
+            f"one {PERIOD} alone decides the fit, so its residual carries no information"
+        )
     return spare[:, None]
 
 
@@ -101,8 +103,8 @@ def _hc0(design: Floats, bread: Floats, residuals: Floats, lag: int) -> Floats:
 
 
 def _hc1(design: Floats, bread: Floats, residuals: Floats, lag: int) -> Floats:
-    n_months, n_coefficients = design.shape
-    return _hc0(design, bread, residuals, lag) * (n_months / (n_months - n_coefficients))
+    n_periods, n_coefficients = design.shape
+    return _hc0(design, bread, residuals, lag) * (n_periods / (n_periods - n_coefficients))
 
 
 def _hc2(design: Floats, bread: Floats, residuals: Floats, lag: int) -> Floats:

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from lineproof.stats import Undefined
+from lineproof.stats import PERIOD, Undefined
 from lineproof.stats.covariance import inverse, long_run_sum
 from lineproof.stats.distributions import JointStatistic
 from lineproof.stats.time_series import Regression
@@ -46,7 +46,7 @@ def sharpe2_factors(regression: Regression) -> float:
 def measure_alphas(regression: Regression) -> AlphaDistance:
     """Distance of the alphas from zero (Gibbons, Ross and Shanken 1989).
 
-    Raises `Undefined` with fewer than N+K+1 months or if the residual covariance is singular.
+    Raises `Undefined` with fewer than N+K+1 periods or if the residual covariance is singular.
     """
     precision = _residual_precision(regression)
     quadratic = float(regression.alphas @ precision @ regression.alphas)
@@ -55,52 +55,52 @@ def measure_alphas(regression: Regression) -> AlphaDistance:
 
 
 def _residual_precision(regression: Regression) -> np.ndarray:
-    require_months(regression)
+    require_periods(regression)
     scale = np.diagonal(regression.return_covariance)
     return inverse(regression.residual_covariance, scale=scale, reason=SINGULAR)
 
 
-def require_months(regression: Regression) -> None:
+def require_periods(regression: Regression) -> None:
     """Raise `Undefined` unless T >= N+K+1, without which the residual covariance is singular."""
     needed = regression.n_assets + regression.n_factors + 1
-    if regression.n_months < needed:
+    if regression.n_periods < needed:
         raise Undefined(
-            f"needs at least {needed} months for {regression.n_assets} assets, "
-            f"has {regression.n_months}"
+            f"needs at least {needed} {PERIOD}s for {regression.n_assets} assets, "
+            f"has {regression.n_periods}"
         )
 
 
-def exact_f(distance: float, n_months: int, n_assets: int, n_factors: int) -> JointStatistic:
+def exact_f(distance: float, n_periods: int, n_assets: int, n_factors: int) -> JointStatistic:
     """(T-N-K)/N W ~ F(N, T-N-K), exact under normal residuals (Gibbons, Ross and Shanken 1989)."""
-    spare = n_months - n_assets - n_factors
+    spare = n_periods - n_assets - n_factors
     return JointStatistic(spare / n_assets * distance, n_assets, spare)
 
 
-def wald(distance: float, n_months: int, n_assets: int, n_factors: int) -> JointStatistic:
+def wald(distance: float, n_periods: int, n_assets: int, n_factors: int) -> JointStatistic:
     """T W ~ chi-square(N) in large samples."""
-    return JointStatistic(n_months * distance, n_assets)
+    return JointStatistic(n_periods * distance, n_assets)
 
 
 def likelihood_ratio(
-    distance: float, n_months: int, n_assets: int, n_factors: int
+    distance: float, n_periods: int, n_assets: int, n_factors: int
 ) -> JointStatistic:
     """T ln(1+W) ~ chi-square(N) in large samples."""
-    return JointStatistic(n_months * math.log1p(distance), n_assets)
+    return JointStatistic(n_periods * math.log1p(distance), n_assets)
 
 
 def corrected_likelihood_ratio(
-    distance: float, n_months: int, n_assets: int, n_factors: int
+    distance: float, n_periods: int, n_assets: int, n_factors: int
 ) -> JointStatistic:
     """(T - N/2 - K - 1) ln(1+W) ~ chi-square(N), good in small samples (Jobson and Korkie 1982)."""
-    factor = n_months - n_assets / 2.0 - n_factors - 1.0
+    factor = n_periods - n_assets / 2.0 - n_factors - 1.0
     return JointStatistic(factor * math.log1p(distance), n_assets)
 
 
 def lagrange_multiplier(
-    distance: float, n_months: int, n_assets: int, n_factors: int
+    distance: float, n_periods: int, n_assets: int, n_factors: int
 ) -> JointStatistic:
     """T W/(1+W) ~ chi-square(N) in large samples."""
-    return JointStatistic(n_months * distance / (1.0 + distance), n_assets)
+    return JointStatistic(n_periods * distance / (1.0 + distance), n_assets)
 
 
 AlphaStatistic = Callable[[float, int, int, int], JointStatistic]
@@ -121,11 +121,11 @@ def hac_wald(regression: Regression, lag: int) -> JointStatistic:
     Allows residuals whose variance moves and which are correlated over time. Raises `Undefined`
     under the same conditions as `measure_alphas`.
     """
-    require_months(regression)
-    # Row 0 of (X'X)^-1 X' weighs the months in the alphas: no need to stack the other moments.
-    month_weights = regression.design @ regression.bread[0]
-    covariance = long_run_sum(month_weights[:, None] * regression.residuals, lag)
-    scale = np.diagonal(regression.return_covariance) * (month_weights @ month_weights)
+    require_periods(regression)
+    # Row 0 of (X'X)^-1 X' weighs the periods in the alphas: no need to stack the other moments.
+    period_weights = regression.design @ regression.bread[0]
+    covariance = long_run_sum(period_weights[:, None] * regression.residuals, lag)
+    scale = np.diagonal(regression.return_covariance) * (period_weights @ period_weights)
     precision = inverse(covariance, scale=scale, reason=SINGULAR)
     return JointStatistic(
         float(regression.alphas @ precision @ regression.alphas), regression.n_assets

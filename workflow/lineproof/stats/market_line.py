@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from lineproof.stats import Undefined
 from lineproof.stats.covariance import deviations, inverse, long_run_sum, without_rounding
 from lineproof.stats.distributions import JointStatistic
-from lineproof.stats.joint_alpha import SINGULAR, require_months
+from lineproof.stats.joint_alpha import SINGULAR, require_periods
 from lineproof.stats.time_series import Regression
 
 Floats = NDArray[np.float64]
@@ -91,7 +91,7 @@ def line_r_squared(line: Line, metric: Floats | None = None) -> float:
 
 @dataclass(frozen=True)
 class MarketLine:
-    """A line drawn from the betas and means of the same months' single-factor regressions."""
+    """A line drawn from the betas and means of the same periods' single-factor regressions."""
 
     line: Line
     regression: Regression
@@ -124,7 +124,7 @@ class Weighting:
 
     Attributes:
         weights: the matrix W from the regressions.
-        influence: (T, 2) effect of each month on the coefficients through the estimated weights.
+        influence: (T, 2) effect of each period on the coefficients through the estimated weights.
         metric: the matrix in which R squared is measured.
         pricing_error_tests: tests that no pricing error is left, by reference distribution.
     """
@@ -147,7 +147,7 @@ def _variance_weights(regression: Regression) -> Floats:
 
 
 def _covariance_weights(regression: Regression) -> Floats:
-    require_months(regression)
+    require_periods(regression)
     scale = np.diagonal(regression.return_covariance)
     return inverse(regression.residual_covariance, scale=scale, reason=SINGULAR)
 
@@ -159,7 +159,7 @@ def _return_precision(regression: Regression) -> Floats:
 
 
 def _known_weights(drawn: MarketLine) -> Floats:
-    return np.zeros((drawn.regression.n_months, 2))
+    return np.zeros((drawn.regression.n_periods, 2))
 
 
 def _estimated_variances(drawn: MarketLine) -> Floats:
@@ -200,26 +200,26 @@ def _textbook(drawn: MarketLine, lag: int) -> LineCovariance:
     return LineCovariance(covariance, covariance, len(drawn.line.means) - 2)
 
 
-def _monthly(drawn: MarketLine, lag: int) -> LineCovariance:
-    n_months = drawn.regression.n_months
+def _by_period(drawn: MarketLine, lag: int) -> LineCovariance:
+    n_periods = drawn.regression.n_periods
     own, gap = (long_run_sum(each, 0) for each in _slope_deviations(drawn))
-    scale = n_months * (n_months - 1.0)
-    return LineCovariance(own / scale, gap / scale, n_months - 1)
+    scale = n_periods * (n_periods - 1.0)
+    return LineCovariance(own / scale, gap / scale, n_periods - 1)
 
 
-def _monthly_hac(drawn: MarketLine, lag: int) -> LineCovariance:
-    n_months = drawn.regression.n_months
+def _by_period_hac(drawn: MarketLine, lag: int) -> LineCovariance:
+    n_periods = drawn.regression.n_periods
     own, gap = (long_run_sum(each, lag) for each in _slope_deviations(drawn))
-    return LineCovariance(own / n_months**2, gap / n_months**2, n_months - 1)
+    return LineCovariance(own / n_periods**2, gap / n_periods**2, n_periods - 1)
 
 
 def _errors_in_variables(drawn: MarketLine, lag: int) -> LineCovariance:
     # The market is a traded factor: the sampling error of its own mean moves the slope one for one
     # and cancels from the slope less that mean.
-    projection, n_months = drawn.line.projection, drawn.regression.n_months
+    projection, n_periods = drawn.line.projection, drawn.regression.n_periods
     spread = projection @ drawn.regression.residual_covariance @ projection.T
-    gap = (1.0 + drawn.correction) * spread / n_months
-    own = gap + np.diag([0.0, drawn.market_variance]) / n_months
+    gap = (1.0 + drawn.correction) * spread / n_periods
+    own = gap + np.diag([0.0, drawn.market_variance]) / n_periods
     return LineCovariance(own, gap)
 
 
@@ -230,7 +230,7 @@ def _robust(drawn: MarketLine, lag: int) -> LineCovariance:
 def _robust_hac(drawn: MarketLine, lag: int) -> LineCovariance:
     own = influences(drawn)
     gap = own - _market_deviations(drawn)
-    scale = drawn.regression.n_months**2
+    scale = drawn.regression.n_periods**2
     return LineCovariance(long_run_sum(own, lag) / scale, long_run_sum(gap, lag) / scale)
 
 
@@ -252,7 +252,7 @@ def _error_returns(drawn: MarketLine) -> Floats:
 
 
 def influences(drawn: MarketLine) -> Floats:
-    """(T, 2) effect h_t of each month on the coefficients, betas and weights moving with it.
+    """(T, 2) effect h_t of each period on the coefficients, betas and weights moving with it.
 
     h_t = (g_t - g) - (p_t - p) w_t + (Z'WZ)^-1 [0, u_t m_t / V] + effect of the weights, with
     g_t = A r_t, p_t = g_t less the market in the slope, m_t = f_t - f, w_t = g1 m_t / V and
@@ -271,8 +271,8 @@ def influences(drawn: MarketLine) -> Floats:
 # Name of a kind of standard error -> function of the drawn line and the truncation lag.
 LINE_COVARIANCES: dict[str, Callable[[MarketLine, int], LineCovariance]] = {
     "textbook": _textbook,
-    "monthly_slopes": _monthly,
-    "monthly_slopes_hac": _monthly_hac,
+    "monthly_slopes": _by_period,
+    "monthly_slopes_hac": _by_period_hac,
     "errors_in_variables": _errors_in_variables,
     "misspecification_robust": _robust,
     "misspecification_robust_hac": _robust_hac,
@@ -295,15 +295,15 @@ def pricing_error_chi2(drawn: MarketLine) -> JointStatistic:
     `Undefined` as `measure_alphas` does.
     """
     regression = drawn.regression
-    require_months(regression)
+    require_periods(regression)
     contrasts = np.linalg.qr(drawn.line.design, mode="complete")[0][:, 2:]
     values = contrasts.T @ drawn.line.residuals
     # Combine residuals, not their covariances: where the combination is small, digits survive.
     combined = regression.residuals @ contrasts
-    covariance = combined.T @ combined / regression.n_months
+    covariance = combined.T @ combined / regression.n_periods
     scale = (contrasts**2).T @ np.diagonal(regression.return_covariance)
     precision = inverse(covariance, scale=scale, reason=SINGULAR)
-    statistic = regression.n_months * (values @ precision @ values) / (1.0 + drawn.correction)
+    statistic = regression.n_periods * (values @ precision @ values) / (1.0 + drawn.correction)
     return JointStatistic(float(statistic), len(values))
 
 
@@ -312,10 +312,10 @@ def pricing_error_f(drawn: MarketLine) -> JointStatistic:
 
     Q = T e'S_u^-1 e/(1+c) with S_u the residual covariance of divisor T-2 (Shanken 1985).
     """
-    n_months, n_assets = drawn.regression.returns.shape
+    n_periods, n_assets = drawn.regression.returns.shape
     # The two divisors make Q / (T-2) the chi-square statistic over T.
-    ratio = pricing_error_chi2(drawn).value / n_months
-    df1, df2 = n_assets - 2, n_months - n_assets + 1
+    ratio = pricing_error_chi2(drawn).value / n_periods
+    df1, df2 = n_assets - 2, n_periods - n_assets + 1
     return JointStatistic(ratio * df2 / df1, df1, df2)
 
 

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from lineproof.stats import Undefined
+from lineproof.stats import PERIOD, Undefined
 from lineproof.stats.covariance import (
     COEFFICIENT_COVARIANCES,
     deviations,
@@ -20,7 +20,7 @@ Floats = NDArray[np.float64]
 
 @dataclass(frozen=True)
 class Regression:
-    """Least squares of N assets' excess returns on a constant and K factors over the same T months.
+    """Least squares of N assets' excess returns on a constant and K factors over the same T periods.
 
     Attributes:
         returns: (T, N) excess returns, decimal per period.
@@ -39,7 +39,7 @@ class Regression:
     residuals: Floats
 
     @property
-    def n_months(self) -> int:
+    def n_periods(self) -> int:
         """T."""
         return self.returns.shape[0]
 
@@ -56,7 +56,7 @@ class Regression:
     @property
     def df(self) -> int:
         """Residual degrees of freedom of each regression, T - K - 1."""
-        return self.n_months - self.n_factors - 1
+        return self.n_periods - self.n_factors - 1
 
     @property
     def alphas(self) -> Floats:
@@ -71,25 +71,25 @@ class Regression:
     @property
     def residual_covariance(self) -> Floats:
         """(N, N) maximum-likelihood covariance of the residuals: divisor T."""
-        return self.residuals.T @ self.residuals / self.n_months
+        return self.residuals.T @ self.residuals / self.n_periods
 
     @property
     def return_covariance(self) -> Floats:
         """(N, N) covariance of the returns, divisor T."""
         centred = deviations(self.returns)
-        return centred.T @ centred / self.n_months
+        return centred.T @ centred / self.n_periods
 
     @property
     def factor_covariance(self) -> Floats:
         """(K, K) covariance of the factors, divisor T."""
         centred = deviations(self.factors)
-        return centred.T @ centred / self.n_months
+        return centred.T @ centred / self.n_periods
 
 
 def regress(returns: Floats, factors: Floats) -> Regression:
     """Regress each column of `returns` (T, N) on a constant and `factors` (T, K).
 
-    Both must be complete (ValueError otherwise). Raises `Undefined` with fewer than K+2 months, or
+    Both must be complete (ValueError otherwise). Raises `Undefined` with fewer than K+2 periods, or
     if the factors are constant or linearly dependent.
     """
     returns = np.asarray(returns, dtype=float)
@@ -98,14 +98,14 @@ def regress(returns: Floats, factors: Floats) -> Regression:
         raise ValueError("returns must be (T, N) and factors (T, K) with the same T")
     if not (np.isfinite(returns).all() and np.isfinite(factors).all()):
         raise ValueError(
-            "returns and factors must be complete: drop months with missing values first"
+            "returns and factors must be complete: drop periods with missing values first"
         )
-    n_months, n_factors = factors.shape
-    if n_months < n_factors + 2:
-        raise Undefined(f"needs at least {n_factors + 2} complete months, has {n_months}")
+    n_periods, n_factors = factors.shape
+    if n_periods < n_factors + 2:
+        raise Undefined(f"needs at least {n_factors + 2} complete {PERIOD}s, has {n_periods}")
     centred = deviations(factors)
     inverse(centred.T @ centred, reason=_no_factor_variation(n_factors))
-    design = np.column_stack([np.ones(n_months), factors])
+    design = np.column_stack([np.ones(n_periods), factors])
     orthogonal, triangular = np.linalg.qr(design)
     unwind = np.linalg.inv(triangular)
     coefficients = unwind @ (orthogonal.T @ returns)

@@ -24,7 +24,7 @@ _N_MOMENTS = 7  # the fields of PairMoments
 
 @dataclass(frozen=True)
 class PairMoments:
-    """Moments of (x, y) in the window that ends at each row; every array is (n_rows,).
+    """Moments of (x, y) in each window asked for; every array is (n_windows,).
 
     `n` counts complete pairs; `sxx`, `sxy`, `syy` are sums of centred squares and products, and
     `residual_ss` is the sum of squared residuals of y on [1, x] (`syy` where x is constant). Where
@@ -40,10 +40,27 @@ class PairMoments:
     residual_ss: np.ndarray
 
 
+@dataclass(frozen=True)
+class WindowEnds:
+    """Where windows end: of security i at the periods `period[starts[i]:starts[i + 1]]`, ascending.
+
+    `starts` is (n_securities + 1,), `period` int64 (n_windows,); a period need not be one in which
+    the security has a row.
+    """
+
+    starts: np.ndarray
+    period: np.ndarray
+
+
 def pair_moments(
-    starts: np.ndarray, period: np.ndarray, x: np.ndarray, y: np.ndarray, window: int
+    starts: np.ndarray,
+    period: np.ndarray,
+    x: np.ndarray,
+    y: np.ndarray,
+    window: int,
+    ends: WindowEnds | None = None,
 ) -> PairMoments:
-    """Moments of x and y over the last `window` calendar periods, for each row.
+    """Moments of x and y over the last `window` calendar periods, at each of `ends`.
 
     Parameters
     ----------
@@ -52,6 +69,7 @@ def pair_moments(
     period : (n_rows,) integer calendar period, strictly increasing within a security.
     x, y : (n_rows,) float; a pair with a NaN does not count.
     window : periods in a window, at least 1; a hole in a security's history uses up its periods.
+    ends : where windows end; at each row if None.
 
     Raises
     ------
@@ -60,49 +78,63 @@ def pair_moments(
     """
     if window < 1:
         raise ValueError(f"a window of {window} periods")
-    out = np.zeros((_N_MOMENTS, len(period)))
+    ends = WindowEnds(starts, period) if ends is None else ends
+    out = np.zeros((_N_MOMENTS, len(ends.period)))
     _fill(
         np.ascontiguousarray(starts, np.int64),
         np.ascontiguousarray(period, np.int64),
         np.ascontiguousarray(x, np.float64),
         np.ascontiguousarray(y, np.float64),
         window,
+        np.ascontiguousarray(ends.starts, np.int64),
+        np.ascontiguousarray(ends.period, np.int64),
         out,
     )
     return PairMoments(out[0].astype(np.int64), *out[1:])
 
 
 @njit(cache=True, parallel=True)
-def _fill(starts, period, x, y, window, out):  # pragma: no cover - compiled
+def _fill(starts, period, x, y, window, end_starts, ends, out):  # pragma: no cover - compiled
     for security in prange(len(starts) - 1):
         first, last = starts[security], starts[security + 1]
-        if last > first:
+        begin, stop = end_starts[security], end_starts[security + 1]
+        if last > first and stop > begin:
             _one_security(
-                period[first:last], x[first:last], y[first:last], window, out[:, first:last]
+                period[first:last],
+                x[first:last],
+                y[first:last],
+                window,
+                ends[begin:stop],
+                out[:, begin:stop],
             )
 
 
 @njit(cache=True)
-def _one_security(period, x, y, window, out):  # pragma: no cover - compiled
-    sums = _by_period(period, x, y)
+def _one_security(period, x, y, window, ends, out):  # pragma: no cover - compiled
+    sums = _by_period(period, x, y, max(period[-1], ends[-1]))
     prefix, suffix = _prefixes(sums, window), _suffixes(sums, window)
     total = np.empty(_N_SUMS)
-    oldest = 0
-    for row in range(len(period)):
-        at = period[row] - period[0]
-        while period[oldest] <= period[row] - window:
+    oldest, after = 0, 0  # rows of the window: oldest to the one before after
+    for place in range(len(ends)):
+        end = ends[place]
+        while after < len(period) and period[after] <= end:
+            after += 1
+        while oldest < after and period[oldest] <= end - window:
             oldest += 1
+        if oldest == after:
+            continue
+        at = end - period[0]
         total[:] = prefix[at]
         if at % window != window - 1 and at >= window:
             total += suffix[at - window + 1]
-        if total[0] > 0 and not _from_sums(total, out[:, row]):
-            _pass_by_pass(x[oldest : row + 1], y[oldest : row + 1], out[:, row])
+        if total[0] > 0 and not _from_sums(total, out[:, place]):
+            _pass_by_pass(x[oldest:after], y[oldest:after], out[:, place])
 
 
 @njit(cache=True)
-def _by_period(period, x, y):  # pragma: no cover - compiled
-    """Each period's contribution to the sums; zero without a complete pair."""
-    sums = np.zeros((period[-1] - period[0] + 1, _N_SUMS))
+def _by_period(period, x, y, last):  # pragma: no cover - compiled
+    """Each period's contribution to the sums, up to `last`; zero without a complete pair."""
+    sums = np.zeros((last - period[0] + 1, _N_SUMS))
     for row in range(len(period)):
         u, v = x[row], y[row]
         if not (np.isnan(u) or np.isnan(v)):
