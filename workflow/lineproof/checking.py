@@ -145,7 +145,7 @@ def _delisting(found: DelistingRecord | None, period: str) -> list[str]:
         if each["n_without"]:
             stand_in = each["stand_in"]
             taken = (
-                "left as they are"
+                "left without one"
                 if stand_in is None
                 else f"taken as {_minus(printed(stand_in, 'percent'))} %"
             )
@@ -168,8 +168,10 @@ def _largest(largest: LargestEvidence) -> list[str]:
     table = [("security", "date", "before", "return", "after"), *map(_large, rows)]
     widths = [max(len(row[at]) for row in table) for at in range(5)]
     return [
-        f"  {row[0]:<{widths[0]}}  {row[1]:<{widths[1]}}  "
-        + "  ".join(f"{text:>{width}}" for text, width in zip(row[2:], widths[2:], strict=True))
+        (
+            f"  {row[0]:<{widths[0]}}  {row[1]:<{widths[1]}}  "
+            + "  ".join(f"{text:>{width}}" for text, width in zip(row[2:], widths[2:], strict=True))
+        ).rstrip()
         for row in table
     ]
 
