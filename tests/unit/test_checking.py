@@ -194,3 +194,23 @@ def test_names_from_the_data_cannot_steer_the_terminal() -> None:
     said = describe_intake(intake)
     assert all(line.isprintable() for line in said)
     assert any("\N{REPLACEMENT CHARACTER}[2Jline 7" in line for line in said)
+
+
+def test_several_files_of_returns_are_summed_and_then_told_one_by_one() -> None:
+    intake = examples.usual()
+    first = intake["files"][0]
+    parts = [{**first, "label": "raw/a.csv"}, {**first, "label": "raw/b.csv"}]
+    for key in ("rows_read", "rows_kept", "rows_set_aside", "exact_duplicates"):
+        parts[1][key] = first[key] // 3
+    parts[1]["rows_read"] = sum(
+        parts[1][key] for key in ("rows_kept", "rows_set_aside", "exact_duplicates")
+    )
+    for key in ("rows_read", "rows_kept", "rows_set_aside", "exact_duplicates"):
+        parts[0][key] = first[key] - parts[1][key]
+    intake["files"][:1] = parts
+    said = describe_intake(intake)
+    assert said[1] == f"{intake['rows_read']:>11,}  rows read"
+    for part in parts:
+        at = said.index(f"{part['label']}:")
+        assert said[at + 1] == f"{part['rows_read']:>11,}  rows read"
+        assert said[at + 2] == f" ={part['rows_kept']:>9,}  kept"
