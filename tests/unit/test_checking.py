@@ -47,6 +47,24 @@ EXPECTED = """\
 
     Rows that fail a screen, in order; they are kept, but not ranked on:
               1  of 1 security: not “price at least 1”
+
+    Securities that leave:
+              0  with a final return
+              1  without one
+                   1 for no reason given: left without one
+                 equally weighted mean a month: 10.0000 % with final returns, 10.0000 % without any
+
+    Units and scale:
+      unit of the returns: read as decimal, half of all returns exceed 10 % in size and one in
+        twenty exceeds 10 %: too few to judge
+      the same unit in every month: no month stands out: one unit throughout
+      the same unit for every security: none of 0 securities stands out: one unit throughout
+
+    The largest returns, in per cent:
+      security  date        before  return  after
+      A         2000-01-28           10.00      –
+      A         2000-03-28       –   10.00
+      B         2000-01-31           10.00
 """
 FULL = """\
 raw/market.csv:
@@ -60,7 +78,7 @@ ENDING = """\
 Securities that leave:
          22  with a final return
          31  without one
-               3 for no reason given: left as they are
+               3 for no reason given: left without one
                10 merged: taken as 0.00 %
                18 failed: taken as −30.00 %
              equally weighted mean a month: 0.8123 % with final returns, 0.8877 % without any
@@ -81,14 +99,22 @@ def test_summary_of_an_intake(tmp_path: Path) -> None:
 
 
 def test_clean_data_say_little(tmp_path: Path) -> None:
+    """The mean of the first month is that of 10 % and of 10 % compounded with a final 10 %; the second's is 10 %."""
     rows = ["A,2000-01-31,0.1,,1,5", "B,2000-01-31,0.1,0.1,1,5", "A,2000-02-29,0.1,,1,5"]
-    assert describe_intake(validate(tmp_path, lines(*rows)).intake) == [
+    said = describe_intake(validate(tmp_path, lines(*rows)).intake)
+    assert said[:10] == [
         "raw/returns.csv: 2000-01 to 2000-02, 2 securities",
         "          3  rows read",
         " =        3  kept",
         " +        0  set aside",
         " +        0  dropped, as exact duplicates of others",
+        "",
+        "Securities that leave:",
+        "          1  with a final return",
+        "          0  without one",
+        "             equally weighted mean a month: 12.7500 % with final returns, 10.0000 % without any",
     ]
+    assert not any(line.startswith(("Faults", "Rows that fail")) for line in said)
 
 
 def test_summary_of_a_study(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
@@ -168,3 +194,23 @@ def test_names_from_the_data_cannot_steer_the_terminal() -> None:
     said = describe_intake(intake)
     assert all(line.isprintable() for line in said)
     assert any("\N{REPLACEMENT CHARACTER}[2Jline 7" in line for line in said)
+
+
+def test_several_files_of_returns_are_summed_and_then_told_one_by_one() -> None:
+    intake = examples.usual()
+    first = intake["files"][0]
+    parts = [{**first, "label": "raw/a.csv"}, {**first, "label": "raw/b.csv"}]
+    for key in ("rows_read", "rows_kept", "rows_set_aside", "exact_duplicates"):
+        parts[1][key] = first[key] // 3
+    parts[1]["rows_read"] = sum(
+        parts[1][key] for key in ("rows_kept", "rows_set_aside", "exact_duplicates")
+    )
+    for key in ("rows_read", "rows_kept", "rows_set_aside", "exact_duplicates"):
+        parts[0][key] = first[key] - parts[1][key]
+    intake["files"][:1] = parts
+    said = describe_intake(intake)
+    assert said[1] == f"{intake['rows_read']:>11,}  rows read"
+    for part in parts:
+        at = said.index(f"{part['label']}:")
+        assert said[at + 1] == f"{part['rows_read']:>11,}  rows read"
+        assert said[at + 2] == f" ={part['rows_kept']:>9,}  kept"

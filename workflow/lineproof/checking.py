@@ -17,6 +17,7 @@ from lineproof.intake.record import (
     NeighbourRow,
     ScreenRecord,
     files_of,
+    returns_in_all,
     survivors_only,
 )
 from lineproof.paper.rounding import printed
@@ -92,12 +93,16 @@ def _survivors(intake: Intake) -> list[str]:
 
 
 def _files(intake: Intake) -> list[str]:
-    """The returns in full, then the other files; span and kept rows without a return."""
+    """All returns together, then each of several files of them and the other files; then the span."""
     missing, n = intake["n_missing_returns"], intake["n_securities"]
     said = f"{intake['file']}: {intake['first']} to {intake['last']}, {_securities(n)}"
     lines = _below(said, 0, 2)
-    for place, file in enumerate(files_of(intake)):
-        lines += _equation(file, missing if file["place"] == "data.returns" else 0, named=place > 0)
+    lines += _equation(returns_in_all(intake), missing, named=False)
+    files = files_of(intake)
+    several = sum(file["place"] == "data.returns" for file in files) > 1
+    for file in files:
+        if several or file["place"] != "data.returns":
+            lines += _equation(file, 0, named=True)
     return lines + [line for sentence in intake["span"] for line in _below(sentence, 0, 2)]
 
 
@@ -145,7 +150,7 @@ def _delisting(found: DelistingRecord | None, period: str) -> list[str]:
         if each["n_without"]:
             stand_in = each["stand_in"]
             taken = (
-                "left as they are"
+                "left without one"
                 if stand_in is None
                 else f"taken as {_minus(printed(stand_in, 'percent'))} %"
             )
@@ -168,8 +173,10 @@ def _largest(largest: LargestEvidence) -> list[str]:
     table = [("security", "date", "before", "return", "after"), *map(_large, rows)]
     widths = [max(len(row[at]) for row in table) for at in range(5)]
     return [
-        f"  {row[0]:<{widths[0]}}  {row[1]:<{widths[1]}}  "
-        + "  ".join(f"{text:>{width}}" for text, width in zip(row[2:], widths[2:], strict=True))
+        (
+            f"  {row[0]:<{widths[0]}}  {row[1]:<{widths[1]}}  "
+            + "  ".join(f"{text:>{width}}" for text, width in zip(row[2:], widths[2:], strict=True))
+        ).rstrip()
         for row in table
     ]
 

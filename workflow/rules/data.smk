@@ -29,6 +29,7 @@ rule write_data_report:
     input:
         intake=after_validation("data/intake.json"),
         options=wiring.options_file("write_paper"),
+        pins=wiring.pins,
         code=wiring.code("write_data_report"),
     output:
         report=wiring.path("data_report.html"),

@@ -209,14 +209,21 @@ class Intake(TypedDict):
 SURVIVORS_ONLY = 26  # the fault that no security ever leaves
 
 
+def returns_in_all(intake: Intake) -> FileRecord:
+    """The rows of all files of returns together. Raises ValueError when they do not add up."""
+    together: Any = {"place": "data.returns", "label": intake["file"]}
+    for key in ("rows_read", "rows_kept", "rows_set_aside", "exact_duplicates"):
+        together[key] = intake[key]
+    check_conserved(together)
+    return together
+
+
 def files_of(intake: Intake) -> list[FileRecord]:
     """The raw files of an intake; one of an earlier version knows the returns only.
 
     Raises ValueError when a file's rows do not add up.
     """
-    counts = ("rows_read", "rows_kept", "rows_set_aside", "exact_duplicates")
-    alone: Any = {"place": "data.returns", "label": intake["file"]}
-    files = intake.get("files") or [{**alone, **{key: intake[key] for key in counts}}]
+    files = intake.get("files") or [returns_in_all(intake)]
     for file in files:
         check_conserved(file)
     return files
