@@ -59,7 +59,10 @@ def test_the_rows_set_aside_hold_no_formula(tmp_path: Path) -> None:
 @pytest.fixture(scope="module")
 def context() -> Context:
     """Test assets, as sectors are, a subperiod, a title and the label of a screen with such names."""
-    intake = {**paper.INTAKE, "screens": [{"label": f"sector is {NAMES[0]}", "n": 1}]}
+    intake = {
+        **paper.INTAKE,
+        "screens": [{"label": f"sector is {NAMES[0]}", "n_rows": 1, "n_securities": 1}],
+    }
     intake["faults"] = [{"number": 19, "label": NAMES[0], "answer": "set aside", "n": 2}]
     return paper.study(
         {"given": ({"title": f"Sectors of {NAMES[0]}", "design": "supplied"}, NAMES)},

@@ -23,7 +23,7 @@ def test_addresses_are_those_of_the_estimates(book: Book) -> None:
     estimates = usual().estimates
     assert list(KEY_COLUMNS) == list(pricing.KEY_COLUMNS)
     addresses = estimates[list(KEY_COLUMNS)].agg("/".join, axis=1)
-    short = (estimates["n_months"] < estimates["n_assets"] + 2) & (
+    short = (estimates["n_periods"] < estimates["n_assets"] + 2) & (
         estimates["analysis"] == "market_line"
     )  # see below
     kept = estimates["estimate"].where(~short | estimates["se_kind"].eq("-"))

@@ -105,7 +105,7 @@ def test_parquet_rows_are_counted_from_one(tmp_path: Path) -> None:
     found = validate(tmp_path, Path(file), columns=columns)
     assert aside(found) == [
         (2, 23, "a blank identifier", ",2000-01-31,0.2"),
-        (3, 15, "a return below −100 %: ret is '-2.5'", "B,2000-01-31,-2.5"),
+        (3, 15, "a return below −100 %: ret is -2.5", "B,2000-01-31,-2.5"),
     ]
     assert fault(found, 15)["examples"] == ["row 3"]
 
@@ -238,7 +238,7 @@ def test_decimal_comma(tmp_path: Path) -> None:
     assert refused(tmp_path, text, separator=";") == (
         "The raw data cannot be used; nothing was written.\n"
         "  raw/returns.csv, column ret: most numbers have a decimal comma, as in -0,02\n"
-        "    → save the file with decimal points"
+        "    → set decimal: comma"
     )
 
 

@@ -109,7 +109,7 @@ def test_returns_from_prices(tmp_path: Path) -> None:
         ("A", "2000-11-30", '"1,000"'),
         ("B", "2000-12-29", "20"),  # does not go on from A
     )
-    found = validate(tmp_path, text, columns=columns, unit="percent")
+    found = validate(tmp_path, text, columns=columns, unit="percent", return_from="price")
     gap = np.nan
     np.testing.assert_array_equal(
         found.panel["total_return"], [gap, 0.25, -0.5, gap, gap, gap, gap, gap, gap, 99.0, gap]
@@ -125,7 +125,7 @@ def test_a_price_set_aside_gives_no_return_to_the_next_month(tmp_path: Path) -> 
     columns = {name: PRICED[name] for name in ("security", "date", "price")}
     days = ["2000-01-31", "2000-02-29", "2000-03-31", "2000-03-30", "2000-04-28", "2000-05-31"]
     text = prices(*(("A", day, price) for day, price in zip(days, "4x8948", strict=True)))
-    found = validate(tmp_path, text, columns=columns)
+    found = validate(tmp_path, text, columns=columns, return_from="price")
     assert [row[:2] for row in aside(found)] == [(3, 13), (4, 19), (5, 19)]
     np.testing.assert_array_equal(found.panel["total_return"], [np.nan, np.nan, 1.0])
 
@@ -136,7 +136,7 @@ def test_final_returns_and_flags_on_returns_from_prices(tmp_path: Path) -> None:
         "A,2000-01-31,,10", "A,2000-02-29,,50", "A,2000-03-31,-0.5,10", "B,2000-12-29,,1",
         header="id,day,final,px",
     )  # fmt: skip
-    found = validate(tmp_path, text, columns=columns)
+    found = validate(tmp_path, text, columns=columns, return_from="price")
     # 0.2 × 0.5 − 1, to the rounding of one product.
     np.testing.assert_allclose(found.panel["total_return"][:3], [np.nan, 4.0, -0.9], rtol=1e-15)
     assert fault(found, 22)["examples"] == ["A on 2000-03-31"]

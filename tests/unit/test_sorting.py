@@ -359,6 +359,6 @@ def test_sizes_grow_by_excess_returns_where_no_total_is_known() -> None:
             "size": [100.0, np.nan, np.nan, np.nan, np.nan, 8.0],
         }
     )
-    found = _lagged_size(panel)
+    found = _lagged_size(panel, np.array([0, 0, 0, 0, 1, 1]))
     # A product of numbers that are no binary fractions: one rounding.
     np.testing.assert_allclose(found, [np.nan, 100, 150, 150, np.nan, np.nan], rtol=1e-15)

@@ -108,7 +108,7 @@ def test_paths_are_relative_to_the_study_file(folder: Path) -> None:
         (
             ("window: 60", "window: 1"),
             "mine.yaml, line 9, betas.monthly60.window: 1 is out of range\n"
-            "    → give at least 2 and at most 600 months",
+            "    → give at least 2 and at most 10000 months or trading days",
         ),
         (
             ("min: 24", "min: 70"),

@@ -55,6 +55,11 @@ def written(frame: pd.DataFrame, cuts: list[int], path: Path) -> bytes:
 WHOLE = panel(10)
 
 
+def as_text(table: pd.DataFrame) -> pd.DataFrame:
+    """A table as read, with the names of its securities spelt out."""
+    return table.astype({"security": "str"})
+
+
 @settings(max_examples=25, deadline=None)
 @given(
     cuts=st.lists(st.integers(1, len(WHOLE) - 1), max_size=6),
@@ -68,7 +73,7 @@ def test_the_cut_does_not_show(
         patch.setattr(store, "_ROW_GROUP", row_group)
         assert written(WHOLE, cuts, path) == written(WHOLE, [], path)
         assert pq.ParquetFile(path).num_row_groups == -(-len(WHOLE) // row_group)
-    pd.testing.assert_frame_equal(store.read_table(path), WHOLE)
+    pd.testing.assert_frame_equal(as_text(store.read_table(path)), WHOLE)
     assert [each.name for each in path.parent.iterdir()] == ["panel.parquet"]
 
 
@@ -132,7 +137,7 @@ def test_several_tables_from_one_stream(tmp_path: Path) -> None:
     ]
     paths = {name: tmp_path / "deep" / f"{name}.parquet" for name in ("panel", "market")}
     store.write_together(iter(batches), paths)
-    pd.testing.assert_frame_equal(store.read_table(paths["panel"]), WHOLE)
+    pd.testing.assert_frame_equal(as_text(store.read_table(paths["panel"])), WHOLE)
     pd.testing.assert_frame_equal(store.read_table(paths["market"]), market)
 
 

@@ -224,10 +224,18 @@ _OURS = (
 
 
 def _column_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
-    """Two of our names for one column of a file; names of the user's own, for screens, may share one."""
+    """Prices that returns are to be computed from; and two of our names for one column of a file.
+
+    Names of the user's own, for screens, may share one.
+    """
     mapped = {("data", name): options for name, options in content["data"].items()}
     mapped |= {("portfolios", name): options for name, options in content["portfolios"].items()}
     found: list[Finding] = []
+    columns = content["data"]["returns"]["columns"]
+    if isinstance(columns.get("return"), dict) and "price" not in columns:
+        said = "returns from prices need a price column, and there is none"
+        change = "add price under data.returns.columns"
+        found.append((("data", "returns", "columns", "return"), said, change))
     for place, options in mapped.items():
         taken: dict[str, str] = {}
         for name, column in options.get("columns", {}).items():
@@ -270,7 +278,7 @@ CHECKS = (
     ({"data"}, _market_findings),
     ({"data", "portfolios"}, _riskless_findings),
     ({"subperiods"}, _subperiod_findings),
-    ({"data"}, _column_findings),
+    ({"data", "portfolios"}, _column_findings),
     ({"intake", "data"}, _screen_findings),
     ({"intake", "data"}, _delisting_findings),
     ({"demo"}, _demo_findings),

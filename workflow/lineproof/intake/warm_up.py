@@ -8,7 +8,7 @@ from typing import Any
 
 import numpy as np
 
-from lineproof.store import Scratch
+from lineproof import store
 from lineproof.validation import validate_returns
 
 _FIRST = np.datetime64("2001-01-01")
@@ -43,11 +43,12 @@ def _take_in(folder: Path, dates: np.ndarray, delivered: str, build: str) -> Non
         for name in "AB"
         for at, day in enumerate(dates)
     ]
-    returns.write_text("security,date,return,size,price,final_return\n" + "".join(rows))
-    riskless.write_text("date,rate\n" + "".join(f"{day},0.0001\n" for day in dates))
+    header = "security,date,return,size,price,final_return\n"
+    store.write_text(header + "".join(rows), returns)
+    store.write_text("date,rate\n" + "".join(f"{day},0.0001\n" for day in dates), riskless)
     columns = ("security", "date", "return", "size", "price", "final_return")
     series = {"market": None, "market_is": "total", "riskless_quoted": "period_return"}
-    with Scratch(folder) as scratch:
+    with store.Scratch(folder) as scratch:
         found = validate_returns(
             {"returns": [str(returns)], "riskless": [str(riskless)]},
             scratch,
