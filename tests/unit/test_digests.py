@@ -90,3 +90,24 @@ def test_a_spoilt_memory_is_no_memory(file: Path, spoilt: str) -> None:
 def test_a_file_that_cannot_be_read_is_a_problem_of_the_user(tmp_path: Path) -> None:
     with pytest.raises(KnownProblem, match=r"absent\.csv: cannot be read: No such file"):
         Digests(tmp_path / "known.json").of(tmp_path / "absent.csv")
+
+
+@pytest.mark.usefixtures("settled")
+def test_modules_named_are_those_of_the_content(tmp_path: Path) -> None:
+    code, memory = tmp_path / "a.py", tmp_path / "named.json"
+    code.write_text("from lineproof import store\n")
+
+    def named() -> list[str]:
+        found = module.ModulesNamed(memory, Digests(tmp_path / "known.json"))
+        names = found.of(code)
+        found.keep()
+        return names
+
+    assert named() == ["lineproof", "lineproof.store"]
+    memory.write_text(memory.read_text().replace("lineproof.store", "lineproof.kept"))
+    assert named() == ["lineproof", "lineproof.kept"]  # from memory: it is not parsed again
+    code.write_text("X = 'lineproof.periods:Months'\n")
+    module.modules_named.cache_clear()
+    assert named() == ["lineproof.periods"]
+    memory.write_text("{")
+    assert named() == ["lineproof.periods"]

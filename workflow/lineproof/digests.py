@@ -14,6 +14,7 @@ from pathlib import Path
 
 from lineproof import store
 from lineproof.problems import KnownProblem, Problem
+from lineproof.provenance import modules_named
 
 # A file that changed this shortly before it was read may change again within one tick of the clock
 # that stamps it, and look the same: its digest is not remembered.
@@ -55,6 +56,28 @@ class Digests:
         if unmoved and time.time() - after.st_ctime > _SETTLED:
             self._seen[name] = [*_state(after), digest]
         return digest
+
+    def keep(self) -> None:
+        """Remember the files asked for since the start, and forget all others."""
+        if self._seen != self._known:
+            store.write_text(json.dumps(self._seen, indent=0, sort_keys=True), self._memory)
+
+
+class ModulesNamed:
+    """The modules that files of code name, remembered by the digest of their content: to parse them all takes longer
+    than all else that an idle start does."""
+
+    def __init__(self, memory: str | os.PathLike, digests: Digests) -> None:
+        self._memory, self._digests = Path(memory), digests
+        self._known: dict[str, list] = _remembered(self._memory)
+        self._seen: dict[str, list] = {}
+
+    def of(self, file: Path) -> list[str]:
+        """See `provenance.modules_named`."""
+        digest = self._digests.of(file)
+        if digest not in self._seen:
+            self._seen[digest] = self._known.get(digest) or modules_named(file)
+        return self._seen[digest]
 
     def keep(self) -> None:
         """Remember the files asked for since the start, and forget all others."""

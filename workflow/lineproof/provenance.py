@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import ast
 import re
+from collections.abc import Callable
 from functools import cache
 from pathlib import Path
 
@@ -12,19 +13,21 @@ WORKFLOW = PACKAGE.parent
 _PLACE = re.compile(r"^lineproof(?:\.\w+)+:\w+$")
 
 
-def code_of(script: Path) -> list[Path]:
+def code_of(script: Path, names_in: Callable[[Path], list[str]] | None = None) -> list[Path]:
     """The modules and templates a script reaches, itself included, sorted.
 
     Imports are followed wherever they stand, and so are registry entries ("lineproof.module:name"). A module of
-    a package that holds a folder `templates` depends on the templates as well.
+    a package that holds a folder `templates` depends on the templates as well. `names_in` gives the modules of ours
+    that a file names, where they are known already; by default it is read.
     """
+    names_in = names_in or modules_named
     seen: set[Path] = set()
     waiting = [script]
     while waiting:
         file = waiting.pop()
         if file not in seen:
             seen.add(file)
-            waiting += _imports(file)
+            waiting += [path for name in names_in(file) for path in _files(name)]
     for folder in {file.parent / "templates" for file in seen}:
         if folder.is_dir():
             seen.update(path for path in folder.rglob("*") if path.is_file())
@@ -32,7 +35,8 @@ def code_of(script: Path) -> list[Path]:
 
 
 @cache
-def _imports(file: Path) -> tuple[Path, ...]:
+def modules_named(file: Path) -> list[str]:
+    """The modules of ours that a file imports, or names in a registry, sorted."""
     names: set[str] = set()
     for node in ast.walk(ast.parse(file.read_text(encoding="utf-8"))):
         if isinstance(node, ast.Import):
@@ -46,10 +50,10 @@ def _imports(file: Path) -> tuple[Path, ...]:
             and _PLACE.match(node.value)
         ):
             names.add(node.value.split(":")[0])
-    ours = sorted(name for name in names if name.split(".")[0] == "lineproof")
-    return tuple(path for name in ours for path in _files(name))
+    return sorted(name for name in names if name.split(".")[0] == "lineproof")
 
 
+@cache
 def _files(name: str) -> list[Path]:
     """The module's file and the `__init__` of each package above it."""
     parts = name.split(".")

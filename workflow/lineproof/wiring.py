@@ -18,7 +18,7 @@ from typing import Any
 
 from lineproof import store
 from lineproof.analyses import ANALYSES
-from lineproof.digests import Digests
+from lineproof.digests import Digests, ModulesNamed
 from lineproof.facts import facts
 from lineproof.paper import exhibits
 from lineproof.provenance import WORKFLOW, code_of
@@ -68,8 +68,9 @@ class Wiring:
     def keep_digests(self) -> None:
         """Write the digests of code, pins and raw files, each file of them only where one has changed."""
         digests = Digests(self.path("digests/known.json"))
+        named = ModulesNamed(self.path("digests/named.json"), digests)
         for script in (WORKFLOW / "scripts").glob("*.py"):
-            files = code_of(script)
+            files = code_of(script, named.of)
             found = {str(file.relative_to(WORKFLOW)): digests.of(file) for file in files}
             self._keep(found, self.code(script.stem))
         self._keep(digests.of(WORKFLOW / "envs" / "requirements.txt"), self.pins)
@@ -77,6 +78,7 @@ class Wiring:
             for kept in self.raw_digests(place):
                 self._keep([digests.of(file) for file in source.files], kept)
         digests.keep()
+        named.keep()
 
     def _keep(self, content: Any, file: str) -> None:
         text = json.dumps(content, indent=1, ensure_ascii=False, sort_keys=True) + "\n"
