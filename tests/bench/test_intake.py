@@ -69,13 +69,14 @@ subperiods: {{full: {{}}}}
 """
 
 
-def measured(code: str, *arguments: str) -> tuple[float, float]:
-    """Wall seconds and peak memory in GiB of a Python program."""
+def measured(code: str, *arguments: str) -> tuple[float, float, float]:
+    """Wall seconds, CPU seconds and peak memory in GiB of a Python program."""
     timed = textwrap.dedent(
         f"""\
         import resource, sys
         exec(compile({code!r}, "timed", "exec"))
-        print(resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 2**20)
+        used = resource.getrusage(resource.RUSAGE_SELF)
+        print(used.ru_utime + used.ru_stime, used.ru_maxrss / 2**20)
         """
     )
     environ = {**os.environ, "PYTHONPATH": str(ROOT / "workflow")}
@@ -90,7 +91,8 @@ def measured(code: str, *arguments: str) -> tuple[float, float]:
     )
     taken = time.perf_counter() - began
     assert done.returncode == 0, done.stderr
-    return taken, float(done.stdout.split()[-1])
+    cpu, memory = done.stdout.split()[-2:]
+    return taken, float(cpu), float(memory)
 
 
 def compare(folder: Path, raw: str, n_securities: int, dates: np.ndarray, frequency: str) -> None:
@@ -101,16 +103,16 @@ def compare(folder: Path, raw: str, n_securities: int, dates: np.ndarray, freque
     study = folder / "study.yaml"
     study.write_text(STUDY.format(raw=raw, frequency=frequency), encoding="utf-8")
     (folder / "out").mkdir(exist_ok=True)
-    peer, peer_memory = measured(
+    peer, peer_cpu, peer_memory = measured(
         PEER, str(folder / raw), str(folder / "peer.parquet"), str(folder / "scratch")
     )
-    ours, memory = measured(OURS, str(study), str(folder / "out"))
+    ours, cpu, memory = measured(OURS, str(study), str(folder / "out"))
     counts = json.loads((folder / "out" / "intake.json").read_text(encoding="utf-8"))
     assert counts["rows_read"] == rows == counts["rows_kept"] + counts["rows_set_aside"]
     size = (folder / raw).stat().st_size / 2**30
     print(
         f"\n{rows:,} {frequency} rows, {raw} of {size:.1f} GiB: {ours:.1f} s, {ours / peer:.2f} × "
-        f"DuckDB ({peer:.1f} s); peak {memory:.2f} GiB, DuckDB {peer_memory:.2f} GiB"
+        f"DuckDB ({peer:.1f} s), {cpu / peer_cpu:.2f} × its CPU time; peak {memory:.2f} GiB, DuckDB {peer_memory:.2f} GiB"
     )
 
 
