@@ -112,7 +112,8 @@ def compare(folder: Path, raw: str, n_securities: int, dates: np.ndarray, freque
     size = (folder / raw).stat().st_size / 2**30
     print(
         f"\n{rows:,} {frequency} rows, {raw} of {size:.1f} GiB: {ours:.1f} s, {ours / peer:.2f} × "
-        f"DuckDB ({peer:.1f} s), {cpu / peer_cpu:.2f} × its CPU time; peak {memory:.2f} GiB, DuckDB {peer_memory:.2f} GiB"
+        f"DuckDB ({peer:.1f} s), {cpu / peer_cpu:.2f} × its CPU time; "
+        f"peak {memory:.2f} GiB, DuckDB {peer_memory:.2f} GiB"
     )
 
 

@@ -1,4 +1,4 @@
-"""Spoilt extracts, hundreds here and thousands in `tests/bench`: each ends in a panel that keeps its contract, or in one clear stop.
+"""Spoilt extracts, hundreds here and thousands in the benchmarks: each ends in a sound panel, or in one clear stop.
 
 Bytes are flipped, cut out, doubled, swapped, or replaced by what files like to hold instead. Never an error of ours,
 never a hang, never half an output.
