@@ -155,8 +155,8 @@ def _layout_findings(place: Place, options: dict[str, Any], names: str) -> list[
     if options.get("layout") == "wide":
         found += [
             ((*at, key), f"a wide file has no column for {key!r}", "remove it, or use layout: long")
-            for key in columns
-            if key != "date"
+            for key, theirs in columns.items()
+            if key != "date" and not (key == "return" and isinstance(theirs, dict))
         ]
     elif names:
         found += [

@@ -8,6 +8,7 @@ import numpy as np
 import pyarrow as pa
 import pyarrow.compute as pc
 
+from lineproof.intake.headers import where_is
 from lineproof.intake.stopping import stop
 
 _DECIMAL_COMMA = r"^[+-]?[0-9]*,[0-9]+$"
@@ -48,6 +49,5 @@ class DecimalComma:
             raise self._stop()
 
     def _stop(self) -> Exception:
-        where = f"{self._reading['label']}, column {self._reading['columns']['return']}"
         found = f"most numbers have a decimal comma, as in {self._least}"
-        return stop(where, found, "set decimal: comma")
+        return stop(where_is(self._reading, "return"), found, "set decimal: comma")

@@ -163,7 +163,8 @@ def _numbers(
     )
     if name == "return":
         taken.comma.add(block.columns[name], numbers.is_text, numbers.code >= 0)
-    said = _written(block, name, f"{reading['columns'][name]} is ")
+    theirs = reading["columns"].get(name)  # none in a wide file, whose raw rows name the column
+    said = _written(block, name, f"{theirs} is " if theirs else "")
     faults.note(numbers.is_text, 13, said)
     faults.note(numbers.is_not_finite, 14, said)
     taken.tally.add(7, numbers.had_thousands.sum())

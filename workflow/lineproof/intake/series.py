@@ -12,6 +12,7 @@ import pandas as pd
 
 from lineproof.addresses import refused_asset_names
 from lineproof.calendar import month_number
+from lineproof.intake.headers import where_is
 from lineproof.intake.reading import TextTable, read_text
 from lineproof.intake.riskless import check_riskless as check_riskless
 from lineproof.intake.riskless import riskless_return as riskless_return
@@ -56,7 +57,7 @@ def read_series(
     check_series_frequency(day, pd.factorize(asset)[0], frequency, reading)
     series = pd.DataFrame({"date": _dates(day, frequency), value: decimal})
     keys = ["date"]
-    if "asset" in reading["columns"]:
+    if "asset" in reading["columns"] or reading.get("layout") == "wide":
         keys = ["asset", "date"]
         series.insert(0, "asset", pd.Series(asset, dtype=str))
         _check_names(series["asset"].unique().tolist(), reading)
@@ -115,7 +116,7 @@ def _check_unit(decimal: np.ndarray, reading: dict[str, Any], frequency: str) ->
         f"read as {reading['unit']}, half of all returns exceed {100 * middle:.3g} % in size "
         f"and one in twenty exceeds {100 * high:.3g} %"
     )
-    raise stop(f"{reading['label']}, column {reading['columns']['return']}", found, change)
+    raise stop(where_is(reading, "return"), found, change)
 
 
 def _row_problems(
@@ -126,18 +127,21 @@ def _row_problems(
     value: str,
 ) -> list[Problem]:
     """A problem for each row that cannot be read, the first few of each kind."""
-    rows, theirs = table.rows, reading["columns"]
+    rows = table.rows
+    of_date, of_value = (
+        where_is(reading, name).removeprefix(reading["label"]) for name in ("date", value)
+    )
     unreadable = numbers.is_text | numbers.is_not_finite
     kinds = (
         ("", table.rejects, "it has {}", "mend the row"),
         (
-            f", column {theirs['date']}",
+            of_date,
             rows.loc[undated, ["line", "date"]],
             f"{{!r}} is not a date of the form {reading['dates']}",
             "mend it, or set dates:",
         ),
         (
-            f", column {theirs[value]}",
+            of_value,
             rows.loc[unreadable, ["line", value]],
             "{!r} is not a number",
             "mend it, or list it under missing:",
@@ -161,7 +165,7 @@ def _check_names(names: list[str], reading: dict[str, Any]) -> None:
         change = (
             "these names stand for other rows of the estimates, and / parts an address: rename them"
         )
-        raise stop(f"{reading['label']}, column {reading['columns']['asset']}", found, change)
+        raise stop(where_is(reading, "asset"), found, change)
 
 
 def _check_periods(series: pd.DataFrame, keys: list[str], label: str, frequency: str) -> None:

@@ -14,6 +14,7 @@ from typing import Any
 import numpy as np
 
 from lineproof.intake.faults import N_EXAMPLES, Flag
+from lineproof.intake.headers import where_is
 from lineproof.intake.scale import ScaleEvidence
 from lineproof.intake.stopping import counted, stop
 from lineproof.periods import Months
@@ -71,7 +72,7 @@ def judge_unit(
         return
     change = _unit_to_set(evidence, reading["unit"] == "decimal", _SCALE[frequency])
     if change:
-        where = f"{reading['label']}, column {reading['columns'].get('return', 'return')}"
+        where = where_is(reading, "return")
         raise stop(
             where, f"read as {reading['unit']}, {said_quantiles(evidence, frequency)}", change
         )
