@@ -22,6 +22,7 @@ from lineproof.intake.values import Numbers, as_decimal, to_numbers
 from lineproof.problems import KnownProblem, Problem
 
 _FEWEST = 30  # values on which to judge a unit
+_RARELY_NEGATIVE = 0.01
 # Half of the sizes of all returns above the first: not decimal. Not one in twenty above the second: not in per cent.
 # Each is about ten times away from any market's returns, and from those in the other unit.
 _SIZES = {"monthly": (0.5, 0.005), "daily": (0.1, 0.0005)}
@@ -108,6 +109,11 @@ def _check_unit(decimal: np.ndarray, reading: dict[str, Any], frequency: str) ->
     if middle > largest_middle:
         is_decimal = reading["unit"] == "decimal"
         change = "set unit: percent" if is_decimal else "is this the column of the returns?"
+        if (decimal < 0).sum() < _RARELY_NEGATIVE * len(given):
+            change = (
+                "hardly any is negative: does the column hold the levels of an index? "
+                "Deliver its returns, level(t)/level(t−1) − 1"
+            )
     elif high < smallest_high and reading["unit"] == "percent":
         change = "set unit: decimal"
     else:
