@@ -57,7 +57,8 @@ def scale_findings(
     found = f"read as {reading['unit']}, {found}"
     verdict = "too few to judge" if evidence.n < _FEWEST else f"{reading['unit']}, as declared"
     if reading.get("return_from"):
-        found, verdict = f"computed from the {reading['return_from']}", "no unit to judge"
+        found = f"computed from the {reading['return_from']}"
+        return [{"what": "unit of the returns", "found": found, "verdict": "no unit to judge"}]
     return [
         {"what": "unit of the returns", "found": found, "verdict": verdict},
         {
