@@ -19,6 +19,7 @@ HEAD = "The raw data cannot be used; nothing was written.\n  returns.csv, column
 FORMS = [
     *("%Y-%m-%d", "%Y/%m/%d", "%Y.%m.%d", "%Y%m%d", "%d%b%Y", "%d-%b-%Y", "%d %b %Y", "%d %B %Y"),
     *("%Y-%m-%d %H:%M:%S", "%Y-%m-%dT%H:%M:%S"),
+    *("%b %d %Y", "%b %d, %Y", "%B %d, %Y"),
     *("%Y%m", "%Y-%m", "%Y/%m", "%m/%Y", "%m-%Y", "%m.%Y", "%b %Y", "%b-%Y"),
 ]
 EITHER = ["%d/%m/%Y", "%m/%d/%Y", "%d.%m.%Y", "%m-%d-%Y"]
@@ -89,6 +90,14 @@ def test_what_has_no_form_is_shown() -> None:
         "    → set dates:, as in %Y-%m-%d"
     )
     assert refused("NA", "").startswith("no row has a date\n")
+
+
+@pytest.mark.parametrize("texts", [("1", "17", "9"), ("1989", "1990", "2001")])
+def test_a_column_of_days_or_of_years_alone_is_a_part(texts: tuple[str, ...]) -> None:
+    assert refused(*texts) == (
+        f"it holds a part of a date, as {texts[0]} or {texts[-1]}\n"
+        "    → make one column of the whole date, as in 2000-01-31"
+    )
 
 
 def test_a_few_rows_that_do_not_fit_are_left_to_be_set_aside() -> None:
