@@ -35,7 +35,8 @@ INTAKE: dict[str, Any] = {
     **dict.fromkeys(("rows_read", "rows_kept"), 1000),
     **dict.fromkeys(("rows_set_aside", "exact_duplicates", "rows_screened"), 0),
     "faults": [],
-    "screens": [], "span": [],
+    "screens": [],
+    "span": [],
 }
 
 

@@ -75,7 +75,9 @@ def test_an_order_that_contradicts_itself_stops() -> None:
 
 
 @pytest.mark.fault(9)
-@pytest.mark.parametrize("texts", [("31/01/01", "28/02/01"), ("01-01-31",), ("310101", "280299")])
+@pytest.mark.parametrize(
+    "texts", [("31/01/01", "28/02/01"), ("01-01-31",), ("310101", "280299"), ("1/86", "11/86")]
+)
 def test_two_digit_years_are_refused(texts: tuple[str, ...]) -> None:
     first = min(texts)
     assert refused(*texts) == (
@@ -92,11 +94,13 @@ def test_what_has_no_form_is_shown() -> None:
     assert refused("NA", "").startswith("no row has a date\n")
 
 
-@pytest.mark.parametrize("texts", [("1", "17", "9"), ("1989", "1990", "2001")])
-def test_a_column_of_days_or_of_years_alone_is_a_part(texts: tuple[str, ...]) -> None:
+@pytest.mark.parametrize("texts", [("1", "17", "9"), ("1989", "1990", "2001"), ("1", "254", "40")])
+def test_numbers_that_are_no_dates(texts: tuple[str, ...]) -> None:
+    """Days or years alone, and numbers of rows."""
+    first, *_, last = sorted(texts)
     assert refused(*texts) == (
-        f"it holds a part of a date, as {texts[0]} or {texts[-1]}\n"
-        "    → make one column of the whole date, as in 2000-01-31"
+        f"it holds numbers that are no dates, as {first} and {last}\n"
+        "    → name the column of the dates; of a date in parts make one column, as in 2000-01-31"
     )
 
 

@@ -16,8 +16,10 @@ from lineproof.intake.values import YEARS
 _MOST = 200_000  # distinct dates; 1800 to 2200 has 146,097 days
 _SHARE = 0.8  # of the distinct texts that must be of one form; the rest are rows to be set aside
 _SEPARATED = re.compile(r"(\d{1,2})([/.-])(\d{1,2})\2(\d{4})")
-_TWO_DIGIT_YEAR = re.compile(r"\d{1,2}([/.-])\d{1,2}\1\d{2}|\d{2}([/.-])\d{1,2}\2\d{1,2}")
-_PART_OF_A_DATE = re.compile(r"\d{1,2}|1[89]\d{2}|2[01]\d{2}")  # a day, a month or a year
+_TWO_DIGIT_YEAR = re.compile(
+    r"\d{1,2}([/.-])\d{1,2}\1\d{2}|\d{2}([/.-])\d{1,2}\2\d{1,2}|\d{1,2}[/.-]\d{2}"
+)
+_NO_DATE = re.compile(r"\d{1,5}")  # a day, a month or a year alone, or the number of a row
 _SIX_DIGITS = re.compile(r"\d{6}")
 
 # Forms that leave no doubt, by what they look like.
@@ -154,10 +156,13 @@ def _no_form(given: list[str], where: str) -> Exception:
     if len(short) >= _SHARE * len(given):
         found = f"its years have two digits, as in {short[0]}, which leaves the century open"
         return stop(where, found, "write years with four digits, or set dates: with %y")
-    parts = [text for text in given if _PART_OF_A_DATE.fullmatch(text)]
-    if len(parts) >= _SHARE * len(given):
-        found = f"it holds a part of a date, as {parts[0]} or {parts[-1]}"
-        return stop(where, found, "make one column of the whole date, as in 2000-01-31")
+    numbers = [text for text in given if _NO_DATE.fullmatch(text)]
+    if len(numbers) >= _SHARE * len(given):
+        found = f"it holds numbers that are no dates, as {numbers[0]} and {numbers[-1]}"
+        change = (
+            "name the column of the dates; of a date in parts make one column, as in 2000-01-31"
+        )
+        return stop(where, found, change)
     step = max(1, len(given) // 3)
     shown = ", ".join(repr(text) for text in given[::step][:3])
     return stop(where, f"its dates have no one form, as in {shown}", "set dates:, as in %Y-%m-%d")
