@@ -36,6 +36,7 @@ INTAKE: dict[str, Any] = {
     **dict.fromkeys(("rows_set_aside", "exact_duplicates", "rows_screened"), 0),
     "faults": [],
     "screens": [],
+    "span": [],
 }
 
 

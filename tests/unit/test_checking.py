@@ -46,7 +46,7 @@ EXPECTED = """\
                    line 11
 
     Rows that fail a screen, in order; they are kept, but not ranked on:
-              1  of 1 security: not “price at least 1”
+              1  row of 1 security: not “price at least 1”
 
     Securities that leave:
               0  with a final return

@@ -19,6 +19,7 @@ HEAD = "The raw data cannot be used; nothing was written.\n  returns.csv, column
 FORMS = [
     *("%Y-%m-%d", "%Y/%m/%d", "%Y.%m.%d", "%Y%m%d", "%d%b%Y", "%d-%b-%Y", "%d %b %Y", "%d %B %Y"),
     *("%Y-%m-%d %H:%M:%S", "%Y-%m-%dT%H:%M:%S"),
+    *("%b %d %Y", "%b %d, %Y", "%B %d, %Y"),
     *("%Y%m", "%Y-%m", "%Y/%m", "%m/%Y", "%m-%Y", "%m.%Y", "%b %Y", "%b-%Y"),
 ]
 EITHER = ["%d/%m/%Y", "%m/%d/%Y", "%d.%m.%Y", "%m-%d-%Y"]
@@ -74,7 +75,9 @@ def test_an_order_that_contradicts_itself_stops() -> None:
 
 
 @pytest.mark.fault(9)
-@pytest.mark.parametrize("texts", [("31/01/01", "28/02/01"), ("01-01-31",), ("310101", "280299")])
+@pytest.mark.parametrize(
+    "texts", [("31/01/01", "28/02/01"), ("01-01-31",), ("310101", "280299"), ("1/86", "11/86")]
+)
 def test_two_digit_years_are_refused(texts: tuple[str, ...]) -> None:
     first = min(texts)
     assert refused(*texts) == (
@@ -89,6 +92,16 @@ def test_what_has_no_form_is_shown() -> None:
         "    → set dates:, as in %Y-%m-%d"
     )
     assert refused("NA", "").startswith("no row has a date\n")
+
+
+@pytest.mark.parametrize("texts", [("1", "17", "9"), ("1989", "1990", "2001"), ("1", "254", "40")])
+def test_numbers_that_are_no_dates(texts: tuple[str, ...]) -> None:
+    """Days or years alone, and numbers of rows."""
+    first, *_, last = sorted(texts)
+    assert refused(*texts) == (
+        f"it holds numbers that are no dates, as {first} and {last}\n"
+        "    → name the column of the dates; of a date in parts make one column, as in 2000-01-31"
+    )
 
 
 def test_a_few_rows_that_do_not_fit_are_left_to_be_set_aside() -> None:

@@ -232,6 +232,17 @@ def test_first_and_last_differ_where_the_rows_do(tmp_path: Path) -> None:
 
 
 @pytest.mark.fault(6)
+@pytest.mark.parametrize("mark", ["%", " %"])
+def test_per_cent_signs(tmp_path: Path, mark: str) -> None:
+    text = lines(f"A,2000-01-31,1.5{mark},,1,1", f"A,2000-02-29,-2{mark},,1,1")
+    assert refused(tmp_path, text) == (
+        "The raw data cannot be used; nothing was written.\n"
+        f"  raw/returns.csv, column ret: most numbers end in a per cent sign, as in -2{mark}\n"
+        "    → remove the signs, and set unit: percent"
+    )
+
+
+@pytest.mark.fault(6)
 def test_decimal_comma(tmp_path: Path) -> None:
     rows = ["A;2000-01-31;0,015;;1;1", "A;2000-02-29;-0,02;;1;1"]
     text = lines(*rows, header=examples.HEADER.replace(",", ";"))

@@ -5,7 +5,8 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from lineproof.intake.trading_days import check_calendar, days_of_panel
+from lineproof.intake.trading_days import check_calendar, days_of_panel, whole_months
+from lineproof.periods import Months
 from lineproof.problems import KnownProblem
 
 EVERY = np.arange("2001-01-01", "2001-03-01", dtype="datetime64[D]")
@@ -65,3 +66,21 @@ def test_the_calendar_of_a_built_market() -> None:
     counts = counts_of(d_2001_01_20=3, d_2001_01_24=260, d_2001_01_25=240)
     expected = WEEKDAYS[np.datetime64("2001-01-25") != WEEKDAYS]
     assert days_of_panel(EVERY, counts).tolist() == expected.tolist()
+
+
+@pytest.mark.parametrize(
+    ("first", "last", "whole"),
+    [
+        ("2001-01-01", "2001-03-30", ("2001-01", "2001-03")),
+        ("2001-01-04", "2001-03-27", ("2001-01", "2001-03")),  # three weekdays may be holidays
+        ("2001-01-05", "2001-03-26", ("2001-02", "2001-02")),
+        ("2001-02-15", "2001-03-01", ("2001-03", "2001-02")),
+    ],
+)
+def test_a_month_delivered_in_part_is_none(first: str, last: str, whole: tuple[str, str]) -> None:
+    """A misdated row far away does not begin the calendar."""
+    days = np.arange(np.datetime64(first), np.datetime64(last) + 1)
+    days = np.append(np.datetime64("1999-12-01"), days[np.is_busday(days)])
+    counts = np.append(1, np.full(len(days) - 1, 50))
+    found = whole_months(days, counts)
+    assert found == tuple(Months().number(np.array(whole, "datetime64[D]")).tolist())

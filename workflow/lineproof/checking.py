@@ -136,8 +136,8 @@ def _fault(fault: FaultRecord) -> list[str]:
 
 
 def _screen(screen: ScreenRecord) -> list[str]:
-    whose = _securities(screen["n_securities"])
-    return _counted(screen["n_rows"], f"of {whose}: not “{screen['label']}”")
+    n, whose = screen["n_rows"], _securities(screen["n_securities"])
+    return _counted(n, f"{'row' if n == 1 else 'rows'} of {whose}: not “{screen['label']}”")
 
 
 def _delisting(found: DelistingRecord | None, period: str) -> list[str]:

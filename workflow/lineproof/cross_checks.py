@@ -232,7 +232,8 @@ def _column_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     mapped |= {("portfolios", name): options for name, options in content["portfolios"].items()}
     found: list[Finding] = []
     columns = content["data"]["returns"]["columns"]
-    if isinstance(columns.get("return"), dict) and "price" not in columns:
+    is_wide = content["data"]["returns"]["layout"] == "wide"
+    if isinstance(columns.get("return"), dict) and "price" not in columns and not is_wide:
         said = "returns from prices need a price column, and there is none"
         change = "add price under data.returns.columns"
         found.append((("data", "returns", "columns", "return"), said, change))

@@ -130,6 +130,8 @@ def _in_words(error: ValidationError) -> list[Finding]:
         case "type":
             kinds = [rule] if isinstance(rule, str) else rule
             wanted = f"give {' or '.join(_KINDS[kind] for kind in kinds)}"
+            if place[-1:] == ("return",) and isinstance(value, dict):
+                wanted = "name a column of returns; only those of data.returns are made from prices"
             if "pattern" in schema and "description" in schema:
                 wanted = schema["description"]
             shown = "something else" if schema.get("is_secret") else _shown(value)

@@ -67,8 +67,7 @@ def sort_single_window(
     formed = _formations(candidates, groups)
     if formed.empty:
         most = candidates["date"].value_counts().max() if len(candidates) else 0
-        found = f"{groups} groups, but at most {most} securities can be ranked in a formation month"
-        raise _not_formed(f"{name}.groups", found, "use fewer groups, or check the screens")
+        raise _not_formed(f"{name}.groups", *_too_few(groups, most))
     held = _held(panel, rows, formed, hold)
     if held.empty:
         last = Months().name(int(formed["formed_month"].max()))
@@ -85,6 +84,17 @@ def sort_single_window(
 
 
 _RETURN_COLUMNS = ["asset", "date", "excess_return", "n_members", "mean_size", "ante_beta"]
+
+
+def _too_few(groups: int, most: int) -> tuple[str, str]:
+    """What was found where at most so many securities can be ranked in any formation month, and what to change."""
+    if most == 0:
+        found = "no security has an estimate and passes the screens in any formation month"
+        return found, "lower min of the betas, lengthen the data, or check the screens"
+    whose = "1 security" if most == 1 else f"{most} securities"
+    found = f"{groups} groups, but at most {whose} can be ranked in a formation month"
+    fewer = "use fewer groups, or check the screens"
+    return found, fewer if most > 1 else "deliver more securities, or check the screens"
 
 
 def _not_formed(option: str, found: str, change: str) -> KnownProblem:

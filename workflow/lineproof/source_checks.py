@@ -45,7 +45,7 @@ def source_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
             found += _file_findings(place, options["file"], file.path.parent, made_in)
         found += _format_findings(place, options, file.path.parent)
         found += _layout_findings(place, options, names)
-    return found
+    return found + _series_among_securities(content["data"])
 
 
 def _origin_findings(place: Place, options: dict[str, Any]) -> list[Finding]:
@@ -155,8 +155,8 @@ def _layout_findings(place: Place, options: dict[str, Any], names: str) -> list[
     if options.get("layout") == "wide":
         found += [
             ((*at, key), f"a wide file has no column for {key!r}", "remove it, or use layout: long")
-            for key in columns
-            if key != "date"
+            for key, theirs in columns.items()
+            if key != "date" and not (key == "return" and isinstance(theirs, dict))
         ]
     elif names:
         found += [
@@ -167,4 +167,25 @@ def _layout_findings(place: Place, options: dict[str, Any], names: str) -> list[
     if options.get("leave_out") and options.get("layout") != "wide":
         said = "only a wide file has columns to leave out"
         found.append(((*place, "leave_out"), said, "remove it, or set layout: wide"))
+    return found
+
+
+def _series_among_securities(data: dict[str, Any]) -> list[Finding]:
+    """Columns of the market or the riskless rate in a wide file of returns, where each other column is a security."""
+    returns, found = data["returns"], []
+    if returns.get("layout") != "wide" or "file" not in returns:
+        return []
+    for name in ("market", "riskless"):
+        options = data.get(name, {})
+        if set(given_files(options.get("file", []))) & set(given_files(returns["file"])):
+            apart = {*returns.get("leave_out", ()), returns["columns"]["date"]}
+            found += [
+                (
+                    ("data", "returns"),
+                    f"column {column!r} of {name} would be read as a security",
+                    "add it under leave_out",
+                )
+                for column in options.get("columns", {}).values()
+                if isinstance(column, str) and column not in apart
+            ]
     return found

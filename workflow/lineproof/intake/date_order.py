@@ -16,7 +16,10 @@ from lineproof.intake.values import YEARS
 _MOST = 200_000  # distinct dates; 1800 to 2200 has 146,097 days
 _SHARE = 0.8  # of the distinct texts that must be of one form; the rest are rows to be set aside
 _SEPARATED = re.compile(r"(\d{1,2})([/.-])(\d{1,2})\2(\d{4})")
-_TWO_DIGIT_YEAR = re.compile(r"\d{1,2}([/.-])\d{1,2}\1\d{2}|\d{2}([/.-])\d{1,2}\2\d{1,2}")
+_TWO_DIGIT_YEAR = re.compile(
+    r"\d{1,2}([/.-])\d{1,2}\1\d{2}|\d{2}([/.-])\d{1,2}\2\d{1,2}|\d{1,2}[/.-]\d{2}"
+)
+_NO_DATE = re.compile(r"\d{1,5}")  # a day, a month or a year alone, or the number of a row
 _SIX_DIGITS = re.compile(r"\d{6}")
 
 # Forms that leave no doubt, by what they look like.
@@ -37,6 +40,9 @@ _CLEAR = {
     "%d-%b-%Y": r"\d{1,2}-[A-Za-z]{3}-\d{4}",
     "%d %b %Y": r"\d{1,2} [A-Za-z]{3} \d{4}",
     "%d %B %Y": r"\d{1,2} [A-Za-z]+ \d{4}",
+    "%b %d %Y": r"[A-Za-z]{3} \d{1,2} \d{4}",
+    "%b %d, %Y": r"[A-Za-z]{3} \d{1,2}, \d{4}",
+    "%B %d, %Y": r"[A-Za-z]+ \d{1,2}, \d{4}",
     "%b %Y": r"[A-Za-z]{3} \d{4}",
     "%b-%Y": r"[A-Za-z]{3}-\d{4}",
     "%B %Y": r"[A-Za-z]+ \d{4}",
@@ -150,6 +156,13 @@ def _no_form(given: list[str], where: str) -> Exception:
     if len(short) >= _SHARE * len(given):
         found = f"its years have two digits, as in {short[0]}, which leaves the century open"
         return stop(where, found, "write years with four digits, or set dates: with %y")
+    numbers = [text for text in given if _NO_DATE.fullmatch(text)]
+    if len(numbers) >= _SHARE * len(given):
+        found = f"it holds numbers that are no dates, as {numbers[0]} and {numbers[-1]}"
+        change = (
+            "name the column of the dates; of a date in parts make one column, as in 2000-01-31"
+        )
+        return stop(where, found, change)
     step = max(1, len(given) // 3)
     shown = ", ".join(repr(text) for text in given[::step][:3])
     return stop(where, f"its dates have no one form, as in {shown}", "set dates:, as in %Y-%m-%d")

@@ -15,6 +15,7 @@ from lineproof.intake.decimal_comma import DecimalComma
 from lineproof.intake.faults import Tally
 from lineproof.intake.runs import Columns, Names, SortedRuns
 from lineproof.intake.setting_aside import FirstFault, SetAside
+from lineproof.intake.unread_dates import UnreadDates
 from lineproof.intake.values import (
     Numbers,
     as_decimal,
@@ -53,6 +54,7 @@ class Taken:
     rows_by_day: np.ndarray = field(default_factory=lambda: np.zeros(_N_DAYS, np.int64))
     names: Names = field(default_factory=Names)
     last_day: np.ndarray = field(default_factory=lambda: np.zeros(0, np.int32))
+    unread_dates: UnreadDates = field(default_factory=UnreadDates)
 
     def last_seen(self, names: Sequence[str]) -> np.ndarray:
         """The last day of each security in the raw files, rows set aside included: datetime64[D]."""
@@ -96,6 +98,7 @@ def take_rows(
                 continue
             _take_block(block, number, reading, taken, see)
     comma.judge()
+    taken.unread_dates.judge(reading)
     return taken
 
 
@@ -107,6 +110,7 @@ def _take_block(
     faults.note(_is_blank(code, names), 23)
     day = to_days(block.columns["date"], reading["dates"])
     faults.note(np.isnat(day), 8, _written(block, "date"))
+    taken.unread_dates.add(block.columns["date"], np.isnat(day))
     columns: Columns = {
         "day": day.astype(np.int64).clip(-(2**31), 2**31 - 1).astype(np.int32),
         "position": block.position,
@@ -163,7 +167,8 @@ def _numbers(
     )
     if name == "return":
         taken.comma.add(block.columns[name], numbers.is_text, numbers.code >= 0)
-    said = _written(block, name, f"{reading['columns'][name]} is ")
+    theirs = reading["columns"].get(name)  # none in a wide file, whose raw rows name the column
+    said = _written(block, name, f"{theirs} is " if theirs else "")
     faults.note(numbers.is_text, 13, said)
     faults.note(numbers.is_not_finite, 14, said)
     taken.tally.add(7, numbers.had_thousands.sum())

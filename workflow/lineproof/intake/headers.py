@@ -28,6 +28,12 @@ class Mapping:
         return sorted({*self.ours.values(), *(self.cells or {})})
 
 
+def where_is(reading: dict[str, Any], ours: str) -> str:
+    """A file and one of its columns, for messages; in a wide file returns and prices have no column of their own."""
+    theirs = reading["columns"].get(ours)
+    return reading["label"] if theirs is None else f"{reading['label']}, column {theirs}"
+
+
 def match(header: list[str], reading: dict[str, Any], label: str) -> Mapping:
     """The position of each of our columns, after checking that every name is there, and once.
 

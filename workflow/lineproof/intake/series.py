@@ -12,6 +12,7 @@ import pandas as pd
 
 from lineproof.addresses import refused_asset_names
 from lineproof.calendar import month_number
+from lineproof.intake.headers import where_is
 from lineproof.intake.reading import TextTable, read_text
 from lineproof.intake.riskless import check_riskless as check_riskless
 from lineproof.intake.riskless import riskless_return as riskless_return
@@ -21,6 +22,7 @@ from lineproof.intake.values import Numbers, as_decimal, to_numbers
 from lineproof.problems import KnownProblem, Problem
 
 _FEWEST = 30  # values on which to judge a unit
+_RARELY_NEGATIVE = 0.01
 # Half of the sizes of all returns above the first: not decimal. Not one in twenty above the second: not in per cent.
 # Each is about ten times away from any market's returns, and from those in the other unit.
 _SIZES = {"monthly": (0.5, 0.005), "daily": (0.1, 0.0005)}
@@ -56,7 +58,7 @@ def read_series(
     check_series_frequency(day, pd.factorize(asset)[0], frequency, reading)
     series = pd.DataFrame({"date": _dates(day, frequency), value: decimal})
     keys = ["date"]
-    if "asset" in reading["columns"]:
+    if "asset" in reading["columns"] or reading.get("layout") == "wide":
         keys = ["asset", "date"]
         series.insert(0, "asset", pd.Series(asset, dtype=str))
         _check_names(series["asset"].unique().tolist(), reading)
@@ -107,6 +109,11 @@ def _check_unit(decimal: np.ndarray, reading: dict[str, Any], frequency: str) ->
     if middle > largest_middle:
         is_decimal = reading["unit"] == "decimal"
         change = "set unit: percent" if is_decimal else "is this the column of the returns?"
+        if (decimal < 0).sum() < _RARELY_NEGATIVE * len(given):
+            change = (
+                "hardly any is negative: does the column hold the levels of an index? "
+                "Deliver its returns, level(t)/level(t−1) − 1"
+            )
     elif high < smallest_high and reading["unit"] == "percent":
         change = "set unit: decimal"
     else:
@@ -115,7 +122,7 @@ def _check_unit(decimal: np.ndarray, reading: dict[str, Any], frequency: str) ->
         f"read as {reading['unit']}, half of all returns exceed {100 * middle:.3g} % in size "
         f"and one in twenty exceeds {100 * high:.3g} %"
     )
-    raise stop(f"{reading['label']}, column {reading['columns']['return']}", found, change)
+    raise stop(where_is(reading, "return"), found, change)
 
 
 def _row_problems(
@@ -126,18 +133,21 @@ def _row_problems(
     value: str,
 ) -> list[Problem]:
     """A problem for each row that cannot be read, the first few of each kind."""
-    rows, theirs = table.rows, reading["columns"]
+    rows = table.rows
+    of_date, of_value = (
+        where_is(reading, name).removeprefix(reading["label"]) for name in ("date", value)
+    )
     unreadable = numbers.is_text | numbers.is_not_finite
     kinds = (
         ("", table.rejects, "it has {}", "mend the row"),
         (
-            f", column {theirs['date']}",
+            of_date,
             rows.loc[undated, ["line", "date"]],
             f"{{!r}} is not a date of the form {reading['dates']}",
             "mend it, or set dates:",
         ),
         (
-            f", column {theirs[value]}",
+            of_value,
             rows.loc[unreadable, ["line", value]],
             "{!r} is not a number",
             "mend it, or list it under missing:",
@@ -161,7 +171,7 @@ def _check_names(names: list[str], reading: dict[str, Any]) -> None:
         change = (
             "these names stand for other rows of the estimates, and / parts an address: rename them"
         )
-        raise stop(f"{reading['label']}, column {reading['columns']['asset']}", found, change)
+        raise stop(where_is(reading, "asset"), found, change)
 
 
 def _check_periods(series: pd.DataFrame, keys: list[str], label: str, frequency: str) -> None:

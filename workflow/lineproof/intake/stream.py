@@ -27,9 +27,11 @@ from lineproof.intake.screens import Screens
 from lineproof.intake.second_pass import Rules, Tracked, chunks
 from lineproof.intake.stopping import counted
 from lineproof.intake.thin import judge_thin_periods
+from lineproof.intake.trading_days import whole_months
 from lineproof.intake.unit import scale_findings
 from lineproof.intake.unit_by_security import UnitBySecurity
 from lineproof.intake.values import missing_codes
+from lineproof.periods import Months
 from lineproof.problems import KnownProblem, Problem
 
 _NOTHING_LEFT = "Nothing is left to study."
@@ -74,6 +76,7 @@ class Intake:
         self._delivered = supplied.delivered(kinds.delivered, days, counts)
         self._rates = supplied.monthly(days) if kinds.compounds else self._delivered
         self._market_is = supplied.market_is
+        self._whole = whole_months(days, counts) if kinds.compounds else None
         periods = self._delivered.span.periods
         n = np.zeros(len(files), np.int64)
         self._tracked = Tracked(n, n.copy())
@@ -149,10 +152,11 @@ class Intake:
         return pieces
 
     def _within(self, months: Compounded) -> Compounded:
-        """The months that the study has: those with a market and a riskless rate."""
-        span = self._rates.span
+        """The months that the study has: whole ones with a market and a riskless rate."""
+        span, whole = self._rates.span, self._whole
+        assert whole is not None
         period = months.months.period
-        mask = (period >= span.first) & (period <= span.last)
+        mask = (period >= max(span.first, whole[0])) & (period <= min(span.last, whole[1]))
         return Compounded(months.months.only(mask), months.last[mask], months.n_days[mask])
 
     def _piece(
@@ -351,7 +355,21 @@ class Intake:
                 f"{counted(n, 'row')} of returns dated after {name(rates.span.last)}, where {rates.ends} ends: "
                 "the study ends there"
             )
-        return said
+        return said + self._partial_months()
+
+    def _partial_months(self) -> list[str]:
+        """What is to be said of a first or last month that days were delivered of, but not enough."""
+        if self._whole is None:
+            return []
+        days = self._taken.days[0]
+        held = Months().number(days[[0, -1]]).tolist()
+        return [
+            f"{Months().name(at)} is delivered in part: its days are kept, but make no month"
+            for at, is_part in zip(
+                held, (held[0] < self._whole[0], held[1] > self._whole[1]), strict=True
+            )
+            if is_part
+        ]
 
 
 class _Counts:

@@ -4,9 +4,12 @@ from __future__ import annotations
 
 import numpy as np
 
+from lineproof.intake.riskless import cut_off
 from lineproof.intake.stopping import counted, few, stop
+from lineproof.periods import Months
 
 _AROUND = 10  # days before and after
+_EDGE = 60  # days at either end, enough to know the usual number of securities
 _SHARE_TRADING = 0.5  # of the usual number of securities
 
 
@@ -55,6 +58,20 @@ def days_of_panel(days: np.ndarray, counts: np.ndarray) -> np.ndarray:
     days, counts = days[present], counts[present]
     usual = np.array([_median_around(counts, i, leave_out=True) for i in range(len(days))])
     return days[counts >= _SHARE_TRADING * usual]
+
+
+def whole_months(days: np.ndarray, counts: np.ndarray) -> tuple[int, int]:
+    """The first and the last month, as `Months` numbers them, that days of raw returns cover; see `days_of_panel`.
+
+    A first or last month of which more than three weekdays are missing is no month: its return would be that of a few
+    days. The first is later than the last where none is whole.
+    """
+    head = days_of_panel(days[:_EDGE], counts[:_EDGE])[0]
+    tail = days_of_panel(days[-_EDGE:], counts[-_EDGE:])[-1]
+    begins = head.astype("datetime64[M]").astype("datetime64[D]")
+    ends = (tail.astype("datetime64[M]") + 1).astype("datetime64[D]")
+    first, last = Months().number(np.array([head, tail])).tolist()
+    return first + (cut_off(begins, head) > 0), last - (cut_off(tail + 1, ends) > 0)
 
 
 def _counts_on(market_days: np.ndarray, days: np.ndarray, counts: np.ndarray) -> np.ndarray:

@@ -14,6 +14,7 @@ from typing import Any
 import numpy as np
 
 from lineproof.intake.faults import N_EXAMPLES, Flag
+from lineproof.intake.headers import where_is
 from lineproof.intake.scale import ScaleEvidence
 from lineproof.intake.stopping import counted, stop
 from lineproof.periods import Months
@@ -24,6 +25,14 @@ _SMALL_TAIL = 0.005  # a month; not one in twenty exceeds it: not in per cent
 _UNSIGNED_MIDDLE, _FEWEST_UNSIGNED = 0.15, 100  # a month; if hardly any is negative
 _RARELY_NEGATIVE = 0.01
 _SHARE_IMPOSSIBLE, _FEWEST_IMPOSSIBLE, _ONE_CODE = 0.01, 20, 0.5  # losses of more than everything
+_PRICES = (
+    "hardly any is negative: does the column hold prices, or 1 + return? "
+    "For prices, name their column under price: and set return: {from: price}"
+)
+_WIDE_PRICES = (
+    "hardly any is negative: do the cells hold prices, or 1 + return? "
+    "For prices, set return: {from: price} under columns"
+)
 _SCALE = {"monthly": 1.0, "daily": 21**-0.5}
 
 OTHER_UNIT = 30.0  # ratio; a crisis multiplies sizes by ten at most, another unit by 100
@@ -45,13 +54,13 @@ def scale_findings(
 ) -> list[dict[str, str]]:
     """What the judges looked at, in words for the data report: what, found, verdict. `stretches` is their flag."""
     found = said_quantiles(evidence) if evidence.n else "no return but zeros"
-    few_rows = evidence.n < _FEWEST
+    found = f"read as {reading['unit']}, {found}"
+    verdict = "too few to judge" if evidence.n < _FEWEST else f"{reading['unit']}, as declared"
+    if reading.get("return_from"):
+        found = f"computed from the {reading['return_from']}"
+        return [{"what": "unit of the returns", "found": found, "verdict": "no unit to judge"}]
     return [
-        {
-            "what": "unit of the returns",
-            "found": f"read as {reading['unit']}, {found}",
-            "verdict": "too few to judge" if few_rows else f"{reading['unit']}, as declared",
-        },
+        {"what": "unit of the returns", "found": found, "verdict": verdict},
         {
             "what": "the same unit in every month",
             "found": "; ".join(stretches.examples) or "no month stands out",
@@ -70,8 +79,10 @@ def judge_unit(
     if evidence.n < _FEWEST:
         return
     change = _unit_to_set(evidence, reading["unit"] == "decimal", _SCALE[frequency])
+    if change == _PRICES and reading.get("layout") == "wide":
+        change = _WIDE_PRICES
     if change:
-        where = f"{reading['label']}, column {reading['columns'].get('return', 'return')}"
+        where = where_is(reading, "return")
         raise stop(
             where, f"read as {reading['unit']}, {said_quantiles(evidence, frequency)}", change
         )
@@ -95,10 +106,7 @@ def _unit_to_set(evidence: ScaleEvidence, is_decimal: bool, scale: float) -> str
     surely_above = evidence.quantile(max(0.0, 0.5 - 1.5 / n**0.5)) > _LARGE_MIDDLE * scale
     high = evidence.quantile(min(1.0, 0.95 + 0.65 / n**0.5))
     if unsigned and (surely_above or (n >= _FEWEST_UNSIGNED and middle > _UNSIGNED_MIDDLE * scale)):
-        return (
-            "hardly any is negative: does the column hold prices, or 1 + return? "
-            "For prices, name their column under price: and set return: {from: price}"
-        )
+        return _PRICES
     n_impossible, in_one = evidence.below(1.0)
     impossible = (
         n_impossible > max(_SHARE_IMPOSSIBLE * n, _FEWEST_IMPOSSIBLE) and in_one < _ONE_CODE

@@ -17,13 +17,14 @@ from lineproof.intake.pieces import Piece
 def as_rows(
     piece: Piece, mapping: Mapping, stride: int, reading: dict[str, Any], label: str
 ) -> RawBlock:
-    """The cells of some rows as rows of date, return and security (or asset), along each line in turn.
+    """The cells of some rows as rows of date, return (or price) and security (or asset), along each line in turn.
 
     The position of a cell is its line times `stride`, the number of columns, plus its column; that of a row that does
     not fit the header has the column of the date.
     """
     cells = mapping.cells or {}
     own = reading.get("names", "security")
+    value = "price" if reading.get("return_from") == "price" else "return"
     date, n_trimmed = trimmed(settled(piece.columns[mapping.ours["date"]], "date", reading, label))
     values, n_blanks = _values(piece, cells, reading, label)
     at = np.flatnonzero(_is_given(values, len(piece.place), len(cells)))
@@ -33,7 +34,7 @@ def as_rows(
     columns = {
         own: names.take(pa.array(column)),
         "date": date.take(pa.array(row)),
-        "return": values.take(pa.array(column * len(piece.place) + row)),
+        value: values.take(pa.array(column * len(piece.place) + row)),
     }
     rejects = [(place * stride + mapping.ours["date"], why) for place, why in piece.rejects]
     position = piece.place[row] * stride + places[column]
