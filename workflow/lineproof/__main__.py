@@ -70,7 +70,10 @@ def _parser() -> argparse.ArgumentParser:
 
 
 _DEVELOPING = {
-    "test": ("run the tests", [["-m", "pytest", "-q", "--ignore=tests/bench", "tests"]]),
+    "test": (
+        "run the tests",
+        [["-m", "pytest", "-q", "-n", "2", "--dist", "loadfile", "--ignore=tests/bench", "tests"]],
+    ),
     "lint": (
         "check style",
         [
@@ -81,7 +84,7 @@ _DEVELOPING = {
     ),
     "bench": (
         "measure speed as ratios",
-        [["-m", "pytest", "-q", "-s", "tests/bench", "-p", "no:xdist"]],
+        [["-m", "pytest", "-q", "-s", "tests/bench"]],
     ),
     "docs": ("write config/README.md anew from the schema", [["-m", "lineproof.documenting"]]),
 }

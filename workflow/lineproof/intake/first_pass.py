@@ -11,7 +11,7 @@ import pyarrow as pa
 from numba import njit
 
 from lineproof.intake.blocks import RawBlock, RawFile
-from lineproof.intake.decimal_comma import DecimalComma
+from lineproof.intake.written_numbers import WrittenNumbers
 from lineproof.intake.faults import Tally
 from lineproof.intake.runs import Columns, Names, SortedRuns
 from lineproof.intake.setting_aside import FirstFault, SetAside
@@ -48,7 +48,7 @@ class Taken:
     runs: SortedRuns
     aside: SetAside
     tally: Tally
-    comma: DecimalComma
+    comma: WrittenNumbers
     texts: dict[str, Names]
     n_read: list[int] = field(default_factory=list)
     rows_by_day: np.ndarray = field(default_factory=lambda: np.zeros(_N_DAYS, np.int64))
@@ -85,7 +85,7 @@ def take_rows(
     Raises KnownProblem when a file cannot be used as a whole.
     """
     further = [name for name in reading["columns"] if name not in {"security", "date", *NUMERIC}]
-    comma = DecimalComma(reading)
+    comma = WrittenNumbers(reading)
     texts = {name: Names() for name in further}
     taken = Taken(SortedRuns(scratch), SetAside(), Tally(), comma, texts)
     for number, file in enumerate(files):

@@ -26,7 +26,7 @@ class _Form:
     least: str | None = field(default=None)
 
 
-class DecimalComma:
+class WrittenNumbers:
     """Counts the returns that look like `0,015` or `1.5%` among those that are given, block by block."""
 
     def __init__(self, reading: dict[str, Any]) -> None:
