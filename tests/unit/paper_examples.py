@@ -130,6 +130,7 @@ def facts(sorts: dict[str, dict[str, Any]], **changes: Any) -> dict[str, Any]:
         "period": asdict(FREQUENCIES["monthly"]),
         "hac_lag": None,
         "missing_final_return": None,
+        "final_return_by_reason": {},
         "screens": [{"column": "price", "at_least": 1}],
         "sources": [
             {

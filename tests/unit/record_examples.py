@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 from tests.unit.chunk_examples import MONTHS, chunk_of, cut, draw_panel, trading_days
 
-from lineproof.intake.faults import FAULTS
+from lineproof.intake.faults import FAULTS, label_of
 from lineproof.intake.observers import evidence, start_observers
 from lineproof.periods import Periods
 
@@ -19,7 +19,7 @@ HOSTILE = "<script>alert(1)</script> & 'x' \"y\" {{ 7*7 }} %_$ =cmd()"
 def fault(number: int, n: int, examples: list[str], kinds: dict[str, int] | None = None) -> Any:
     """A fault as the tally reports it."""
     said = FAULTS[number]
-    about = {"number": number, "label": said.label, "answer": said.answer, "note": said.note}
+    about = {"number": number, "label": label_of(number), "answer": said.answer, "note": said.note}
     return {**about, "n": n, "kinds": kinds or {}, "examples": examples}
 
 
@@ -102,7 +102,7 @@ def _usual() -> dict[str, Any]:
 
 def aside(number: int, n: int, rows: list[tuple[int, str, str]]) -> dict[str, Any]:
     """Rows set aside for one fault; of each row its line, what was found and its text."""
-    label = FAULTS[number].label
+    label = label_of(number)
     examples = [
         {"file": "raw/returns.csv", "line": line, "reason": f"{label}: {said}", "raw": raw}
         for line, said, raw in rows

@@ -24,6 +24,7 @@ def facts(study: Study) -> dict[str, Any]:
         "period": asdict(FREQUENCIES[study.frequency]),
         "hac_lag": study.hac_lag,
         "missing_final_return": study.intake.missing_final_return,
+        "final_return_by_reason": dict(study.intake.final_return_by_reason),
         "screens": list(study.intake.screens),
         "sources": [
             {

@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 
+from lineproof.frequency import FREQUENCIES
 from lineproof.intake.dating import with_dates
 from lineproof.intake.first_pass import Taken, take_rows
 from lineproof.intake.frequency import FrequencyEvidence
@@ -44,7 +45,7 @@ def validate_returns(
     """
     _check_names(returns)
     returns = dict(with_dates(files["returns"], returns, daily=returns_frequency == "daily"))
-    returns["are"] = returns_are
+    returns |= {"are": returns_are, "noun": FREQUENCIES[returns_frequency].noun}
     supplied = read_supplied(dict(files), returns_frequency, **series)
     opened = open_files(list(files["returns"]), returns)
     scale = ScaleEvidence()

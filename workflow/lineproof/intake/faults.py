@@ -16,7 +16,8 @@ Answer = Literal["stop", "set aside", "repair", "flag", "handled"]
 
 @dataclass(frozen=True)
 class Fault:
-    """`label` names the fault as a noun, `answer` as above; `note` says what a reader should make of it."""
+    """`label` names the fault as a noun, with {period} for a month or a day (see `label_of`); `answer` as above; `note`
+    says what a reader should make of it."""
 
     label: str
     answer: Answer
@@ -50,10 +51,12 @@ FAULTS: dict[int, Fault] = {
         "flag",
         "too many of them stop the study",
     ),
-    19: Fault("another, different row of the same security and month", "set aside"),
-    20: Fault("a month missing inside a security's history", "flag"),
+    19: Fault("another, different row of the same security and {period}", "set aside"),
+    20: Fault("a {period} missing inside a security's history", "flag"),
     21: Fault("a run of three or more zero returns", "flag", "the price may be stale"),
-    22: Fault("a jump over 300 % that reverses in the next month", "flag", "Ince and Porter 2006"),
+    22: Fault(
+        "a jump over 300 % that reverses in the next {period}", "flag", "Ince and Porter 2006"
+    ),
     23: Fault("a blank identifier", "set aside"),
     24: Fault("a size that is zero, negative or missing", "flag", "the size is taken as missing"),
     25: Fault(
@@ -63,7 +66,7 @@ FAULTS: dict[int, Fault] = {
     ),
     26: Fault("no security ever leaves", "flag", "a file of survivors only flatters every return"),
     27: Fault("periods missing inside the market or riskless series", "stop"),
-    28: Fault("no market or riskless return in that month", "set aside"),
+    28: Fault("no market or riskless return in that {period}", "set aside"),
     29: Fault("a riskless rate that is implausible as it is said to be quoted", "stop"),
     30: Fault(
         "a market declared total that looks like one in excess of the riskless rate, or the reverse",
@@ -97,6 +100,11 @@ FAULTS: dict[int, Fault] = {
 N_EXAMPLES = 3
 
 
+def label_of(number: int, noun: str = "month") -> str:
+    """What a fault is called where a period of the raw returns is a month, or a day."""
+    return FAULTS[number].label.format(period=noun)
+
+
 class Flag(NamedTuple):
     """What a judge of the whole file found, as `Tally.add` takes it: `n` is 0 where nothing was found."""
 
@@ -108,8 +116,12 @@ class Flag(NamedTuple):
 
 @dataclass
 class Tally:
-    """Counts of faults met so far, with the places of the first few, and counts by kind."""
+    """Counts of faults met so far, with the places of the first few, and counts by kind.
 
+    `noun` is what a period of the raw returns is called.
+    """
+
+    noun: str = "month"
     counts: dict[int, int] = field(default_factory=dict)
     examples: dict[int, list[str]] = field(default_factory=dict)
     kinds: dict[int, dict[str, int]] = field(default_factory=dict)
@@ -135,7 +147,7 @@ class Tally:
         return [
             {
                 "number": number,
-                "label": FAULTS[number].label,
+                "label": label_of(number, self.noun),
                 "answer": (chosen or {}).get(number, FAULTS[number].answer),
                 "note": FAULTS[number].note,
                 "n": self.counts[number],

@@ -11,7 +11,6 @@ import pyarrow as pa
 from numba import njit
 
 from lineproof.intake.blocks import RawBlock, RawFile
-from lineproof.intake.written_numbers import WrittenNumbers
 from lineproof.intake.faults import Tally
 from lineproof.intake.runs import Columns, Names, SortedRuns
 from lineproof.intake.setting_aside import FirstFault, SetAside
@@ -24,6 +23,7 @@ from lineproof.intake.values import (
     to_days,
     to_numbers,
 )
+from lineproof.intake.written_numbers import WrittenNumbers
 from lineproof.store import Scratch
 
 NUMERIC = ("return", "final_return", "size", "price")
@@ -87,7 +87,8 @@ def take_rows(
     further = [name for name in reading["columns"] if name not in {"security", "date", *NUMERIC}]
     comma = WrittenNumbers(reading)
     texts = {name: Names() for name in further}
-    taken = Taken(SortedRuns(scratch), SetAside(), Tally(), comma, texts)
+    noun = reading.get("noun", "month")
+    taken = Taken(SortedRuns(scratch), SetAside(noun), Tally(noun), comma, texts)
     for number, file in enumerate(files):
         taken.n_read.append(0)
         for block in file.blocks():

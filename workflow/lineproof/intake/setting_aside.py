@@ -9,7 +9,7 @@ import pandas as pd
 import pyarrow as pa
 
 from lineproof.intake.blocks import RawFile
-from lineproof.intake.faults import FAULTS, N_EXAMPLES, Tally
+from lineproof.intake.faults import FAULTS, N_EXAMPLES, Tally, label_of
 
 _NOT_SPLIT = 5
 _COLUMNS = ["file", "line", "fault", "reason", "raw"]
@@ -17,9 +17,13 @@ _AT_ONCE = 200_000  # rows
 
 
 class SetAside:
-    """Everything set aside so far, as numbers: file, position in it, fault, and which reason."""
+    """Everything set aside so far, as numbers: file, position in it, fault, and which reason.
 
-    def __init__(self) -> None:
+    `noun` is what reasons call a period of the raw returns.
+    """
+
+    def __init__(self, noun: str = "month") -> None:
+        self.noun = noun
         self._reasons: dict[str, int] = {}
         self._parts: list[tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]] = []
 
@@ -36,7 +40,7 @@ class SetAside:
     def add_rejects(self, file: int, rejects: list[tuple[int, str]]) -> None:
         """Set aside rows whose fields never fitted the header."""
         if rejects:
-            label = FAULTS[_NOT_SPLIT].label
+            label = label_of(_NOT_SPLIT)
             positions = np.array([position for position, _ in rejects], np.int64)
             self.add(file, positions, _NOT_SPLIT, [f"{label}: {why}" for _, why in rejects])
 
@@ -151,7 +155,7 @@ class FirstFault:
         if len(new) == 0:
             return
         self.found[new] = True
-        label = FAULTS[number].label
+        label = label_of(number, self._aside.noun)
         reasons = [label] * len(new) if said is None else [f"{label}: {text}" for text in said(new)]
         files = self._files if np.isscalar(self._files) else self._files[new]
         self._aside.add(files, self._positions[new], number, reasons)

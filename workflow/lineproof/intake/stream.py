@@ -15,7 +15,7 @@ from lineproof.intake.compounding import Compounded, compound_to_months
 from lineproof.intake.delisting import Leavers, leaving_rows
 from lineproof.intake.excess_or_total import looks_like_excess
 from lineproof.intake.factor import total_and_excess
-from lineproof.intake.faults import FAULTS, Flag
+from lineproof.intake.faults import Flag, label_of
 from lineproof.intake.first_pass import Taken
 from lineproof.intake.flags import flag_rows
 from lineproof.intake.market_build import MarketBuild
@@ -105,6 +105,10 @@ class Intake:
     def _are(self) -> str:
         """What the returns are once they are in the panel's chunks."""
         return "total" if self._are_made_total else self._kinds.returns_are
+
+    @property
+    def _noun(self) -> str:
+        return self._taken.tally.noun
 
     @property
     def _names(self) -> list[str]:
@@ -303,7 +307,7 @@ class Intake:
         return [
             {
                 "number": number,
-                "label": FAULTS[number].label,
+                "label": label_of(number, self._noun),
                 "n": n,
                 "examples": self._aside_examples.get(number, []),
             }
@@ -337,7 +341,7 @@ class Intake:
         """The error when every row is set aside: each fault with its first row."""
         problems = []
         for number, n, place, reason in self._taken.aside.first_of_each(self._files):
-            found = f"{counted(n, 'row')} with {FAULTS[number].label}"
+            found = f"{counted(n, 'row')} with {label_of(number, self._noun)}"
             problems.append(Problem(self._reading["label"], found, f"{place} has {reason}"))
         return KnownProblem(f"{_NOTHING_LEFT} Every row is set aside.", problems)
 

@@ -43,6 +43,7 @@ def write_report(context: Context, figures: Mapping[str, bytes]) -> str:
             faults=_faults(context),
             survivors_only=survivors_only(context.intake),
             span=context.intake["span"],
+            at=_at(context),
         )
     )
 
@@ -91,6 +92,11 @@ def _figures(context: Context, figures: Mapping[str, bytes]) -> list[dict[str, A
     return found
 
 
+def _at(context: Context) -> str:
+    """When in a month securities are counted."""
+    return "in" if context.period.noun == "month" else "at the end of"
+
+
 def _figure_words(context: Context, sort: str) -> dict[str, Any]:
     paper = context.facts["paper"]
     return {
@@ -98,22 +104,13 @@ def _figure_words(context: Context, sort: str) -> dict[str, Any]:
         "weights": LINE_WEIGHTS[paper["line_weights"]],
         "confidence": share(1 - context.level),
         "periods": context.period.nouns,
-        "at": "in" if context.period.noun == "month" else "at the end of",
+        "at": _at(context),
         "alpha_errors": ALPHA_ERRORS[paper["alpha_errors"]],
     }
 
 
 def _methods(context: Context) -> list[tuple[str, list[Markup]]]:
     """The study's choices in words: heading and paragraphs."""
-    final = context.facts["missing_final_return"]
-    leaving = (
-        said("A security that leaves without a final return keeps its last one.")
-        if final is None
-        else said(
-            "A security that leaves without a final return is given one of {final}{percent}.",
-            final=share(final),
-        )
-    )
     return [
         ("Test assets", [_html(each) for each in notes.formations(context, context.sorts)]),
         ("Time series", [_html(notes.alpha_errors(context))]),
@@ -122,8 +119,26 @@ def _methods(context: Context) -> list[tuple[str, list[Markup]]]:
             [_html(notes.line_estimation(context)), _html(notes.line_hypothesis(context))],
         ),
         ("Level of the tests", [_html(said("{level}{percent}", level=share(context.level)))]),
-        ("Leaving the sample", [_html(leaving)]),
+        ("Leaving the sample", [_html(each) for each in _leaving(context)]),
     ]
+
+
+def _leaving(context: Context) -> list[Phrase]:
+    """What becomes of a security that leaves without a final return."""
+    final, by_reason = (
+        context.facts[key] for key in ("missing_final_return", "final_return_by_reason")
+    )
+    given = said(
+        "A security that leaves without a final return keeps its last one."
+        if final is None
+        else "A security that leaves without a final return is given one of {final}{percent}.",
+        final=share(final or 0.0),
+    )
+    reasons = [
+        said("For the reason {reason} it is {final}{percent}.", reason=reason, final=share(value))
+        for reason, value in sorted(by_reason.items())
+    ]
+    return [given, *reasons]
 
 
 def _intake(context: Context) -> Phrase:
