@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 import numpy as np
 import pytest
 import statsmodels.api as sm
+from tests.unit import intake_examples as examples
 
 from lineproof.intake.excess_or_total import looks_like_excess, market_evidence
 
@@ -79,3 +82,27 @@ def test_where_the_data_cannot_tell_nothing_is_said(case: str) -> None:
         panel = np.full(T, np.nan)
     assert market_evidence(premium, riskless, panel).looks == ""
     assert looks_like_excess(premium, riskless, panel, "total") == ""
+
+
+@pytest.mark.fault(30)
+def test_a_market_in_excess_declared_total_is_flagged_in_the_intake(tmp_path: Path) -> None:
+    rng = np.random.default_rng(30)
+    months = examples.months("1990-01", 240)
+    riskless = 0.004 + 0.003 * np.sin(np.arange(240) / 20)  # a slow swing, as of rates
+    excess = rng.normal(0.005, 0.02, 240)
+    rows = [
+        f"{name},{month}-28,{riskless[at] + excess[at] + rng.normal(0, 0.01):.8f},,1,9"
+        for name in range(30)
+        for at, month in enumerate(months)
+    ]
+    found = examples.validate(
+        tmp_path,
+        examples.lines(*rows),
+        market=dict(zip(months, excess.round(8).tolist(), strict=True)),
+        riskless=dict(zip(months, riskless.round(8).tolist(), strict=True)),
+    )
+    flag = examples.fault(found, 30)
+    assert (flag["n"], flag["answer"]) == (1, "flag")
+    (said,) = flag["examples"]
+    assert said.startswith("the market is declared total, but looks like an excess return")
+    assert len(found.panel) == len(rows)
