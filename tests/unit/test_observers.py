@@ -16,11 +16,8 @@ from tests.unit.chunk_examples import MONTHS, chunk_of, cut, draw_panel, trading
 
 from lineproof.intake.observers import (
     OBSERVERS,
-    counting,
-    distribution,
     evidence,
     start_observers,
-    warm_up,
 )
 from lineproof.intake.observers.distribution import SHARES
 from lineproof.intake.observers.largest import N_SHOWN
@@ -231,18 +228,3 @@ def test_three_digits_round_as_the_value_itself_does(digits: int, places: int) -
     rounding = Context(prec=3, rounding=ROUND_HALF_UP)
     kept = Decimal(repr(value_of(bin_at(value))))
     assert rounding.plus(kept) == rounding.plus(Decimal(repr(value)))
-
-
-def test_warming_up_compiles_every_kernel_for_the_types_of_a_chunk() -> None:
-    """A chunk afterwards finds all it needs: no signature is added."""
-    warm_up()
-    kernels = [
-        counting.count_periods,
-        counting.count_values,
-        counting.count_texts,
-        distribution._add,
-    ]
-    before = [len(kernel.signatures) for kernel in kernels]
-    observe([chunk_of(draw_panel(1))])
-    assert min(before) > 0
-    assert [len(kernel.signatures) for kernel in kernels] == before

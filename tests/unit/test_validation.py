@@ -268,3 +268,37 @@ def test_counts_of_the_intake(found: Validated, demo: dict) -> None:
         counts["rows_screened"]
         == (found.panel["price"] < 1).sum() + found.panel["price"].isna().sum()
     )
+
+
+@pytest.mark.parametrize("build", ["size", "equal"])
+def test_a_built_market_shows_what_every_row_weighs(tmp_path: Path, build: str) -> None:
+    """The market is the mean of the panel's returns by the panel's own weights, which are sizes of the month before."""
+    rng = np.random.default_rng(5)
+    rows = [
+        f"{name},{month}-28,{rng.normal(0, 0.1):.6f},,{rng.integers(1, 900)},9"
+        for name in "ABCD"
+        for month in months("2000-01", 6)
+    ]
+    riskless = monthly_file("rf", dict.fromkeys(months("2000-01", 6), 0.002))
+    found = examples.run(
+        tmp_path,
+        {
+            "returns": [examples.write(tmp_path / "r.csv", lines(*rows))],
+            "riskless": [examples.write(tmp_path / "f.csv", riskless)],
+        },
+        returns=examples.returns_reading(),
+        market_build=build,
+        riskless=examples.reading("f", {"date": "month", "rate": "rf"}, dates="%Y-%m"),
+        rules=examples.RULES,
+    )
+    panel = found.panel
+    total = (panel["market_weight"] * panel["total_return"]).groupby(panel["date"]).sum()
+    weight = panel["market_weight"].groupby(panel["date"]).sum()
+    market = (total / weight)[weight > 0] - 0.002
+    assert market.index.tolist() == found.market["date"].tolist()
+    # Means of four numbers, added up in two ways.
+    np.testing.assert_allclose(found.market["market_excess"], market, rtol=0, atol=1e-15)
+    if build == "size":
+        lagged = panel.groupby("security")["size"].shift().fillna(0.0)
+        known = panel.groupby("security")["size"].shift().notna()
+        np.testing.assert_array_equal(panel.loc[known, "market_weight"], lagged[known])

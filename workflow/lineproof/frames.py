@@ -93,6 +93,8 @@ PANEL = pa.DataFrameSchema(
         "leaves": pa.Column(bool),
         # Days with a return, where the months are made from days.
         "n_days": pa.Column("int64", pa.Check.in_range(0, 31), required=False),
+        # What a row weighs in a market that is built, before the weights of a period are scaled to one.
+        "market_weight": pa.Column(float, pa.Check.ge(0), required=False),
     },
     checks=[_HAS_ROWS, _sorted_unique("security", "date")],
     strict=False,

@@ -20,7 +20,17 @@ from lineproof.intake.unit import judge_scale
 from lineproof.periods import Months
 from lineproof.store import Scratch
 
-_OURS = {"line", "code", "return_", "total_return", "excess_return", "eligible", "leaves", "n_days"}
+_OURS = {
+    "line",
+    "code",
+    "return_",
+    "total_return",
+    "excess_return",
+    "eligible",
+    "leaves",
+    "n_days",
+    "market_weight",
+}
 _CHUNK = 1 << 20  # rows
 
 

@@ -148,8 +148,3 @@ def _close(seen, dates, gaps):  # pragma: no cover - compiled
         gap += 1
         seen >>= 1
     dates[n] += 1
-
-
-def warm_up() -> None:
-    """Compile the kernels, so that no study waits for it."""
-    FrequencyEvidence().add(np.array([0, 1]), np.array(["2000-01-01"], "datetime64[D]"))

@@ -242,9 +242,3 @@ def pick_lines(blocks: Iterator[Block], wanted: np.ndarray) -> Iterator[list[str
 def _line(text: bytes, ends: np.ndarray, index: int) -> str:
     start = int(ends[index - 1]) + 1 if index else 0
     return text[start : int(ends[index])].removesuffix(b"\r").decode("utf-8")
-
-
-def warm_up() -> None:
-    """Compile the kernels, so that no study waits for it."""
-    find_misfits(b'a,"b"\n', ",", 2)
-    has_blanks(np.frombuffer(b"a", np.uint8))

@@ -36,13 +36,15 @@ class MarketBuild:
         self._sums = np.zeros((3, 0))
         self._lost = np.zeros((3, 0))
 
-    def see(self, chunk: Chunk, total_return: np.ndarray) -> None:
+    def see(self, chunk: Chunk, total_return: np.ndarray) -> np.ndarray:
         """Take in a chunk; `total_return` is (n_rows,), decimal, NaN where missing, final returns included.
 
-        In a study of excess returns without a riskless rate it is the excess return, and so is the market.
+        In a study of excess returns without a riskless rate it is the excess return, and so is the market. Gives back
+        what each row weighs in its period, before weights are scaled to one: (n_rows,), 0 where it weighs nothing.
         """
+        weights = np.zeros(len(chunk))
         if len(chunk) == 0:
-            return
+            return weights
         self._make_room(int(chunk.period.min()), int(chunk.period.max()))
         size = chunk.values.get("size") if self._by_size else total_return
         if size is None:
@@ -55,7 +57,9 @@ class MarketBuild:
             self._by_size,
             self._sums,
             self._lost,
+            weights,
         )
+        return weights
 
     def result(self, periods: Periods, label: str = "data.market.build") -> pd.DataFrame:
         """`date`, `return` (decimal) and `n_securities`, one row a period from the first with a weight to the last.
@@ -97,7 +101,9 @@ class MarketBuild:
 
 
 @njit(cache=True)
-def _add(start, period, total_return, size, by_size, sums, lost):  # pragma: no cover - compiled
+def _add(
+    start, period, total_return, size, by_size, sums, lost, out
+):  # pragma: no cover - compiled
     for security in range(len(start) - 1):
         base, growth = np.nan, 1.0  # the last known size, and what has become of one unit of it
         for row in range(start[security], start[security + 1]):
@@ -107,6 +113,7 @@ def _add(start, period, total_return, size, by_size, sums, lost):  # pragma: no 
                 _carry(sums, lost, _WEIGHT, at, weight)
                 _carry(sums, lost, _RETURN, at, weight * r)
                 _carry(sums, lost, _COUNT, at, 1.0)
+                out[row] = weight
             if size[row] > 0:
                 base, growth = size[row], 1.0
             elif not np.isnan(r):
@@ -123,9 +130,3 @@ def _carry(sums, lost, line, at, term):  # pragma: no cover - compiled
     else:
         lost[line, at] += (term - new) + old
     sums[line, at] = new
-
-
-def warm_up() -> None:
-    """Compile the kernels, so that no study waits for it."""
-    two = np.array([0.0, 1.0])
-    _add(np.array([0, 2]), np.array([0, 1]), two, two, True, np.zeros((3, 2)), np.zeros((3, 2)))

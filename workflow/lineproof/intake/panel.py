@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+
 import numpy as np
 import pandas as pd
 import pyarrow as pa
@@ -16,9 +18,9 @@ def panel_frame(
     excess: np.ndarray,
     eligible: np.ndarray,
     leaves: np.ndarray,
-    n_days: np.ndarray | None = None,
+    more: Mapping[str, np.ndarray],
 ) -> pd.DataFrame:
-    """The rows of a chunk as a piece of the panel: see `frames`. The arrays are (n_rows,)."""
+    """The rows of a chunk as a piece of the panel: see `frames`. The arrays are (n_rows,); `more` has further ones."""
     n = len(chunk)
     size = chunk.values.get("size", np.full(n, np.nan))
     columns = {
@@ -31,10 +33,9 @@ def panel_frame(
         "eligible": eligible,
         "leaves": leaves,
     }
-    if n_days is not None:
-        columns["n_days"] = n_days
     further = {name: _texts(*of) for name, of in chunk.texts.items()}
-    table = pa.table({name: _array(values) for name, values in {**columns, **further}.items()})
+    every = {**columns, **more, **further}
+    table = pa.table({name: _array(values) for name, values in every.items()})
     return table.to_pandas()
 
 

@@ -197,9 +197,3 @@ def medians_by_run(start, value):  # pragma: no cover - compiled
             place = (n[run] - 1) // 2
             middle[run] = np.partition(size[: n[run]], place)[place]
     return n, middle
-
-
-def warm_up() -> None:
-    """Compile the kernels, so that no study waits for it."""
-    ScaleEvidence().add(np.array([_MONTHS[0]]), np.array([0.1]))
-    medians_by_run(np.array([0, 1]), np.array([0.1]))

@@ -178,14 +178,15 @@ class Intake:
         if "excess" in chunk.values and rates is self._delivered:
             as_given = known == chunk.values["return_"]  # no rounding of there and back
             excess = np.where(as_given, chunk.values["excess"], excess)
-        if self._builds:
-            self._builds[name].see(chunk, known)
+        weight = self._builds[name].see(chunk, known) if self._builds else None
         eligible = np.ones(len(chunk), bool)
         if name == "panel":
             eligible = self._screens.eligible(chunk)
             self._panel.add(chunk, eligible)
         chunk.values["total_return"] = total
-        return panel_frame(chunk, rates.span.periods, excess, eligible, leaves, n_days)
+        more = {"n_days": n_days, "market_weight": weight}
+        given = {column: values for column, values in more.items() if values is not None}
+        return panel_frame(chunk, rates.span.periods, excess, eligible, leaves, given)
 
     def _leaving_before(self) -> np.datetime64:
         """A security whose last row is dated before this day has left: the first day of the last period with rows.

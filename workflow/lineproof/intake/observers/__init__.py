@@ -4,13 +4,10 @@ from __future__ import annotations
 
 from typing import Any
 
-import numpy as np
-
 from lineproof import catalog
 from lineproof.catalog import Entry
-from lineproof.intake.chunk import Chunk
 from lineproof.intake.observing import Observer
-from lineproof.periods import Months, Periods
+from lineproof.periods import Periods
 
 OBSERVERS: dict[str, Entry] = {
     "alive": Entry("lineproof.intake.observers.alive:Alive", "securities alive over time"),
@@ -32,21 +29,3 @@ def start_observers(periods: Periods) -> dict[str, Observer]:
 def evidence(observers: dict[str, Observer]) -> dict[str, Any]:
     """The result of each observer by name, as `record.Evidence` holds them."""
     return {name: observer.result() for name, observer in observers.items()}
-
-
-def warm_up() -> None:
-    """Compile the kernels once, so that no run waits for it."""
-    day = np.array(["2000-01-31"], "datetime64[D]")
-    periods = Months()
-    number = {name: np.array([0.01]) for name in ("return_", "total_return")}
-    row = Chunk(
-        names=np.array(["A"]),
-        start=np.array([0, 1]),
-        period=periods.number(day),
-        day=day,
-        values=number,
-        texts={"text": (np.zeros(1, np.int32), ["a"])},
-        code=np.full(1, -1, np.int8),
-    )
-    for observer in start_observers(periods).values():
-        observer.see(row)
