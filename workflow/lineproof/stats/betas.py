@@ -192,14 +192,15 @@ def rolling_correlation_volatility(
         market, window=volatility_window, min_obs=volatility_min_obs, ends=ends, what=MOMENTS
     )
     row, i, j = np.intersect1d(long.row, short.row, assume_unique=True, return_indices=True)
-    mean_x, mean_y, sxx, sxy, syy, _ = long.values[:, i]
+    mean_x, mean_y, sxx, sxy, syy, left = long.values[:, i]
     n, n_short = long.n_obs[i], short.n_obs[j]
     _, _, vxx, vxy, vyy, rest = short.values[:, j]
     scale = np.sqrt(sxx * syy)
     rho = np.clip(np.divide(sxy, scale, out=np.zeros_like(sxy), where=scale > 0), -1.0, 1.0)
     ratio = np.sqrt(vyy / vxx)
     beta = rho * ratio
-    apart = (1 - rho) * (1 + rho)
+    # 1 − ρ², which the difference would give without digits where the fit is close
+    apart = np.divide(left, syy, out=np.ones_like(syy), where=syy > 0)
     spread = apart**2 * (2 * overlap**2 + 1) / (3 * overlap) / (n - 2)
     spread += rho**2 * apart / (n_short - 2)
     rest = rest + (beta - vxy / vxx) ** 2 * vxx

@@ -31,6 +31,12 @@ ALL, BELOW_MEAN = range(2)  # which observations of a window count
 TOO_FEW, NO_VARIATION, FITTED = range(3)
 _N_OUT = 6
 
+_compiled = njit(cache=True, error_model="numpy")
+_parallel = njit(cache=True, error_model="numpy", parallel=True)
+_inlined = njit(
+    cache=True, error_model="numpy", forceinline=True
+)  # or each call passes every array part by part
+
 
 @dataclass(frozen=True)
 class Sample:
@@ -148,7 +154,8 @@ def fit_windows(
     )
     row = np.flatnonzero(state == FITTED)
     if len(row) < len(state):
-        values, n_obs = _picked(values, n_obs, row)
+        _close_ranks(values, n_obs, row)
+        values, n_obs = values[:, : len(row)], n_obs[: len(row)]
     n_too_few = int((state == TOO_FEW).sum())
     return Windows(row, values, n_obs, n_too_few, len(state) - len(row) - n_too_few)
 
@@ -158,17 +165,18 @@ def _plain(values: np.ndarray, dtype: type) -> np.ndarray:
     return np.require(values, dtype, ["C", "W"])
 
 
-@njit(cache=True, parallel=True)
-def _picked(values, n_obs, row):  # pragma: no cover - compiled
-    out, n = np.empty((_N_OUT, len(row))), np.empty(len(row), np.int64)
-    for place in prange(len(row)):
-        n[place] = n_obs[row[place]]
-        for line in range(_N_OUT):
-            out[line, place] = values[line, row[place]]
-    return out, n
+@_parallel
+def _close_ranks(values, n_obs, row):  # pragma: no cover - compiled
+    """Move what belongs to `row`, ascending, to the front."""
+    for line in prange(_N_OUT + 1):
+        for place in range(len(row)):
+            if line < _N_OUT:
+                values[line, place] = values[line, row[place]]
+            else:
+                n_obs[place] = n_obs[row[place]]
 
 
-@njit(cache=True, parallel=True)
+@_parallel
 def _by_date(factors, wanted, powers):  # pragma: no cover - compiled
     """What whole windows that end at the wanted dates share, a line a date: the share left by centring (0 where there
     is no such window, or it needs care), the sum of weights, means, and centred products with their inverse."""
@@ -181,14 +189,15 @@ def _by_date(factors, wanted, powers):  # pragma: no cover - compiled
     return out
 
 
-@njit(cache=True)
+@_compiled
 def _one_date(x, powers, out):  # pragma: no cover - compiled
     n, k = x.shape
-    if np.isnan(x).any():
-        return
     weight = 0.0
     for row in range(n):
         weight += powers[n - 1 - row]
+        for i in range(k):
+            if np.isnan(x[row, i]):
+                return
     mean, raw = out[2 : 2 + k], np.zeros(k)
     products = out[2 + k : 2 + k + k * k].reshape(k, k)
     for i in range(k):
@@ -208,7 +217,7 @@ def _one_date(x, powers, out):  # pragma: no cover - compiled
     out[0] = _invert(inverse, raw)
 
 
-@njit(cache=True)
+@_compiled
 def _invert(matrix, raw):  # pragma: no cover - compiled
     """Invert a positive definite matrix in place; the smallest pivot relative to `raw`, 0 where there is none."""
     k, left = len(raw), 1.0
@@ -229,7 +238,7 @@ def _invert(matrix, raw):  # pragma: no cover - compiled
     return left
 
 
-@njit(cache=True, parallel=True)
+@_parallel
 def _fit_all(
     starts, period, y, factors, known, dates, powers, how, sum_of, end_starts, ends, out, n, state
 ):  # pragma: no cover - compiled
@@ -258,7 +267,7 @@ def _fit_all(
             )
 
 
-@njit(cache=True)
+@_compiled
 def _fit_one(
     period, y, x, dates, powers, how, sum_of, ends, out, n, state
 ):  # pragma: no cover - compiled
@@ -270,7 +279,13 @@ def _fit_one(
     sums, held = np.empty((lines, n_sums)), np.full((2, 3), -1)
     s, mean, products = np.empty(k), np.empty(k), np.empty((k, k))
     inverse, raw = np.empty((k, k)), np.empty(k)
-    oldest, low, middle, after = 0, 0, 0, 0  # rows: of the window, its block before, its block, the first one after it
+    start = period[0] if len(period) else 0  # of the window's block
+    oldest, low, middle, after = (
+        0,
+        0,
+        0,
+        0,
+    )  # rows: of the window, its block before, its block, the first one after it
     for place in range(len(ends)):
         end = ends[place]
         while after < len(period) and period[after] <= end:
@@ -281,7 +296,8 @@ def _fit_one(
         state[place] = TOO_FEW
         if n[place] < max(min_obs, 1):
             continue
-        start = end - (end - period[0]) % window  # of the window's block
+        if end >= start + window:  # a block is done
+            start += (end - start) // window * window
         while middle < len(period) and period[middle] < start:
             middle += 1
         while low < middle and period[low] < start - window:
@@ -320,7 +336,7 @@ def _fit_one(
         )
 
 
-@njit(cache=True)
+@_inlined
 def _sum_up(
     part, period, x, y, powers, start, end, low, middle, oldest, after, sums, held
 ):  # pragma: no cover - compiled
@@ -357,7 +373,7 @@ def _sum_up(
         sums[total, c] += fade * sums[oldest - low, c]
 
 
-@njit(cache=True)
+@_inlined
 def _add_terms(part, x, p, y, weight, sums, of, fade, into):  # pragma: no cover - compiled
     """Add an observation to a line, faded: y, yy and each xy; or, of the factors alone, the weight, each x and product."""
     k = x.shape[1]
@@ -378,7 +394,7 @@ def _add_terms(part, x, p, y, weight, sums, of, fade, into):  # pragma: no cover
             c += 1
 
 
-@njit(cache=True)
+@_inlined
 def _centre(sums, mean, products, inverse, raw):  # pragma: no cover - compiled
     """Means and centred products from raw sums; the sum of weights, and the share that centring left."""
     k, total = len(mean), len(sums) - 1
@@ -395,7 +411,7 @@ def _centre(sums, mean, products, inverse, raw):  # pragma: no cover - compiled
     return weight, _invert(inverse, raw)
 
 
-@njit(cache=True)
+@_inlined
 def _from_sums(
     what, n, sums, weight, left, mean, products, inverse, sum_of, s, out, place
 ):  # pragma: no cover - compiled
@@ -439,7 +455,7 @@ def _from_sums(
     return True
 
 
-@njit(cache=True)
+@_compiled
 def _of_neighbours(products, s):  # pragma: no cover - compiled
     """The sum of three single slopes over 1 + 2ρ, and its variance for errors of variance one (0 where undefined)."""
     rho = products[0, 1] / np.sqrt(products[0, 0] * products[1, 1])
@@ -454,7 +470,7 @@ def _of_neighbours(products, s):  # pragma: no cover - compiled
     return beta / scale, variance / (scale * scale)
 
 
-@njit(cache=True)
+@_inlined
 def _write(
     beta, alpha, variance, explained, rest, syy, n, unit, used, out, place
 ):  # pragma: no cover - compiled
@@ -465,35 +481,39 @@ def _write(
     out[4, place] = np.sqrt(unit * rest / (n - used))
 
 
-@njit(cache=True)
+@_inlined
 def _write_moments(mean_x, mean_y, sxx, sxy, syy, rest, out, place):  # pragma: no cover - compiled
     out[0, place], out[1, place], out[2, place] = mean_x, mean_y, sxx
     out[3, place], out[4, place], out[5, place] = sxy, syy, rest
 
 
-@njit(cache=True)
+@_compiled
 def _fit_again(period, y, x, powers, end, how, sum_of, out, place):  # pragma: no cover - compiled
     """A window by itself, pass by pass: centre, make the factors orthogonal, take off the fit. Gives n and state."""
     _, min_obs, what, which = how
     n, k = len(period), x.shape[1]
     columns, weights = np.empty((k + 1, n)), np.empty(n)
-    limit = np.inf if which == ALL else _mean_of(x[:, 0], period)
+    limit = np.inf if which == ALL else _mean_of(x, period)
     size = 0
     for row in range(n):
         if x[period[row], 0] < limit:
             weights[size] = powers[end - period[row]]
-            columns[:k, size] = x[period[row]]
+            for i in range(k):
+                columns[i, size] = x[period[row], i]
             columns[k, size] = y[row]
             size += 1
     if size < min_obs:
         return size, TOO_FEW
     columns, weights = columns[:, :size], weights[:size]
-    weight = weights.sum()
-    means = np.empty(k + 1)
+    weight = 0.0
+    for row in range(size):
+        weight += weights[row]
+    means, products = np.empty(k + 1), np.empty((k + 1, k + 1))
     for i in range(k + 1):
-        means[i] = _centred(columns[i], weights, weight)
-    centred = columns.copy()
-    products = (centred * weights) @ centred.T
+        means[i] = _centre_column(columns, i, weights, weight)
+    for i in range(k + 1):
+        for j in range(k + 1):
+            products[i, j] = _product(columns, i, j, weights)
     for i in range(k):
         if not products[i, i] > _ROUNDING**2 * weight * (1 + means[i] ** 2):
             return size, NO_VARIATION
@@ -501,7 +521,9 @@ def _fit_again(period, y, x, powers, end, how, sum_of, out, place):  # pragma: n
         beta, variance = _of_neighbours(products[:k, :k], products[k, :k])
         if not variance > 0:
             return size, NO_VARIATION
-        rest, alpha = _squares(centred[k] - beta * centred[1], weights), means[k] - beta * means[1]
+        for row in range(size):
+            columns[k, row] -= beta * columns[1, row]
+        rest, alpha = _product(columns, k, k, weights), means[k] - beta * means[1]
         syy = products[k, k]
         _write(beta, alpha, variance, syy - rest, rest, syy, size, size / weight, 2, out, place)
         return size, FITTED
@@ -509,44 +531,48 @@ def _fit_again(period, y, x, powers, end, how, sum_of, out, place):  # pragma: n
     variance = _orthogonal_fit(columns, weights, products, sum_of, slopes)
     if not variance >= 0:
         return size, NO_VARIATION
-    rest = _squares(columns[k], weights)
+    rest = _product(columns, k, k, weights)
     syy = products[k, k]
     if what == MOMENTS:
         _write_moments(means[0], means[1], products[0, 0], products[0, 1], syy, rest, out, place)
         return size, FITTED
-    alpha = means[k] - (slopes * means[:k]).sum()
-    _write((sum_of * slopes).sum(), alpha, variance, syy - rest, rest, syy, size, size / weight, k + 1, out, place)
+    beta, alpha = 0.0, means[k]
+    for i in range(k):
+        beta += sum_of[i] * slopes[i]
+        alpha -= slopes[i] * means[i]
+    _write(beta, alpha, variance, syy - rest, rest, syy, size, size / weight, k + 1, out, place)
     return size, FITTED
 
 
-@njit(cache=True)
-def _mean_of(values, period):  # pragma: no cover - compiled
+@_compiled
+def _mean_of(x, period):  # pragma: no cover - compiled
     total = 0.0
     for row in range(len(period)):
-        total += values[period[row]] - values[period[0]]
-    return values[period[0]] + total / len(period)
+        total += x[period[row], 0] - x[period[0], 0]
+    return x[period[0], 0] + total / len(period)
 
 
-@njit(cache=True)
-def _centred(column, weights, weight):  # pragma: no cover - compiled
+@_compiled
+def _centre_column(columns, i, weights, weight):  # pragma: no cover - compiled
     """Take off the mean, and give it; it is taken from the first value: exact for constant data."""
-    base, total = column[0], 0.0
-    for row in range(len(column)):
-        total += weights[row] * (column[row] - base)
+    base, total = columns[i, 0], 0.0
+    for row in range(len(weights)):
+        total += weights[row] * (columns[i, row] - base)
     mean = base + total / weight
-    column -= mean
+    for row in range(len(weights)):
+        columns[i, row] -= mean
     return mean
 
 
-@njit(cache=True)
-def _squares(column, weights):  # pragma: no cover - compiled
+@_compiled
+def _product(columns, i, j, weights):  # pragma: no cover - compiled
     total = 0.0
-    for row in range(len(column)):
-        total += weights[row] * column[row] * column[row]
+    for row in range(len(weights)):
+        total += weights[row] * columns[i, row] * columns[j, row]
     return total
 
 
-@njit(cache=True)
+@_compiled
 def _orthogonal_fit(columns, weights, products, sum_of, slopes):  # pragma: no cover - compiled
     """Turn centred columns into orthogonal ones, the last into residuals; the variance of the summed slopes for errors
     of variance one, −1 where a factor is a mixture of others."""
@@ -555,11 +581,12 @@ def _orthogonal_fit(columns, weights, products, sum_of, slopes):  # pragma: no c
     for j in range(k + 1):
         for _ in range(2):  # the second time takes off what rounding left
             for i in range(j):
-                share = (weights * columns[i] * columns[j]).sum() / squares[i]
+                share = _product(columns, i, j, weights) / squares[i]
                 shares[i, j] += share
-                columns[j] -= share * columns[i]
+                for row in range(len(weights)):
+                    columns[j, row] -= share * columns[i, row]
         if j < k:
-            squares[j] = _squares(columns[j], weights)
+            squares[j] = _product(columns, j, j, weights)
             if not squares[j] > _MIXTURE**2 * products[j, j]:
                 return -1.0
     part, variance = sum_of.copy(), 0.0
