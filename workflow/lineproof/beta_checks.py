@@ -1,4 +1,4 @@
-"""What the schema cannot see of an entry under `betas`: which options belong to its estimator, and what they refer to."""
+"""What the schema cannot see of an entry under `betas`: whose its options are, and what they refer to."""
 
 from __future__ import annotations
 

@@ -193,34 +193,6 @@ def _rows(panel: pd.DataFrame, table: pd.DataFrame, periods: Periods) -> _Rows:
     )
 
 
-@dataclass(frozen=True)
-class _Marks:
-    """Where estimates are wanted, (n_marks,) each: a row of the security, the period at which the window ends, and
-    the date it gets; `starts` (n_securities + 1,) parts them by security."""
-
-    row: np.ndarray
-    number: np.ndarray
-    date: np.ndarray
-    starts: np.ndarray
-
-
-def _rows(panel: pd.DataFrame, table: pd.DataFrame, periods: Periods) -> _Rows:
-    number = periods.number(panel["date"].to_numpy())
-    if (number == ABSENT).any():  # days on which the market has no return
-        panel, number = panel[number != ABSENT], number[number != ABSENT]
-    at = periods.number(market["date"].to_numpy())
-    low = min(at.min(), number.min(initial=at.min()))
-    by_number = np.full(max(at.max(), number.max(initial=at.max())) - low + 1, np.nan)
-    by_number[at - low] = market["market_excess"].to_numpy()
-    return _Rows(
-        security=panel["security"],
-        starts=starts_of(coded(panel["security"])[0]),
-        number=number,
-        excess=panel["excess_return"].to_numpy(),
-        factor=by_number[number - low],
-    )
-
-
 def _marks(rows: _Rows, periods: Periods, dated: str) -> _Marks:
     if isinstance(periods, TradingDays) and dated == "monthly":
         month = periods.month(rows.number)

@@ -74,7 +74,7 @@ def _sorted_unique(*keys: str) -> pa.Check:
 
 
 def _others_are_numbers(frame: pd.DataFrame) -> bool:
-    return all(dtype == float for dtype in frame.drop(columns="date").dtypes)
+    return all(dtype == np.dtype(float) for dtype in frame.drop(columns="date").dtypes)
 
 
 _DATE = pa.Column("datetime64[ms]", pa.Check(_month_end, name="dates are month ends"))

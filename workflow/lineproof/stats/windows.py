@@ -375,7 +375,7 @@ def _sum_up(
 
 @_inlined
 def _add_terms(part, x, p, y, weight, sums, of, fade, into):  # pragma: no cover - compiled
-    """Add an observation to a line, faded: y, yy and each xy; or, of the factors alone, the weight, each x and product."""
+    """Add an observation to a line, faded: y, yy and each xy; or, of factors alone, the weight, each x and product."""
     k = x.shape[1]
     if part == 0:
         v = weight * y
