@@ -20,8 +20,8 @@ from tests.properties.random_market import DATES, WINDOWS, draw_market
 
 from lineproof import store
 from lineproof.designs import DESIGNS, WEIGHTS
-from lineproof.estimation import estimate_betas
-from lineproof.estimators import ESTIMATORS
+from lineproof.estimation import estimate_betas, shrink_betas
+from lineproof.estimators import ESTIMATORS, SHRINKAGES
 from lineproof.forming import form_portfolios
 from lineproof.sorting import Sorted
 
@@ -81,24 +81,77 @@ def cut_at(dates: pd.DatetimeIndex, at: float) -> pd.Timestamp:
     return dates[int(at * last)]
 
 
+# Options without which an estimator cannot be tried, and others worth trying. Estimators that need none are found by
+# themselves.
+OWN: dict[str, list[dict]] = {
+    "lagged": [{"lags": 1, "leads": 0}, {"lags": 1, "leads": 2}],
+    "exponential": [{"half_life": 8.0}],
+    "correlation_volatility": [{"volatility_window": 15, "volatility_min_obs": 6, "overlap": 3}],
+    "downside": [{"below": "mean"}, {"below": "zero"}],
+}
+TRIED = [(name, own) for name in ESTIMATORS for own in OWN.get(name, [{}])]
+BESIDE = ["smb", "hml"]
+
+
+def factors_of(market: Market) -> pd.DataFrame:
+    """Two further factors; those of a market made into noise are noise."""
+    excess = market[1]["market_excess"].to_numpy()
+    values = {"smb": np.sin(1e3 * excess), "hml": np.cos(1e3 * excess)}
+    return pd.DataFrame({"date": market[1]["date"], **values})
+
+
+def estimates(market: Market, estimator: str, own: dict, **options: object) -> pd.DataFrame:
+    beside = BESIDE if estimator == "multi_factor" else []
+    return estimate_betas(
+        *market,
+        factors_of(market),
+        name="short",
+        estimator=estimator,
+        own=own,
+        beside=beside,
+        **options,
+    )
+
+
 @pytest.mark.parametrize("change", list(CHANGES))
 @pytest.mark.parametrize(
     ("returns", "dated"), [("monthly", "monthly"), ("daily", "daily"), ("daily", "monthly")]
 )
-@pytest.mark.parametrize("estimator", list(ESTIMATORS))
+@pytest.mark.parametrize(("estimator", "own"), TRIED, ids=str)
 @FEW
 @given(seed=SEEDS, at=CUTS)
-def test_betas(estimator: str, returns: str, dated: str, change: str, seed: int, at: float) -> None:
+def test_betas(
+    estimator: str, own: dict, returns: str, dated: str, change: str, seed: int, at: float
+) -> None:
     market, cut = draw_market(seed, returns), cut_at(DATES[returns], at)
     if dated != returns:  # a month is dated by its last day, which is no trading day
         cut += pd.offsets.MonthEnd(0)
     options = {**WINDOWS[returns], "returns": returns, "dated": dated}
     before, after = (
-        estimate_betas(*each, name="short", estimator=estimator, **options)
+        estimates(each, estimator, own, **options)
         for each in (market, changed_market(market, change, cut, seed))
     )
     assert_identical_until(before, after, "date", cut)
     assert not before.equals(after)  # the change does reach what is dated later
+
+
+SHRUNK = {"cross_section": {}, "fixed": {"weight": 0.6, "to": 1.0}}
+
+
+@pytest.mark.parametrize("shrink", list(SHRINKAGES))
+@pytest.mark.parametrize("change", list(CHANGES))
+@FEW
+@given(seed=SEEDS, at=CUTS)
+def test_shrunk_betas(shrink: str, change: str, seed: int, at: float) -> None:
+    market, cut = draw_market(seed, "monthly"), cut_at(DATES["monthly"], at)
+    before, after = (
+        shrink_betas(
+            estimates(each, "ols", {}, **WINDOWS["monthly"]), shrink=shrink, own=SHRUNK[shrink]
+        )
+        for each in (market, changed_market(market, change, cut, seed))
+    )
+    assert_identical_until(before, after, "date", cut)
+    assert not before.equals(after)
 
 
 def single_window(

@@ -9,11 +9,21 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from lineproof.stats.betas import RollingBetas, rolling_ols
-from lineproof.stats.windows import WindowEnds
+from lineproof.stats.windows import Sample, WindowEnds
 
 SEEDS = st.integers(0, 2**32 - 1)
 MANY = settings(max_examples=60, deadline=None, derandomize=True)
 FIELDS = ("beta", "alpha", "se_beta", "r2", "residual_sd")
+
+
+def sample_of(
+    starts: np.ndarray, period: np.ndarray, excess: np.ndarray, market: np.ndarray
+) -> Sample:
+    """A sample whose market is given row by row, the same in every row of a period."""
+    factor = np.full(period.max(initial=0) + 1, np.nan)
+    known = ~np.isnan(market)
+    factor[period[known]] = market[known]
+    return Sample(starts, period, excess, factor[:, None])
 
 
 @dataclass(frozen=True)
@@ -31,10 +41,12 @@ class Case:
         self, excess: np.ndarray | None = None, market: np.ndarray | None = None
     ) -> RollingBetas:
         return rolling_ols(
-            self.starts,
-            self.period,
-            self.excess if excess is None else excess,
-            self.market if market is None else market,
+            sample_of(
+                self.starts,
+                self.period,
+                self.excess if excess is None else excess,
+                self.market if market is None else market,
+            ),
             window=self.window,
             min_obs=self.min_obs,
         )
@@ -147,10 +159,7 @@ def test_later_months_and_other_securities_leave_an_estimate_alone(seed: int) ->
     first, last = case.starts[0], case.starts[1]
     cut = int(np.random.default_rng(seed).integers(first, last)) + 1
     alone = rolling_ols(
-        np.array([0, cut]),
-        case.period[:cut],
-        case.excess[:cut],
-        case.market[:cut],
+        sample_of(np.array([0, cut]), case.period[:cut], case.excess[:cut], case.market[:cut]),
         window=case.window,
         min_obs=case.min_obs,
     )
@@ -178,9 +187,11 @@ def test_a_window_may_end_where_the_security_has_no_row(seed: int) -> None:
     excess[there], market[there] = case.excess, case.market
     starts = np.cumsum([0, *map(len, parts)])
     options = {"window": case.window, "min_obs": case.min_obs}
-    whole = rolling_ols(starts, filled, excess, market, **options)
+    whole = rolling_ols(sample_of(starts, filled, excess, market), **options)
     at = WindowEnds(np.cumsum([0, *map(len, ends)]), np.concatenate(ends))
-    found = rolling_ols(case.starts, case.period, case.excess, case.market, **options, ends=at)
+    found = rolling_ols(
+        sample_of(case.starts, case.period, case.excess, case.market), **options, ends=at
+    )
     owner = {
         name: np.repeat(np.arange(len(of)), list(map(len, of)))
         for name, of in (("all", parts), ("ends", ends))

@@ -7,6 +7,7 @@ import pytest
 from statsmodels.regression.rolling import RollingOLS
 
 from lineproof.stats.betas import RollingBetas, rolling_ols
+from lineproof.stats.windows import Sample
 
 WINDOW, MIN_OBS = 36, 12
 FIELDS = ("beta", "alpha", "se_beta", "r2", "residual_sd")
@@ -15,8 +16,8 @@ FIELDS = ("beta", "alpha", "se_beta", "r2", "residual_sd")
 def fit(
     x: np.ndarray, y: np.ndarray, *, window: int = WINDOW, min_obs: int = MIN_OBS
 ) -> RollingBetas:
-    starts, period = np.array([0, len(x)]), np.arange(len(x))
-    return rolling_ols(starts, period, y, x, window=window, min_obs=min_obs)
+    sample = Sample(np.array([0, len(x)]), np.arange(len(x)), y, x[:, None])
+    return rolling_ols(sample, window=window, min_obs=min_obs)
 
 
 def one_fit(x: np.ndarray, y: np.ndarray) -> dict[str, float]:
@@ -82,7 +83,10 @@ def test_each_window_equals_its_own_fit(kind: str, unit: float) -> None:
     x[rng.random(180) < 0.05] = np.nan
     y[rng.random(180) < 0.10] = np.nan
     x, y = unit * x, unit * y
-    found = rolling_ols(np.array([0, 180]), period, y, x, window=WINDOW, min_obs=MIN_OBS)
+    factor = np.full(period[-1] + 1, np.nan)
+    factor[period] = x
+    sample = Sample(np.array([0, 180]), period, y, factor[:, None])
+    found = rolling_ols(sample, window=WINDOW, min_obs=MIN_OBS)
     assert check(found, period, x, y) > 150
 
 

@@ -7,16 +7,32 @@ from fractions import Fraction
 import numpy as np
 import pytest
 
-from lineproof.stats.windows import PairMoments, pair_moments
+from lineproof.stats.windows import MOMENTS, Sample, WindowEnds, fit_windows
 
 WINDOW = 24
 # Rounding only. A sum of 24 squares in float64 is good to about 24 × 1.1e-16; the block sums may lose
 # three digits more before the window is summed pass by pass.
 CLOSE = 1e-10
+NAMES = ("mean_x", "mean_y", "sxx", "sxy", "syy", "residual_ss")
+Moments = dict[str, np.ndarray]
 
 
-def one_security(x: np.ndarray, y: np.ndarray, window: int = WINDOW) -> PairMoments:
-    return pair_moments(np.array([0, len(x)]), np.arange(len(x)), x, y, window)
+def moments(
+    starts: np.ndarray, period: np.ndarray, x: np.ndarray, y: np.ndarray, window: int
+) -> Moments:
+    """Moments at every row, `x` by period; NaN, and an `n` of 0, where there is nothing to tell."""
+    sample = Sample(starts, period, y, x[:, None])
+    found = fit_windows(sample, window=window, min_obs=1, what=MOMENTS)
+    out = {name: np.full(len(period), np.nan) for name in NAMES}
+    for name, values in zip(NAMES, found.values, strict=True):
+        out[name][found.row] = values
+    n = np.zeros(len(period), np.int64)
+    n[found.row] = found.n_obs
+    return {"n": n, **out}
+
+
+def one_security(x: np.ndarray, y: np.ndarray, window: int = WINDOW) -> Moments:
+    return moments(np.array([0, len(x)]), np.arange(len(x)), x, y, window)
 
 
 def exact(x: np.ndarray, y: np.ndarray) -> dict[str, float]:
@@ -37,8 +53,9 @@ def check_every_window(x: np.ndarray, y: np.ndarray, window: int = WINDOW) -> No
     for row in range(len(x)):
         at = slice(max(0, row - window + 1), row + 1)
         complete = ~(np.isnan(x[at]) | np.isnan(y[at]))
-        assert found.n[row] == complete.sum()
-        if not complete.any():
+        varies = len(set(x[at][complete])) > 1
+        assert found["n"][row] == (complete.sum() if varies else 0)
+        if not varies:
             continue
         want = exact(x[at], y[at])
         scale = want | {"sxy": np.sqrt(want["sxx"] * want["syy"])}
@@ -46,8 +63,8 @@ def check_every_window(x: np.ndarray, y: np.ndarray, window: int = WINDOW) -> No
         scale["mean_y"] = abs(want["mean_y"]) + np.sqrt(want["syy"])
         if complete.sum() == 2:
             scale["residual_ss"] = want["syy"]  # a line through two points leaves rounding only
-        for name, size in scale.items():
-            assert abs(getattr(found, name)[row] - want[name]) <= CLOSE * size, (name, row)
+        for name in NAMES:
+            assert abs(found[name][row] - want[name]) <= CLOSE * scale[name], (name, row)
 
 
 def series(kind: str, rng: np.random.Generator, n: int = 150) -> tuple[np.ndarray, np.ndarray]:
@@ -112,31 +129,32 @@ def test_any_length_of_window(window: int) -> None:
 def test_by_hand() -> None:
     """x 1, 2, 4 and y 3, 5, 4 about the means 7/3 and 4: Sxx 14/3, Sxy 1, Syy 2."""
     found = one_security(np.array([9.0, 1.0, 2.0, 4.0]), np.array([9.0, 3.0, 5.0, 4.0]), window=3)
-    assert found.n.tolist() == [1, 2, 3, 3]
-    got = [found.mean_x[3], found.mean_y[3], found.sxx[3], found.sxy[3], found.syy[3]]
-    np.testing.assert_allclose(got, [7 / 3, 4, 14 / 3, 1, 2], rtol=1e-14)  # a few roundings
-    assert found.residual_ss[3] == pytest.approx(2 - 3 / 14, rel=1e-14)
+    assert found["n"].tolist() == [0, 2, 3, 3]  # one month alone does not vary
+    got = [found[name][3] for name in NAMES]
+    np.testing.assert_allclose(got, [7 / 3, 4, 14 / 3, 1, 2, 2 - 3 / 14], rtol=1e-14)
 
 
 def test_a_hole_uses_up_its_periods() -> None:
     period = np.array([0, 1, 2, 5, 6, 20])
-    x = np.arange(1.0, 7.0)
-    found = pair_moments(np.array([0, 6]), period, x, 2 * x, window=4)
-    assert found.n.tolist() == [1, 2, 3, 2, 2, 1]  # period 5 sees 2 and 5; 6 sees 5 and 6
-    assert found.mean_x.tolist() == [1.0, 1.5, 2.0, 3.5, 4.5, 6.0]
+    x = np.arange(1.0, 22.0)
+    found = moments(np.array([0, 6]), period, x, 2 * x[period], window=4)
+    assert found["n"].tolist() == [0, 2, 3, 2, 2, 0]  # period 5 sees 2 and 5; 6 sees 5 and 6
+    assert found["mean_x"][1:5].tolist() == [1.5, 2.0, 4.5, 6.5]
 
 
 def test_securities_do_not_mix() -> None:
     rng = np.random.default_rng(3)
-    parts = [series("missing", rng, n) for n in (5, 40, 1, 70)]
-    starts = np.cumsum([0, *(len(x) for x, _ in parts)])
-    period = np.concatenate([np.arange(len(x)) + 7 * i for i, (x, _) in enumerate(parts)])
-    x, y = (np.concatenate([part[k] for part in parts]) for k in (0, 1))
-    together = pair_moments(starts, period, x, y, WINDOW)
-    alone = [one_security(*part) for part in parts]
-    for name in vars(together):
-        expected = np.concatenate([getattr(each, name) for each in alone])
-        np.testing.assert_array_equal(getattr(together, name), expected)
+    x = rng.normal(size=120)
+    rows = [np.arange(first, first + n) for first, n in ((7, 5), (30, 40), (0, 1), (21, 70))]
+    parts = [(at, rng.normal(size=len(at))) for at in rows]
+    starts = np.cumsum([0, *map(len, rows)])
+    together = moments(
+        starts, np.concatenate(rows), x, np.concatenate([y for _, y in parts]), WINDOW
+    )
+    alone = [moments(np.array([0, len(at)]), at, x, y, WINDOW) for at, y in parts]
+    for name in together:
+        expected = np.concatenate([each[name] for each in alone])
+        np.testing.assert_array_equal(together[name], expected)
 
 
 def test_an_outlier_leaves_nothing_behind() -> None:
@@ -146,30 +164,51 @@ def test_an_outlier_leaves_nothing_behind() -> None:
     wild_x[50], wild_y[50] = -1e6, 1e6
     calm, wild = one_security(x, y), one_security(wild_x, wild_y)
     outside = np.r_[0:50, 50 + WINDOW : len(x)]
-    for name in vars(calm):
-        np.testing.assert_array_equal(getattr(wild, name)[outside], getattr(calm, name)[outside])
+    for name in calm:
+        np.testing.assert_array_equal(wild[name][outside], calm[name][outside])
 
 
 def test_constant_series_have_no_variation_at_all() -> None:
     level = np.full(60, 0.1)  # 0.1 has no exact float64, so that a plain mean of 60 misses it
-    found = one_security(level, level)
-    for name in ("sxx", "sxy", "syy", "residual_ss"):
-        assert not getattr(found, name).any()
+    x = np.random.default_rng(5).normal(size=60)
+    assert not one_security(level, x)["n"].any()
+    found = one_security(x, level)
+    for name in ("sxy", "syy", "residual_ss"):
+        assert not found[name][1:].any()
+    assert (found["mean_y"][1:] == 0.1).all()
+
+
+def test_factors_that_mix_into_one_another_give_nothing() -> None:
+    rng = np.random.default_rng(6)
+    two = rng.normal(size=(80, 2))
+    mixed = np.column_stack([two, two @ [0.3, -1.1]])
+    sample = Sample(np.array([0, 80]), np.arange(80), rng.normal(size=80), mixed)
+    found = fit_windows(sample, window=WINDOW, min_obs=10)
+    assert (len(found.row), found.n_too_few, found.n_no_variation) == (0, 9, 71)
 
 
 def test_nothing_where_no_pair_is_complete() -> None:
     x = np.array([np.nan, 1.0, np.nan])
-    found = one_security(x, x[::-1] * np.nan)
-    assert all(not getattr(found, name).any() for name in vars(found))
+    assert not one_security(x, x[::-1] * np.nan)["n"].any()
 
 
 def test_no_rows_and_empty_securities() -> None:
-    nothing = np.zeros(0)
-    assert len(pair_moments(np.array([0]), nothing, nothing, nothing, 3).n) == 0
-    found = pair_moments(np.array([0, 0, 2, 2]), np.arange(2), np.arange(2.0), np.ones(2), 3)
-    assert found.n.tolist() == [1, 2]
+    nothing, x = np.zeros(0), np.arange(2.0)
+    assert len(moments(np.array([0]), nothing.astype(int), x, nothing, 3)["n"]) == 0
+    found = moments(np.array([0, 0, 2, 2]), np.arange(2), x, np.ones(2), 3)
+    assert found["n"].tolist() == [0, 2]
 
 
-def test_a_window_has_a_period() -> None:
-    with pytest.raises(ValueError, match="a window of 0 periods"):
-        one_security(np.ones(3), np.ones(3), window=0)
+def test_windows_may_end_before_the_first_period() -> None:
+    x = np.random.default_rng(7).normal(size=10)
+    sample = Sample(np.array([0, 10]), np.arange(10), x**2, x[:, None])
+    ends = WindowEnds(np.array([0, 3]), np.array([-4, -1, 9]))
+    found = fit_windows(sample, window=5, min_obs=3, ends=ends)
+    assert (found.row.tolist(), found.n_too_few) == ([2], 2)
+
+
+@pytest.mark.parametrize("bad", [{"window": 0, "min_obs": 3}, {"window": 3, "min_obs": 2}])
+def test_a_window_has_a_period_and_a_standard_error_three(bad: dict[str, int]) -> None:
+    sample = Sample(np.array([0, 3]), np.arange(3), np.ones(3), np.ones((3, 1)))
+    with pytest.raises(ValueError, match=r"a window of 0 periods|at least 3 observations"):
+        fit_windows(sample, **bad)

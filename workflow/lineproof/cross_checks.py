@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import Any
 
 from lineproof import demo_files
+from lineproof.beta_checks import own_option_findings, shrinkage_findings, size_findings
 from lineproof.schema import Finding, nearest
 from lineproof.source_checks import source_findings
 from lineproof.yamlfile import Place, YamlFile
@@ -19,6 +20,11 @@ def _beta_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
     found: list[Finding] = []
     for name, options in content["betas"].items():
         place: Place = ("betas", name)
+        found += own_option_findings(place, options, file.content["betas"][name] or {})
+        if "from" in options:
+            found += shrinkage_findings(place, options, file.content["betas"])
+            continue
+        found += size_findings(place, options, content)
         daily = beta_returns(options, content) == "daily"
         nouns = "trading days" if daily else "months"
         if options["min"] > options["window"]:

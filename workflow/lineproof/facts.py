@@ -6,9 +6,9 @@ from dataclasses import asdict
 from typing import Any
 
 from lineproof.designs import WEIGHTS
-from lineproof.estimators import ESTIMATORS
+from lineproof.estimators import ESTIMATORS, SHRINKAGES
 from lineproof.frequency import FREQUENCIES
-from lineproof.study import SortSpec, Study
+from lineproof.study import BetaSpec, SortSpec, Study
 
 
 def facts(study: Study) -> dict[str, Any]:
@@ -53,8 +53,13 @@ def _sort_facts(sort: SortSpec, study: Study) -> dict[str, Any]:
         "weights_label": WEIGHTS[sort.weights].label.format(period=FREQUENCIES[study.frequency]),
         "form_month": sort.form_month,
         "hold": sort.hold,
-        "estimator_label": ESTIMATORS[betas.estimator].label,
+        "estimator_label": _estimator_label(betas),
         "window": betas.window,
         "window_periods": FREQUENCIES[betas.returns].counted,
         "min_obs": betas.min_obs,
     }
+
+
+def _estimator_label(betas: BetaSpec) -> str:
+    label = ESTIMATORS[betas.estimator].label
+    return f"{label}, {SHRINKAGES[betas.shrunk['shrink']].label}" if betas.shrunk else label

@@ -73,6 +73,10 @@ def _sorted_unique(*keys: str) -> pa.Check:
     return pa.Check(increases, name=f"sorted and unique by {', '.join(keys)}")
 
 
+def _others_are_numbers(frame: pd.DataFrame) -> bool:
+    return all(dtype == np.dtype(float) for dtype in frame.drop(columns="date").dtypes)
+
+
 _DATE = pa.Column("datetime64[ms]", pa.Check(_month_end, name="dates are month ends"))
 _DAY = pa.Column("datetime64[ms]", pa.Check(_whole_day, name="dates have no time of day"))
 _HAS_ROWS = pa.Check(lambda frame: len(frame) > 0, name="has rows")
@@ -108,6 +112,15 @@ MARKET = pa.DataFrameSchema(
     },
     checks=[_HAS_ROWS, _sorted_unique("date"), _RISKLESS],
     strict=True,
+)
+
+FACTORS = pa.DataFrameSchema(
+    {"date": _DATE},
+    checks=[
+        _HAS_ROWS,
+        _sorted_unique("date"),
+        pa.Check(_others_are_numbers, name="a number a factor"),
+    ],
 )
 
 SET_ASIDE = pa.DataFrameSchema(
@@ -211,6 +224,7 @@ CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "market": MARKET,
     "daily": PANEL,
     "market_daily": MARKET,
+    "factors": FACTORS,
     "set_aside": SET_ASIDE,
     "betas": BETAS,
     "members": MEMBERS,

@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     import pyarrow as pa
 
 _ROW_GROUP = 1 << 20  # rows
+_AT_ONCE = 1 << 22  # rows of whole securities
 _IN_MEMORY = 1 << 28  # bytes of scratch before it goes to disk
 _SCRATCH = ".scratch-"
 
@@ -32,6 +33,28 @@ def read_table(path: str | os.PathLike, columns: list[str] | None = None) -> pd.
     import pyarrow.parquet as pq
 
     return pq.read_table(path, columns=columns, read_dictionary=["security"]).to_pandas()
+
+
+def read_securities(
+    path: str | os.PathLike, columns: list[str], rows: int = _AT_ONCE
+) -> Iterator[pd.DataFrame]:
+    """A table sorted by security in pieces of whole securities, each of about so many rows or one security."""
+    import pyarrow as pa
+    import pyarrow.parquet as pq
+
+    with pq.ParquetFile(path, read_dictionary=["security"]) as file:
+        held = file.schema_arrow.empty_table().select(columns)
+        for group in range(file.num_row_groups):
+            table = file.read_row_group(group, columns)
+            held = pa.concat_tables([held, table]) if len(held) else table
+            if len(held) < rows or group == file.num_row_groups - 1:
+                continue
+            codes = held["security"].unify_dictionaries().to_pandas().cat.codes.to_numpy()
+            last = int((codes != codes[-1]).nonzero()[0].max(initial=-1)) + 1
+            if last:
+                yield held.slice(0, last).to_pandas()
+                held = held.slice(last)
+        yield held.to_pandas()
 
 
 def write_table(

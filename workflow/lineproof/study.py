@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import os
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
 from lineproof.cross_checks import CHECKS, beta_returns
+from lineproof.estimators import OWN_OPTIONS
 from lineproof.intake.formats import given_files, members
 from lineproof.problems import KnownProblem, Problem
 from lineproof.schema import as_problems, schema_findings, with_defaults
@@ -88,13 +89,20 @@ class IntakeSpec:
 
 @dataclass(frozen=True)
 class BetaSpec:
-    """Options of one rolling estimate of beta; `window` and `min_obs` in periods of `returns`, "monthly" or "daily"."""
+    """Options of one rolling estimate of beta; `window` and `min_obs` in periods of `returns`, "monthly" or "daily".
+
+    `factors` stand beside the market, and `own` are the keyword arguments of the estimator alone. `shrunk` is None, or
+    says how the estimates of the entry `shrunk["from"]` are shrunk: then all else is that entry's.
+    """
 
     name: str
     estimator: str
     returns: str
     window: int
     min_obs: int
+    factors: tuple[str, ...] = ()
+    own: dict[str, Any] = field(default_factory=dict)
+    shrunk: dict[str, Any] | None = None
 
 
 @dataclass(frozen=True)
@@ -160,6 +168,8 @@ class Study:
     riskless: Source | None  # None where every return is in excess of it already
     riskless_quoted: str
     riskless_frequency: str
+    factors: Source | None
+    factors_frequency: str
     intake: IntakeSpec
     betas: dict[str, BetaSpec]
     sorts: dict[str, SortSpec]
@@ -186,7 +196,7 @@ class Study:
     def sources(self) -> dict[str, Source]:
         """Every raw file by its place in the study file."""
         supplied = {f"portfolios.{n}": s.source for n, s in self.sorts.items() if s.source}
-        core = {"returns": self.returns, "market": self.market, "riskless": self.riskless}
+        core = {name: getattr(self, name) for name in ("returns", "market", "riskless", "factors")}
         named = {f"data.{name}": source for name, source in core.items() if source is not None}
         return {**named, **supplied}
 
@@ -226,10 +236,7 @@ def _build(content: dict[str, Any], path: Path) -> Study:
         returns=_source(data["returns"], path, content["study"]["name"], "returns"),
         **_series(data, path, content["study"]["name"], content["study"]["frequency"]),
         intake=_intake(content["intake"]),
-        betas={
-            name: BetaSpec(name, o["estimator"], beta_returns(o, content), o["window"], o["min"])
-            for name, o in content["betas"].items()
-        },
+        betas={name: _beta(name, content) for name in content["betas"]},
         sorts={
             name: _sort(name, options, path, content["study"]["name"])
             for name, options in content["portfolios"].items()
@@ -252,9 +259,31 @@ def _build(content: dict[str, Any], path: Path) -> Study:
     )
 
 
+_KEYWORDS = {"volatility_min": "volatility_min_obs"}  # where the function has another name
+
+
+def _beta(name: str, content: dict[str, Any]) -> BetaSpec:
+    options = content["betas"][name]
+    if "from" in options:
+        method = options["shrink"]
+        own = {key: options[key] for key in OWN_OPTIONS.get(method, {})}
+        shrunk = {"from": options["from"], "shrink": method, "own": own}
+        return replace(_beta(options["from"], content), name=name, shrunk=shrunk)
+    keys = [key for key in OWN_OPTIONS.get(options["estimator"], {}) if key != "factors"]
+    return BetaSpec(
+        name=name,
+        estimator=options["estimator"],
+        returns=beta_returns(options, content),
+        window=options["window"],
+        min_obs=options["min"],
+        factors=tuple(options.get("factors", ())),
+        own={_KEYWORDS.get(key, key): options[key] for key in keys},
+    )
+
+
 def _series(data: dict[str, Any], path: Path, study: str, frequency: str) -> dict[str, Any]:
     """What the study says of the market, the riskless rate, and which returns are in excess of it."""
-    market, riskless = data["market"], data.get("riskless")
+    market, riskless, factors = data["market"], data.get("riskless"), data.get("factors")
     returns_are = data["returns"]["is"]
     delivered = data["returns"].get("frequency", frequency)
     return {
@@ -267,6 +296,8 @@ def _series(data: dict[str, Any], path: Path, study: str, frequency: str) -> dic
         "riskless": None if riskless is None else _source(riskless, path, study, "riskless"),
         "riskless_quoted": "period_return" if riskless is None else riskless["quoted"],
         "riskless_frequency": (riskless or {}).get("frequency", delivered),
+        "factors": None if factors is None else _source(factors, path, study, "factors"),
+        "factors_frequency": (factors or {}).get("frequency", delivered),
     }
 
 

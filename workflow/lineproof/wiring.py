@@ -22,7 +22,7 @@ from lineproof.digests import Digests, ModulesNamed
 from lineproof.facts import facts
 from lineproof.paper import exhibits
 from lineproof.provenance import WORKFLOW, code_of
-from lineproof.study import Study
+from lineproof.study import BetaSpec, Study
 
 
 @dataclass(frozen=True)
@@ -114,7 +114,12 @@ class Wiring:
         if study.demo is not None:
             found["make_demo"] = dict(study.demo)
         for name, spec in study.betas.items():
-            found[f"estimate_betas-{name}"] = {**asdict(spec), "dated": study.frequency}
+            found[f"estimate_betas-{name}"] = {**_estimation(spec), "dated": study.frequency}
+        if study.factors is not None:
+            found["read_factors"] = {
+                "reading": study.factors.reading(),
+                "frequency": study.factors_frequency,
+            }
         for name in study.sorts:
             found[f"form_portfolios-{name}"] = self._sort(name)
         return found
@@ -182,12 +187,16 @@ class Wiring:
         }
 
     def beta_inputs(self, name: str) -> dict[str, str]:
-        """The panel and the market that an entry under `betas` is estimated from."""
+        """The tables that an entry under `betas` is estimated from, or the estimates that it shrinks."""
         study = self.study
+        if study.betas[name].shrunk is not None:
+            return {"betas": self.path(f"betas/{study.betas[name].shrunk['from']}.parquet")}
         if study.betas[name].returns == study.frequency:
             tables = {"panel": "panel", "market": "market"}
         else:
             tables = {"panel": "daily", "market": "market_daily"}
+        if study.betas[name].factors:
+            tables["factors"] = "factors"
         return {key: self.path(f"data/{table}.parquet") for key, table in tables.items()}
 
     def sort_inputs(self, name: str) -> list[str]:
@@ -235,6 +244,16 @@ class Wiring:
             whole = False
         if not whole:
             index.unlink()
+
+
+def _estimation(spec: BetaSpec) -> dict[str, Any]:
+    if spec.shrunk is not None:
+        return {key: spec.shrunk[key] for key in ("shrink", "own")}
+    given = {
+        key: getattr(spec, key)
+        for key in ("name", "estimator", "returns", "window", "min_obs", "own")
+    }
+    return {**given, "beside": list(spec.factors)}
 
 
 def subperiod_names(index: str | os.PathLike) -> list[str]:

@@ -25,6 +25,27 @@ checkpoint validate_returns:
         "../scripts/validate_returns.py"
 
 
+if study.factors is not None:
+
+    rule read_factors:
+        input:
+            digests=wiring.raw_digests("data.factors"),
+            options=wiring.options_file("read_factors"),
+            pins=wiring.pins,
+            code=wiring.code("read_factors"),
+        output:
+            factors=wiring.path("data/factors.parquet"),
+        log:
+            wiring.path("logs/read_factors.log"),
+        benchmark:
+            wiring.path("benchmarks/read_factors.tsv")
+        params:
+            files=list(study.factors.files),
+            options=wiring.options("read_factors"),
+        script:
+            "../scripts/read_factors.py"
+
+
 rule write_data_report:
     input:
         intake=after_validation("data/intake.json"),
