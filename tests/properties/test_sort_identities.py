@@ -15,11 +15,11 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from tests.properties.random_market import DATES, WINDOWS, draw_market
 
-from lineproof.designs import WEIGHTS
+from lineproof.designs import WEIGHTS, Design
 from lineproof.estimation import estimate_betas
 from lineproof.frames import contract
 from lineproof.periods import Periods, periods_of
-from lineproof.sorting import Sorted, sort_single_window
+from lineproof.sorting import Sorted, sort_ranked
 
 SEEDS = st.integers(0, 2**32 - 1)
 FEW = settings(max_examples=15, deadline=None, derandomize=True)
@@ -49,10 +49,15 @@ def draw(
 
 
 def form(panel: pd.DataFrame, betas: pd.DataFrame, options: dict[str, Any], weights: str) -> Sorted:
-    found = sort_single_window(panel, betas, weights=weights, **options)
-    frequency = "daily" if options["periods"].noun == "day" else "monthly"
-    contract("members", frequency).validate(found.members)
-    contract("portfolio_returns", frequency).validate(found.returns)
+    periods = options["periods"]
+    plain = {key: value for key, value in options.items() if key not in ("periods", "groups")}
+    design = Design(
+        rank_on=("b",), ante_betas=("b",), groups=(options["groups"],), weights=weights, **plain
+    )
+    found = sort_ranked(panel, {"b": betas}, design, periods=periods)
+    frequency = "daily" if periods.noun == "day" else "monthly"
+    for name, table in found.tables().items():
+        contract(name, frequency).validate(table)
     return found
 
 

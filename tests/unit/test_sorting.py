@@ -13,17 +13,27 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from lineproof.frames import MEMBERS, PORTFOLIO_RETURNS
+from lineproof.designs import Design
+from lineproof.frames import contract
 from lineproof.problems import KnownProblem
 from lineproof.sorting import (
     Sorted,
-    _lagged_size,
     asset_names,
-    sort_single_window,
+    growth_of,
+    sort_ranked,
     take_supplied,
 )
+from lineproof.stats.weights import lagged_sizes
 
-OPTIONS = {"name": "two", "groups": 2, "weights": "equal", "form_month": 12, "hold": 12}
+OPTIONS = {
+    "name": "two",
+    "groups": (2,),
+    "weights": "equal",
+    "form_month": 12,
+    "hold": 12,
+    "rank_on": ("b",),
+    "ante_betas": ("b",),
+}
 MONTHS = ["2000-12", "2001-01", "2001-02", "2001-03", "2001-04"]
 RETURNS = {
     "A": [0.50, 0.10, 0.20, -0.10, 0.02],
@@ -69,9 +79,9 @@ def betas_at(month: str, values: dict[str, float]) -> pd.DataFrame:
 
 
 def form(panel: pd.DataFrame, betas: pd.DataFrame, **changed: Any) -> Sorted:
-    found = sort_single_window(panel, betas, **(OPTIONS | changed))
-    MEMBERS.validate(found.members)
-    PORTFOLIO_RETURNS.validate(found.returns)
+    found = sort_ranked(panel, {"b": betas}, Design(**(OPTIONS | changed)))
+    for name, table in found.tables().items():
+        contract(name).validate(table)
     return found
 
 
@@ -282,7 +292,7 @@ def test_sizes_of_one_security_do_not_reach_the_next() -> None:
 @pytest.mark.fault(33)
 def test_too_many_groups() -> None:
     with pytest.raises(KnownProblem) as told:
-        form_tiny(groups=5)
+        form_tiny(groups=(5,))
     assert "portfolios.two.groups: 5 groups, but at most 4 securities" in str(told.value)
     with pytest.raises(KnownProblem, match="at most 0 securities"):
         form_tiny(form_month=6)
@@ -324,8 +334,8 @@ def market() -> pd.DataFrame:
 )
 def test_supplied_assets(kind: str, expected: list[float]) -> None:
     found = take_supplied(supplied(), market(), returns_are=kind)
-    MEMBERS.validate(found.members)
-    PORTFOLIO_RETURNS.validate(found.returns)
+    for name, table in found.tables().items():
+        contract(name).validate(table)
     assert len(found.members) == 0
     assert found.returns["asset"].tolist() == ["a", "b", "b"]
     assert found.returns["excess_return"].tolist() == expected
@@ -359,6 +369,6 @@ def test_sizes_grow_by_excess_returns_where_no_total_is_known() -> None:
             "size": [100.0, np.nan, np.nan, np.nan, np.nan, 8.0],
         }
     )
-    found = _lagged_size(panel, np.array([0, 0, 0, 0, 1, 1]))
+    found = lagged_sizes(np.array([0, 4, 6]), panel["size"].to_numpy(), growth_of(panel))
     # A product of numbers that are no binary fractions: one rounding.
     np.testing.assert_allclose(found, [np.nan, 100, 150, 150, np.nan, np.nan], rtol=1e-15)
