@@ -37,8 +37,13 @@ RULES: dict[str, Entry] = {
     "equal_counts": Entry("lineproof.stats.sorts:by_equal_counts", "parted by rank"),
 }
 
-FORM_EACH = {"month": 1, "quarter": 3, "year": 12}  # months
-ASSIGNED = ("none", "ex_ante", "full_period")
+FORM_EACH = {"month": 1, "quarter": 3, "year": 12}  # how often groups are formed, in months
+# Betas of groups that their members can get.
+ASSIGNED = {
+    "none": "no betas",
+    "ex_ante": "the group's ex-ante beta",
+    "full_period": "the group's beta in the full period",
+}
 
 
 @dataclass(frozen=True)

@@ -39,7 +39,7 @@ def from_double_sort(sources: Sequence[str], market: pd.DataFrame, **options: An
 def from_three_windows(sources: Sequence[str], market: pd.DataFrame, **options: Any) -> Sorted:
     """Ranked on the betas of one window, with ex-ante betas from the next and held for a third, in blocks that follow
     one another (Fama and MacBeth 1973); the sources as of a single window."""
-    return _ranked(sources, market, in_blocks=True, renews=True, **options)
+    return _ranked(sources, market, **options)
 
 
 def _ranked(

@@ -174,11 +174,12 @@ class Wiring:
                 "reading": spec.source.reading(),
                 "returns_are": spec.returns_are,
             }
+        assert spec.ranked is not None
         return {
             "design": spec.design,
             "frequency": self.study.frequency,
-            "name": name,
-            **{key: getattr(spec, key) for key in ("groups", "weights", "form_month", "hold")},
+            "estimates": list(spec.estimates),
+            **{key: _plain(value) for key, value in asdict(spec.ranked).items()},
         }
 
     def beta_inputs(self, name: str) -> dict[str, str]:
@@ -195,7 +196,8 @@ class Wiring:
         spec = self.study.sorts[name]
         if spec.source is not None:
             return list(spec.source.files)
-        return [self.path("data/panel.parquet"), self.path(f"betas/{spec.rank_on}.parquet")]
+        betas = [self.path(f"betas/{each}.parquet") for each in spec.estimates]
+        return [self.path("data/panel.parquet"), *betas]
 
     @property
     def tables_between(self) -> list[str]:
@@ -203,15 +205,14 @@ class Wiring:
         sorts = [
             f"portfolios/{name}/{kind}.parquet"
             for name in self.study.sorts
-            for kind in ("members", "returns")
+            for kind in ("members", "returns", "formations", "transitions", "assigned")
         ]
         return [*(f"betas/{name}.parquet" for name in self.study.betas), *sorts]
 
     @property
     def main_betas(self) -> list[str]:
-        """The estimate that the main test assets are ranked on, in a list; empty where they are supplied."""
-        ranked_on = self.study.sorts[self.study.paper.main].rank_on
-        return [] if ranked_on is None else [ranked_on]
+        """The first estimate that the main test assets are ranked on, in a list; empty where there is none."""
+        return list(self.study.sorts[self.study.paper.main].estimates[:1])
 
     @cached_property
     def tables(self) -> list[str]:
@@ -235,6 +236,11 @@ class Wiring:
             whole = False
         if not whole:
             index.unlink()
+
+
+def _plain(value: Any) -> Any:
+    """A tuple as the list that it is in a file of options."""
+    return list(value) if isinstance(value, tuple) else value
 
 
 def subperiod_names(index: str | os.PathLike) -> list[str]:
