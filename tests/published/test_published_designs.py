@@ -7,21 +7,26 @@ French 1992, "The Cross-Section of Expected Stock Returns".
 from __future__ import annotations
 
 
+from pathlib import Path
+
 import numpy as np
 import pandas as pd
 import pytest
 from tests.pipeline.conftest import ROOT
 
-
 from lineproof import store
+from lineproof.demo import make_demo
+from lineproof.demo_files import RAW
 from lineproof.estimation import estimate_betas
 from lineproof.forming import form_portfolios
 from lineproof.frames import contract
 from lineproof.sorting import Sorted
 from lineproof.stats.sorts import by_equal_counts, group_sizes
 from lineproof.study import Study, load_study
+from lineproof.validation import validate_returns
 from lineproof.wiring import Wiring
 
+SETS_BREAKPOINTS = ["energy", "machinery", "financials"]
 BJS, FM, FF = "black_jensen_scholes_1972", "fama_macbeth_1973", "fama_french_1992"
 
 
@@ -32,41 +37,22 @@ def study() -> Study:
 
 @pytest.fixture(scope="module")
 def tables(tmp_path_factory: pytest.TempPathFactory, study: Study) -> dict[str, pd.DataFrame]:
-    """Thirty-five years of a few hundred securities, and the betas that the study file asks for."""
-    panel, market = _long_market()
+    """The demo market after its intake, and the betas that the study file asks for."""
+    raw = tmp_path_factory.mktemp("raw")
+    store.write_files({n: text for n, text in make_demo(**study.demo).items() if n in RAW}, raw)
+    wiring = Wiring(study)
+    files = {
+        name: [str(raw / Path(file).name) for file in paths]
+        for name, paths in wiring.raw_files.items()
+    }
+    with store.Scratch(raw) as scratch:
+        taken = validate_returns(files, scratch, **wiring.options("validate_returns"))
+        panel = pd.concat([batch["panel"] for batch in taken.tables()], ignore_index=True)
+        market = taken.markets()["market"]
     found = {"panel": panel, "market": market}
-    for name, spec in study.betas.items():
-        found[name] = estimate_betas(
-            panel, market, name=name, estimator=spec.estimator, window=spec.window, min_obs=spec.min_obs
-        )
+    for name in study.betas:
+        found[name] = estimate_betas(panel, market, **wiring.options(f"estimate_betas-{name}"))
     return found
-
-
-def _long_market(n_months: int = 420, n_securities: int = 260) -> tuple[pd.DataFrame, pd.DataFrame]:
-    rng = np.random.default_rng(19731992)
-    dates = pd.date_range("1970-01-31", periods=n_months, freq="ME", unit="ms")
-    factor = rng.normal(0.006, 0.045, n_months)
-    market = pd.DataFrame({"date": dates, "market_excess": factor, "riskless": 0.003})
-    parts = []
-    for number in range(n_securities):
-        first = 0 if number % 3 else int(rng.integers(0, n_months - 100))
-        last = n_months if number % 4 else int(rng.integers(first + 60, n_months + 1))
-        excess = rng.uniform(0.3, 1.8) * factor + rng.normal(0.0, 0.08, n_months)
-        size = rng.lognormal(5, 1.5) * np.cumprod(1 + np.maximum(excess, -0.9))
-        parts.append(
-            pd.DataFrame(
-                {
-                    "security": f"S{number:03d}",
-                    "date": dates,
-                    "total_return": excess + 0.003,
-                    "excess_return": excess,
-                    "size": size,
-                    "eligible": True,
-                    "sector": ["HARBOUR", "MILLS", "RAIL"][number % 3],
-                }
-            ).iloc[first:last]
-        )
-    return pd.concat(parts, ignore_index=True), market
 
 
 @pytest.fixture(scope="module")
@@ -157,16 +143,16 @@ def test_fama_french_sorts_by_size_and_inside_by_beta(
 ) -> None:
     members = formed[FF].members.astype({"security": str, "asset": str})
     assert set(members["formed"].dt.month) == {6}
-    sector = tables["panel"].groupby("security")["sector"].first()
+    sector = tables["panel"].astype({"security": str}).groupby("security")["sector"].first()
     here = members[members["formed"] == members["formed"].max()]
-    marks = here[here["security"].map(sector) == "HARBOUR"]
+    marks = here[here["security"].map(sector).isin(SETS_BREAKPOINTS)]
     sizes = np.quantile(marks["size"], [0.2, 0.4, 0.6, 0.8])
     of_size = np.searchsorted(sizes, here["size"]) + 1
     assert here["asset"].str[1:3].astype(int).tolist() == of_size.tolist()
     for group in range(1, 6):
         inner = here[of_size == group]
-        harbour = inner["security"].map(sector) == "HARBOUR"
-        cuts = np.quantile(inner.loc[harbour, "ante_beta"], [0.2, 0.4, 0.6, 0.8])
+        marked = inner["security"].map(sector).isin(SETS_BREAKPOINTS)
+        cuts = np.quantile(inner.loc[marked, "ante_beta"], [0.2, 0.4, 0.6, 0.8])
         got = inner["asset"].str[4:].astype(int).tolist()
         assert got == (np.searchsorted(cuts, inner["ante_beta"]) + 1).tolist()
 
