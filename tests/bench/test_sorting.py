@@ -26,12 +26,14 @@ N_MONTHS, GROUPS = 1150, 10
 
 
 def made_panel(n_rows: int) -> tuple[pd.DataFrame, pd.DataFrame]:
-    """Unbalanced histories of 188 months on average, and a beta for every row."""
+    """Unbalanced histories of up to 352 months, as many alive in any month, and a beta for every row."""
     rng = np.random.default_rng(47)
     dates = pd.date_range("1926-01-31", periods=N_MONTHS, freq="ME", unit="ms")
-    lengths = rng.integers(24, 353, n_rows // 188 + 1)
-    first = (rng.random(len(lengths)) * (N_MONTHS - lengths)).astype(int)
-    month = np.concatenate([np.arange(a, a + n) for a, n in zip(first, lengths, strict=True)])
+    lengths = rng.integers(24, 353, n_rows // 160 + 1)
+    first = rng.integers(-lengths + 1, N_MONTHS)
+    lengths = np.minimum(first + lengths, N_MONTHS) - np.maximum(first, 0)
+    spans = zip(np.maximum(first, 0), lengths, strict=True)
+    month = np.concatenate([np.arange(a, a + n) for a, n in spans])
     names = pd.Index([f"{number:06d}" for number in range(len(lengths))], dtype=str)
     security = pd.Categorical.from_codes(np.repeat(np.arange(len(lengths)), lengths), names)
     n = len(month)

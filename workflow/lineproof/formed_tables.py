@@ -15,6 +15,7 @@ from lineproof.designs import WEIGHTS, Design
 from lineproof.periods import ABSENT
 from lineproof.ranking import PanelRows, Ranked
 from lineproof.stats.holding import Held, Rows, assign, in_order
+from lineproof.stats.moving import moves, turnover
 from lineproof.stats.weights import scaled_to_one
 
 RETURN_COLUMNS = ["asset", "date", "excess_return", "n_members", "mean_size", "ante_beta"]
@@ -88,11 +89,12 @@ def members(formed: Formed) -> pd.DataFrame:
         {
             "formed": formed.dates[formed.ranked.formation_of[order]],
             "asset": _named(f.group[order], formed.assets),
-            "security": _named(formed.rows.owner[row], formed.rows.names),
+            "security": _named(f.security[order], formed.rows.names),
             "weight": formed.weight[order],
             "ante_beta": formed.ante_beta[order],
             "size": formed.rows.panel["size"].to_numpy()[row],
-        }
+        },
+        copy=False,
     )
 
 
@@ -173,7 +175,7 @@ def formations(formed: Formed) -> pd.DataFrame:
 
     weighed = total(np.where(with_beta, formed.weight, 0.0))
     part = total(np.where(with_beta, formed.weight * beta, 0.0))
-    leaves = formed.rows.last[formed.rows.owner[f.row]] < f.last[formed.ranked.formation_of]
+    leaves = formed.rows.last[f.security] < f.last[formed.ranked.formation_of]
     return pd.DataFrame(
         {
             "formed": np.repeat(formed.dates, f.n_groups),
@@ -188,61 +190,31 @@ def formations(formed: Formed) -> pd.DataFrame:
 
 
 def _turnover(formed: Formed) -> np.ndarray:
-    """½ Σ |new weight − drifted weight| over the members old and new of each group, (n_cells,).
-
-    The old ones are those whose hold ends at the formation; NaN where there are none with a weight.
-    """
+    """Turnover from the groups whose hold ends at each formation, as they have drifted, (n_cells,)."""
     ranked, f = formed.ranked, formed.ranked.formations
-    security = formed.rows.owner[f.row]
     drifted = scaled_to_one(formed.held.drifted, formed.cell, formed.n_cells)
-    old_weight = np.zeros(len(formed.rows.names))
-    old_group = np.full(len(formed.rows.names), -1)
-    found = np.full((len(ranked.month), f.n_groups), np.nan)
-    place = {int(month): at for at, month in enumerate(ranked.month)}
-    for now, month in enumerate(ranked.month):
-        ended = place.get(int(month) - formed.design.hold)
-        if ended is None:
-            continue
-        old, new = (slice(f.starts[at], f.starts[at + 1]) for at in (ended, now))
-        old_weight[security[old]], old_group[security[old]] = drifted[old], f.group[old]
-        stays = old_group[security[new]] == f.group[new]
-        kept = np.where(stays, old_weight[security[new]], 0.0)
-        moved = np.bincount(f.group[new], np.abs(formed.weight[new] - kept) - kept, f.n_groups)
-        held = np.bincount(f.group[old], drifted[old], f.n_groups)
-        found[now] = np.where(held > 0, np.maximum(moved + held, 0.0) / 2, np.nan)
-        old_group[security[old]] = -1
-    return found.ravel()
+    begun = ranked.month - formed.design.hold
+    at = np.minimum(np.searchsorted(ranked.month, begun), len(begun) - 1)
+    ended = np.where(ranked.month[at] == begun, at, -1)
+    given = (f.starts, f.security, f.group, formed.weight, drifted, ended)
+    return turnover(*given, f.n_securities, f.n_groups).ravel()
 
 
 def transitions(formed: Formed) -> pd.DataFrame:
     """Where the members of each group are at the next formation, dated by that."""
-    f, security = formed.ranked.formations, formed.rows.owner[formed.ranked.formations.row]
-    n_states = f.n_groups + 1  # the last is no group: new, or out
-    group = np.full(len(formed.rows.names), f.n_groups)
-    parts = []
-    for now in range(1, len(formed.dates)):
-        old, new = (slice(f.starts[at], f.starts[at + 1]) for at in (now - 1, now))
-        both = np.union1d(security[old], security[new])
-        before, after = group.copy(), group.copy()
-        before[security[old]], after[security[new]] = f.group[old], f.group[new]
-        moves = np.bincount(before[both] * n_states + after[both], minlength=n_states**2)
-        moves = moves.reshape(n_states, n_states)
-        came, went = np.nonzero(moves)
-        n = moves[came, went]
-        parts.append((np.full(len(n), now), came, went, n, n / moves.sum(axis=1)[came]))
-    if not parts:
-        return empty()["transitions"]
-    now, came, went, n, share = (np.concatenate(each) for each in zip(*parts, strict=True))
-    frame = pd.DataFrame(
+    f = formed.ranked.formations
+    now, came, went, n = moves(f.starts, f.security, f.group, f.n_securities, f.n_groups)
+    left = now * (f.n_groups + 1) + came
+    total = np.bincount(left, n)[left] if len(left) else np.empty(0)
+    return pd.DataFrame(
         {
             "formed": formed.dates[now],
-            "from": pd.Series(np.append(formed.assets, NEW)[came], dtype=str),
-            "to": pd.Series(np.append(formed.assets, OUT)[went], dtype=str),
+            "from": pd.Series(np.append(NEW, formed.assets)[came], dtype=str),
+            "to": pd.Series(np.append(OUT, formed.assets)[went], dtype=str),
             "n": n,
-            "share": share,
+            "share": n / total,
         }
     )
-    return frame.sort_values(["formed", "from", "to"], ignore_index=True)
 
 
 def assigned(

@@ -198,6 +198,7 @@ def _formations(rows: PanelRows, found: _Cells, design: Design) -> Formations:
     years = np.arange(1, -(-design.hold // 12)) if design.renews else np.empty(0, np.int64)
     return Formations(
         starts=np.concatenate([[0], np.cumsum(found.counts)]).astype(np.int64),
+        security=rows.owner[found.row],
         row=found.row,
         end=rows.starts[rows.owner[found.row] + 1],
         group=found.cell,
@@ -205,6 +206,7 @@ def _formations(rows: PanelRows, found: _Cells, design: Design) -> Formations:
         last=np.searchsorted(rows.month, month + design.hold, side="right") - 1,
         renewed=rows.closing(month[:, None] + 12 * years) if len(formed) else np.empty((0, 0), int),
         n_groups=int(np.prod(design.groups)),
+        n_securities=len(rows.names),
     )
 
 

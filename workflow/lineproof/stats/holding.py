@@ -1,7 +1,7 @@
 """What groups return while they are held, compiled: the only loop over members and periods.
 
 Each formation is held on its own, from the period after it to the last of its holding period, and its sums go to cells
-of its own; so formations run side by side, and the order of a sum depends on the members alone.
+of its own; so blocks of formations run side by side, and the order of a sum depends on the members alone.
 """
 
 from __future__ import annotations
@@ -16,6 +16,7 @@ from numba import njit, prange
 # weights of the members with one.
 _WEIGHT, _RETURN, _MEMBERS, _SIZE, _SIZED, _BETA, _WITH_BETA = range(7)
 _N_SUMS = 7
+_N_BLOCKS = 16
 
 
 @dataclass(frozen=True)
@@ -42,13 +43,15 @@ class Rows:
 class Formations:
     """Groups by formation, ascending in time.
 
-    Members are listed by formation, parted by `starts` (n_formations + 1,): the `row` of each at
-    its formation, the `end` of its security's rows, and its `group` from 0. `formed` and `last`
+    Members are listed by formation, parted by `starts` (n_formations + 1,): the `security` of each, a
+    number below `n_securities`, its `row` at the formation, the `end` of its security's rows, and its
+    `group` from 0. `formed` and `last`
     (n_formations,) are the period of the formation and the last one of its holding period;
     `renewed` (n_formations, n_renewals) are the periods at whose ends ex-ante betas are taken anew.
     """
 
     starts: np.ndarray
+    security: np.ndarray
     row: np.ndarray
     end: np.ndarray
     group: np.ndarray
@@ -56,6 +59,7 @@ class Formations:
     last: np.ndarray
     renewed: np.ndarray
     n_groups: int
+    n_securities: int
 
     @cached_property
     def cells(self) -> np.ndarray:
@@ -120,17 +124,29 @@ def _ratio(part: np.ndarray, whole: np.ndarray) -> np.ndarray:
 
 def _arguments(rows: Rows, f: Formations) -> tuple:
     of_rows = (rows.period, rows.excess, rows.growth, rows.size, rows.weight, rows.beta)
-    of_members = (f.starts, f.row, f.end, f.group)
-    return (*of_rows, rows.drifts, *of_members, f.formed, f.last, f.renewed, f.cells)
+    return (*of_rows, rows.drifts, *_in_blocks(f), f.row, f.end, f.group, f.formed, f.last, f.renewed, f.cells)
+
+
+def _in_blocks(f: Formations) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Where blocks of formations begin among the members, the members of each in the order of their rows, and the
+    formation of each: what is read then lies together, and sums still run in the order of the securities."""
+    first = np.linspace(0, len(f.formed), _N_BLOCKS + 1).astype(np.int64)
+    formation_of = np.repeat(np.arange(len(f.formed)), np.diff(f.starts))
+    begins = f.starts[first]
+    block = np.repeat(np.arange(_N_BLOCKS), np.diff(begins))
+    security, n_securities = f.security, f.n_securities
+    return begins, in_order(block * n_securities + security, _N_BLOCKS * n_securities), formation_of
 
 
 @njit(cache=True, parallel=True)
 def _hold(
-    period, excess, growth, size, weight, beta, drifts, starts, row, end, group,
+    period, excess, growth, size, weight, beta, drifts, begins, order, formation_of, row, end, group,
     formed, last, renewed, cells, out, drifted,
 ):  # fmt: skip  # pragma: no cover - compiled
-    for f in prange(len(formed)):
-        for member in range(starts[f], starts[f + 1]):
+    for block in prange(len(begins) - 1):
+        for place in range(begins[block], begins[block + 1]):
+            member = order[place]
+            f = formation_of[member]
             drifted[member] = _one_member(
                 period, excess, growth, size, weight, beta, drifts, row[member], end[member],
                 formed[f], last[f], renewed[f], out[cells[f] : cells[f + 1], group[member]],
