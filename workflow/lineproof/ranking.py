@@ -123,13 +123,13 @@ def rank(
     rows: PanelRows,
     ranks: Sequence[np.ndarray],
     antes: Sequence[np.ndarray],
-    marks: np.ndarray,
+    marks: np.ndarray | None,
     design: Design,
 ) -> Ranked:
     """Form groups by a design.
 
     `ranks` are the variables to rank on, `antes` the ex-ante betas by year, `marks` whether a row
-    sets breakpoints; all (n_rows,). Who can be ranked at the end of month s has a row there that
+    sets breakpoints, None if every one does; all (n_rows,). Who can be ranked at the end of month s has a row there that
     passes the screens, a weight above zero, an ex-ante beta where the design asks for one, and the
     variables, dated s or as many months earlier as the design estimates anew.
     """
@@ -140,9 +140,8 @@ def rank(
     for place in _in_turn(rows.month[formed], counts, design):
         part = slice(starts[place], starts[place] + counts[place])
         values = [each[ranked_at[part]] for each in ranks]
-        found = sorted_cells(
-            values, design.groups, rule, marks[can[part]], dependent=design.dependent
-        )
+        of_part = None if marks is None else marks[can[part]]
+        found = sorted_cells(values, design.groups, rule, of_part, dependent=design.dependent)
         if found is not None:
             kept.append(place)
             groups.append(found)

@@ -70,8 +70,10 @@ def sort_ranked(
     """
     periods = Months() if periods is None else periods
     rows = PanelRows.of(panel, periods)
-    ranks = [_variable(rows, estimates, asked, design) for asked in design.rank_on]
-    antes = [_variable(rows, estimates, asked, design) for asked in design.ante_betas]
+    asked = dict.fromkeys((*design.rank_on, *design.ante_betas))
+    found = {each: _variable(rows, estimates, each, design) for each in asked}
+    ranks = [found[each] for each in design.rank_on]
+    antes = [found[each] for each in design.ante_betas]
     ranked = rank(rows, ranks, antes, _marks(rows, design), design)
     if len(ranked.month) == 0:
         found = f"{np.prod(design.groups)} groups, but at most {ranked.most} securities can be ranked in a formation month"
@@ -136,10 +138,10 @@ class _Columns:
 _AS_TABLED = {"return": "total_return"}
 
 
-def _marks(rows: PanelRows, design: Design) -> np.ndarray:
-    """Whether each row meets the condition on who sets breakpoints: bool (n_rows,)."""
+def _marks(rows: PanelRows, design: Design) -> np.ndarray | None:
+    """Whether each row meets the condition on who sets breakpoints: bool (n_rows,), None where every one does."""
     if design.breakpoints is None:
-        return np.ones(len(rows.period), bool)
+        return None
     column = design.breakpoints["column"]
     values, texts = {}, {}
     if column != "security":

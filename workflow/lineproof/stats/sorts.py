@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Sequence
 
 import numpy as np
 
-# (values, n_groups, marks): the group of each value from 1 on; `marks` says which values set the breakpoints.
-Rule = Callable[[np.ndarray, int, np.ndarray], np.ndarray]
+Marks = np.ndarray | None  # which values set the breakpoints, bool (n,); None for all
+Rule = Callable[[np.ndarray, int, Marks], np.ndarray]  # the group of each value, from 1 on
 
 
 def breakpoints(values: np.ndarray, n_groups: int) -> np.ndarray:
@@ -39,15 +40,16 @@ def ranked_groups(values: np.ndarray, n_groups: int) -> np.ndarray:
         raise ValueError(f"{len(values)} values cannot fill {n_groups} groups")
     if np.isnan(values).any():
         raise ValueError("a missing value cannot be ranked")
-    return by_quantiles(values, n_groups, np.ones(len(values), bool))
+    return by_quantiles(values, n_groups, None)
 
 
-def by_quantiles(values: np.ndarray, n_groups: int, marks: np.ndarray) -> np.ndarray:
+def by_quantiles(values: np.ndarray, n_groups: int, marks: Marks) -> np.ndarray:
     """Groups parted at the quantiles of the values marked, of which there is one at least."""
-    return np.searchsorted(breakpoints(values[marks], n_groups), values, side="left") + 1
+    set_by = values if marks is None else values[marks]
+    return np.searchsorted(breakpoints(set_by, n_groups), values, side="left") + 1
 
 
-def by_equal_counts(values: np.ndarray, n_groups: int, marks: np.ndarray) -> np.ndarray:
+def by_equal_counts(values: np.ndarray, n_groups: int, marks: Marks) -> np.ndarray:
     """Groups of `group_sizes` by rank; equal values rank in the order given. `marks` is not used."""
     group = np.empty(len(values), np.int64)
     sizes = group_sizes(len(values), n_groups)
@@ -72,7 +74,7 @@ def sorted_cells(
     values: Sequence[np.ndarray],
     n_groups: Sequence[int],
     rule: Rule,
-    marks: np.ndarray,
+    marks: Marks,
     *,
     dependent: bool = False,
 ) -> np.ndarray | None:
@@ -82,8 +84,9 @@ def sorted_cells(
     variable inside the cells of those before it, an independent one among all. None where there
     are fewer securities than cells, or no security that sets a breakpoint is in a cell to be parted.
     """
-    n = len(marks)
-    if n < np.prod(n_groups) or marks.sum() < (n_groups[0] if dependent else max(n_groups)):
+    n = len(values[0])
+    n_marked = n if marks is None else marks.sum()
+    if n < math.prod(n_groups) or n_marked < (n_groups[0] if dependent else max(n_groups)):
         return None
     cell = np.zeros(n, np.int64)
     for place, (each, count) in enumerate(zip(values, n_groups, strict=True)):
@@ -96,18 +99,19 @@ def sorted_cells(
 
 
 def _among_all(
-    values: np.ndarray, count: int, rule: Rule, marks: np.ndarray, _: np.ndarray
+    values: np.ndarray, count: int, rule: Rule, marks: Marks, _: np.ndarray
 ) -> np.ndarray:
     return rule(values, count, marks)
 
 
 def _within_cells(
-    values: np.ndarray, count: int, rule: Rule, marks: np.ndarray, cell: np.ndarray
+    values: np.ndarray, count: int, rule: Rule, marks: Marks, cell: np.ndarray
 ) -> np.ndarray | None:
     group = np.empty(len(values), np.int64)
     for part in np.unique(cell):
         here = cell == part
-        if not marks[here].any():
+        inside = None if marks is None else marks[here]
+        if inside is not None and not inside.any():
             return None
-        group[here] = rule(values[here], count, marks[here])
+        group[here] = rule(values[here], count, inside)
     return group
