@@ -78,7 +78,10 @@ def with_polars(panel: Any, betas: Any) -> Any:
     pl = polars
     value = pl.col("beta")
     cuts = [value.quantile(k / GROUPS, "linear") < value for k in range(1, GROUPS)]
-    held = [pl.col(name).shift().over("security").alias(new) for name, new in (("group", "held"), ("size", "lagged"))]
+    held = [
+        pl.col(name).shift().over("security").alias(new)
+        for name, new in (("group", "held"), ("size", "lagged"))
+    ]
     weighed = (pl.col("excess_return") * pl.col("lagged")).sum() / pl.col("lagged").sum()
     query = panel.lazy().join(betas.lazy(), on=["security", "date"])
     query = query.with_columns(group=pl.sum_horizontal(cuts).over("date"))

@@ -36,7 +36,11 @@ def estimates(
 
 def _common(rng: np.random.Generator) -> dict[str, Any]:
     rule = str(rng.choice(list(RULES)))
-    some = {"column": "sector", "in": SECTORS[:2]} if rule == "quantiles" and rng.random() < 0.4 else None
+    some = (
+        {"column": "sector", "in": SECTORS[:2]}
+        if rule == "quantiles" and rng.random() < 0.4
+        else None
+    )
     return {
         "name": "random",
         "rule": rule,
@@ -55,9 +59,12 @@ def _when(rng: np.random.Generator) -> dict[str, Any]:
 
 
 def _single_window(rng: np.random.Generator) -> dict[str, Any]:
-    ranked_on, ante = [("b", ("b",)), ("b.residual_sd", ("c",)), ("size", ()), ("price", ("b", "c"))][
-        rng.integers(4)
-    ]
+    ranked_on, ante = [
+        ("b", ("b",)),
+        ("b.residual_sd", ("c",)),
+        ("size", ()),
+        ("price", ("b", "c")),
+    ][rng.integers(4)]
     several = len(ante) > 1
     return {
         "rank_on": (ranked_on,),

@@ -189,7 +189,9 @@ class SlowSort:
                 known = known if isnan(newer) else newer
         return known
 
-    def held(self, formed: int, place: int) -> dict[tuple[int, ...], list[tuple[str, float, float, float]]]:
+    def held(
+        self, formed: int, place: int
+    ) -> dict[tuple[int, ...], list[tuple[str, float, float, float]]]:
         """Security, weight, excess return and ex-ante beta of the members with a return, by group."""
         found: dict[tuple[int, ...], list] = {}
         for security, group in self.formations[formed].items():

@@ -120,9 +120,7 @@ def ranked(
     return form_portfolios(sources, factor, design=kind, estimates=["b", "c"], **given)
 
 
-def supplied(
-    market: Market, frequency: str, weights: str, seed: int, folder: Path
-) -> Sorted:
+def supplied(market: Market, frequency: str, weights: str, seed: int, folder: Path) -> Sorted:
     """The first securities of the panel stand for supplied assets, which nobody weighs or forms."""
     panel, factor = market
     columns = {"asset": "security", "date": "date", "return": "total_return"}
@@ -157,7 +155,9 @@ def assert_no_look_ahead(before: Sorted, after: Sorted, cut: pd.Timestamp) -> No
     tables, other = before.tables(), after.tables()
     for name, table in tables.items():
         dated = "formed" if "formed" in table else "date"
-        one, two = (frame.drop(columns="n_exits", errors="ignore") for frame in (table, other[name]))
+        one, two = (
+            frame.drop(columns="n_exits", errors="ignore") for frame in (table, other[name])
+        )
         names = [column for column in ("security", "asset") if column in one]
         one, two = (frame.astype(dict.fromkeys(names, str)) for frame in (one, two))
         if name == "portfolio_returns":

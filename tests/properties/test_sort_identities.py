@@ -104,9 +104,15 @@ def test_equals_a_slow_loop(kind: str, weights: str, frequency: str, seed: int) 
         for row in assets[["asset", "date"]].itertuples(index=False)
     ]
     np.testing.assert_allclose(assets[RETURNS].to_numpy(), values, **CLOSE)
-    held = [place for place in range(len(slow.calendar)) if any(
-        members for formed in slow.in_force(place) for members in slow.held(formed, place).values()
-    )]
+    held = [
+        place
+        for place in range(len(slow.calendar))
+        if any(
+            members
+            for formed in slow.in_force(place)
+            for members in slow.held(formed, place).values()
+        )
+    ]
     first, last = slow.places[assets["date"].min()], slow.places[assets["date"].max()]
     assert (first, last) == (held[0], held[-1])
 
@@ -186,7 +192,8 @@ def test_groups_rebuild_the_market_of_their_members(
             whole = sum(w for w, _ in every)
             if whole > 0:
                 weighed = {
-                    asset: sum(w for _, w, _, _ in held.get(group, [])) for asset, group in groups.items()
+                    asset: sum(w for _, w, _, _ in held.get(group, []))
+                    for asset, group in groups.items()
                 }
                 mine = sum(w * row[asset] for asset, w in weighed.items() if w > 0) / whole
                 np.testing.assert_allclose(mine, sum(w * r for w, r in every) / whole, **CLOSE)
@@ -199,7 +206,9 @@ def test_wealth_that_is_bought_and_held_is_that_of_its_members(kind: str, seed: 
     """Without holes, leavers or a riskless rate, a group's wealth is the mean of its members' wealths."""
     panel, market = draw_market(seed)
     dates = panel["security"].value_counts()
-    panel = with_sector(panel[panel["security"].isin(dates.index[dates > 40])]).reset_index(drop=True)
+    panel = with_sector(panel[panel["security"].isin(dates.index[dates > 40])]).reset_index(
+        drop=True
+    )
     whole = pd.MultiIndex.from_product([panel["security"].unique(), DATES["monthly"]])
     panel = panel.set_index(["security", "date"]).reindex(whole)
     panel.index.names = ["security", "date"]
@@ -263,7 +272,9 @@ def test_names_of_securities_do_not_matter(kind: str, weights: str, seed: int) -
 
     other = {name: relabelled(table) for name, table in betas.items()}
     one = form(panel, betas, design, periods).returns
-    pd.testing.assert_frame_equal(one, form(relabelled(panel), other, design, periods).returns, **CLOSE)
+    pd.testing.assert_frame_equal(
+        one, form(relabelled(panel), other, design, periods).returns, **CLOSE
+    )
 
 
 @EVERY_WEIGHTING

@@ -6,7 +6,6 @@ French 1992, "The Cross-Section of Expected Stock Returns".
 
 from __future__ import annotations
 
-
 from pathlib import Path
 
 import numpy as np
@@ -135,7 +134,9 @@ def test_fama_macbeth_ranks_on_the_first_window_and_weighs_the_later_ones(
     assert later.index.isin(lowest).sum() == len(lowest)
     returns = formed[FM].returns.set_index(["asset", "date"])
     # A mean of a few dozen numbers in another order.
-    assert returns.loc[("p01", month), "ante_beta"] == pytest.approx(later[lowest].mean(), rel=1e-13)
+    assert returns.loc[("p01", month), "ante_beta"] == pytest.approx(
+        later[lowest].mean(), rel=1e-13
+    )
 
 
 def test_fama_french_sorts_by_size_and_inside_by_beta(
@@ -182,4 +183,6 @@ def test_fama_french_spreads(formed: dict[str, Sorted]) -> None:
     pd.testing.assert_series_equal(first, wide["spread-01"], check_names=False)
     every = wide[[f"spread-{group:02d}" for group in range(1, 6)]]
     # A mean of five numbers in another order.
-    np.testing.assert_allclose(every.mean(axis=1, skipna=False), wide["spread"], rtol=1e-12, atol=1e-16)
+    np.testing.assert_allclose(
+        every.mean(axis=1, skipna=False), wide["spread"], rtol=1e-12, atol=1e-16
+    )

@@ -26,18 +26,25 @@ def formation_in_words(sort: SortSpec, study: Study) -> str:
     first, *second = (_variable(each, study) for each in ranked.rank_on)
     on = first
     if second:
-        on += f" and, {'inside each group' if ranked.dependent else 'apart from it'}, on {second[0]}"
+        on += (
+            f" and, {'inside each group' if ranked.dependent else 'apart from it'}, on {second[0]}"
+        )
     count = " × ".join(map(str, ranked.groups))
     parts = [
         f"at the end of {_when(ranked)}, securities are ranked on {on} and "
         f"{RULES[ranked.rule].label} into {count} groups",
-        f"held for {ranked.hold} months" + (", the groups held at once averaged" if ranked.overlap else ""),
+        f"held for {ranked.hold} months"
+        + (", the groups held at once averaged" if ranked.overlap else ""),
     ]
     if ranked.in_blocks:
-        parts[0] = parts[0].replace("ranked on", f"ranked, as of {ranked.estimation} months before, on", 1)
+        parts[0] = parts[0].replace(
+            "ranked on", f"ranked, as of {ranked.estimation} months before, on", 1
+        )
         parts.append("with ex-ante betas taken anew each year")
     if ranked.breakpoints:
-        from lineproof.intake.screens import screen_label  # heavy, and the Snakefile comes through here
+        from lineproof.intake.screens import (
+            screen_label,
+        )  # heavy, and the Snakefile comes through here
 
         parts[0] += f" (breakpoints of those with {screen_label(ranked.breakpoints)})"
     return ", ".join(parts)

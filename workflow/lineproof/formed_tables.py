@@ -217,9 +217,7 @@ def transitions(formed: Formed) -> pd.DataFrame:
     )
 
 
-def assigned(
-    formed: Formed, returns: pd.DataFrame, market: pd.DataFrame | None
-) -> pd.DataFrame:
+def assigned(formed: Formed, returns: pd.DataFrame, market: pd.DataFrame | None) -> pd.DataFrame:
     """The beta of its group for each period in which a member has a return, as the design says; dated by the return.
 
     `ex_ante` is the group's in that period; `full_period` the slope of all its returns on the
@@ -230,7 +228,9 @@ def assigned(
         return empty()["assigned"]
     beta = formed.held.beta
     if kind == "full_period":
-        slopes = [_slope(formed, returns[returns["asset"] == name], market) for name in formed.assets]
+        slopes = [
+            _slope(formed, returns[returns["asset"] == name], market) for name in formed.assets
+        ]
         beta = np.broadcast_to(slopes, formed.held.excess.shape).copy()
     found = assign(formed.held_rows, f, beta)
     row = np.flatnonzero(np.isfinite(found))

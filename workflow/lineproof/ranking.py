@@ -45,9 +45,7 @@ class PanelRows:
         owner = np.repeat(np.arange(len(starts) - 1, dtype=np.int32), np.diff(starts))
         number = periods.number(panel["date"].to_numpy())
         known = number != ABSENT
-        low, high = (
-            (int(number[known].min()), int(number[known].max())) if known.any() else (0, -1)
-        )
+        low, high = (int(number[known].min()), int(number[known].max())) if known.any() else (0, -1)
         every = np.arange(low, high + 1)
         return cls(
             panel=panel,
@@ -129,8 +127,8 @@ def rank(
     """Form groups by a design.
 
     `ranks` are the variables to rank on, `antes` the ex-ante betas by year, `marks` whether a row
-    sets breakpoints, None if every one does; all (n_rows,). Who can be ranked at the end of month s has a row there that
-    passes the screens, a weight above zero, an ex-ante beta where the design asks for one, and the
+    sets breakpoints, None if every one does; all (n_rows,). Who can be ranked at the end of month s has a
+    row there that passes the screens, a weight above zero, an ex-ante beta where the design asks for one, and the
     variables, dated s or as many months earlier as the design estimates anew.
     """
     can, ranked_at = _candidates(rows, ranks, antes, design)
@@ -215,4 +213,3 @@ def split_rank(
     """Table of estimates and column that a variable names: `m60` its beta, `m60.r2` a column, else one of the panel."""
     table, _, column = asked.partition(".")
     return (table, column or "beta") if table in estimates else (None, asked)
-

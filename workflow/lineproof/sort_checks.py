@@ -72,7 +72,9 @@ def _lengths(place: Place, options: dict[str, Any], given: dict[str, Any]) -> It
             yield (*place, key), said, change
 
 
-def _references(place: Place, options: dict[str, Any], content: dict[str, Any]) -> Iterator[Finding]:
+def _references(
+    place: Place, options: dict[str, Any], content: dict[str, Any]
+) -> Iterator[Finding]:
     betas, columns = list(content["betas"]), list(content["data"]["returns"]["columns"])
     numbers = [column for column in columns if column not in _NO_NUMBERS]
     for asked in _listed(options.get("rank_on", [])):
@@ -81,13 +83,23 @@ def _references(place: Place, options: dict[str, Any], content: dict[str, Any]) 
             said = f"betas have no column {column!r}"
             yield (*place, "rank_on"), said, nearest(column, list(_OF_BETAS))
         elif table not in betas and asked not in numbers:
-            said = f"{asked!r} is neither declared under betas nor a column of numbers of the returns"
+            said = (
+                f"{asked!r} is neither declared under betas nor a column of numbers of the returns"
+            )
             known = [*betas, *numbers]
-            yield (*place, "rank_on"), said, nearest(asked, known) if betas else "declare it under betas"
+            yield (
+                (*place, "rank_on"),
+                said,
+                nearest(asked, known) if betas else "declare it under betas",
+            )
     for asked in _listed(options.get("ante_betas", [])):
         if asked not in betas:
             said = f"{asked!r} is not declared under betas"
-            yield (*place, "ante_betas"), said, nearest(asked, betas) if betas else "declare it under betas"
+            yield (
+                (*place, "ante_betas"),
+                said,
+                nearest(asked, betas) if betas else "declare it under betas",
+            )
     if options["weights"] == "size" and not has_size(content):
         said = "weights by size need a size column, and data.returns.columns has none"
         change = "add size under data.returns.columns, or use weights: equal"

@@ -76,7 +76,8 @@ def sort_ranked(
     antes = [found[each] for each in design.ante_betas]
     ranked = rank(rows, ranks, antes, _marks(rows, design), design)
     if len(ranked.month) == 0:
-        found = f"{np.prod(design.groups)} groups, but at most {ranked.most} securities can be ranked in a formation month"
+        most = f"at most {ranked.most} securities can be ranked in a formation month"
+        found = f"{np.prod(design.groups)} groups, but {most}"
         raise _not_formed(f"{design.name}.groups", found, "use fewer groups, or check the screens")
     held_rows = _held_rows(rows, antes, design)
     held = hold(held_rows, ranked.formations)
@@ -97,7 +98,7 @@ def sort_ranked(
 
 
 def asset_names(*groups: int) -> list[str]:
-    """`p01` (lowest) to `p10`; of a sort on two variables `p01-01` to `p05-05`. Names sort in the order of the groups."""
+    """`p01` (lowest) to `p10`; of two variables `p01-01` to `p05-05`. Names sort in the order of the groups."""
     return formed_tables.asset_names(groups)
 
 
@@ -212,3 +213,15 @@ def take_supplied(
     columns = formed_tables.RETURN_COLUMNS
     returns = returns[columns].sort_values(["asset", "date"], ignore_index=True)
     return Sorted(returns=returns, **formed_tables.empty())
+
+
+def warm_up() -> None:
+    """Compile what forming and holding groups needs, on a few invented rows."""
+    months = pd.date_range("2001-01-31", periods=14, freq="ME", unit="ms")
+    security = pd.Categorical(np.repeat(["A", "B", "C"], len(months)))
+    panel = pd.DataFrame({"security": security, "date": np.tile(months, 3), "eligible": True})
+    panel = panel.assign(total_return=0.02, excess_return=0.01, size=1.0)
+    betas = panel[["security", "date"]].assign(beta=np.arange(len(panel)) / 10)
+    on_betas = {"rank_on": ("b",), "ante_betas": ("b",), "assign_betas": "ex_ante"}
+    design = Design(name="warm", groups=(2,), form_each="month", hold=1, **on_betas)
+    sort_ranked(panel, {"b": betas}, design)

@@ -328,7 +328,9 @@ def _design(name: str, options: dict[str, Any], betas: dict[str, Any]) -> Design
         name=name,
         rank_on=rank_on,
         groups=_several(options["groups"]),
-        ante_betas=_several(options["ante_betas"]) if "ante_betas" in options else tuple(tables[:1]),
+        ante_betas=_several(options["ante_betas"])
+        if "ante_betas" in options
+        else tuple(tables[:1]),
         hold=options.get("hold", _HOLD_BLOCKS if blocks else FORM_EACH[options["form_each"]]),
         in_blocks=blocks,
         renews=blocks or len(_several(options.get("ante_betas", ""))) > 1,

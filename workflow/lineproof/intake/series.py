@@ -158,9 +158,7 @@ def _check_names(names: list[str], reading: dict[str, Any]) -> None:
     refused = [*refused_asset_names(names), *filter(is_spread, names)]
     if refused:
         found = f"test assets may not be called {few(map(repr, refused))}"
-        change = (
-            "these names stand for other rows of the estimates or for spreads, and / parts an address: rename them"
-        )
+        change = "these names stand for other rows of the estimates or for spreads, and / parts an address: rename them"
         raise stop(f"{reading['label']}, column {reading['columns']['asset']}", found, change)
 
 

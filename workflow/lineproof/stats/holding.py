@@ -124,7 +124,18 @@ def _ratio(part: np.ndarray, whole: np.ndarray) -> np.ndarray:
 
 def _arguments(rows: Rows, f: Formations) -> tuple:
     of_rows = (rows.period, rows.excess, rows.growth, rows.size, rows.weight, rows.beta)
-    return (*of_rows, rows.drifts, *_in_blocks(f), f.row, f.end, f.group, f.formed, f.last, f.renewed, f.cells)
+    return (
+        *of_rows,
+        rows.drifts,
+        *_in_blocks(f),
+        f.row,
+        f.end,
+        f.group,
+        f.formed,
+        f.last,
+        f.renewed,
+        f.cells,
+    )
 
 
 def _in_blocks(f: Formations) -> tuple[np.ndarray, np.ndarray, np.ndarray]:

@@ -1,6 +1,6 @@
 """How members move from one formation to the next, compiled.
 
-Members are listed by formation, parted by `starts` (n_formations + 1,), each with its `security` and its `group` from 0.
+Members are listed by formation, parted by `starts` (n_formations + 1,); `security` and `group` number from 0.
 """
 
 from __future__ import annotations
