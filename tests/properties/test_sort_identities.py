@@ -6,7 +6,7 @@ Every design and weighting of the registries is tried, each with options drawn a
 from __future__ import annotations
 
 from dataclasses import replace
-from itertools import product
+from itertools import pairwise, product
 from typing import Any
 
 import numpy as np
@@ -143,7 +143,7 @@ def test_formations_and_transitions_equal_a_slow_loop(
     names = {group: asset for asset, group in groups.items()}
     moves: dict[tuple, int] = {}
     every = list(slow.formations)
-    for before, after in zip(every, every[1:], strict=False):
+    for before, after in pairwise(every):
         for security in {*slow.formations[before], *slow.formations[after]}:
             came = names.get(slow.formations[before].get(security), "new")
             went = names.get(slow.formations[after].get(security), "out")

@@ -43,7 +43,7 @@ def load(folder: Path, entry: str) -> Study:
         ),
         ("rank_on: m60, dependent: yes", "design single_window does not use 'dependent'"),
         ("rank_on: m60.gamma", "betas have no column 'gamma'"),
-        ("rank_on: sizes", "'sizes' is neither declared under betas nor a column"),
+        ("rank_on: sizes", "'sizes' is neither among betas nor a column"),
         ("rank_on: m60, ante_betas: m61", "'m61' is not declared under betas"),
         ("rank_on: m60, breakpoints: {column: exch, in: [N]}", "'exch' is not a column"),
         (

@@ -112,7 +112,7 @@ def test_paths_are_relative_to_the_study_file(folder: Path) -> None:
         ),
         (
             ("rank_on: monthly60", "rank_on: monthly36"),
-            "mine.yaml, line 11, portfolios.ten.rank_on: 'monthly36' is neither declared under betas nor a column of numbers of the returns\n"
+            "mine.yaml, line 11, portfolios.ten.rank_on: 'monthly36' is neither among betas nor a column of numbers\n"
             "    → did you mean monthly60?",
         ),
         (
@@ -179,7 +179,7 @@ def test_references_that_lead_nowhere_are_all_said(folder: Path) -> None:
         """
     )
     assert [found.split("\n")[0] for found in problems(folder, text)] == [
-        "mine.yaml, line 11, portfolios.ten.rank_on: 'm60' is neither declared under betas nor a column of numbers of the returns",
+        "mine.yaml, line 11, portfolios.ten.rank_on: 'm60' is neither among betas nor a column of numbers",
         "mine.yaml, line 15, intake.screens.0.column: 'pric' is not among data.returns.columns",
         "mine.yaml, line 16, paper.main: 'tenn' is not declared under portfolios",
         "mine.yaml, line 16, paper.main_subperiod: 'ful' is not declared under subperiods",
@@ -628,7 +628,7 @@ def test_a_column_may_serve_a_screen_as_well(folder: Path) -> None:
 def test_a_ranking_without_any_betas_says_where_to_declare_them(folder: Path) -> None:
     text = changed(("betas:\n  monthly60: {window: 60, min: 24}\n", ""))
     assert (
-        "'monthly60' is neither declared under betas nor a column of numbers of the returns\n    → declare it under betas"
+        "'monthly60' is neither among betas nor a column of numbers\n    → declare it under betas"
         in problems(folder, text)[0]
     )
 

@@ -32,7 +32,7 @@ def from_single_window(sources: Sequence[str], market: pd.DataFrame, **options: 
 
 
 def from_double_sort(sources: Sequence[str], market: pd.DataFrame, **options: Any) -> Sorted:
-    """Ranked on two variables, such as Fama and French (1992) do on size and beta; the sources as of a single window."""
+    """Ranked on two variables, such as Fama and French (1992) do; the sources as of a single window."""
     return _ranked(sources, market, **options)
 
 

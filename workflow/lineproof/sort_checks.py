@@ -83,9 +83,7 @@ def _references(
             said = f"betas have no column {column!r}"
             yield (*place, "rank_on"), said, nearest(column, list(_OF_BETAS))
         elif table not in betas and asked not in numbers:
-            said = (
-                f"{asked!r} is neither declared under betas nor a column of numbers of the returns"
-            )
+            said = f"{asked!r} is neither among betas nor a column of numbers"
             known = [*betas, *numbers]
             yield (
                 (*place, "rank_on"),
