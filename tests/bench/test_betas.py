@@ -34,10 +34,10 @@ ROUNDS = 3
 STAGE = """
 import sys
 from lineproof import store
-from lineproof.estimation import estimate_in_pieces
+from lineproof.estimation import estimate_betas
 folder = sys.argv[1]
 panels = store.read_securities(f"{folder}/panel.parquet", ["security", "date", "excess_return"])
-pieces = estimate_in_pieces(panels, store.read_table(f"{folder}/market.parquet"), name="bench", estimator="lagged",
+pieces = estimate_betas(panels, store.read_table(f"{folder}/market.parquet"), name="bench", estimator="lagged",
                             window=252, min_obs=120, returns="daily", dated="daily", own={"lags": 1, "leads": 1})
 store.write_together(pieces, {"betas": f"{folder}/betas.parquet"}, "daily")
 """

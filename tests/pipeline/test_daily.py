@@ -15,7 +15,7 @@ from tests import daily_market
 from tests.pipeline.conftest import Project, copy_program
 
 from lineproof import store
-from lineproof.estimation import estimate_betas
+from lineproof.estimation import estimates_of
 from lineproof.forming import form_portfolios
 from lineproof.frames import contract
 from lineproof.gathering import gather_estimates
@@ -64,7 +64,7 @@ def made(tmp_path_factory: pytest.TempPathFactory) -> Made:
     panel, market = daily_market.tables()
     store.write_table(panel, folder / "panel.parquet", "panel", "daily")
     panel = store.read_table(folder / "panel.parquet")
-    betas = estimate_betas(panel, market, **wiring.options("estimate_betas-days120"))
+    betas = estimates_of(panel, market, **wiring.options("estimate_betas-days120"))
     store.write_table(betas, folder / "betas.parquet", "betas", "daily")
     sources = [str(folder / "panel.parquet"), str(folder / "betas.parquet")]
     sorts = {

@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from lineproof.estimation import estimate_betas
+from lineproof.estimation import estimates_of
 from lineproof.frames import BETAS, contract
 from lineproof.problems import KnownProblem
 
@@ -37,7 +37,7 @@ def test_each_estimate_uses_the_months_up_to_its_date() -> None:
     market, first = draw(1)
     late = (0.5 * first).iloc[15:]
     holes = first.drop(MONTHS[[20, 21, 22]])
-    table = estimate_betas(
+    table = estimates_of(
         panel_of({"A": first, "B": late, "C": holes}), market_of(market), **OPTIONS
     )
     BETAS.validate(table)
@@ -62,7 +62,7 @@ def test_each_estimate_uses_the_months_up_to_its_date() -> None:
 def test_a_month_the_market_lacks_does_not_count() -> None:
     market, series = draw(2)
     short = market_of(market).drop(index=[10])
-    table = estimate_betas(panel_of({"A": series}), short, **OPTIONS).set_index("date")
+    table = estimates_of(panel_of({"A": series}), short, **OPTIONS).set_index("date")
     assert table.loc[MONTHS[9], "n_obs"] == 10
     assert table.loc[MONTHS[10], "n_obs"] == 10  # a row at the date, without its own pair
     assert table.loc[MONTHS[11], "n_obs"] == 11
@@ -71,25 +71,25 @@ def test_a_month_the_market_lacks_does_not_count() -> None:
 def test_an_estimate_is_made_at_a_row_without_a_return() -> None:
     market, series = draw(3)
     series.iloc[30] = np.nan
-    table = estimate_betas(panel_of({"A": series}), market_of(market), **OPTIONS)
+    table = estimates_of(panel_of({"A": series}), market_of(market), **OPTIONS)
     assert table.set_index("date").loc[MONTHS[30], "n_obs"] == 11
 
 
 def test_a_market_longer_than_the_panel_changes_nothing() -> None:
     market, series = draw(4)
     panel = panel_of({"A": series.iloc[12:30]})
-    whole = estimate_betas(panel, market_of(market), **OPTIONS)
-    cut = estimate_betas(panel, market_of(market).iloc[12:30], **OPTIONS)
+    whole = estimates_of(panel, market_of(market), **OPTIONS)
+    cut = estimates_of(panel, market_of(market).iloc[12:30], **OPTIONS)
     pd.testing.assert_frame_equal(whole, cut, check_exact=True)
 
 
 def test_no_estimate_at_all_says_what_to_change() -> None:
     market, series = draw(5)
     with pytest.raises(KnownProblem) as short:
-        estimate_betas(panel_of({"A": series.iloc[:5]}), market_of(market), **OPTIONS)
+        estimates_of(panel_of({"A": series.iloc[:5]}), market_of(market), **OPTIONS)
     assert "betas.short: no security has 6 months of returns within 12 months" in str(short.value)
     with pytest.raises(KnownProblem) as flat:
-        estimate_betas(panel_of({"A": series}), market_of(np.full(40, 0.1)), **OPTIONS)
+        estimates_of(panel_of({"A": series}), market_of(np.full(40, 0.1)), **OPTIONS)
     assert "the market's return is the same in every month" in str(flat.value)
 
 
@@ -122,7 +122,7 @@ def fit_slowly(
 @pytest.mark.parametrize("seed", range(5))
 def test_daily_returns_give_estimates_at_ends_of_months(dated: str, seed: int) -> None:
     market, securities = draw_days(seed)
-    table = estimate_betas(panel_of(securities), market_of(market, DAYS), dated=dated, **IN_DAYS)
+    table = estimates_of(panel_of(securities), market_of(market, DAYS), dated=dated, **IN_DAYS)
     contract("betas", dated).validate(table)
     factor = pd.Series(market, DAYS)
     expected = []
@@ -147,9 +147,9 @@ def test_daily_returns_give_estimates_at_ends_of_months(dated: str, seed: int) -
 def test_securities_may_be_categories() -> None:
     market, securities = draw_days(6)
     panel, factor = panel_of(securities), market_of(market, DAYS)
-    plain = estimate_betas(panel, factor, dated="daily", **IN_DAYS)
+    plain = estimates_of(panel, factor, dated="daily", **IN_DAYS)
     names = pd.CategoricalDtype(pd.Index(["Z", "C", "B", "A"], dtype="str"))
-    coded = estimate_betas(panel.astype({"security": names}), factor, dated="daily", **IN_DAYS)
+    coded = estimates_of(panel.astype({"security": names}), factor, dated="daily", **IN_DAYS)
     assert isinstance(coded["security"].dtype, pd.CategoricalDtype)
     pd.testing.assert_frame_equal(coded.astype({"security": str}), plain, check_exact=True)
 
@@ -159,7 +159,7 @@ def test_a_day_on_which_the_market_is_closed_is_no_period() -> None:
     odd = pd.Series([9.0, 9.0], pd.to_datetime(["2001-03-03", "2001-09-03"]))
     more = {"A": pd.concat([securities["A"], odd]).sort_index()}
     with_odd, without = (
-        estimate_betas(panel_of(each), market_of(market, DAYS), dated="daily", **IN_DAYS)
+        estimates_of(panel_of(each), market_of(market, DAYS), dated="daily", **IN_DAYS)
         for each in (more, {"A": securities["A"]})
     )
     pd.testing.assert_frame_equal(with_odd, without, check_exact=True)
@@ -169,7 +169,7 @@ def test_messages_about_days_speak_of_days() -> None:
     market, securities = draw_days(8)
     short = panel_of({"A": securities["A"].iloc[:10]})
     with pytest.raises(KnownProblem) as caught:
-        estimate_betas(short, market_of(market, DAYS), dated="daily", **IN_DAYS)
+        estimates_of(short, market_of(market, DAYS), dated="daily", **IN_DAYS)
     assert "no security has 20 days of returns within 50 days" in str(caught.value)
 
 
@@ -177,9 +177,9 @@ def test_messages_about_days_speak_of_days() -> None:
 def test_a_window_longer_than_the_sample_is_refused() -> None:
     market, series = draw(6)
     panel = panel_of({"A": series})
-    assert len(estimate_betas(panel, market_of(market), **{**OPTIONS, "window": 40})) > 0
+    assert len(estimates_of(panel, market_of(market), **{**OPTIONS, "window": 40})) > 0
     with pytest.raises(KnownProblem) as told:
-        estimate_betas(panel, market_of(market), **{**OPTIONS, "window": 41})
+        estimates_of(panel, market_of(market), **{**OPTIONS, "window": 41})
     assert str(told.value) == (
         "No beta can be estimated.\n"
         "  betas.short.window: a window of 41 months is longer than the sample, which has 40\n"

@@ -9,7 +9,7 @@ import pandas as pd
 import pytest
 
 from lineproof import store
-from lineproof.estimation import estimate_betas, estimate_in_pieces
+from lineproof.estimation import estimate_betas, estimates_of
 from lineproof.factors import read_factors
 from lineproof.frames import contract
 from lineproof.problems import KnownProblem
@@ -70,8 +70,8 @@ def test_pieces_of_whole_securities_make_the_same_table(tmp_path: Path, rows: in
     owners = [set(piece["security"]) for piece in pieces]
     assert sum(map(len, owners)) == 9
     paths = {name: tmp_path / f"{name}.parquet" for name in ("whole", "betas")}
-    store.write_table(estimate_betas(panel, market, factors, **options), paths["whole"], "betas")
+    store.write_table(estimates_of(panel, market, factors, **options), paths["whole"], "betas")
     store.write_together(
-        estimate_in_pieces(pieces, market, factors, **options), {"betas": paths["betas"]}
+        estimate_betas(pieces, market, factors, **options), {"betas": paths["betas"]}
     )
     assert paths["whole"].read_bytes() == paths["betas"].read_bytes()

@@ -11,11 +11,12 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from lineproof.designs import Design
 from lineproof.intake.chunk import Chunk
 from lineproof.intake.market_build import MarketBuild
 from lineproof.periods import Months, TradingDays
 from lineproof.problems import KnownProblem
-from lineproof.sorting import sort_single_window
+from lineproof.sorting import sort_ranked
 
 JANUARY_2000 = 2000 * 12
 N = 23  # months, of which the twelfth is the only December
@@ -183,9 +184,8 @@ def test_portfolios_of_all_securities_rebuild_the_market(weights: str, groups: i
         }
     )
     betas = panel[["security", "date"]].assign(beta=rng.normal(1, 0.5, len(panel)))
-    sorted_ = sort_single_window(
-        panel, betas, name="all", groups=groups, weights=weights, form_month=12, hold=12
-    )
+    design = Design(name="all", rank_on=("b",), groups=(groups,), weights=weights)
+    sorted_ = sort_ranked(panel, {"b": betas}, design)
     returns = sorted_.returns
     held = returns["n_members"].to_numpy()
     if (

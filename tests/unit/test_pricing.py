@@ -502,3 +502,15 @@ def test_without_a_riskless_rate_everything_else_is_the_same() -> None:
         "the study has returns in excess of a riskless rate that is not known"
     }
     pd.testing.assert_frame_equal(without[~is_riskless], usual[~is_riskless])
+
+
+def test_a_spread_has_a_time_series_of_its_own_and_no_part_in_joint_tests_and_the_line() -> None:
+    cut = _cut()
+    wide = cut.pivot(index="date", columns="asset", values="excess_return")
+    spread = cut[cut["asset"] == ASSETS[0]].copy()
+    spread["asset"] = "spread"
+    spread["excess_return"] = (wide[ASSETS[-1]] - wide[ASSETS[0]]).to_numpy()
+    without, beside = _price(cut), _price(pd.concat([cut, spread], ignore_index=True))
+    alone = beside["asset"] == "spread"
+    assert {"describe", "time_series"} == set(beside.loc[alone, "analysis"])
+    pd.testing.assert_frame_equal(beside[~alone].reset_index(drop=True), without, check_exact=True)

@@ -119,7 +119,7 @@ def test_test_assets_may_have_gaps_but_no_month_twice(tmp_path: Path) -> None:
     )
     assert message(tmp_path, text + "market,2000-03,0.2\nx/y,2000-03,0.2\n", columns) == (
         f"{HEAD}  raw/market.csv, column name: test assets may not be called 'market', 'x/y'\n"
-        "    → these names stand for other rows of the estimates, and / parts an address: rename them"
+        "    → these names stand for other rows of the estimates or for spreads, and / parts an address: rename them"
     )
 
 

@@ -13,17 +13,27 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from lineproof.frames import MEMBERS, PORTFOLIO_RETURNS
+from lineproof.designs import Design
+from lineproof.frames import contract
 from lineproof.problems import KnownProblem
 from lineproof.sorting import (
     Sorted,
-    _lagged_size,
     asset_names,
-    sort_single_window,
+    growth_of,
+    sort_ranked,
     take_supplied,
 )
+from lineproof.stats.weights import lagged_sizes
 
-OPTIONS = {"name": "two", "groups": 2, "weights": "equal", "form_month": 12, "hold": 12}
+OPTIONS = {
+    "name": "two",
+    "groups": (2,),
+    "weights": "equal",
+    "form_month": 12,
+    "hold": 12,
+    "rank_on": ("b",),
+    "ante_betas": ("b",),
+}
 MONTHS = ["2000-12", "2001-01", "2001-02", "2001-03", "2001-04"]
 RETURNS = {
     "A": [0.50, 0.10, 0.20, -0.10, 0.02],
@@ -69,9 +79,9 @@ def betas_at(month: str, values: dict[str, float]) -> pd.DataFrame:
 
 
 def form(panel: pd.DataFrame, betas: pd.DataFrame, **changed: Any) -> Sorted:
-    found = sort_single_window(panel, betas, **(OPTIONS | changed))
-    MEMBERS.validate(found.members)
-    PORTFOLIO_RETURNS.validate(found.returns)
+    found = sort_ranked(panel, {"b": betas}, Design(**(OPTIONS | changed)))
+    for name, table in found.tables().items():
+        contract(name).validate(table)
     return found
 
 
@@ -282,7 +292,7 @@ def test_sizes_of_one_security_do_not_reach_the_next() -> None:
 @pytest.mark.fault(33)
 def test_too_many_groups() -> None:
     with pytest.raises(KnownProblem) as told:
-        form_tiny(groups=5)
+        form_tiny(groups=(5,))
     assert "portfolios.two.groups: 5 groups, but at most 4 securities" in str(told.value)
     with pytest.raises(KnownProblem, match="no security has an estimate"):
         form_tiny(form_month=6)
@@ -324,8 +334,8 @@ def market() -> pd.DataFrame:
 )
 def test_supplied_assets(kind: str, expected: list[float]) -> None:
     found = take_supplied(supplied(), market(), returns_are=kind)
-    MEMBERS.validate(found.members)
-    PORTFOLIO_RETURNS.validate(found.returns)
+    for name, table in found.tables().items():
+        contract(name).validate(table)
     assert len(found.members) == 0
     assert found.returns["asset"].tolist() == ["a", "b", "b"]
     assert found.returns["excess_return"].tolist() == expected
@@ -359,6 +369,49 @@ def test_sizes_grow_by_excess_returns_where_no_total_is_known() -> None:
             "size": [100.0, np.nan, np.nan, np.nan, np.nan, 8.0],
         }
     )
-    found = _lagged_size(panel, np.array([0, 0, 0, 0, 1, 1]))
+    found = lagged_sizes(np.array([0, 4, 6]), panel["size"].to_numpy(), growth_of(panel))
     # A product of numbers that are no binary fractions: one rounding.
     np.testing.assert_allclose(found, [np.nan, 100, 150, 150, np.nan, np.nan], rtol=1e-15)
+
+
+def test_bought_and_held_by_hand() -> None:
+    """A grows to 1.10, then B has no return in February; C leaves in March and D carries the group alone."""
+    found = form_tiny(weights="buy_and_hold")
+    low = [
+        (0.10 + 0.30) / 2,
+        0.20,
+        (1.10 * 1.20 * -0.10 + 1.30 * 0.10) / (1.10 * 1.20 + 1.30),
+        (1.10 * 1.20 * 0.90 * 0.02 + 1.30 * 1.10 * 0.04) / (1.10 * 1.20 * 0.90 + 1.30 * 1.10),
+    ]
+    np.testing.assert_allclose(column(found, "p01", "excess_return"), low, rtol=1e-13)
+    assert column(found, "p02", "excess_return")[3] == pytest.approx(0.08, rel=1e-14)
+
+
+def test_overlapping_groups_average_by_hand() -> None:
+    """Formed each month and held for two: in February the groups of December and of January, of which C changes."""
+    january = {"A": 0.5, "B": 1.3, "C": 0.6, "D": 1.6}
+    betas = pd.concat([betas_at("2000-12", BETAS), betas_at("2001-01", january)])
+    betas = betas.sort_values(["security", "date"], ignore_index=True)
+    found = form(tiny_panel(), betas, form_each="month", hold=2, overlap=True)
+    january_only, both, after = column(found, "p01", "excess_return")
+    assert january_only == pytest.approx((0.10 + 0.30) / 2)
+    assert both == pytest.approx((0.20 + (0.20 + 0.04) / 2) / 2)  # B has no return in February
+    assert after == pytest.approx((-0.10 - 0.50) / 2)  # the groups of January: A and C
+    assert column(found, "p01", "n_members") == [2, 3, 2]
+
+
+def test_turnover_and_transitions_by_hand() -> None:
+    """Equal weights of A and B drift by the last month to 1.02 and 1.04; then B makes way for C."""
+    later = {"A": 0.5, "B": 1.3, "C": 0.6, "D": 1.6}
+    panel = two_years()
+    last = panel["date"] == month_ends(["2001-12"])[0]
+    panel.loc[last, "total_return"] = [0.02, 0.04, 0.0, 0.1]
+    betas = pd.concat([betas_at("2000-12", BETAS), betas_at("2001-12", later)])
+    found = form(panel, betas.sort_values(["security", "date"], ignore_index=True))
+    turnover = found.formations.set_index(["formed", "asset"])["turnover"]
+    a, b = 1.02 / 2.06, 1.04 / 2.06
+    at = month_ends(["2001-12"])[0]
+    assert turnover[at, "p01"] == pytest.approx((abs(0.5 - a) + 0.5 + b) / 2, rel=1e-13)
+    assert turnover[month_ends(["2000-12"])[0]].isna().all()
+    moves = found.transitions[["from", "to", "n", "share"]].to_numpy().tolist()
+    assert moves == [[x, y, 1, 0.5] for x in ("p01", "p02") for y in ("p01", "p02")]

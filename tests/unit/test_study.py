@@ -72,13 +72,8 @@ def test_defaults_are_those_of_the_schema(folder: Path) -> None:
     assert study.returns.unit == "decimal"
     assert study.returns.missing == ("", "NA")
     ten = study.sorts["ten"]
-    assert (ten.design, ten.groups, ten.weights, ten.form_month, ten.hold) == (
-        "single_window",
-        10,
-        "equal",
-        12,
-        12,
-    )
+    assert (ten.design, ten.ranked.groups, ten.ranked.weights) == ("single_window", (10,), "equal")
+    assert (ten.ranked.form_month, ten.ranked.hold, ten.estimates) == (12, 12, ("monthly60",))
     assert (study.paper.main, study.paper.main_subperiod) == ("ten", "full")
     assert study.demo is None
 
@@ -117,7 +112,7 @@ def test_paths_are_relative_to_the_study_file(folder: Path) -> None:
         ),
         (
             ("rank_on: monthly60", "rank_on: monthly36"),
-            "mine.yaml, line 11, portfolios.ten.rank_on: 'monthly36' is not declared under betas\n"
+            "mine.yaml, line 11, portfolios.ten.rank_on: 'monthly36' is neither among betas nor a column of numbers\n"
             "    → did you mean monthly60?",
         ),
         (
@@ -184,7 +179,7 @@ def test_references_that_lead_nowhere_are_all_said(folder: Path) -> None:
         """
     )
     assert [found.split("\n")[0] for found in problems(folder, text)] == [
-        "mine.yaml, line 11, portfolios.ten.rank_on: 'm60' is not declared under betas",
+        "mine.yaml, line 11, portfolios.ten.rank_on: 'm60' is neither among betas nor a column of numbers",
         "mine.yaml, line 15, intake.screens.0.column: 'pric' is not among data.returns.columns",
         "mine.yaml, line 16, paper.main: 'tenn' is not declared under portfolios",
         "mine.yaml, line 16, paper.main_subperiod: 'ful' is not declared under subperiods",
@@ -516,7 +511,7 @@ def test_one_name_in_two_sections_is_not_ambiguous(folder: Path) -> None:
         ("  monthly60: {window", "  ten: {window"), ("rank_on: monthly60", "rank_on: ten")
     )
     study = load_study(write(folder, text))
-    assert (study.sorts["ten"].rank_on, study.paper.main) == ("ten", "ten")
+    assert (study.sorts["ten"].ranked.rank_on, study.paper.main) == (("ten",), "ten")
 
     text = changed(
         ("title: My study}", "title: My study, frequency: daily}"),
@@ -633,7 +628,7 @@ def test_a_column_may_serve_a_screen_as_well(folder: Path) -> None:
 def test_a_ranking_without_any_betas_says_where_to_declare_them(folder: Path) -> None:
     text = changed(("betas:\n  monthly60: {window: 60, min: 24}\n", ""))
     assert (
-        "'monthly60' is not declared under betas\n    → declare it there"
+        "'monthly60' is neither among betas nor a column of numbers\n    → declare it under betas"
         in problems(folder, text)[0]
     )
 

@@ -31,11 +31,13 @@ def main(words: list[str] | None = None) -> int:
     if rest:
         parser.error(f"unknown words: {' '.join(rest)}")
     if given.command == "compile":
+        from lineproof import sorting
         from lineproof.intake import warm_up
         from lineproof.stats import windows
 
         warm_up.warm_up()
         windows.warm_up()
+        sorting.warm_up()
         return 0
     try:
         return _run(given)

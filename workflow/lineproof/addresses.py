@@ -23,6 +23,7 @@ SEPARATOR = "/"
 
 # Assets of rows that are about no test asset; a test asset so called would share an address with them.
 RESERVED_ASSETS = frozenset({"-", "all", "market", "riskless"})
+SPREAD = "spread"  # high minus low of a sort; `spread-01` that of its first group
 
 
 def address(rows: pd.DataFrame) -> pd.Series:
@@ -34,3 +35,8 @@ def address(rows: pd.DataFrame) -> pd.Series:
 def refused_asset_names(names: list[str]) -> list[str]:
     """Those names that no test asset may have."""
     return [name for name in names if name in RESERVED_ASSETS or SEPARATOR in name or not name]
+
+
+def is_spread(asset: str) -> bool:
+    """Whether an asset is a difference of groups: it is tested by itself, and never beside the groups it is made of."""
+    return asset == SPREAD or asset.startswith(f"{SPREAD}-")

@@ -7,6 +7,7 @@ from typing import Any
 from lineproof import demo_files
 from lineproof.beta_checks import own_option_findings, shrinkage_findings, size_findings
 from lineproof.schema import Finding, nearest
+from lineproof.sort_checks import has_size, sort_findings
 from lineproof.source_checks import source_findings
 from lineproof.yamlfile import Place, YamlFile
 
@@ -72,42 +73,6 @@ def _frequency_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     ]
 
 
-_ONLY_SUPPLIED = (
-    *("file", "columns", "is", "unit", "missing", "dates", "separator"),
-    *("decimal", "encoding", "sheet", "layout", "leave_out"),
-)
-_ONLY_RANKED = ("rank_on", "groups", "weights", "form_each", "form_month", "hold")
-
-
-def _sort_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
-    found: list[Finding] = []
-    for name, options in content["portfolios"].items():
-        place: Place = ("portfolios", name)
-        design, supplied = options["design"], options["design"] == "supplied"
-        for key in ("file", "columns") if supplied else ("rank_on",):
-            if key not in options:
-                found.append((place, f"the key {key!r} is missing", f"design {design} needs it"))
-        for key in _ONLY_RANKED if supplied else _ONLY_SUPPLIED:
-            if key in file.content["portfolios"][name]:
-                said = f"design {design} does not use {key!r}"
-                found.append(((*place, key), said, "remove it, or change the design"))
-        ranked_on = options.get("rank_on")
-        if not supplied and ranked_on is not None and ranked_on not in content["betas"]:
-            said = f"{ranked_on!r} is not declared under betas"
-            known = list(content["betas"])
-            change = nearest(ranked_on, known) if known else "declare it there"
-            found.append(((*place, "rank_on"), said, change))
-        if not supplied and options["weights"] == "size" and not _has_size(content):
-            said = "weights by size need a size column, and data.returns.columns has none"
-            change = "add size under data.returns.columns, or use weights: equal"
-            found.append(((*place, "weights"), said, change))
-    return found
-
-
-def _has_size(content: dict[str, Any]) -> bool:
-    return "size" in content["data"]["returns"]["columns"]
-
-
 def _market_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
     """A market is read from a file or built from the returns, not both and not neither."""
     place: Place = ("data", "market")
@@ -125,7 +90,7 @@ def _market_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
         for key in given
         if key != "build"
     ]
-    if market["build"] == "size" and not _has_size(content):
+    if market["build"] == "size" and not has_size(content):
         said = "a market weighted by size needs a size column, and data.returns.columns has none"
         change = "add size under data.returns.columns, or use build: equal"
         found.append(((*place, "build"), said, change))
@@ -281,7 +246,7 @@ def _count(month: str) -> int:
 CHECKS = (
     ({"betas", "study", "data"}, _beta_findings),
     ({"study", "demo", "data"}, _frequency_findings),
-    ({"portfolios", "betas", "data"}, _sort_findings),
+    ({"portfolios", "betas", "data"}, sort_findings),
     ({"data"}, _market_findings),
     ({"data", "portfolios"}, _riskless_findings),
     ({"subperiods"}, _subperiod_findings),

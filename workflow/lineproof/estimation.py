@@ -110,7 +110,7 @@ class Estimation:
         raise KnownProblem(_NONE, [Problem(f"betas.{self._name}", found, change)])
 
 
-def estimate_betas(
+def estimates_of(
     panel: pd.DataFrame, market: pd.DataFrame, factors: pd.DataFrame | None = None, **options: Any
 ) -> pd.DataFrame:
     """Estimates of every security of a panel sorted by security and date; the options are those of `Estimation`.
@@ -123,7 +123,7 @@ def estimate_betas(
     return table
 
 
-def estimate_in_pieces(
+def estimate_betas(
     panels: Iterable[pd.DataFrame],
     market: pd.DataFrame,
     factors: pd.DataFrame | None = None,

@@ -152,10 +152,10 @@ BETAS = pa.DataFrameSchema(
 MEMBERS = pa.DataFrameSchema(
     {
         "formed": _DATE,
-        "asset": _text(),
-        "security": _text(),
+        "asset": _name(),
+        "security": _name(),
         "weight": _number(pa.Check.in_range(0, 1), nullable=False),
-        "ante_beta": _number(nullable=False),
+        "ante_beta": _number(),
         "size": _number(pa.Check.gt(0)),
     },
     checks=[_sorted_unique("formed", "asset", "security")],
@@ -172,6 +172,43 @@ PORTFOLIO_RETURNS = pa.DataFrameSchema(
         "ante_beta": _number(),
     },
     checks=[_HAS_ROWS, _sorted_unique("asset", "date")],
+    strict=True,
+)
+
+FORMATIONS = pa.DataFrameSchema(
+    {
+        "formed": _DATE,
+        "asset": _text(),
+        "n_members": _count(),
+        # A sum of shares may round above 1.
+        "turnover": _number(pa.Check.in_range(0, 1 + 1e-9)),
+        "mean_size": _number(pa.Check.gt(0)),
+        "ante_beta": _number(),
+        "n_exits": _count(),
+    },
+    checks=[_sorted_unique("formed", "asset")],
+    strict=True,
+)
+
+TRANSITIONS = pa.DataFrameSchema(
+    {
+        "formed": _DATE,
+        "from": _text(),
+        "to": _text(),
+        "n": pa.Column("int64", pa.Check.ge(1)),
+        "share": _number(pa.Check.in_range(0, 1), nullable=False),
+    },
+    checks=[_sorted_unique("formed", "from", "to")],
+    strict=True,
+)
+
+ASSIGNED = pa.DataFrameSchema(
+    {
+        "security": _name(),
+        "date": _DATE,
+        "beta": _number(nullable=False),
+    },
+    checks=[_sorted_unique("security", "date")],
     strict=True,
 )
 
@@ -229,6 +266,9 @@ CONTRACTS: dict[str, pa.DataFrameSchema] = {
     "betas": BETAS,
     "members": MEMBERS,
     "portfolio_returns": PORTFOLIO_RETURNS,
+    "formations": FORMATIONS,
+    "transitions": TRANSITIONS,
+    "assigned": ASSIGNED,
     "subperiod": SUBPERIOD,
     "estimates": ESTIMATES,
 }

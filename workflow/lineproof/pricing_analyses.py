@@ -12,13 +12,14 @@ count, so a hole in the middle of a sample takes no time.
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache, cached_property, partial
 from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
+from lineproof.addresses import is_spread
 from lineproof.frequency import FREQUENCIES, Frequency
 from lineproof.pricing_rows import NAN, Row, attempt
 from lineproof.stats import PERIOD, Undefined
@@ -63,6 +64,16 @@ class Sample:
     level: float
     hac_lag: int | None
     frequency: Frequency = FREQUENCIES["monthly"]
+
+    @cached_property
+    def groups(self) -> Sample:
+        """Without the spreads, which are differences of the other assets: beside them no covariance is regular."""
+        kept = [at for at, asset in enumerate(self.assets) if not is_spread(asset)]
+        if len(kept) == len(self.assets):
+            return self
+        extras = {name: values[:, kept] for name, values in self.extras.items()}
+        assets = tuple(self.assets[at] for at in kept)
+        return replace(self, assets=assets, excess=self.excess[:, kept], extras=extras)
 
     @property
     def counted(self) -> NDArray[np.bool_]:
@@ -211,6 +222,7 @@ def _joint_numbers(found: JointStatistic) -> dict[str, float]:
 
 def joint_alpha(sample: Sample) -> Iterator[Row]:
     """Joint pricing tests that every alpha is zero, and how large the alphas are."""
+    sample = sample.groups
     assets = _AllAssets(sample)
 
     def from_distance(statistic: joint.AlphaStatistic) -> dict[str, float]:
@@ -268,6 +280,7 @@ def market_line(sample: Sample) -> Iterator[Row]:
 
     With it the market's mean excess return over the line's own periods, to compare the slope with.
     """
+    sample = sample.groups
     assets = _AllAssets(sample)
     mean, _ = _moments(sample, "all", np.where(assets.counted, sample.market, NAN), "signed")
     yield mean._replace(term="market_mean", n_assets=len(sample.assets))

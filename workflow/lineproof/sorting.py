@@ -2,88 +2,103 @@
 
 No design looks ahead. Groups formed at the end of month s rest on estimates, screens and sizes
 dated s or before; the weight of a member in a later period t (a month, or in a daily study a
-trading day) rests on sizes dated t − 1 or before.
+trading day) rests on sizes and returns dated t − 1 or before.
 Screens act at formation only: whatever a member returns afterwards counts.
 """
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
 import pandas as pd
 
-from lineproof import catalog
-from lineproof.designs import WEIGHTS
-from lineproof.periods import ABSENT, Months, Periods
+from lineproof import catalog, formed_tables
+from lineproof.designs import DRIFTING, WEIGHTS, Design
+from lineproof.intake.screens import passes
+from lineproof.intake.values import to_numbers
+from lineproof.periods import Months, Periods
 from lineproof.problems import KnownProblem, Problem
-from lineproof.securities import coded
-from lineproof.stats.sorts import ranked_groups
-from lineproof.stats.weights import scaled_to_one
+from lineproof.ranking import PanelRows, rank, split_rank
+from lineproof.stats.holding import Rows, hold
+from lineproof.stats.weights import lagged_sizes
 
 
 @dataclass(frozen=True)
 class Sorted:
-    """Test assets: `members` at each formation, and `returns` of each asset and period."""
+    """Test assets: `members` at each formation, and `returns` of each asset and period.
+
+    Of ranked ones also what becomes of the groups from one formation to the next (`formations`,
+    `transitions`), and the betas of groups by their members (`assigned`).
+    """
 
     members: pd.DataFrame
     returns: pd.DataFrame
+    formations: pd.DataFrame
+    transitions: pd.DataFrame
+    assigned: pd.DataFrame
+
+    def tables(self) -> dict[str, pd.DataFrame]:
+        """Each table by the name of its contract."""
+        named = ("members", "formations", "transitions", "assigned")
+        return {"portfolio_returns": self.returns, **{name: getattr(self, name) for name in named}}
 
 
-def asset_names(n_groups: int) -> list[str]:
-    """`p01` (lowest) to `p10`: names that sort in the order of the groups."""
-    digits = max(2, len(str(n_groups)))
-    return [f"p{group:0{digits}d}" for group in range(1, n_groups + 1)]
-
-
-def sort_single_window(
+def sort_ranked(
     panel: pd.DataFrame,
-    betas: pd.DataFrame,
+    estimates: Mapping[str, pd.DataFrame],
+    design: Design,
     *,
-    name: str,
-    groups: int,
-    weights: str,
-    form_month: int,
-    hold: int,
     periods: Periods | None = None,
+    market: pd.DataFrame | None = None,
 ) -> Sorted:
-    """Rank on the estimate at the end of each formation month, hold for `hold` months.
+    """Rank securities at the end of formation months, and hold the groups.
 
-    The single-window design of Black, Jensen and Scholes (1972). A security can be ranked at s when
-    it has a row that passes the screens and an estimate, both dated s, and a weight above zero:
-    with weights by size, a size at s. It stays in its group until the next formation or until it
-    leaves; in a period without a return it is no member.
+    A security can be ranked at s when it has a row that passes the screens and a weight above zero
+    (with weights by size, a size at s), both dated s, and what the design ranks on. It stays in its
+    group until the hold ends or until it leaves; in a period without a return it is no member.
+    Where holding periods overlap, an asset returns the mean over the groups that are held at once.
 
-    `panel` is sorted by security and date, and has a row a period of `periods` (months if None).
+    `panel` is sorted by security and date, and has a row a period of `periods` (months if None);
+    `estimates` are tables by name; `market` is needed for betas of the full period alone.
     Formations with fewer securities than groups are left out. `returns` runs without gaps from the
     first to the last period with a member; a group that is empty in a period has a missing return.
 
-    Raises KnownProblem when no formation month has as many securities as groups, or no return
-    follows one.
+    Raises KnownProblem when no formation month has as many securities as groups, no return follows
+    one, or a column to rank on is text.
     """
     periods = Months() if periods is None else periods
-    rows = _rows(panel, periods)
-    candidates = _candidates(panel, rows, betas, weights, form_month)
-    formed = _formations(candidates, groups)
-    if formed.empty:
-        most = candidates["date"].value_counts().max() if len(candidates) else 0
-        raise _not_formed(f"{name}.groups", *_too_few(groups, most))
-    held = _held(panel, rows, formed, hold)
-    if held.empty:
-        last = Months().name(int(formed["formed_month"].max()))
+    rows = PanelRows.of(panel, periods)
+    asked = dict.fromkeys((*design.rank_on, *design.ante_betas))
+    found = {each: _variable(rows, estimates, each, design) for each in asked}
+    ranks = [found[each] for each in design.rank_on]
+    antes = [found[each] for each in design.ante_betas]
+    ranked = rank(rows, ranks, antes, _marks(rows, design), design)
+    if len(ranked.month) == 0:
+        groups = int(np.prod(design.groups))
+        raise _not_formed(f"{design.name}.groups", *_too_few(groups, ranked.most))
+    held_rows = _held_rows(rows, antes, design)
+    held = hold(held_rows, ranked.formations)
+    if not held.n_members.any():
+        last = Months().name(int(ranked.month.max()))
         found = f"no member has a return after the last formation month, {last}"
-        raise _not_formed(
-            f"{name}.form_month", found, "form in another month, or lengthen the data"
-        )
-    weighed = _with_weights(held, weights, groups)
-    names = np.array(asset_names(groups))
-    returns = _group_returns(weighed, groups, periods)
-    returns["asset"] = names[returns["group"] - 1]
-    returns = returns.sort_values(["asset", "date"], ignore_index=True)
-    return Sorted(_members(formed, weights, names), returns[_RETURN_COLUMNS])
+        change = "form in another month, or lengthen the data"
+        raise _not_formed(f"{design.name}.form_month", found, change)
+    formed = formed_tables.Formed(rows, held_rows, ranked, held, design)
+    returns = formed_tables.returns(formed)
+    return Sorted(
+        members=formed_tables.members(formed),
+        returns=returns,
+        formations=formed_tables.formations(formed),
+        transitions=formed_tables.transitions(formed),
+        assigned=formed_tables.assigned(formed, returns, market),
+    )
 
 
-_RETURN_COLUMNS = ["asset", "date", "excess_return", "n_members", "mean_size", "ante_beta"]
+def asset_names(*groups: int) -> list[str]:
+    """`p01` (lowest) to `p10`; of two variables `p01-01` to `p05-05`. Names sort in the order of the groups."""
+    return formed_tables.asset_names(groups)
 
 
 def _too_few(groups: int, most: int) -> tuple[str, str]:
@@ -102,152 +117,79 @@ def _not_formed(option: str, found: str, change: str) -> KnownProblem:
     return KnownProblem("Ranked portfolios cannot be formed.", [problem])
 
 
+def _variable(
+    rows: PanelRows, estimates: Mapping[str, pd.DataFrame], asked: str, design: Design
+) -> np.ndarray:
+    """A variable beside the rows of the panel, NaN where it is missing; (n_rows,)."""
+    table, column = split_rank(asked, list(estimates))
+    if table is not None:
+        return rows.of_estimates(estimates[table], [column])[0]
+    values = rows.panel[column]
+    if pd.api.types.is_numeric_dtype(values):
+        return values.to_numpy(dtype=float)
+    codes, texts = pd.factorize(values)
+    numbers = to_numbers(pd.Series(texts, dtype=str), [], thousands=True)
+    if numbers.is_text.any():
+        text = texts[int(np.flatnonzero(numbers.is_text)[0])]
+        found = f"the column {column} holds {text!r}, which is no number"
+        raise _not_formed(f"{design.name}.rank_on", found, "rank on a column of numbers")
+    return np.append(numbers.value, np.nan)[codes]
+
+
 @dataclass(frozen=True)
-class _Rows:
-    """The rows of the panel as numbers, (n_rows,) each: its security, its period, and the tables by period.
+class _Columns:
+    """The panel as a screen sees it: see `Chunk`."""
 
-    `code` numbers the securities by `names`; `number` is `ABSENT` where the row lies in no period.
-    `month` and `closes` are (n_periods,), of the periods from `low` on.
+    values: dict[str, np.ndarray]
+    texts: dict[str, tuple[np.ndarray, list[str]]]
+    owner: np.ndarray
+    names: np.ndarray
+
+
+_AS_TABLED = {"return": "total_return"}
+
+
+def _marks(rows: PanelRows, design: Design) -> np.ndarray | None:
+    """Whether each row meets the condition on who sets breakpoints: bool (n_rows,), None where every one does."""
+    if design.breakpoints is None:
+        return None
+    column = design.breakpoints["column"]
+    values, texts = {}, {}
+    if column != "security":
+        series = rows.panel[_AS_TABLED.get(column, column)]
+        if pd.api.types.is_numeric_dtype(series):
+            values["return_" if column == "return" else column] = series.to_numpy(dtype=float)
+        else:
+            codes, distinct = pd.factorize(series.fillna(""))
+            texts[column] = codes, list(distinct)
+    names = rows.names.to_numpy(dtype=object)
+    return passes(_Columns(values, texts, rows.owner, names), design.breakpoints)
+
+
+def _held_rows(rows: PanelRows, antes: list[np.ndarray], design: Design) -> Rows:
+    excess = rows.panel["excess_return"].to_numpy(dtype=float)
+    growth = growth_of(rows.panel)
+    size = lagged_sizes(rows.starts, rows.panel["size"].to_numpy(dtype=float), growth)
+    return Rows(
+        period=rows.period,
+        excess=excess,
+        growth=growth,
+        size=size,
+        weight=catalog.load(WEIGHTS[design.weights])(size),
+        beta=np.array(antes) if antes else np.empty((0, len(excess))),
+        drifts=design.weights in DRIFTING,
+    )
+
+
+def growth_of(panel: pd.DataFrame) -> np.ndarray:
+    """1 + the total return of each row, 1 where it is missing; (n_rows,).
+
+    A study without a riskless rate knows no total returns: there excess returns stand in, which lets a weight lag by
+    the riskless return.
     """
-
-    code: np.ndarray
-    names: pd.Index
-    number: np.ndarray
-    low: int
-    month: np.ndarray
-    closes: np.ndarray
-
-
-def _rows(panel: pd.DataFrame, periods: Periods) -> _Rows:
-    code, names = coded(panel["security"])
-    number = periods.number(panel["date"].to_numpy())
-    known = number[number != ABSENT]
-    low, high = (int(known.min()), int(known.max())) if len(known) else (0, -1)
-    every = np.arange(low, high + 1)
-    return _Rows(code, names, number, low, periods.month(every), periods.closes_month(every))
-
-
-def _candidates(
-    panel: pd.DataFrame, rows: _Rows, betas: pd.DataFrame, weights: str, form_month: int
-) -> pd.DataFrame:
-    """Securities that can be ranked, at the end of each formation month."""
-    forms = rows.closes & (rows.month % 12 == form_month - 1)
-    can = np.flatnonzero(_by_period(rows, forms, False) & panel["eligible"].to_numpy())
-    size = panel["size"].to_numpy()[can]
-    can = can[catalog.load(WEIGHTS[weights])(size) > 0]
-    found = pd.DataFrame(
-        {
-            "security": pd.Series(rows.names[rows.code[can]], dtype=str),
-            "date": panel["date"].to_numpy()[can],
-            "size": panel["size"].to_numpy()[can],
-            "code": rows.code[can],
-            "formed_month": rows.month[rows.number[can] - rows.low],
-        }
-    )
-    estimates = betas.loc[betas["date"].isin(found["date"].unique()), ["security", "date", "beta"]]
-    estimates = estimates.astype({"security": str})
-    return found.merge(estimates, on=["security", "date"], validate="one_to_one")
-
-
-def _by_period(rows: _Rows, table: np.ndarray, absent: object) -> np.ndarray:
-    """The entry of a table by period for each row, and `absent` for a row in no period."""
-    at = np.where(rows.number == ABSENT, len(table), rows.number - rows.low)
-    return np.append(table, np.asarray(absent, table.dtype))[at]
-
-
-def _formations(candidates: pd.DataFrame, groups: int) -> pd.DataFrame:
-    """The candidates with formed, ante_beta and group; formations with too few are left out."""
-    found = candidates.rename(columns={"date": "formed", "beta": "ante_beta"})
-    found = found[found.groupby("formed")["security"].transform("size") >= groups]
-    found = found.sort_values(["formed", "security"], ignore_index=True)
-    ranked = [ranked_groups(v.to_numpy(), groups) for _, v in found.groupby("formed")["ante_beta"]]
-    return found.assign(group=np.concatenate([np.empty(0, np.int64), *ranked]))
-
-
-def _members(formed: pd.DataFrame, weights: str, names: np.ndarray) -> pd.DataFrame:
-    raw = catalog.load(WEIGHTS[weights])(formed["size"].to_numpy())
-    cell = formed.groupby(["formed", "group"]).ngroup().to_numpy()
-    members = formed.assign(
-        asset=names[formed["group"] - 1], weight=scaled_to_one(raw, cell, cell.max() + 1)
-    )
-    columns = ["formed", "asset", "security", "weight", "ante_beta", "size"]
-    return members[columns].sort_values(columns[:3], ignore_index=True)
-
-
-def _held(panel: pd.DataFrame, rows: _Rows, formed: pd.DataFrame, hold: int) -> pd.DataFrame:
-    """Every period in which a member has a return, with the size it had the period before."""
-    formations, formation_of = np.unique(formed["formed_month"], return_inverse=True)
-    latest = np.searchsorted(formations, rows.month, side="left") - 1
-    too_old = rows.month - formations[np.maximum(latest, 0)] > hold
-    in_force = _by_period(rows, np.where(too_old, -1, latest), -1)
-    member = np.full((len(formations), len(rows.names)), -1, np.int32)
-    member[formation_of, formed["code"]] = np.arange(len(formed))
-    excess = panel["excess_return"].to_numpy()
-    row = np.flatnonzero((in_force >= 0) & ~np.isnan(excess))
-    who = member[in_force[row], rows.code[row]]
-    row, who = row[who >= 0], who[who >= 0]
-    return pd.DataFrame(
-        {
-            "number": rows.number[row],
-            "excess_return": excess[row],
-            "lagged_size": _lagged_size(panel, rows.code)[row],
-            "ante_beta": formed["ante_beta"].to_numpy()[who],
-            "group": formed["group"].to_numpy()[who],
-        }
-    )
-
-
-def _lagged_size(panel: pd.DataFrame, code: np.ndarray) -> np.ndarray:
-    """Size at the end of the row before, of the same security; (n_rows,), NaN where unknown.
-
-    A missing size is the last known one grown by the total returns since, so that a weight drifts
-    with its security; a missing return grows nothing, and after a total loss no size is known. A study without a
-    riskless rate knows no total returns: there excess returns stand in, which lets a size lag by the riskless return.
-    """
-    size = panel["size"].to_numpy()
-    first = np.append(True, code[1:] != code[:-1])
-    begins = first | ~np.isnan(size)
-    start = np.maximum.accumulate(np.where(begins, np.arange(len(panel)), 0))
-    known = size[start]
-    grows = np.flatnonzero(~begins & ~np.isnan(known))
-    part = panel.iloc[grows]
-    growth = 1 + part["total_return"].fillna(part["excess_return"]).fillna(0.0)
-    known[grows] *= growth.groupby(start[grows]).cumprod().to_numpy()
-    known = np.where(known > 0, known, np.nan)
-    return np.where(first, np.nan, np.roll(known, 1))
-
-
-def _with_weights(held: pd.DataFrame, weights: str, groups: int) -> pd.DataFrame:
-    """Members of a period with their weights, which sum to one in each group and period."""
-    cell = ((held["number"] - held["number"].min()) * groups + held["group"] - 1).to_numpy()
-    raw = catalog.load(WEIGHTS[weights])(held["lagged_size"].to_numpy())
-    return held.assign(cell=cell, weight=scaled_to_one(raw, cell, int(cell.max()) + 1))
-
-
-def _group_returns(weighed: pd.DataFrame, groups: int, periods: Periods) -> pd.DataFrame:
-    """group, date and the columns of the contract; every group in every period."""
-    numbers = np.arange(weighed["number"].min(), weighed["number"].max() + 1)
-    dates = periods.date(numbers).astype("datetime64[ms]")
-    n_periods = len(numbers)
-    cell, weight, size = (weighed[c].to_numpy() for c in ("cell", "weight", "lagged_size"))
-
-    def total(values: np.ndarray) -> np.ndarray:
-        return np.bincount(cell, values, n_periods * groups)
-
-    def ratio(part: np.ndarray, whole: np.ndarray) -> np.ndarray:
-        return np.divide(part, whole, out=np.full(len(whole), np.nan), where=whole > 0)
-
-    weighs = np.where(total(weight) > 0, 1.0, np.nan)
-    return pd.DataFrame(
-        {
-            "group": np.tile(np.arange(1, groups + 1), n_periods),
-            "date": np.repeat(dates, groups),
-            "excess_return": weighs * total(weight * weighed["excess_return"].to_numpy()),
-            "n_members": total(np.ones(len(cell))),
-            "mean_size": ratio(total(np.nan_to_num(size)), total(np.isfinite(size).astype(float))),
-            "ante_beta": weighs * total(weight * weighed["ante_beta"].to_numpy()),
-        }
-    )
+    total = panel["total_return"].to_numpy(dtype=float)
+    grown = np.where(np.isnan(total), panel["excess_return"].to_numpy(dtype=float), total)
+    return np.where(np.isnan(grown), 1.0, np.maximum(1.0 + grown, 0.0))
 
 
 def take_supplied(
@@ -278,11 +220,18 @@ def take_supplied(
         mean_size=np.nan,
         ante_beta=np.nan,
     )
-    returns = returns[_RETURN_COLUMNS].sort_values(["asset", "date"], ignore_index=True)
-    return Sorted(_no_members(), returns)
+    columns = formed_tables.RETURN_COLUMNS
+    returns = returns[columns].sort_values(["asset", "date"], ignore_index=True)
+    return Sorted(returns=returns, **formed_tables.empty())
 
 
-def _no_members() -> pd.DataFrame:
-    types = {"formed": "datetime64[ms]", "asset": str, "security": str}
-    types |= dict.fromkeys(("weight", "ante_beta", "size"), float)
-    return pd.DataFrame({name: pd.Series(dtype=kind) for name, kind in types.items()})
+def warm_up() -> None:
+    """Compile what forming and holding groups needs, on a few invented rows."""
+    months = pd.date_range("2001-01-31", periods=14, freq="ME", unit="ms")
+    security = pd.Categorical(np.repeat(["A", "B", "C"], len(months)))
+    panel = pd.DataFrame({"security": security, "date": np.tile(months, 3), "eligible": True})
+    panel = panel.assign(total_return=0.02, excess_return=0.01, size=1.0)
+    betas = panel[["security", "date"]].assign(beta=np.arange(len(panel)) / 10)
+    on_betas = {"rank_on": ("b",), "ante_betas": ("b",), "assign_betas": "ex_ante"}
+    design = Design(name="warm", groups=(2,), form_each="month", hold=1, **on_betas)
+    sort_ranked(panel, {"b": betas}, design)

@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from lineproof.cross_checks import CHECKS, beta_returns
+from lineproof.designs import FORM_EACH, Design
 from lineproof.estimators import OWN_OPTIONS
 from lineproof.intake.formats import given_files, members
 from lineproof.problems import KnownProblem, Problem
@@ -107,18 +108,16 @@ class BetaSpec:
 
 @dataclass(frozen=True)
 class SortSpec:
-    """Options of one set of test assets."""
+    """Options of one set of test assets: a `source` where they are supplied; else how they are `ranked`, with the
+    names of the `estimates` that takes, those it ranks on first."""
 
     name: str
     title: str
     design: str
-    rank_on: str | None
-    groups: int
-    weights: str
-    form_month: int
-    hold: int
     returns_are: str
     source: Source | None
+    ranked: Design | None
+    estimates: tuple[str, ...]
 
 
 @dataclass(frozen=True)
@@ -238,7 +237,7 @@ def _build(content: dict[str, Any], path: Path) -> Study:
         intake=_intake(content["intake"]),
         betas={name: _beta(name, content) for name in content["betas"]},
         sorts={
-            name: _sort(name, options, path, content["study"]["name"])
+            name: _sort(name, options, content["betas"], path, content["study"]["name"])
             for name, options in content["portfolios"].items()
         },
         subperiods={
@@ -322,24 +321,66 @@ def _choice(value: str | list[str]) -> str | tuple[str, ...]:
     return value if isinstance(value, str) else tuple(value)
 
 
-def _sort(name: str, options: dict[str, Any], path: Path, study: str) -> SortSpec:
+def _sort(
+    name: str, options: dict[str, Any], betas: dict[str, Any], path: Path, study: str
+) -> SortSpec:
     supplied = options["design"] == "supplied"
-    weighted = "size-weighted" if options["weights"] == "size" else "equally weighted"
-    title = options.get("title") or (
-        f"Supplied assets {name}" if supplied else f"{options['groups']} groups, {weighted}"
-    )
+    ranked = None if supplied else _design(name, options, betas)
+    variables = () if ranked is None else (*ranked.rank_on, *ranked.ante_betas)
+    tables = dict.fromkeys(each.partition(".")[0] for each in variables)
     return SortSpec(
         name=name,
-        title=title,
+        title=options.get("title") or (_title(ranked) if ranked else f"Supplied assets {name}"),
         design=options["design"],
-        rank_on=options.get("rank_on"),
-        groups=options["groups"],
-        weights=options["weights"],
-        form_month=options["form_month"],
-        hold=options["hold"],
         returns_are=options["is"],
         source=_source(options, path, study, name) if supplied else None,
+        ranked=ranked,
+        estimates=tuple(table for table in tables if table in betas),
     )
+
+
+def _several(value: Any) -> tuple:
+    return tuple(value) if isinstance(value, list) else (value,)
+
+
+_SAME_IN_DESIGN = (
+    *("weights", "form_month", "form_each", "rule", "dependent", "overlap", "spread"),
+    "assign_betas",
+)
+_HOLD_BLOCKS = 48  # months: Fama and MacBeth 1973
+
+
+def _design(name: str, options: dict[str, Any], betas: dict[str, Any]) -> Design:
+    """How groups are ranked, formed and held, what is left to the other options filled in."""
+    blocks = options["design"] == "three_windows"
+    rank_on = _several(options["rank_on"])
+    tables = [table for each in rank_on if (table := each.partition(".")[0]) in betas]
+    return Design(
+        name=name,
+        rank_on=rank_on,
+        groups=_several(options["groups"]),
+        ante_betas=_several(options["ante_betas"])
+        if "ante_betas" in options
+        else tuple(tables[:1]),
+        hold=options.get("hold", _HOLD_BLOCKS if blocks else FORM_EACH[options["form_each"]]),
+        in_blocks=blocks,
+        renews=blocks or len(_several(options.get("ante_betas", ""))) > 1,
+        estimation=options["estimation"] if blocks else 0,
+        first_formation=options.get("first_formation"),
+        breakpoints=options.get("breakpoints"),
+        **{key: options[key] for key in _SAME_IN_DESIGN},
+    )
+
+
+_WEIGHTED = {
+    "equal": "equally weighted",
+    "buy_and_hold": "bought and held",
+    "size": "size-weighted",
+}
+
+
+def _title(ranked: Design) -> str:
+    return f"{' × '.join(map(str, ranked.groups))} groups, {_WEIGHTED[ranked.weights]}"
 
 
 def _source(options: dict[str, Any], path: Path, study: str, name: str) -> Source:

@@ -11,6 +11,7 @@ from __future__ import annotations
 
 import json
 import os
+from collections.abc import Iterable
 from dataclasses import asdict, dataclass
 from functools import cached_property
 from pathlib import Path
@@ -114,7 +115,8 @@ class Wiring:
         if study.demo is not None:
             found["make_demo"] = dict(study.demo)
         for name, spec in study.betas.items():
-            found[f"estimate_betas-{name}"] = {**_estimation(spec), "dated": study.frequency}
+            rule = "estimate_betas" if spec.shrunk is None else "shrink_betas"
+            found[f"{rule}-{name}"] = {**_estimation(spec), "dated": study.frequency}
         if study.factors is not None:
             found["read_factors"] = {
                 "reading": study.factors.reading(),
@@ -179,12 +181,23 @@ class Wiring:
                 "reading": spec.source.reading(),
                 "returns_are": spec.returns_are,
             }
+        assert spec.ranked is not None
         return {
             "design": spec.design,
             "frequency": self.study.frequency,
-            "name": name,
-            **{key: getattr(spec, key) for key in ("groups", "weights", "form_month", "hold")},
+            "estimates": list(spec.estimates),
+            **{key: _plain(value) for key, value in asdict(spec.ranked).items()},
         }
+
+    @property
+    def estimated(self) -> str:
+        """A pattern of the entries under `betas` that are estimated."""
+        return _one_of(name for name, spec in self.study.betas.items() if spec.shrunk is None)
+
+    @property
+    def shrunk(self) -> str:
+        """A pattern of the entries under `betas` that shrink another."""
+        return _one_of(name for name, spec in self.study.betas.items() if spec.shrunk is not None)
 
     def beta_inputs(self, name: str) -> dict[str, str]:
         """The tables that an entry under `betas` is estimated from, or the estimates that it shrinks."""
@@ -204,7 +217,8 @@ class Wiring:
         spec = self.study.sorts[name]
         if spec.source is not None:
             return list(spec.source.files)
-        return [self.path("data/panel.parquet"), self.path(f"betas/{spec.rank_on}.parquet")]
+        betas = [self.path(f"betas/{each}.parquet") for each in spec.estimates]
+        return [self.path("data/panel.parquet"), *betas]
 
     @property
     def tables_between(self) -> list[str]:
@@ -212,15 +226,14 @@ class Wiring:
         sorts = [
             f"portfolios/{name}/{kind}.parquet"
             for name in self.study.sorts
-            for kind in ("members", "returns")
+            for kind in ("members", "returns", "formations", "transitions", "assigned")
         ]
         return [*(f"betas/{name}.parquet" for name in self.study.betas), *sorts]
 
     @property
     def main_betas(self) -> list[str]:
-        """The estimate that the main test assets are ranked on, in a list; empty where they are supplied."""
-        ranked_on = self.study.sorts[self.study.paper.main].rank_on
-        return [] if ranked_on is None else [ranked_on]
+        """The first estimate that the main test assets are ranked on, in a list; empty where there is none."""
+        return list(self.study.sorts[self.study.paper.main].estimates[:1])
 
     @cached_property
     def tables(self) -> list[str]:
@@ -246,6 +259,11 @@ class Wiring:
             index.unlink()
 
 
+def _one_of(names: Iterable[str]) -> str:
+    """A pattern that fits these names, or nothing where there are none."""
+    return "|".join(names) or "(?!)"
+
+
 def _estimation(spec: BetaSpec) -> dict[str, Any]:
     if spec.shrunk is not None:
         return {key: spec.shrunk[key] for key in ("shrink", "own")}
@@ -254,6 +272,11 @@ def _estimation(spec: BetaSpec) -> dict[str, Any]:
         for key in ("name", "estimator", "returns", "window", "min_obs", "own")
     }
     return {**given, "beside": list(spec.factors)}
+
+
+def _plain(value: Any) -> Any:
+    """A tuple as the list that it is in a file of options."""
+    return list(value) if isinstance(value, tuple) else value
 
 
 def subperiod_names(index: str | os.PathLike) -> list[str]:

@@ -11,7 +11,10 @@ rule form_portfolios:
         code=wiring.code("form_portfolios"),
     output:
         members=wiring.path("portfolios/{sort}/members.parquet"),
-        returns=wiring.path("portfolios/{sort}/returns.parquet"),
+        portfolio_returns=wiring.path("portfolios/{sort}/returns.parquet"),
+        formations=wiring.path("portfolios/{sort}/formations.parquet"),
+        transitions=wiring.path("portfolios/{sort}/transitions.parquet"),
+        assigned=wiring.path("portfolios/{sort}/assigned.parquet"),
     log:
         wiring.path("logs/form_portfolios-{sort}.log"),
     benchmark:

@@ -5,7 +5,5 @@ with joblog.job(snakemake):
     market = store.read_table(snakemake.input.market)
     options = snakemake.params.options
     found = form_portfolios(snakemake.params.sources, market, **options)
-    store.write_table(found.members, snakemake.output.members, "members", options["frequency"])
-    store.write_table(
-        found.returns, snakemake.output.returns, "portfolio_returns", options["frequency"]
-    )
+    for name, table in found.tables().items():
+        store.write_table(table, snakemake.output[name], name, options["frequency"])

@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from lineproof.addresses import refused_asset_names
+from lineproof.addresses import is_spread, refused_asset_names
 from lineproof.calendar import month_number
 from lineproof.intake.headers import where_is
 from lineproof.intake.reading import TextTable, read_text
@@ -165,12 +165,10 @@ def _row_problems(
 
 
 def _check_names(names: list[str], reading: dict[str, Any]) -> None:
-    refused = refused_asset_names(names)
+    refused = [*refused_asset_names(names), *filter(is_spread, names)]
     if refused:
         found = f"test assets may not be called {few(map(repr, refused))}"
-        change = (
-            "these names stand for other rows of the estimates, and / parts an address: rename them"
-        )
+        change = "these names stand for other rows of the estimates or for spreads, and / parts an address: rename them"
         raise stop(where_is(reading, "asset"), found, change)
 
 

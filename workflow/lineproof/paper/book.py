@@ -7,7 +7,7 @@ from difflib import get_close_matches
 
 import pandas as pd
 
-from lineproof.addresses import KEY_COLUMNS, NUMBER_COLUMNS, RESERVED_ASSETS, SEPARATOR
+from lineproof.addresses import KEY_COLUMNS, NUMBER_COLUMNS, RESERVED_ASSETS, SEPARATOR, is_spread
 from lineproof.analyses import LINE_ERRORS
 
 
@@ -58,7 +58,7 @@ class Book:
         self._ran: set[tuple[str, str, str]] = set()
         for sort, subperiod, analysis, _, asset, *_ in keys:
             self._ran.add((sort, subperiod, analysis))
-            if sort != "-" and asset not in RESERVED_ASSETS:
+            if sort != "-" and asset not in RESERVED_ASSETS and not is_spread(asset):
                 self._assets.setdefault((sort, subperiod), {})[asset] = None
 
     def at(self, *parts: str) -> Number:
@@ -82,7 +82,7 @@ class Book:
         return (sort, subperiod, analysis) in self._ran
 
     def assets(self, sort: str, subperiod: str) -> list[str]:
-        """Names of the test assets of a sort in a subperiod, in the order of the estimates."""
+        """Names of the test assets of a sort in a subperiod, without spreads, in the order of the estimates."""
         return list(self._assets.get((sort, subperiod), ()))
 
     def months(self) -> list[str]:

@@ -36,6 +36,13 @@ def formation(context: Context, sort: str) -> Phrase:
     facts = context.facts["sorts"][sort]
     if not context.ranked(sort):
         return said("{title}: test assets supplied as return series.", title=facts["title"])
+    if "formation" in facts:
+        return said(
+            "{title}: {formation}; returns are {weights}.",
+            title=facts["title"],
+            formation=facts["formation"],
+            weights=facts["weights_label"],
+        )
     return said(
         "{title}: at the end of each {month}, securities are ranked on the beta of their last "
         "{window} {periods} "

@@ -1,12 +1,13 @@
 """Weights of members inside a group, before they are scaled to one over the members with a return.
 
-A function here takes the members' sizes and gives one weight each; a security whose weight would be
+A function of the registry takes the members' sizes and gives one weight each; a security whose weight would be
 zero at formation is not ranked.
 """
 
 from __future__ import annotations
 
 import numpy as np
+from numba import njit
 
 
 def equal(lagged_size: np.ndarray) -> np.ndarray:
@@ -27,3 +28,23 @@ def scaled_to_one(weight: np.ndarray, group: np.ndarray, n_groups: int) -> np.nd
     """
     total = np.bincount(group, weight, n_groups)[group]
     return np.divide(weight, total, out=np.zeros_like(weight), where=total > 0)
+
+
+@njit(cache=True)
+def lagged_sizes(starts, size, growth):  # pragma: no cover - compiled
+    """Size at the end of the row before, of the same security; (n_rows,), NaN where unknown.
+
+    A missing size is the last known one grown by `growth` (1 + return, 1 where it is missing), so
+    that a weight drifts with its security; after a total loss no size is known. `starts`
+    (n_securities + 1,) parts the rows by security.
+    """
+    lagged = np.empty(len(size))
+    for security in range(len(starts) - 1):
+        known = np.nan
+        for row in range(starts[security], starts[security + 1]):
+            lagged[row] = known if known > 0 else np.nan
+            if np.isnan(size[row]):
+                known *= growth[row]
+            else:
+                known = size[row]
+    return lagged
