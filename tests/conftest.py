@@ -5,6 +5,11 @@ from __future__ import annotations
 import os
 
 import pytest
+from hypothesis import settings
+
+# A slow machine is no failure.
+settings.register_profile("patient", deadline=None)
+settings.load_profile("patient")
 
 
 def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
