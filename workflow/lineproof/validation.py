@@ -56,7 +56,7 @@ def validate_returns(
     _check_names(returns)
     returns = dict(with_dates(files["returns"], returns, daily=returns_frequency == "daily"))
     returns |= {"are": returns_are, "noun": FREQUENCIES[returns_frequency].noun}
-    supplied = read_supplied(dict(files), returns_frequency, **series)
+    supplied = read_supplied(files, **series)
     opened = open_files(list(files["returns"]), returns)
     scale = ScaleEvidence()
     months = Months()

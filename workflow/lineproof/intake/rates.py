@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 import pandas as pd
 
-from lineproof.intake.dating import with_dates
 from lineproof.intake.factor import (
     Factor,
     RisklessRate,
@@ -113,26 +113,20 @@ class Supplied:
 
 
 def read_supplied(
-    files: dict[str, list[str]],
-    frequency: str,
+    files: Mapping[str, list[str]],
     *,
     market: dict[str, Any] | None,
     market_is: str,
-    market_frequency: str | None,
+    market_frequency: str,
     riskless: dict[str, Any] | None,
     riskless_quoted: str,
-    riskless_frequency: str | None,
+    riskless_frequency: str,
 ) -> Supplied:
-    """Read the market and the riskless rate; `frequency` is that of the returns. Raises KnownProblem."""
-    market_frequency = market_frequency or frequency
-    riskless_frequency = riskless_frequency or frequency
+    """Read the market and the riskless rate. Raises KnownProblem."""
     rate = returns = None
     if riskless is not None:
-        daily = riskless_frequency == "daily"
-        riskless = with_dates(files["riskless"], riskless, daily=daily)
         rate = read_riskless(files["riskless"], riskless, riskless_quoted, riskless_frequency)
     if market is not None:
-        market = with_dates(files["market"], market, daily=market_frequency == "daily")
         returns = read_series(files["market"], market, "return", market_frequency)
     label = "" if market is None else market["label"]
     return Supplied(returns, market_frequency, market_is, label, rate)

@@ -12,13 +12,13 @@ import pandas as pd
 
 from lineproof.addresses import refused_asset_names
 from lineproof.calendar import month_number
+from lineproof.intake.dating import with_dates
 from lineproof.intake.headers import where_is
 from lineproof.intake.reading import TextTable, read_text
-from lineproof.intake.riskless import check_riskless as check_riskless
-from lineproof.intake.riskless import riskless_return as riskless_return
-from lineproof.intake.series_dates import check_series_dates, check_series_frequency, to_days
+from lineproof.intake.series_dates import check_series_frequency
 from lineproof.intake.stopping import N_SHOWN, UNUSABLE, counted, few, stop
-from lineproof.intake.values import Numbers, as_decimal, to_numbers
+from lineproof.intake.values import Numbers, as_decimal, to_days, to_numbers
+from lineproof.periods import Months
 from lineproof.problems import KnownProblem, Problem
 
 _FEWEST = 30  # values on which to judge a unit
@@ -43,8 +43,8 @@ def read_series(
     months missing inside the series (27); or when the dates are not as frequent as declared (40), or returns are in
     another unit. Which days are missing from a daily series no reader can know: see `riskless` and `trading_days`.
     """
-    check_series_dates(reading, frequency)
     paths = [files] if isinstance(files, str) else list(files)
+    reading = with_dates(paths, reading, daily=frequency == "daily")
     parsed = [_parsed(file, reading, value, len(paths) > 1) for file in paths]
     problems = [problem for each in parsed for problem in each.problems]
     if problems:
@@ -79,7 +79,7 @@ class _Parsed:
 
 def _parsed(file: str, reading: dict[str, Any], value: str, is_one_of_several: bool) -> _Parsed:
     if is_one_of_several:  # a message about a row must name its own file
-        reading = {**reading, "label": Path(file).name}
+        reading = {**reading, "label": Path(file).name, "labels": None}
     table = read_text(file, reading)
     rows = table.rows
     day = to_days(rows["date"], reading["dates"])
@@ -93,10 +93,9 @@ def _parsed(file: str, reading: dict[str, Any], value: str, is_one_of_several: b
 
 
 def _dates(day: np.ndarray, frequency: str) -> np.ndarray:
-    if frequency == "daily":
-        return day.astype("datetime64[ms]")
-    following = (day.astype("datetime64[M]") + 1).astype("datetime64[D]")
-    return (following - 1).astype("datetime64[ms]")
+    months = Months()
+    dates = day if frequency == "daily" else months.date(months.number(day))
+    return dates.astype("datetime64[ms]")
 
 
 def _check_unit(decimal: np.ndarray, reading: dict[str, Any], frequency: str) -> None:

@@ -201,4 +201,5 @@ def check_date_format(reading: dict[str, Any], *, daily: bool = False) -> None:
     wanted = {"year": _YEAR, "month": _MONTH, **({"day": _DAY} if daily else {})}
     for what, found in wanted.items():
         if not found & set(parts):
-            raise stop(where, f"{dates!r} gives no {what}", "as in %Y-%m-%d")
+            other = ", or set frequency: monthly" if what == "day" else ""
+            raise stop(where, f"{dates!r} gives no {what}", f"as in %Y-%m-%d{other}")
