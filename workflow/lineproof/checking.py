@@ -20,6 +20,7 @@ from lineproof.intake.record import (
     returns_in_all,
     survivors_only,
 )
+from lineproof.intake.stopping import counted
 from lineproof.paper.rounding import printed
 from lineproof.study import Study
 
@@ -95,7 +96,7 @@ def _survivors(intake: Intake) -> list[str]:
 def _files(intake: Intake) -> list[str]:
     """All returns together, then each of several files of them and the other files; then the span."""
     missing, n = intake["n_missing_returns"], intake["n_securities"]
-    said = f"{intake['file']}: {intake['first']} to {intake['last']}, {_securities(n)}"
+    said = f"{intake['file']}: {intake['first']} to {intake['last']}, {counted(n, 'security')}"
     lines = _below(said, 0, 2)
     lines += _equation(returns_in_all(intake), missing, named=False)
     files = files_of(intake)
@@ -136,7 +137,7 @@ def _fault(fault: FaultRecord) -> list[str]:
 
 
 def _screen(screen: ScreenRecord) -> list[str]:
-    n, whose = screen["n_rows"], _securities(screen["n_securities"])
+    n, whose = screen["n_rows"], counted(screen["n_securities"], "security")
     return _counted(n, f"{'row' if n == 1 else 'rows'} of {whose}: not “{screen['label']}”")
 
 
@@ -231,7 +232,3 @@ def _visible(text: str) -> str:
 
 def _minus(text: str) -> str:
     return text.replace("-", "−")
-
-
-def _securities(n: int) -> str:
-    return f"{n:,} {'security' if n == 1 else 'securities'}"

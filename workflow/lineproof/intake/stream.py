@@ -80,6 +80,7 @@ class Intake:
         periods = self._delivered.span.periods
         n = np.zeros(len(files), np.int64)
         self._tracked = Tracked(n, n.copy())
+        self._leaving_before = self._first_day_of_staying(days)
         self._screens = Screens(rules["screens"], rules["stale_run"], self._rates.span.periods.noun)
         self._observers = start_observers(periods)
         self._units = UnitBySecurity()
@@ -138,7 +139,7 @@ class Intake:
         periods = rates.span.periods
         flag_rows(chunk, taken.tally, missing_codes(self._reading["missing"]), periods)
         self._units.see(chunk)
-        leaves = leaving_rows(chunk, taken.last_seen(chunk.names), self._leaving_before())
+        leaves = leaving_rows(chunk, taken.last_seen(chunk.names), self._leaving_before)
         chunk.values["total_return"] = self._leavers.with_final_returns(chunk, leaves, taken.tally)
         self._alive += np.bincount(chunk.period - rates.span.first, minlength=len(self._alive))
         for observer in self._observers.values():
@@ -188,13 +189,13 @@ class Intake:
         given = {column: values for column, values in more.items() if values is not None}
         return panel_frame(chunk, rates.span.periods, excess, eligible, leaves, given)
 
-    def _leaving_before(self) -> np.datetime64:
+    def _first_day_of_staying(self, days: np.ndarray) -> np.datetime64:
         """A security whose last row is dated before this day has left: the first day of the last period with rows.
 
         Among days it is the first of the last ten, since not every security trades every day.
         """
         span = self._delivered.span
-        numbers = span.periods.number(self._taken.days[0])
+        numbers = span.periods.number(days)
         within = numbers[(numbers >= span.first) & (numbers <= span.last)]
         last = int(within.max()) if len(within) else span.last
         back = 9 if self._kinds.delivered == "daily" else 0
@@ -321,9 +322,7 @@ class Intake:
         by_security = {
             "what": "the same unit for every security",
             "found": "; ".join(others.examples)
-            or f"none of {counted(units['n_judged'], 'security')} stands out".replace(
-                "securitys", "securities"
-            ),
+            or f"none of {counted(units['n_judged'], 'security')} stands out",
             "verdict": "to be looked at" if others.n else "one unit throughout",
         }
         return [*scale_findings(self._scale, self._reading, self._stretches), by_security]
