@@ -24,7 +24,7 @@ def read(folder: Path, text: str, columns: dict[str, str] | None = None, **chang
     file = examples.write(folder / "market.csv", text)
     columns = columns or {"date": "month", "return": "mkt"}
     reading = examples.reading("raw/market.csv", columns, **{"dates": "%Y-%m", **changes})
-    return read_series(file, reading, "return")
+    return read_series(file, reading, "return").values
 
 
 def message(*arguments: Any, **options: Any) -> str:
@@ -188,9 +188,8 @@ def test_a_high_but_plausible_rate_passes() -> None:
 def read_as(folder: Path, text: str, frequency: str, **changes: Any) -> pd.DataFrame:
     file = examples.write(folder / "market.csv", text)
     columns = changes.pop("columns", {"date": "date", "return": "mkt"})
-    return read_series(
-        file, examples.reading("raw/market.csv", columns, **changes), "return", frequency
-    )
+    reading = examples.reading("raw/market.csv", columns, **changes)
+    return read_series(file, reading, "return", frequency).values
 
 
 def refused_as(*arguments: Any, **options: Any) -> str:
@@ -305,7 +304,7 @@ def test_several_files_are_one_series(tmp_path: Path) -> None:
         for year in (2001, 2000)
     ]
     reading = examples.reading("raw/*.csv", {"date": "month", "return": "mkt"}, dates="%Y-%m")
-    found = read_series(files, reading, "return")
+    found = read_series(files, reading, "return").values
     assert len(found) == 24
     assert found["date"].is_monotonic_increasing
     with pytest.raises(KnownProblem) as caught:
@@ -328,7 +327,7 @@ def test_dates_that_are_left_open_are_found_out(tmp_path: Path) -> None:
     text = "asset,day,ret\n" + "".join(f"a,{month}/28/2000,0.01\n" for month in range(1, 13))
     columns = {"asset": "asset", "date": "day", "return": "ret"}
     reading = examples.reading("raw/assets.csv", columns, dates=None)
-    found = read_series([examples.write(tmp_path / "a.csv", text)], reading, "return")
+    found = read_series([examples.write(tmp_path / "a.csv", text)], reading, "return").values
     assert found["date"].tolist() == pd.date_range("2000-01-31", periods=12, freq="ME").tolist()
 
 
@@ -342,4 +341,4 @@ def test_several_files_with_labels_of_their_own_are_one_series(tmp_path: Path) -
     ]
     reading = examples.reading("raw/*.csv", {"date": "day", "return": "ret"})
     reading["labels"] = ["raw/2000.csv", "raw/2001.csv"]
-    assert len(read_series(files, reading, "return")) == 24
+    assert len(read_series(files, reading, "return").values) == 24

@@ -28,10 +28,27 @@ _RARELY_NEGATIVE = 0.01
 _SIZES = {"monthly": (0.5, 0.005), "daily": (0.1, 0.0005)}
 
 
+@dataclass(frozen=True)
+class FileOfSeries:
+    """One file: `n_rows` in all, and `days` (n_valued,), datetime64[D], of those that have a value."""
+
+    label: str
+    n_rows: int
+    days: np.ndarray
+
+
+@dataclass(frozen=True)
+class Series:
+    """`values` has date and the value asked for, sorted; with asset where the columns name one."""
+
+    values: pd.DataFrame
+    files: list[FileOfSeries]
+
+
 def read_series(
     files: str | Sequence[str], reading: dict[str, Any], value: str, frequency: str = "monthly"
-) -> pd.DataFrame:
-    """`date` and `value` (decimal), sorted; with `asset` where the columns name one.
+) -> Series:
+    """A series with its `value` decimal.
 
     `files` is one path, or several whose rows are one series. A date is the month's end or, where `frequency` is
     "daily", the day as delivered: the days of the market are the trading calendar of a daily study.
@@ -64,17 +81,22 @@ def read_series(
         _check_names(series["asset"].unique().tolist(), reading)
     series = series[series[value].notna()].sort_values(keys, ignore_index=True)
     _check_periods(series, keys, reading["label"], frequency)
-    return series
+    return Series(series, [each.counted for each in parsed])
 
 
 @dataclass(frozen=True)
 class _Parsed:
     """The rows of one file, each array (n_rows,), and what is wrong with single rows."""
 
+    label: str
     day: np.ndarray
     decimal: np.ndarray
     asset: np.ndarray
     problems: list[Problem]
+
+    @property
+    def counted(self) -> FileOfSeries:
+        return FileOfSeries(self.label, len(self.day), self.day[~np.isnan(self.decimal)])
 
 
 def _parsed(file: str, reading: dict[str, Any], value: str, is_one_of_several: bool) -> _Parsed:
@@ -85,6 +107,7 @@ def _parsed(file: str, reading: dict[str, Any], value: str, is_one_of_several: b
     day = to_days(rows["date"], reading["dates"])
     numbers = to_numbers(rows[value], reading["missing"])
     return _Parsed(
+        label=table.label,
         day=day,
         decimal=as_decimal(numbers.value, reading["unit"]),
         asset=rows["asset"].to_numpy(object) if "asset" in rows else np.full(len(rows), ""),
