@@ -99,6 +99,9 @@ def _series(record: Record) -> list[dict[str, Any]] | None:
         {
             **each,
             "what": SERIES.get(each["place"], each["place"]),
+            "span": [
+                each[end][: 7 if each["period"] == "month" else 10] for end in ("first", "last")
+            ],
             "n_periods": record.at("series", place, "n_periods"),
             "numbers": [
                 record.at("series", place, key, form="fine_percent")
