@@ -156,8 +156,8 @@ def _after(line: str, last: str) -> bool:
 
 
 def copy_program(folder: Path, study: str = STUDY) -> Project:
-    """The program without results, with a small study's file."""
-    ignored = shutil.ignore_patterns("__pycache__")
+    """The program without results, with a small study's file; kernels come compiled, as after set-up."""
+    ignored = shutil.ignore_patterns("*.pyc")
     shutil.copytree(ROOT / "workflow", folder / "workflow", ignore=ignored)
     shutil.copy2(ROOT / "Snakefile", folder / "Snakefile")
     project = Project(folder)

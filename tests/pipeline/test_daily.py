@@ -177,6 +177,7 @@ def test_means_of_days_print_with_four_digits(made: Made) -> None:
     assert np.isfinite(slope.estimate)
 
 
+@pytest.mark.thorough
 def test_a_whole_run(tmp_path: Path, made: Made) -> None:
     project: Project = copy_program(tmp_path / "project", daily_market.STUDY)
     daily_market.write_files(project.folder / "raw")

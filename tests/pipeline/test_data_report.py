@@ -5,9 +5,11 @@ from __future__ import annotations
 import json
 from pathlib import Path
 
+import pytest
 from tests.pipeline.conftest import LAST_OF_FIRST_DELIVERY, Project, copy_program, deliver
 
 
+@pytest.mark.thorough
 def test_check_writes_the_data_report_and_no_more(tmp_path: Path) -> None:
     project = copy_program(tmp_path / "project")
     deliver(project, LAST_OF_FIRST_DELIVERY)

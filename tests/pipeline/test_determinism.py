@@ -37,6 +37,7 @@ def demos(tmp_path_factory: pytest.TempPathFactory) -> list[Demo]:
     return made
 
 
+@pytest.mark.thorough
 def test_one_core_and_two_give_the_same_bytes(demos: list[Demo]) -> None:
     one, two = (demo.hashes(*PARTS) for demo in demos)
     assert len(one) > 60
@@ -44,6 +45,7 @@ def test_one_core_and_two_give_the_same_bytes(demos: list[Demo]) -> None:
     assert one.keys() == two.keys()
 
 
+@pytest.mark.thorough
 def test_no_output_names_the_machine(demos: list[Demo]) -> None:
     """Nothing that is passed on holds a path of the machine it was made on."""
     folder = str(demos[0].folder).encode()

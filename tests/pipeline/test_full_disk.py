@@ -32,6 +32,7 @@ def on_small_disk(project: Project) -> Iterator[Project]:
     subprocess.run(["umount", str(project.results)], check=True)
 
 
+@pytest.mark.thorough
 @pytest.mark.fault(35)
 def test_a_full_disk_is_said_and_the_same_command_finishes_when_there_is_room(
     finished: Project, on_small_disk: Project

@@ -8,7 +8,7 @@ import shutil
 import pytest
 from tests.pipeline.conftest import Project, deliver
 
-PAPER = {"write tables", "draw figures", "write report", "write data report"}
+PAPER = {"write tables", "draw figures", "write report", "write data"}
 ALL = {
     "validate returns",
     "estimate betas",
@@ -37,8 +37,10 @@ def test_a_touched_raw_file_runs_nothing(project: Project) -> None:
     assert project.run().steps == []
 
 
-@pytest.mark.parametrize("forgetful", [False, True], ids=["memory", "no memory"])
-@pytest.mark.parametrize("years", [-30, 0, 30], ids=["older", "equal", "newer"])
+@pytest.mark.thorough
+@pytest.mark.parametrize(
+    ("years", "forgetful"), [(-30, True), (0, False)], ids=["older, no memory", "equal"]
+)
 def test_other_raw_content_is_noticed_whatever_its_time(
     project: Project, years: int, forgetful: bool
 ) -> None:
@@ -54,6 +56,7 @@ def test_other_raw_content_is_noticed_whatever_its_time(
     assert project.lineproof("check", "small.yaml").steps == []
 
 
+@pytest.mark.thorough
 def test_a_supplied_file_of_older_date_forms_its_assets_again(project: Project) -> None:
     path = project.folder / "raw" / "sector_indices.csv"
     header, *rows = path.read_text().splitlines(keepends=True)
@@ -62,6 +65,7 @@ def test_a_supplied_file_of_older_date_forms_its_assets_again(project: Project) 
     assert project.run().steps[:1] == ["form portfolios sectors"]
 
 
+@pytest.mark.thorough
 def test_code_of_older_date_is_noticed(project: Project) -> None:
     file = "workflow/lineproof/paper/latex.py"
     project.append(file, "\n# An edit.\n")
@@ -69,11 +73,13 @@ def test_code_of_older_date_is_noticed(project: Project) -> None:
     assert "write tables" in project.run().rules
 
 
+@pytest.mark.thorough
 def test_other_pins_make_everything_anew(project: Project) -> None:
     project.append("workflow/envs/requirements.txt", "# Another pin.\n")
     assert {"validate returns", "gather estimates", *PAPER} <= project.run().rules
 
 
+@pytest.mark.thorough
 def test_reordered_raw_rows_run_validation_only(project: Project) -> None:
     path = project.folder / "raw" / "market.csv"
     header, *rows = path.read_text().splitlines(keepends=True)
@@ -116,6 +122,7 @@ def test_an_edit_of_the_market_line_runs_pricing_and_later_only(project: Project
     }
 
 
+@pytest.mark.thorough
 def test_an_edit_that_leaves_the_numbers_alone_leaves_the_paper_alone(project: Project) -> None:
     """Pricing runs again, but its bytes are the same: what is below may not be rewritten with other bytes."""
     before = project.hashes("tables", "report.html", "estimates.parquet")
@@ -129,11 +136,13 @@ def test_an_edit_of_the_paper_runs_no_numbers(project: Project) -> None:
     assert project.run().rules <= PAPER
 
 
+@pytest.mark.thorough
 def test_touched_code_runs_nothing(project: Project) -> None:
     touch(project.folder / "workflow" / "lineproof" / "stats" / "betas.py")
     assert project.run().steps == []
 
 
+@pytest.mark.thorough
 def test_without_the_schedulers_memory_a_changed_option_is_still_noticed(project: Project) -> None:
     shutil.rmtree(project.folder / ".snakemake")
     assert project.run().steps == []
@@ -144,6 +153,7 @@ def test_without_the_schedulers_memory_a_changed_option_is_still_noticed(project
     assert not any(step.startswith("estimate betas") for step in steps)
 
 
+@pytest.mark.thorough
 def test_a_lost_subperiod_file_is_cut_again(project: Project) -> None:
     before = project.hashes("subperiods", "estimates.parquet")
     (project.results / "subperiods" / "late.parquet").unlink()
@@ -151,6 +161,7 @@ def test_a_lost_subperiod_file_is_cut_again(project: Project) -> None:
     assert project.hashes("subperiods", "estimates.parquet") == before
 
 
+@pytest.mark.thorough
 def test_a_subperiod_taken_out_leaves_no_file_behind(project: Project) -> None:
     project.edit("small.yaml", "  early: {to: 1997-12}\n", "")
     project.run()

@@ -91,7 +91,8 @@ def counts(found: Validated) -> dict[str, Any]:
         {k: v for k, v in fault.items() if k != "examples" or fault["answer"] != "set aside"}
         for fault in found.intake["faults"]
     ]
-    return {**found.intake, "faults": faults}
+    aside = [{**each, "examples": []} for each in found.intake["set_aside"]]
+    return {**found.intake, "faults": faults, "set_aside": aside}
 
 
 @settings(max_examples=60, deadline=None)

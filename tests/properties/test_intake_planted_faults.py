@@ -178,7 +178,9 @@ def test_each_file_keeps_its_rows(
     n = len(files)
     tracked = Tracked(np.zeros(n, np.int64), np.zeros(n, np.int64))
     span = Span(Months(), 2000 * 12, 2000 * 12 + 11)
-    rules = Rules(same_month_rows=keep, return_after_hole="keep", jumps="flag", from_price=False)
+    rules = Rules(
+        same_month_rows=keep, return_after_hole="keep", jumps="flag", from_price=False, added=None
+    )
     seen: list[int] = []
     with pytest.MonkeyPatch.context() as patch, Scratch(folder) as scratch:
         examples.in_pieces(patch, at_most)

@@ -22,7 +22,7 @@ from lineproof import store, validation
 from lineproof.frames import contract
 from lineproof.problems import KnownProblem
 
-N_FILES = 300
+N_FILES = 200
 ENDINGS = {".csv": 0.7, ".csv.gz": 0.15, ".parquet": 0.15}  # and their shares
 _PATIENCE = 120  # seconds for one file of two kilobytes: a hang, not a slow machine
 _INSTEAD = [

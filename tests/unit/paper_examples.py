@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import os
+import subprocess
+import sys
 from collections.abc import Sequence
 from dataclasses import asdict
 from functools import cache
@@ -274,3 +277,17 @@ def many() -> Context:
     periods = [subperiod(f"y{y}", f"{y}-01", f"{y + 3}-12") for y in range(1960, 1990)]
     paper = {"main_subperiod": "y1960", "line_errors": "misspecification_robust_hac"}
     return study({"many": (ranked_facts("25 groups", 25), groups(25))}, periods, paper=paper)
+
+
+def printed_under_hash_seeds(code: str) -> set[str]:
+    """What a program prints where hashes are in another order."""
+    return {
+        subprocess.run(
+            [sys.executable, "-c", code],
+            env={**os.environ, "PYTHONHASHSEED": seed},
+            capture_output=True,
+            text=True,
+            check=True,
+        ).stdout
+        for seed in ("0", "1")
+    }

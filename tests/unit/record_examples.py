@@ -72,6 +72,14 @@ def _usual() -> dict[str, Any]:
             {"place": "data.riskless", "label": "raw/riskless.csv", "rows_read": 312, "rows_kept": 312,
              "rows_set_aside": 0, "exact_duplicates": 0},
         ],
+        "series": [
+            {"place": "data.market", "source": "raw/market.csv: total returns", "period": "month",
+             "first": "1957-01-31", "last": "1982-12-31", "n_periods": 312,
+             "mean": 0.00512, "sd": 0.0431, "min": -0.1912, "max": 0.1624},
+            {"place": "data.riskless", "source": "raw/riskless.csv: a compound yield a year", "period": "month",
+             "first": "1957-01-31", "last": "1982-12-31", "n_periods": 312,
+             "mean": 0.0037, "sd": None, "min": 0.0009, "max": 0.0101},
+        ],
         "set_aside": [
             aside(8, 51, [(7, "'31/31/1960'", "S001,31/31/1960,0.02,1.5")]),
             aside(15, 1_200, [(101, "-1.5", "S004,1960-01-31,-1.5,1.5"), (102, "-99.9", "S004,1960-02-29,-99.9,")]),
@@ -129,7 +137,7 @@ def daily() -> dict[str, Any]:
 def earlier() -> dict[str, Any]:
     """A record of the version before files, rows set aside and evidence were told."""
     intake = usual()
-    for key in ("files", "set_aside", "delisting", "evidence", "period"):
+    for key in ("files", "series", "set_aside", "delisting", "evidence", "period"):
         del intake[key]
     return intake
 

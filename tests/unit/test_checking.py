@@ -14,7 +14,10 @@ from tests.unit.intake_examples import lines, months, validate
 from lineproof import store
 from lineproof.checking import WIDTH, describe_intake, summary
 from lineproof.intake.record import Intake
+from lineproof.intake.signed import made_with
+from lineproof.problems import KnownProblem
 from lineproof.study import load_study
+from lineproof.wiring import Wiring
 
 MARKET = dict.fromkeys(months("2000-01", 3), 0.01)
 ROWS = [
@@ -29,6 +32,13 @@ EXPECTED = """\
      =        7  kept, 4 of them without a return
      +        2  set aside
      +        1  dropped, as exact duplicates of others
+    raw/market.csv:
+              3  rows read
+     =        3  kept
+    raw/riskless.csv:
+             12  rows read
+     =        3  kept
+     +        9  not used: without a value, or beyond the study
     1 row of returns dated after 2000-03, where raw/market.csv ends: the study ends there
 
     Faults found:
@@ -70,8 +80,6 @@ FULL = """\
 raw/market.csv:
         320  rows read
  =      312  kept
- +        0  set aside
- +        0  dropped, as exact duplicates of others
  +        8  not used: without a value, or beyond the study
 """
 ENDING = """\
@@ -101,13 +109,20 @@ def test_summary_of_an_intake(tmp_path: Path) -> None:
 def test_clean_data_say_little(tmp_path: Path) -> None:
     """The mean of the first month is that of 10 % and of 10 % compounded with a final 10 %; the second's is 10 %."""
     rows = ["A,2000-01-31,0.1,,1,5", "B,2000-01-31,0.1,0.1,1,5", "A,2000-02-29,0.1,,1,5"]
-    said = describe_intake(validate(tmp_path, lines(*rows)).intake)
-    assert said[:10] == [
+    two = dict.fromkeys(("2000-01", "2000-02"), 0.01)
+    said = describe_intake(validate(tmp_path, lines(*rows), market=two, riskless=two).intake)
+    assert said[:16] == [
         "raw/returns.csv: 2000-01 to 2000-02, 2 securities",
         "          3  rows read",
         " =        3  kept",
         " +        0  set aside",
         " +        0  dropped, as exact duplicates of others",
+        "raw/market.csv:",
+        "          2  rows read",
+        " =        2  kept",
+        "raw/riskless.csv:",
+        "          2  rows read",
+        " =        2  kept",
         "",
         "Securities that leave:",
         "          1  with a final return",
@@ -137,13 +152,24 @@ def test_summary_of_a_study(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> 
         )
     )
     intake = validate(tmp_path, lines(*ROWS), market=MARKET).intake
-    store.write_json(intake, "results/mine/data/intake.json")
-    said = summary(load_study("mine.yaml")).splitlines()
+    study = load_study("mine.yaml")
+    options = Wiring(study).options("validate_returns")
+    store.write_json({**intake, "made_with": made_with(options)}, "results/mine/data/intake.json")
+    said = summary(study).splitlines()
     assert said[0] == "A study of mine (mine.yaml): the study file and its data can be used."
     assert said[2:-3] == describe_intake(intake)
     assert said[-2:] == [
         "Rows set aside, as they stand in the file:  results/mine/data/set_aside.csv",
         "The data report, with tables and figures:   results/mine/data_report.html",
+    ]
+    text = (tmp_path / "mine.yaml").read_text()
+    (tmp_path / "mine.yaml").write_text(text.replace("ret}", "ret}\n    unit: percent"))
+    with pytest.raises(KnownProblem) as stopped:
+        summary(load_study("mine.yaml"))
+    assert str(stopped.value).splitlines() == [
+        "There is no summary of the data to show.",
+        "  results/mine/data/intake.json: it is not the record of mine.yaml as it stands now",
+        "    → delete it and check again",
     ]
 
 

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from pathlib import Path
 from typing import Any
 
@@ -14,7 +13,6 @@ from tests.unit import intake_examples as examples
 from lineproof.frames import CONTRACTS
 from lineproof.intake.factor import (
     RisklessRate,
-    factor_report,
     join_factor,
     months_of_days,
     on_days,
@@ -151,35 +149,6 @@ def test_a_total_loss_of_the_market_compounds() -> None:
         "",
     )
     assert months_of_days(factor)["market_excess"].iloc[1] == -1
-
-
-def test_what_the_report_says_of_the_series() -> None:
-    used = pd.DataFrame(
-        {
-            "date": pd.to_datetime(["2001-01-31", "2001-02-28"]),
-            "market_excess": [0.02, -0.04],
-            "riskless": [0.001, 0.003],
-        }
-    )
-    found = factor_report(used, {"build": "size"}, {"label": "f.csv", "quoted": "annual_yield"})
-    span = {"first": "2001-01-31", "last": "2001-02-28", "n_periods": 2}
-    assert found["market_series"] == {
-        "build": "size",
-        **span,
-        "mean": -0.01,
-        "min": -0.04,
-        "max": 0.02,
-    }
-    assert found["riskless_series"] == {
-        "label": "f.csv",
-        "quoted": "annual_yield",
-        **span,
-        "mean": 0.002,
-        "min": 0.001,
-        "max": 0.003,
-    }
-    assert json.loads(json.dumps(found)) == found
-    assert factor_report(used, {"label": "m.csv", "is": "excess"}, None)["riskless_series"] is None
 
 
 def test_a_daily_rate_in_months(tmp_path: Path) -> None:

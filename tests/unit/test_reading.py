@@ -17,10 +17,18 @@ from hypothesis import strategies as st
 from tests.unit import intake_examples as examples
 
 from lineproof.intake import lines
-from lineproof.intake.reading import TextTable, raw_rows, read_text
+from lineproof.intake.reading import TextTable, open_files, read_text
 from lineproof.problems import KnownProblem
 
 COLUMNS = {"security": "id", "date": "day", "return": "ret"}
+
+
+def raw_rows(file: str, wanted: np.ndarray) -> list[str]:
+    """The text of some lines, or rows, of a file."""
+    (opened,) = open_files(file, {"label": file, "columns": {}})
+    return [text for texts in opened.raw(wanted) for text in texts]
+
+
 TEXT = "id,day,ret\n1,2000-01-31,0.1\n2,2000-01-31,0.2\n"
 
 

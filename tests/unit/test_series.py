@@ -11,7 +11,8 @@ import pytest
 from tests.unit import intake_examples as examples
 from tests.unit.intake_examples import lines, monthly_file, months, refused
 
-from lineproof.intake.series import check_riskless, read_series, riskless_return
+from lineproof.intake.riskless import check_riskless, riskless_return
+from lineproof.intake.series import read_series
 from lineproof.problems import KnownProblem
 
 YEAR = months("2000-01", 12)
@@ -23,7 +24,7 @@ def read(folder: Path, text: str, columns: dict[str, str] | None = None, **chang
     file = examples.write(folder / "market.csv", text)
     columns = columns or {"date": "month", "return": "mkt"}
     reading = examples.reading("raw/market.csv", columns, **{"dates": "%Y-%m", **changes})
-    return read_series(file, reading, "return")
+    return read_series(file, reading, "return").values
 
 
 def message(*arguments: Any, **options: Any) -> str:
@@ -187,9 +188,8 @@ def test_a_high_but_plausible_rate_passes() -> None:
 def read_as(folder: Path, text: str, frequency: str, **changes: Any) -> pd.DataFrame:
     file = examples.write(folder / "market.csv", text)
     columns = changes.pop("columns", {"date": "date", "return": "mkt"})
-    return read_series(
-        file, examples.reading("raw/market.csv", columns, **changes), "return", frequency
-    )
+    reading = examples.reading("raw/market.csv", columns, **changes)
+    return read_series(file, reading, "return", frequency).values
 
 
 def refused_as(*arguments: Any, **options: Any) -> str:
@@ -304,7 +304,7 @@ def test_several_files_are_one_series(tmp_path: Path) -> None:
         for year in (2001, 2000)
     ]
     reading = examples.reading("raw/*.csv", {"date": "month", "return": "mkt"}, dates="%Y-%m")
-    found = read_series(files, reading, "return")
+    found = read_series(files, reading, "return").values
     assert len(found) == 24
     assert found["date"].is_monotonic_increasing
     with pytest.raises(KnownProblem) as caught:
@@ -320,3 +320,25 @@ def test_several_files_are_one_series(tmp_path: Path) -> None:
         KnownProblem, match=r"raw/\*\.csv: months that stand twice: 2001-01, 2001-02"
     ):
         read_series([files[0], files[0]], reading, "return")
+
+
+def test_dates_that_are_left_open_are_found_out(tmp_path: Path) -> None:
+    """Also for supplied test assets, which nothing else reads before."""
+    text = "asset,day,ret\n" + "".join(f"a,{month}/28/2000,0.01\n" for month in range(1, 13))
+    columns = {"asset": "asset", "date": "day", "return": "ret"}
+    reading = examples.reading("raw/assets.csv", columns, dates=None)
+    found = read_series([examples.write(tmp_path / "a.csv", text)], reading, "return").values
+    assert found["date"].tolist() == pd.date_range("2000-01-31", periods=12, freq="ME").tolist()
+
+
+def test_several_files_with_labels_of_their_own_are_one_series(tmp_path: Path) -> None:
+    files = [
+        examples.write(
+            tmp_path / f"{year}.csv",
+            "day,ret\n" + "".join(f"{year}-{month:02d}-28,0.01\n" for month in range(1, 13)),
+        )
+        for year in (2000, 2001)
+    ]
+    reading = examples.reading("raw/*.csv", {"date": "day", "return": "ret"})
+    reading["labels"] = ["raw/2000.csv", "raw/2001.csv"]
+    assert len(read_series(files, reading, "return").values) == 24

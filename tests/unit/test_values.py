@@ -20,9 +20,9 @@ from lineproof.intake.values import (
     check_date_format,
     missing_codes,
     to_days,
-    to_months,
     to_numbers,
 )
+from lineproof.periods import Months
 from lineproof.problems import KnownProblem
 
 CODES = ["", "NA", "-99"]
@@ -283,6 +283,13 @@ def test_days_of_a_piece_of_an_array() -> None:
     whole = pa.array(["x", "2000-01-31", "2000-02-29", "2000-01-31", "y"])
     found = to_days(whole[1:4], "%Y-%m-%d")
     assert [str(day) for day in found] == ["2000-01-31", "2000-02-29", "2000-01-31"]
+
+
+def to_months(written: pd.Series, form: str) -> pd.Series:
+    """The last day of the month of each date, as a study of months dates it; NaT where there is none."""
+    days = to_days(written, form)
+    ends = Months().date(Months().number(days)).astype("datetime64[ms]")
+    return pd.Series(ends).mask(np.isnat(days))
 
 
 def ends(dates: pd.Series) -> list[str]:

@@ -83,7 +83,7 @@ def test_supplied_assets_may_be_wide(tmp_path: Path) -> None:
     file = tmp_path / "a.csv"
     wide = reading("raw/a.csv", WIDE["columns"], layout="wide", names="asset", dates="%Y-%m")
     file.write_text(table("2000-01,0.1,0.3", "2000-02,,0.2"), encoding="utf-8")
-    found = read_series(str(file), wide, "return")
+    found = read_series(str(file), wide, "return").values
     assert found["asset"].tolist() == ["A", "B", "B"]
     assert found["return"].tolist() == [0.1, 0.3, 0.2]
     file.write_text("month,A,market\n2000-01,0.1,x\n", encoding="utf-8")

@@ -20,18 +20,30 @@ from lineproof.intake.record import (
     returns_in_all,
     survivors_only,
 )
+from lineproof.intake.signed import made_with
+from lineproof.intake.stopping import counted
 from lineproof.paper.rounding import printed
+from lineproof.problems import KnownProblem, Problem
 from lineproof.study import Study
+from lineproof.wiring import Wiring
 
 WIDTH = 96  # of a line, unless a name or a row of the data is longer
 _COUNT = 11  # of the counts
 _N_LARGEST = 5  # gains and losses together
 _DASH = "–"
+_NO_SUMMARY = "There is no summary of the data to show."
 
 
 def summary(study: Study) -> str:
-    """What the intake of a study found, from its results folder."""
-    intake = store.read_json(f"{study.folder}/data/intake.json")
+    """What the intake of a study found, from its results folder.
+
+    Raises KnownProblem when the record there is that of another study file.
+    """
+    place = f"{study.folder}/data/intake.json"
+    intake = store.read_json(place)
+    if intake.get("made_with") != made_with(Wiring(study).options("validate_returns")):
+        found = f"it is not the record of {study.path.name} as it stands now"
+        raise KnownProblem(_NO_SUMMARY, [Problem(place, found, "delete it and check again")])
     return "\n".join(
         [
             f"{study.title} ({study.path.name}): the study file and its data can be used.",
@@ -95,7 +107,7 @@ def _survivors(intake: Intake) -> list[str]:
 def _files(intake: Intake) -> list[str]:
     """All returns together, then each of several files of them and the other files; then the span."""
     missing, n = intake["n_missing_returns"], intake["n_securities"]
-    said = f"{intake['file']}: {intake['first']} to {intake['last']}, {_securities(n)}"
+    said = f"{intake['file']}: {intake['first']} to {intake['last']}, {counted(n, 'security')}"
     lines = _below(said, 0, 2)
     lines += _equation(returns_in_all(intake), missing, named=False)
     files = files_of(intake)
@@ -114,8 +126,9 @@ def _equation(file: FileRecord, missing: int, *, named: bool) -> list[str]:
         ("rows_set_aside", "set aside"),
         ("exact_duplicates", "dropped, as exact duplicates of others"),
     ]
-    if file.get("rows_unused"):
-        parts.append(("rows_unused", "not used: without a value, or beyond the study"))
+    if file["place"] != "data.returns":  # a fault in a series stops the run
+        unused = ("rows_unused", "not used: without a value, or beyond the study")
+        parts = [*parts[:2], *[unused] * bool(file.get("rows_unused"))]
     signs = ["", "=", *["+"] * (len(parts) - 2)]
     lines = [
         f"{sign:>2}{file[key]:>{_COUNT - 2},}  {words}"  # type: ignore[literal-required]
@@ -136,7 +149,7 @@ def _fault(fault: FaultRecord) -> list[str]:
 
 
 def _screen(screen: ScreenRecord) -> list[str]:
-    n, whose = screen["n_rows"], _securities(screen["n_securities"])
+    n, whose = screen["n_rows"], counted(screen["n_securities"], "security")
     return _counted(n, f"{'row' if n == 1 else 'rows'} of {whose}: not “{screen['label']}”")
 
 
@@ -231,7 +244,3 @@ def _visible(text: str) -> str:
 
 def _minus(text: str) -> str:
     return text.replace("-", "−")
-
-
-def _securities(n: int) -> str:
-    return f"{n:,} {'security' if n == 1 else 'securities'}"

@@ -80,8 +80,7 @@ def from_supplied(
     frequency: str = "monthly",
 ) -> Sorted:
     """Supplied as return series: the sources are raw files."""
-    supplied = read_series(list(sources), reading, "return", frequency).rename(
-        columns={"return": "return_"}
-    )
+    supplied = read_series(list(sources), reading, "return", frequency).values
     noun = FREQUENCIES[frequency].noun
+    supplied = supplied.rename(columns={"return": "return_"})
     return take_supplied(supplied, market, returns_are=returns_are, noun=noun)

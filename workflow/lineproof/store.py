@@ -10,11 +10,10 @@ import json
 import os
 import shutil
 import tempfile
-from collections.abc import Collection, Iterable, Iterator, Mapping
+from collections.abc import Collection, Iterable, Mapping
 from concurrent.futures import Future, ThreadPoolExecutor
 from contextlib import ExitStack
 from pathlib import Path
-from types import TracebackType
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
@@ -119,8 +118,8 @@ class _Writer:
 
     def __init__(self, contract: str, frequency: str, path: Path) -> None:
         self._contract, self._frequency, self._path = contract, frequency, path
-        self._beside = path.with_name(f".{path.name}.{os.getpid()}.part")
-        self._held: pa.Table | None = None
+        self._beside = _beside(path)
+        self._groups = _RowGroups()
         self._last: pd.DataFrame | None = None
         self._writer: Any = None
         self._writing = ThreadPoolExecutor(1)  # one at a time, so in order
@@ -130,12 +129,7 @@ class _Writer:
         self._path.parent.mkdir(parents=True, exist_ok=True)
         return self
 
-    def __exit__(
-        self,
-        kind: type[BaseException] | None,
-        error: BaseException | None,
-        trace: TracebackType | None,
-    ) -> None:
+    def __exit__(self, *raised: object) -> None:
         self._writing.shutdown()
         try:
             if self._writer is not None:
@@ -151,18 +145,16 @@ class _Writer:
 
         check_batch(self._contract, self._frequency, frame, self._last)
         self._last = frame.iloc[-1:] if len(frame) else self._last
-        table = pa.Table.from_pandas(frame, preserve_index=False)
-        self._held = table if self._held is None else pa.concat_tables([self._held, table])
-        while len(self._held) >= _ROW_GROUP:
-            self._write(self._held.slice(0, _ROW_GROUP))
-            self._held = self._held.slice(_ROW_GROUP)
+        for group in self._groups.add(pa.Table.from_pandas(frame, preserve_index=False)):
+            self._write(group)
 
     def finish(self) -> None:
         """Write what is left."""
-        if self._held is None:
+        rest = self._groups.rest
+        if rest is None:
             raise ValueError(f"no rows for {self._path}, not even an empty batch")
-        if len(self._held) or self._writer is None:
-            self._write(self._held)
+        if len(rest) or self._writer is None:
+            self._write(rest)
         self._wait()
         self._writer.close()
         self._writer = None
@@ -178,15 +170,38 @@ class _Writer:
         self._wait()
         if self._writer is None:
             self._writer = pq.ParquetWriter(self._beside, table.schema, **_encoding(table.schema))
-        whole = table.combine_chunks()  # a page may otherwise end where a batch does
         self._pending = self._writing.submit(
-            self._writer.write_table, whole, row_group_size=_ROW_GROUP
+            self._writer.write_table, table, row_group_size=_ROW_GROUP
         )
 
     def _wait(self) -> None:
         if self._pending is not None:
             self._pending.result()
             self._pending = None
+
+
+class _RowGroups:
+    """Rows as they come, given back in row groups of one size, so that the cut into batches does not show.
+
+    Each is in one piece: a page may otherwise end where a batch does.
+    """
+
+    def __init__(self) -> None:
+        self._held: pa.Table | None = None
+
+    def add(self, table: pa.Table) -> list[pa.Table]:
+        """The row groups that these rows fill."""
+        import pyarrow as pa
+
+        held = table if self._held is None else pa.concat_tables([self._held, table])
+        n_full = len(held) // _ROW_GROUP
+        self._held = held.slice(n_full * _ROW_GROUP)
+        return [held.slice(at * _ROW_GROUP, _ROW_GROUP).combine_chunks() for at in range(n_full)]
+
+    @property
+    def rest(self) -> pa.Table | None:
+        """The rows after the last full group; None where none were ever added."""
+        return None if self._held is None else self._held.combine_chunks()
 
 
 class Scratch:
@@ -204,12 +219,7 @@ class Scratch:
             shutil.rmtree(stale, ignore_errors=True)
         return self
 
-    def __exit__(
-        self,
-        kind: type[BaseException] | None,
-        error: BaseException | None,
-        trace: TracebackType | None,
-    ) -> None:
+    def __exit__(self, *raised: object) -> None:
         self._arrays.clear()
         if self._folder is not None:
             shutil.rmtree(self._folder, ignore_errors=True)
@@ -271,33 +281,23 @@ def write_batches_if_changed(
 
     The same rows give the same bytes, however they are cut into batches.
     """
+    import pyarrow as pa
     import pyarrow.parquet as pq
 
-    path = Path(path)
+    path, groups = Path(path), _RowGroups()
     path.parent.mkdir(parents=True, exist_ok=True)
-    beside = path.with_name(f".{path.name}.{os.getpid()}.part")
+    beside = _beside(path)
     try:
         with pq.ParquetWriter(beside, schema, compression="zstd") as writer:
-            for table in _evenly(schema, batches):
-                writer.write_table(table, row_group_size=_ROW_GROUP)
+            for batch in batches:
+                for group in groups.add(pa.Table.from_batches([batch], schema)):
+                    writer.write_table(group, row_group_size=_ROW_GROUP)
+            if rest := groups.rest:
+                writer.write_table(rest, row_group_size=_ROW_GROUP)
         if not path.exists() or not filecmp.cmp(beside, path, shallow=False):
             beside.replace(path)
     finally:
         beside.unlink(missing_ok=True)
-
-
-def _evenly(schema: pa.Schema, batches: Iterable[pa.RecordBatch]) -> Iterator[pa.Table]:
-    """The same rows in tables of `_ROW_GROUP` rows, the last one shorter."""
-    import pyarrow as pa
-
-    waiting = pa.Table.from_batches([], schema)
-    for batch in batches:
-        waiting = pa.concat_tables([waiting, pa.Table.from_batches([batch], schema)])
-        while len(waiting) >= _ROW_GROUP:
-            yield waiting.slice(0, _ROW_GROUP).combine_chunks()
-            waiting = waiting.slice(_ROW_GROUP)
-    if len(waiting):
-        yield waiting.combine_chunks()
 
 
 def write_csv(frame: pd.DataFrame, path: str | os.PathLike) -> None:
@@ -333,6 +333,11 @@ def write_if_changed(text: str, path: str | os.PathLike) -> None:
         write_text(text, path)
 
 
+def _beside(path: Path) -> Path:
+    """Where a file is written before it is renamed into its place."""
+    return path.with_name(f".{path.name}.{os.getpid()}.part")
+
+
 def write_bytes(content: bytes | memoryview | pa.Buffer, path: str | os.PathLike) -> None:
     """Write to a file beside `path`, then rename: no reader and no killed run ever sees half a file.
 
@@ -340,7 +345,7 @@ def write_bytes(content: bytes | memoryview | pa.Buffer, path: str | os.PathLike
     """
     path = Path(path)
     path.parent.mkdir(parents=True, exist_ok=True)
-    beside = path.with_name(f".{path.name}.{os.getpid()}.part")
+    beside = _beside(path)
     try:
         beside.write_bytes(content)
         beside.replace(path)

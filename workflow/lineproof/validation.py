@@ -14,6 +14,7 @@ from lineproof.intake.frequency import FrequencyEvidence
 from lineproof.intake.rates import read_supplied
 from lineproof.intake.reading import open_files
 from lineproof.intake.scale import ScaleEvidence
+from lineproof.intake.second_pass import in_order
 from lineproof.intake.stopping import stop
 from lineproof.intake.stream import Intake, Kinds
 from lineproof.intake.unit import judge_scale
@@ -56,7 +57,7 @@ def validate_returns(
     _check_names(returns)
     returns = dict(with_dates(files["returns"], returns, daily=returns_frequency == "daily"))
     returns |= {"are": returns_are, "noun": FREQUENCIES[returns_frequency].noun}
-    supplied = read_supplied(dict(files), returns_frequency, **series)
+    supplied = read_supplied(files, **series)
     opened = open_files(list(files["returns"]), returns)
     scale = ScaleEvidence()
     months = Months()
@@ -80,15 +81,7 @@ def _judge_frequency(taken: Taken, label: str, frequency: str) -> None:
     evidence = FrequencyEvidence()
     for names, owner, columns in taken.runs.stretches(_CHUNK, ["day"]):
         day = columns["day"].astype("datetime64[D]")
-        order = _by_month(owner, day)
+        month = Months().number(day)
+        order = in_order(owner, month, np.ones(len(day), bool), len(names))
         evidence.add(np.searchsorted(owner[order], np.arange(len(names) + 1)), day[order])
     evidence.judge(label, frequency)
-
-
-def _by_month(owner: np.ndarray, day: np.ndarray) -> np.ndarray | slice:
-    """The order of rows by security and month; there is nothing to do where they are in it."""
-    month = day.astype("datetime64[M]").astype(np.int64)
-    step = np.diff(owner)
-    if ((step > 0) | ((step == 0) & (np.diff(month) >= 0))).all():
-        return slice(None)
-    return np.lexsort((month, owner))

@@ -1,6 +1,7 @@
 from pathlib import Path
 
 from lineproof import joblog, store
+from lineproof.intake.signed import signed
 from lineproof.validation import validate_returns
 
 with joblog.job(snakemake), store.Scratch(Path(snakemake.output.panel).parent) as scratch:
@@ -12,4 +13,5 @@ with joblog.job(snakemake), store.Scratch(Path(snakemake.output.panel).parent) a
         store.write_table(market, out[name], name, options["frequency"])
     store.write_together(found.set_aside(), {"set_aside": out["set_aside"]})
     store.copy_as_csv(out["set_aside"], out["set_aside_csv"])
-    store.write_json(found.counts(), out["intake"])
+    counts = signed(found.counts(), snakemake.params.files, snakemake.input.digests, options)
+    store.write_json(counts, out["intake"])

@@ -15,7 +15,7 @@ from lineproof.intake.riskless import (
     daily_from_monthly,
     riskless_return,
 )
-from lineproof.intake.series import read_series
+from lineproof.intake.series import FileOfSeries, read_series
 from lineproof.problems import KnownProblem, Problem
 
 _ROUNDING = 1e-6  # of a sum of two returns delivered with six decimals
@@ -42,6 +42,7 @@ class RisklessRate:
     reading: dict[str, Any]
     quoted: str
     frequency: str
+    files: list[FileOfSeries]
 
     @property
     def label(self) -> str:
@@ -52,11 +53,12 @@ def read_riskless(
     files: list[str], reading: dict[str, Any], quoted: str, frequency: str = "monthly"
 ) -> RisklessRate:
     """Read a riskless rate; `frequency` is that of the file. Raises KnownProblem."""
-    rates = read_series(files, reading, "rate", frequency)
+    series = read_series(files, reading, "rate", frequency)
+    rates = series.values
     if frequency == "monthly":
         rates["riskless"] = riskless_return(rates["rate"], quoted)
         check_riskless(rates, reading, quoted)
-    return RisklessRate(rates, reading, quoted, frequency)
+    return RisklessRate(rates, reading, quoted, frequency, series.files)
 
 
 def on_days(rate: RisklessRate, days: np.ndarray) -> pd.DataFrame:
@@ -176,29 +178,3 @@ def total_and_excess(
         return returns, returns - riskless
     total = returns + riskless
     return np.where(np.abs(total + 1) < _ROUNDING, -1.0, total), returns
-
-
-def factor_report(
-    used: pd.DataFrame, market: dict[str, Any], riskless: dict[str, Any] | None
-) -> dict[str, Any]:
-    """The market's part of the data report, as JSON can hold it.
-
-    `used` has the periods of the study: date, market_excess, riskless. `market` says where it comes from, as in
-    {"label": …, "is": …} or {"build": …}; `riskless` likewise, {"label": …, "quoted": …}, or is None. Each is given
-    back with first and last date, number of periods, and mean, least and most, decimal a period.
-    """
-    return {
-        "market_series": {**market, **_numbers(used["date"], used["market_excess"])},
-        "riskless_series": riskless and {**riskless, **_numbers(used["date"], used["riskless"])},
-    }
-
-
-def _numbers(date: pd.Series, value: pd.Series) -> dict[str, Any]:
-    return {
-        "first": f"{date.iloc[0]:%Y-%m-%d}",
-        "last": f"{date.iloc[-1]:%Y-%m-%d}",
-        "n_periods": len(date),
-        "mean": float(value.mean()),
-        "min": float(value.min()),
-        "max": float(value.max()),
-    }

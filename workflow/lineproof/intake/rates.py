@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 import pandas as pd
 
-from lineproof.intake.dating import with_dates
 from lineproof.intake.factor import (
     Factor,
     RisklessRate,
@@ -19,9 +19,11 @@ from lineproof.intake.factor import (
     read_riskless,
 )
 from lineproof.intake.second_pass import Span
-from lineproof.intake.series import read_series
+from lineproof.intake.series import Series, read_series
+from lineproof.intake.series_record import UsedDays, file_records, series_record
 from lineproof.intake.trading_days import check_calendar, days_of_panel
 from lineproof.periods import Months, Periods, TradingDays
+from lineproof.quotings import BUILDS, QUOTINGS
 
 
 @dataclass(frozen=True)
@@ -62,7 +64,7 @@ class Rates:
 class Supplied:
     """The series of a study as read; `market` is None where it is built, `rate` where returns are in excess of it."""
 
-    market: pd.DataFrame | None
+    market: Series | None
     market_frequency: str
     market_is: str
     market_label: str
@@ -96,43 +98,63 @@ class Supplied:
         riskless = None if self.rate is None else on_months(self.rate)
         return _from_factor(self._joined(riskless, "month"), Months())
 
+    def files(self, used: UsedDays) -> list[dict[str, Any]]:
+        """The rows of each raw file of a series, and how many of them are used: see `record.FileRecord`."""
+        found = []
+        if self.market is not None:
+            found += file_records("data.market", self.market.files, self.market_frequency, used)
+        if self.rate is not None:
+            found += file_records("data.riskless", self.rate.files, self.rate.frequency, used)
+        return found
+
+    def records(self, market: pd.DataFrame, period: str, build: str | None) -> list[dict[str, Any]]:
+        """What the series are, and their numbers in the periods of the study's market: see `record.SeriesRecord`."""
+        source = f"{self.market_label}: {self.market_is} returns"
+        if build is not None:
+            source = f"built from the panel: {BUILDS[build]}"
+        date = market["date"]
+        found = [series_record("data.market", source, period, date, market["market_excess"])]
+        if self.rate is not None:
+            source = f"{self.rate.label}: {QUOTINGS[self.rate.quoted].label}"
+            found.append(series_record("data.riskless", source, period, date, market["riskless"]))
+        return found
+
     @property
     def _riskless_label(self) -> str:
         return "" if self.rate is None else self.rate.label
 
     def _daily_factor(self) -> Factor:
         assert self.market is not None
-        days = self.market["date"].to_numpy().astype("datetime64[D]")
+        days = self.market.values["date"].to_numpy().astype("datetime64[D]")
         return self._joined(None if self.rate is None else on_days(self.rate, days), "day")
 
     def _joined(self, riskless: pd.DataFrame | None, noun: str) -> Factor:
         assert self.market is not None
         return join_factor(
-            self.market, riskless, self.market_is, self.market_label, self._riskless_label, noun
+            self.market.values,
+            riskless,
+            self.market_is,
+            self.market_label,
+            self._riskless_label,
+            noun,
         )
 
 
 def read_supplied(
-    files: dict[str, list[str]],
-    frequency: str,
+    files: Mapping[str, list[str]],
     *,
     market: dict[str, Any] | None,
     market_is: str,
-    market_frequency: str | None,
+    market_frequency: str,
     riskless: dict[str, Any] | None,
     riskless_quoted: str,
-    riskless_frequency: str | None,
+    riskless_frequency: str,
 ) -> Supplied:
-    """Read the market and the riskless rate; `frequency` is that of the returns. Raises KnownProblem."""
-    market_frequency = market_frequency or frequency
-    riskless_frequency = riskless_frequency or frequency
+    """Read the market and the riskless rate. Raises KnownProblem."""
     rate = returns = None
     if riskless is not None:
-        daily = riskless_frequency == "daily"
-        riskless = with_dates(files["riskless"], riskless, daily=daily)
         rate = read_riskless(files["riskless"], riskless, riskless_quoted, riskless_frequency)
     if market is not None:
-        market = with_dates(files["market"], market, daily=market_frequency == "daily")
         returns = read_series(files["market"], market, "return", market_frequency)
     label = "" if market is None else market["label"]
     return Supplied(returns, market_frequency, market_is, label, rate)

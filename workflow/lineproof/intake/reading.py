@@ -204,13 +204,3 @@ def read_text(files: str | list[str], reading: dict[str, Any]) -> TextTable:
         }
     )
     return TextTable(reading["label"], opened[0].place, rows, frame, n_trimmed)
-
-
-def raw_rows(files: str | list[str], wanted: np.ndarray) -> list[str]:
-    """The text of the given lines (ascending, as in `TextTable.line`) of one long file, without line ends.
-
-    A row of a typed file is written as a line of CSV.
-    """
-    name = files if isinstance(files, str) else files[0]
-    opened = open_files(files, {"label": name, "columns": {}})
-    return [text for texts in opened[0].raw(wanted) for text in texts]

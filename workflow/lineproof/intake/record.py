@@ -31,6 +31,24 @@ class FileRecord(TypedDict):
     sha256: NotRequired[str]
 
 
+class SeriesRecord(TypedDict):
+    """The market in excess of the riskless rate, or the riskless return, in the periods of the study.
+
+    `source` says in words where it comes from; the standard deviation divides by n − 1.
+    """
+
+    place: str  # as in `FileRecord`
+    source: str
+    period: Literal["month", "day"]
+    first: str
+    last: str
+    n_periods: int
+    mean: float
+    sd: float | None
+    min: float
+    max: float
+
+
 class FaultRecord(TypedDict):
     """One fault met; see `faults.FAULTS`."""
 
@@ -201,6 +219,8 @@ class Intake(TypedDict):
     span: list[str]  # sentences, where returns reach beyond the market or the riskless rate
     period: NotRequired[Literal["month", "day"]]  # month where absent
     files: NotRequired[list[FileRecord]]
+    series: NotRequired[list[SeriesRecord]]
+    made_with: NotRequired[str]  # see `signed.made_with`
     set_aside: NotRequired[list[AsideRecord]]
     delisting: NotRequired[DelistingRecord]
     evidence: NotRequired[Evidence]

@@ -65,7 +65,7 @@ def chunks(taken: Taken, span: Span, rules: Rules, tracked: Tracked) -> Iterator
         _note_outside(period, columns, span, faults, tracked)
         if rules.added is not None:
             columns = _as_total(period, columns, rules.added, span, faults)
-        rows = _in_order(security, period, ~faults.found, len(names))
+        rows = in_order(security, period, ~faults.found, len(names))
         exact = _note_repeated(
             rows, security, period, columns, rules.same_month_rows, faults, names
         )
@@ -120,7 +120,7 @@ def _as_total(
     return {**columns, "return_": total, "excess": excess}
 
 
-def _in_order(
+def in_order(
     security: np.ndarray, period: np.ndarray, sound: np.ndarray, n_names: int
 ) -> np.ndarray:
     """Indices of the sound rows by security and period, ties in the order of the raw files."""

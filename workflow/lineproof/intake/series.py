@@ -12,13 +12,13 @@ import pandas as pd
 
 from lineproof.addresses import is_spread, refused_asset_names
 from lineproof.calendar import month_number
+from lineproof.intake.dating import with_dates
 from lineproof.intake.headers import where_is
 from lineproof.intake.reading import TextTable, read_text
-from lineproof.intake.riskless import check_riskless as check_riskless
-from lineproof.intake.riskless import riskless_return as riskless_return
-from lineproof.intake.series_dates import check_series_dates, check_series_frequency, to_days
+from lineproof.intake.series_dates import check_series_frequency
 from lineproof.intake.stopping import N_SHOWN, UNUSABLE, counted, few, stop
-from lineproof.intake.values import Numbers, as_decimal, to_numbers
+from lineproof.intake.values import Numbers, as_decimal, to_days, to_numbers
+from lineproof.periods import Months
 from lineproof.problems import KnownProblem, Problem
 
 _FEWEST = 30  # values on which to judge a unit
@@ -28,10 +28,27 @@ _RARELY_NEGATIVE = 0.01
 _SIZES = {"monthly": (0.5, 0.005), "daily": (0.1, 0.0005)}
 
 
+@dataclass(frozen=True)
+class FileOfSeries:
+    """One file: `n_rows` in all, and `days` (n_valued,), datetime64[D], of those that have a value."""
+
+    label: str
+    n_rows: int
+    days: np.ndarray
+
+
+@dataclass(frozen=True)
+class Series:
+    """`values` has date and the value asked for, sorted; with asset where the columns name one."""
+
+    values: pd.DataFrame
+    files: list[FileOfSeries]
+
+
 def read_series(
     files: str | Sequence[str], reading: dict[str, Any], value: str, frequency: str = "monthly"
-) -> pd.DataFrame:
-    """`date` and `value` (decimal), sorted; with `asset` where the columns name one.
+) -> Series:
+    """A series with its `value` decimal.
 
     `files` is one path, or several whose rows are one series. A date is the month's end or, where `frequency` is
     "daily", the day as delivered: the days of the market are the trading calendar of a daily study.
@@ -43,8 +60,8 @@ def read_series(
     months missing inside the series (27); or when the dates are not as frequent as declared (40), or returns are in
     another unit. Which days are missing from a daily series no reader can know: see `riskless` and `trading_days`.
     """
-    check_series_dates(reading, frequency)
     paths = [files] if isinstance(files, str) else list(files)
+    reading = with_dates(paths, reading, daily=frequency == "daily")
     parsed = [_parsed(file, reading, value, len(paths) > 1) for file in paths]
     problems = [problem for each in parsed for problem in each.problems]
     if problems:
@@ -64,27 +81,33 @@ def read_series(
         _check_names(series["asset"].unique().tolist(), reading)
     series = series[series[value].notna()].sort_values(keys, ignore_index=True)
     _check_periods(series, keys, reading["label"], frequency)
-    return series
+    return Series(series, [each.counted for each in parsed])
 
 
 @dataclass(frozen=True)
 class _Parsed:
     """The rows of one file, each array (n_rows,), and what is wrong with single rows."""
 
+    label: str
     day: np.ndarray
     decimal: np.ndarray
     asset: np.ndarray
     problems: list[Problem]
 
+    @property
+    def counted(self) -> FileOfSeries:
+        return FileOfSeries(self.label, len(self.day), self.day[~np.isnan(self.decimal)])
+
 
 def _parsed(file: str, reading: dict[str, Any], value: str, is_one_of_several: bool) -> _Parsed:
     if is_one_of_several:  # a message about a row must name its own file
-        reading = {**reading, "label": Path(file).name}
+        reading = {**reading, "label": Path(file).name, "labels": None}
     table = read_text(file, reading)
     rows = table.rows
     day = to_days(rows["date"], reading["dates"])
     numbers = to_numbers(rows[value], reading["missing"])
     return _Parsed(
+        label=table.label,
         day=day,
         decimal=as_decimal(numbers.value, reading["unit"]),
         asset=rows["asset"].to_numpy(object) if "asset" in rows else np.full(len(rows), ""),
@@ -93,10 +116,9 @@ def _parsed(file: str, reading: dict[str, Any], value: str, is_one_of_several: b
 
 
 def _dates(day: np.ndarray, frequency: str) -> np.ndarray:
-    if frequency == "daily":
-        return day.astype("datetime64[ms]")
-    following = (day.astype("datetime64[M]") + 1).astype("datetime64[D]")
-    return (following - 1).astype("datetime64[ms]")
+    months = Months()
+    dates = day if frequency == "daily" else months.date(months.number(day))
+    return dates.astype("datetime64[ms]")
 
 
 def _check_unit(decimal: np.ndarray, reading: dict[str, Any], frequency: str) -> None:

@@ -1,48 +1,17 @@
-"""Dates of a series: what is written, as days, and whether they are as frequent as declared."""
+"""Are the dates of a series as frequent as declared? (fault 40)"""
 
 from __future__ import annotations
 
-import re
 from typing import Any
 
 import numpy as np
-import pandas as pd
 
 from lineproof.intake.stopping import counted, stop
-from lineproof.intake.values import YEARS, check_date_format
 
-_DAY = frozenset("dj")
-_WIDTH = {"%Y": 4, "%m": 2, "%d": 2}
 _SHARE_OF_DAILY = 0.2  # of months with more than two dates: not monthly
 _FEWEST_DAYS = 10  # dates in half of all whole months: not daily
 _FEWEST_STEPS = 4  # on which to judge
 _QUARTER = 3  # months
-
-
-def check_series_dates(reading: dict[str, Any], frequency: str) -> None:
-    """Stop when `dates` is no format, or does not give what the frequency needs. Raises KnownProblem."""
-    check_date_format(reading)
-    parts = {part[1:] for part in re.findall("%.", reading["dates"].replace("%%", ""))}
-    if frequency == "daily" and not _DAY & parts:
-        where = f"{reading['label']}, dates"
-        raise stop(
-            where, f"{reading['dates']!r} gives no day", "as in %Y-%m-%d, or set frequency: monthly"
-        )
-
-
-def to_days(text: pd.Series, dates: str) -> np.ndarray:
-    """The day of each date, datetime64[D] (n,); NaT where it does not parse or lies outside 1800–2200.
-
-    A date without a day is the first of its month. Dates without separators, such as 20000131, must have all their
-    digits.
-    """
-    codes, distinct = pd.factorize(text)
-    parsed = pd.DatetimeIndex(pd.to_datetime(distinct, format=dates, errors="coerce", exact=True))
-    within = (parsed.year >= YEARS[0]) & (parsed.year <= YEARS[1])
-    parts = re.findall("%.", dates)
-    if "".join(parts) == dates and set(parts) <= set(_WIDTH):
-        within &= np.array([len(t) for t in distinct]) == sum(_WIDTH[part] for part in parts)
-    return parsed.where(within).to_numpy().astype("datetime64[D]")[codes]
 
 
 def check_series_frequency(

@@ -103,7 +103,9 @@ class SetAside:
             np.concatenate(column) for column in zip(*self._parts, strict=True)
         )
         order = np.lexsort((position, of_file))
-        return [column[order] for column in (of_file, position, fault, which)]
+        found = tuple(column[order] for column in (of_file, position, fault, which))
+        self._parts = [found]  # so that the next who asks finds them in order
+        return list(found)
 
 
 def _batched(batches: Iterator[list[str]]) -> Iterator[list[str]]:

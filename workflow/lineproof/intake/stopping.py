@@ -16,8 +16,11 @@ def stop(where: str, found: str, change: str, headline: str = UNUSABLE) -> Known
 
 
 def counted(n: int, noun: str) -> str:
-    """A number with its noun, as in `1 month` or `1,200 months`."""
-    return f"{n:,} {noun}" + ("" if n == 1 else "s")
+    """A number with its noun, as in `1 month`, `1,200 months` or `3 securities`."""
+    if n == 1:
+        return f"{n:,} {noun}"
+    ends_in_ies = noun.endswith("y") and noun[-2] not in "aeiou"
+    return f"{n:,} {noun[:-1]}ies" if ends_in_ies else f"{n:,} {noun}s"
 
 
 def few(names: Iterable[str]) -> str:

@@ -9,13 +9,15 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
+from lineproof.frequency import FREQUENCIES
+from lineproof.intake.account import Account, PanelCounts
 from lineproof.intake.blocks import RawFile
 from lineproof.intake.chunk import Chunk
 from lineproof.intake.compounding import Compounded, compound_to_months
 from lineproof.intake.delisting import Leavers, leaving_rows
 from lineproof.intake.excess_or_total import looks_like_excess
 from lineproof.intake.factor import total_and_excess
-from lineproof.intake.faults import Flag, label_of
+from lineproof.intake.faults import Flag
 from lineproof.intake.first_pass import Taken
 from lineproof.intake.flags import flag_rows
 from lineproof.intake.market_build import MarketBuild
@@ -24,7 +26,8 @@ from lineproof.intake.panel import panel_frame
 from lineproof.intake.rates import Rates, Supplied
 from lineproof.intake.scale import ScaleEvidence
 from lineproof.intake.screens import Screens
-from lineproof.intake.second_pass import Rules, Tracked, chunks
+from lineproof.intake.second_pass import Rules, chunks
+from lineproof.intake.series_record import UsedDays
 from lineproof.intake.stopping import counted
 from lineproof.intake.thin import judge_thin_periods
 from lineproof.intake.trading_days import whole_months
@@ -32,10 +35,6 @@ from lineproof.intake.unit import scale_findings
 from lineproof.intake.unit_by_security import UnitBySecurity
 from lineproof.intake.values import missing_codes
 from lineproof.periods import Months
-from lineproof.problems import KnownProblem, Problem
-
-_NOTHING_LEFT = "Nothing is left to study."
-_N_EXAMPLES = 3
 
 
 @dataclass(frozen=True)
@@ -68,18 +67,18 @@ class Intake:
         scale: ScaleEvidence,
         stretches: Flag,
     ) -> None:
-        self._files, self._reading, self._taken, self._kinds = files, reading, taken, kinds
+        self._reading, self._taken, self._kinds = reading, taken, kinds
         self._rules, self._scale, self._stretches = rules, scale, stretches
+        self._account = Account(files, reading["label"], taken)
         if not taken.n_dated:
-            raise self._nothing_kept()
+            raise self._account.nothing_kept()
         days, counts = taken.days
         self._delivered = supplied.delivered(kinds.delivered, days, counts)
         self._rates = supplied.monthly(days) if kinds.compounds else self._delivered
-        self._market_is = supplied.market_is
+        self._supplied = supplied
         self._whole = whole_months(days, counts) if kinds.compounds else None
         periods = self._delivered.span.periods
-        n = np.zeros(len(files), np.int64)
-        self._tracked = Tracked(n, n.copy())
+        self._leaving_before = self._first_day_of_staying(days)
         self._screens = Screens(rules["screens"], rules["stale_run"], self._rates.span.periods.noun)
         self._observers = start_observers(periods)
         self._units = UnitBySecurity()
@@ -92,8 +91,7 @@ class Intake:
             {name: MarketBuild(kinds.build) for name in self._names} if kinds.build else {}
         )
         self._alive = np.zeros(n_periods, np.int64)
-        self._panel = _Counts()
-        self._aside_examples: dict[int, list[dict[str, Any]]] = {}
+        self._panel = PanelCounts()
 
     @property
     def _are_made_total(self) -> bool:
@@ -105,10 +103,6 @@ class Intake:
     def _are(self) -> str:
         """What the returns are once they are in the panel's chunks."""
         return "total" if self._are_made_total else self._kinds.returns_are
-
-    @property
-    def _noun(self) -> str:
-        return self._taken.tally.noun
 
     @property
     def _names(self) -> list[str]:
@@ -126,11 +120,11 @@ class Intake:
             from_price=self._reading.get("return_from") == "price",
             added=self._delivered.riskless if self._are_made_total else None,
         )
-        for chunk in chunks(self._taken, self._delivered.span, rules, self._tracked):
+        for chunk in chunks(self._taken, self._delivered.span, rules, self._account.tracked):
             yield self._pieces(chunk)
-        self._check_conservation()
+        self._account.check_conservation()
         if self._panel.n_rows == 0:
-            raise self._nothing_kept()
+            raise self._account.nothing_kept()
         self._judge()
 
     def _pieces(self, chunk: Chunk) -> dict[str, pd.DataFrame]:
@@ -138,7 +132,7 @@ class Intake:
         periods = rates.span.periods
         flag_rows(chunk, taken.tally, missing_codes(self._reading["missing"]), periods)
         self._units.see(chunk)
-        leaves = leaving_rows(chunk, taken.last_seen(chunk.names), self._leaving_before())
+        leaves = leaving_rows(chunk, taken.last_seen(chunk.names), self._leaving_before)
         chunk.values["total_return"] = self._leavers.with_final_returns(chunk, leaves, taken.tally)
         self._alive += np.bincount(chunk.period - rates.span.first, minlength=len(self._alive))
         for observer in self._observers.values():
@@ -188,13 +182,13 @@ class Intake:
         given = {column: values for column, values in more.items() if values is not None}
         return panel_frame(chunk, rates.span.periods, excess, eligible, leaves, given)
 
-    def _leaving_before(self) -> np.datetime64:
+    def _first_day_of_staying(self, days: np.ndarray) -> np.datetime64:
         """A security whose last row is dated before this day has left: the first day of the last period with rows.
 
         Among days it is the first of the last ten, since not every security trades every day.
         """
         span = self._delivered.span
-        numbers = span.periods.number(self._taken.days[0])
+        numbers = span.periods.number(days)
         within = numbers[(numbers >= span.first) & (numbers <= span.last)]
         last = int(within.max()) if len(within) else span.last
         back = 9 if self._kinds.delivered == "daily" else 0
@@ -205,7 +199,7 @@ class Intake:
         label, tally, rules = self._reading["label"], self._taken.tally, self._rules
         self._other_securities = self._units.judge(label, rules["other_unit_stop_above"])
         flags = [self._stretches, self._other_securities, self._thin(), self._other_kind()]
-        self._taken.aside.count(self._files, tally)
+        self._account.tally()
         for flag in flags:
             tally.add(*flag)
         tally.add(26, 0 if self._leavers.n else 1)
@@ -228,17 +222,23 @@ class Intake:
         if rates.market_excess is None or np.isnan(rates.riskless).all():
             return Flag(30, 0, [], {})
         own = self._leavers.means
-        as_given = rates.market_excess + (rates.riskless if self._market_is == "total" else 0.0)
-        said = looks_like_excess(as_given, rates.riskless, own, self._market_is)
+        as_given = rates.market_excess + (
+            rates.riskless if self._supplied.market_is == "total" else 0.0
+        )
+        said = looks_like_excess(as_given, rates.riskless, own, self._supplied.market_is)
         return Flag(30, 1 if said else 0, [said] if said else [], {})
 
     def markets(self) -> dict[str, pd.DataFrame]:
         """The market and the riskless return of each period of the panel: `market`, and `market_daily` beside it."""
-        found = {"market": self._market(self._rates, "panel", self._panel.first, self._panel.last)}
+        panel = self._panel
+        found = {"market": self._market(self._rates, "panel", panel.first, panel.last)}
         if self._kinds.compounds and (self._delivered.market_excess is not None or self._builds):
             held = np.flatnonzero(self._alive) + self._delivered.span.first
             daily = self._market(self._delivered, "daily", int(held[0]), int(held[-1]))
             found["market_daily"] = daily
+        self._used = UsedDays(found, self._kinds.frequency)
+        noun = FREQUENCIES[self._kinds.frequency].noun
+        self._series = self._supplied.records(found["market"], noun, self._kinds.build)
         return found
 
     def _market(self, rates: Rates, name: str, first: int, last: int) -> pd.DataFrame:
@@ -252,47 +252,28 @@ class Intake:
 
     def set_aside(self) -> Iterator[dict[str, pd.DataFrame]]:
         """Pieces of the table of rows set aside, by file and line."""
-        for table in self._taken.aside.tables(self._files):
-            for fault, rows in table.groupby("fault"):
-                held = self._aside_examples.setdefault(int(fault), [])
-                more = rows.head(_N_EXAMPLES - len(held))
-                held += more[["file", "line", "reason", "raw"]].to_dict("records")
+        for table in self._account.set_aside():
             yield {"set_aside": table}
 
     def counts(self) -> dict[str, Any]:
         """What came in and what became of it: see `intake.record`."""
-        taken, tracked, panel = self._taken, self._tracked, self._panel
-        aside = taken.aside.counts(len(self._files))
-        name = self._rates.span.periods.name
+        panel, name = self._panel, self._rates.span.periods.name
         return {
-            "file": self._reading["label"],
+            **self._account.totals(),
             "first": name(panel.first),
             "last": name(panel.last),
             "period": "day" if self._kinds.delivered == "daily" else "month",
-            "rows_read": sum(taken.n_read),
-            "rows_kept": int(tracked.n_kept.sum()),
-            "rows_set_aside": sum(aside),
-            "exact_duplicates": int(tracked.n_duplicates.sum()),
             "rows_screened": panel.n_screened,
             "n_securities": panel.n_securities,
             "n_missing_returns": panel.n_missing,
-            "files": [self._file(at, n) for at, n in enumerate(aside)],
-            "faults": taken.tally.report(self._answers()),
+            "files": [*self._account.file_records(), *self._supplied.files(self._used)],
+            "series": self._series,
+            "faults": self._taken.tally.report(self._answers()),
             "screens": self._screens.report(),
             "span": self._span(),
-            "set_aside": self._aside(),
+            "set_aside": self._account.aside_records(),
             "delisting": self._leavers.record(),
             "evidence": {**evidence(self._observers), "scale": self._scale_records()},
-        }
-
-    def _file(self, at: int, n_aside: int) -> dict[str, Any]:
-        return {
-            "place": "data.returns",
-            "label": self._files[at].label,
-            "rows_read": self._taken.n_read[at],
-            "rows_kept": int(self._tracked.n_kept[at]),
-            "rows_set_aside": n_aside,
-            "exact_duplicates": int(self._tracked.n_duplicates[at]),
         }
 
     def _answers(self) -> dict[int, str]:
@@ -304,58 +285,27 @@ class Intake:
             chosen[22] = "set aside"
         return chosen
 
-    def _aside(self) -> list[dict[str, Any]]:
-        return [
-            {
-                "number": number,
-                "label": label_of(number, self._noun),
-                "n": n,
-                "examples": self._aside_examples.get(number, []),
-            }
-            for number, n, _, _ in self._taken.aside.first_of_each(self._files)
-        ]
-
     def _scale_records(self) -> list[dict[str, Any]]:
         others = self._other_securities
         units = self._units.result()
         by_security = {
             "what": "the same unit for every security",
             "found": "; ".join(others.examples)
-            or f"none of {counted(units['n_judged'], 'security')} stands out".replace(
-                "securitys", "securities"
-            ),
+            or f"none of {counted(units['n_judged'], 'security')} stands out",
             "verdict": "to be looked at" if others.n else "one unit throughout",
         }
         return [*scale_findings(self._scale, self._reading, self._stretches), by_security]
 
-    def _check_conservation(self) -> None:
-        aside = self._taken.aside.counts(len(self._files))
-        for at, n_read in enumerate(self._taken.n_read):
-            kept, exact = int(self._tracked.n_kept[at]), int(self._tracked.n_duplicates[at])
-            if n_read != kept + aside[at] + exact:
-                raise AssertionError(
-                    f"rows of {self._files[at].label} were lost: {n_read} read, {kept} kept, {aside[at]} set aside, "
-                    f"{exact} exact duplicates"
-                )
-
-    def _nothing_kept(self) -> KnownProblem:
-        """The error when every row is set aside: each fault with its first row."""
-        problems = []
-        for number, n, place, reason in self._taken.aside.first_of_each(self._files):
-            found = f"{counted(n, 'row')} with {label_of(number, self._noun)}"
-            problems.append(Problem(self._reading["label"], found, f"{place} has {reason}"))
-        return KnownProblem(f"{_NOTHING_LEFT} Every row is set aside.", problems)
-
     def _span(self) -> list[str]:
         """What is to be said when the returns reach beyond the market or the riskless rate."""
-        rates, said = self._delivered, []
+        rates, tracked, said = self._delivered, self._account.tracked, []
         name = rates.span.periods.name
-        if n := self._tracked.n_before:
+        if n := tracked.n_before:
             said.append(
                 f"{counted(n, 'row')} of returns dated before {name(rates.span.first)}, where {rates.begins} "
                 "begins: the study begins there"
             )
-        if n := self._tracked.n_after:
+        if n := tracked.n_after:
             said.append(
                 f"{counted(n, 'row')} of returns dated after {name(rates.span.last)}, where {rates.ends} ends: "
                 "the study ends there"
@@ -375,19 +325,3 @@ class Intake:
             )
             if is_part
         ]
-
-
-class _Counts:
-    """What the panel holds."""
-
-    def __init__(self) -> None:
-        self.first, self.last = np.iinfo(np.int64).max, np.iinfo(np.int64).min
-        self.n_rows = self.n_securities = self.n_missing = self.n_screened = 0
-
-    def add(self, chunk: Chunk, eligible: np.ndarray) -> None:
-        self.first = min(self.first, int(chunk.period.min()))
-        self.last = max(self.last, int(chunk.period.max()))
-        self.n_rows += len(chunk)
-        self.n_securities += len(chunk.names)
-        self.n_missing += int(np.isnan(chunk.values["total_return"]).sum())
-        self.n_screened += int((~eligible).sum())

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.lib.stride_tricks import sliding_window_view
 
 from lineproof.intake.faults import N_EXAMPLES, Flag
-from lineproof.intake.stopping import stop
+from lineproof.intake.stopping import counted, stop
 from lineproof.periods import Periods
 
 _N_AROUND = 5  # periods on either side
@@ -46,5 +46,4 @@ def _median_around(n: np.ndarray) -> np.ndarray:
 
 
 def _said(name: str, n: int, usual: float) -> str:
-    whose = f"{n:,} {'security' if n == 1 else 'securities'}"
-    return f"{name}, with {whose} where the periods around have {usual:,.0f}"
+    return f"{name}, with {counted(n, 'security')} where the periods around have {usual:,.0f}"

@@ -179,13 +179,6 @@ def _within(moments: np.ndarray) -> np.ndarray:
     return days
 
 
-def to_months(text: pd.Series, dates: str) -> pd.Series:
-    """The last day of the month of each date, NaT where there is none: see `to_days`."""
-    months = to_days(text, dates).astype("datetime64[M]")
-    ends = (months + 1).astype("datetime64[D]") - 1
-    return pd.Series(ends.astype("datetime64[ms]"), index=text.index, name="date")
-
-
 def check_date_format(reading: dict[str, Any], *, daily: bool = False) -> None:
     """Stop when `dates` is no format, or gives no month, or no day where the data are daily.
 
@@ -201,4 +194,5 @@ def check_date_format(reading: dict[str, Any], *, daily: bool = False) -> None:
     wanted = {"year": _YEAR, "month": _MONTH, **({"day": _DAY} if daily else {})}
     for what, found in wanted.items():
         if not found & set(parts):
-            raise stop(where, f"{dates!r} gives no {what}", "as in %Y-%m-%d")
+            other = ", or set frequency: monthly" if what == "day" else ""
+            raise stop(where, f"{dates!r} gives no {what}", f"as in %Y-%m-%d{other}")

@@ -21,6 +21,7 @@ PLACES = {
     "data.market": "Market",
     "data.riskless": "Riskless rate",
 }
+SERIES = {"data.market": "Market less riskless", "data.riskless": "Riskless return"}
 Builder = Callable[[Record], Any]
 
 
@@ -89,6 +90,26 @@ def _files(record: Record) -> list[dict[str, Any]]:
             }
         )
     return found
+
+
+def _series(record: Record) -> list[dict[str, Any]] | None:
+    """The market and the riskless return in the periods of the study, in per cent."""
+    known = record.intake.get("series", [])
+    return [
+        {
+            **each,
+            "what": SERIES.get(each["place"], each["place"]),
+            "span": [
+                each[end][: 7 if each["period"] == "month" else 10] for end in ("first", "last")
+            ],
+            "n_periods": record.at("series", place, "n_periods"),
+            "numbers": [
+                record.at("series", place, key, form="fine_percent")
+                for key in ("mean", "sd", "min", "max")
+            ],
+        }
+        for place, each in enumerate(known)
+    ] or None
 
 
 def _faults(record: Record) -> list[dict[str, Any]]:
@@ -232,6 +253,7 @@ def figure(name: str, title: str, note: str, svg: bytes) -> dict[str, Any]:
 # The templates of their bodies are the blocks of the same name in templates/data_sections.
 SECTIONS = (
     Section("files", "Files and rows", _files),
+    Section("series", "The market and the riskless rate", _series),
     Section("faults", "Faults", _faults),
     Section("set-aside", "Rows set aside", _set_aside),
     Section("screens", "Screens", _screens),
