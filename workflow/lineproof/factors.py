@@ -21,7 +21,8 @@ def read_factors(files: list[str], *, reading: dict[str, Any], frequency: str) -
     table: pd.DataFrame | None = None
     for name, theirs in columns.items():
         alone = {**reading, "columns": {"date": date, "return": theirs}}
-        series = read_series(files, alone, "return", frequency).rename(columns={"return": name})
+        series = read_series(files, alone, "return", frequency).values
+        series = series.rename(columns={"return": name})
         table = series if table is None else table.merge(series, on="date", how="outer", sort=True)
     assert table is not None
     return table.astype({"date": "datetime64[ms]"})
