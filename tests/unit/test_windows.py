@@ -7,7 +7,8 @@ from fractions import Fraction
 import numpy as np
 import pytest
 
-from lineproof.stats.windows import MOMENTS, Sample, WindowEnds, fit_windows
+from lineproof.stats.window_alone import MOMENTS
+from lineproof.stats.windows import Sample, WindowEnds, fit_windows
 
 WINDOW = 24
 # Rounding only. A sum of 24 squares in float64 is good to about 24 × 1.1e-16; the block sums may lose

@@ -11,10 +11,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from lineproof.stats.window_alone import BELOW_MEAN, MOMENTS, NEIGHBOURS
 from lineproof.stats.windows import (
-    BELOW_MEAN,
-    MOMENTS,
-    NEIGHBOURS,
     Sample,
     WindowEnds,
     Windows,
@@ -221,7 +219,7 @@ def rolling_correlation_volatility(
 
 def _estimates(found: Windows) -> RollingBetas:
     return RollingBetas(
-        found.row, *found.values[:5], found.n_obs, found.n_too_few, found.n_no_variation
+        found.row, *found.values, found.n_obs, found.n_too_few, found.n_no_variation
     )
 
 
