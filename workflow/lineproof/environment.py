@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import MutableMapping
 from pathlib import Path
 
@@ -26,4 +27,18 @@ def settle(environ: MutableMapping[str, str]) -> None:
     if str(_WORKFLOW) not in known:
         environ["PYTHONPATH"] = ":".join([str(_WORKFLOW), *filter(None, known)])
     environ.pop("PYTHONDONTWRITEBYTECODE", None)
-    environ.setdefault("NUMBA_CACHE_DIR", str(_WORKFLOW.parent / ".venv" / "numba"))
+    folder = _WORKFLOW.parent / ".venv" / "numba" / kernels_digest(_WORKFLOW / "lineproof")
+    environ.setdefault("NUMBA_CACHE_DIR", str(folder))
+
+
+def kernels_digest(package: Path) -> str:
+    """A short digest of every module that may hold compiled code.
+
+    A compiled function is kept by the state of its own module only, but has those of others that it calls built in:
+    were its folder not named by them all, a kernel could outlive the code it was made of.
+    """
+    digest = hashlib.sha256()
+    for folder in ("stats", "intake"):
+        for file in sorted((package / folder).rglob("*.py")):
+            digest.update(f"{file.relative_to(package)}\0".encode() + file.read_bytes())
+    return digest.hexdigest()[:16]
