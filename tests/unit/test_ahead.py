@@ -7,7 +7,7 @@ from collections.abc import Iterator
 
 import pytest
 
-from lineproof.intake.ahead import ahead
+from lineproof.ahead import ahead
 
 
 def counting(n: int, closed: list[bool], end: Exception | None = None) -> Iterator[int]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import time
 from collections.abc import Iterator
 from itertools import pairwise
 from pathlib import Path
@@ -89,8 +90,10 @@ def test_an_error_midway_leaves_nothing(tmp_path: Path, monkeypatch: pytest.Monk
     monkeypatch.setattr(store, "_ROW_GROUP", 10)
 
     def breaks() -> Iterator[dict[str, pd.DataFrame]]:
-        yield from pieces(WHOLE.iloc[:60], [30])
-        assert any(path.name.endswith(".part") for path in tmp_path.iterdir())
+        yield from pieces(WHOLE.iloc[:60], [20, 40])
+        late = time.monotonic() + 30  # batches are made ahead of what is written
+        while not any(path.name.endswith(".part") for path in tmp_path.iterdir()):
+            assert time.monotonic() < late
         raise OSError(28, "No space left on device")
 
     with pytest.raises(OSError, match="No space"):

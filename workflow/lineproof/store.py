@@ -16,6 +16,8 @@ from contextlib import ExitStack
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from lineproof.ahead import ahead
+
 if TYPE_CHECKING:
     import numpy as np
     import pandas as pd
@@ -97,14 +99,14 @@ def write_together(
     """Write tables larger than memory, each under the contract of its name, from batches that hold a piece of each.
 
     The same rows give the same bytes however they are cut into batches. When the batches raise an error, no file is
-    left behind.
+    left behind. They are made in a thread of their own, while those before them are checked and written.
     """
     with ExitStack() as stack:
         writers = {
             name: stack.enter_context(_Writer(name, frequency, Path(path)))
             for name, path in paths.items()
         }
-        for batch in batches:
+        for batch in ahead(iter(batches)):
             for name, frame in batch.items():
                 writers[name].add(frame)
         for writer in writers.values():

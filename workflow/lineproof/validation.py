@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 
+from lineproof.ahead import ahead
 from lineproof.frequency import FREQUENCIES
 from lineproof.intake.dating import with_dates
 from lineproof.intake.first_pass import Taken, take_rows
@@ -79,7 +80,7 @@ def _check_names(reading: dict[str, Any]) -> None:
 
 def _judge_frequency(taken: Taken, label: str, frequency: str) -> None:
     evidence = FrequencyEvidence()
-    for names, owner, columns in taken.runs.stretches(_CHUNK, ["day"]):
+    for names, owner, columns in ahead(taken.runs.stretches(_CHUNK, ["day"])):
         day = columns["day"].astype("datetime64[D]")
         month = Months().number(day)
         order = in_order(owner, month, np.ones(len(day), bool), len(names))

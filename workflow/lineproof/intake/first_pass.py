@@ -10,6 +10,7 @@ import numpy as np
 import pyarrow as pa
 from numba import njit
 
+from lineproof.ahead import ahead
 from lineproof.intake.blocks import RawBlock, RawFile
 from lineproof.intake.faults import Tally
 from lineproof.intake.runs import Columns, Names, SortedRuns
@@ -91,7 +92,7 @@ def take_rows(
     taken = Taken(SortedRuns(scratch), SetAside(noun), Tally(noun), comma, texts)
     for number, file in enumerate(files):
         taken.n_read.append(0)
-        for block in file.blocks():
+        for block in ahead(file.blocks()):
             taken.n_read[number] += block.n_read
             taken.tally.add(7, block.n_trimmed)
             taken.aside.add_rejects(number, block.rejects)

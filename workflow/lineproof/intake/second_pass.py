@@ -7,7 +7,9 @@ from dataclasses import dataclass
 
 import numpy as np
 import pandas as pd
+from numba import njit
 
+from lineproof.ahead import ahead
 from lineproof.intake.chunk import Chunk
 from lineproof.intake.factor import total_and_excess
 from lineproof.intake.first_pass import NUMERIC, Taken
@@ -58,7 +60,7 @@ class Tracked:
 def chunks(taken: Taken, span: Span, rules: Rules, tracked: Tracked) -> Iterator[Chunk]:
     """The kept rows, all of some securities at a time, in the order of their names."""
     n_files = len(tracked.n_kept)
-    for names, security, delivered in taken.runs.stretches(_ROWS):
+    for names, security, delivered in ahead(taken.runs.stretches(_ROWS)):
         columns = delivered
         period = span.periods.number(columns["day"].astype("datetime64[D]"))
         faults = FirstFault(taken.aside, columns["file"], columns["position"])
@@ -125,14 +127,24 @@ def in_order(
 ) -> np.ndarray:
     """Indices of the sound rows by security and period, ties in the order of the raw files."""
     rows = np.flatnonzero(sound)
-    step, on = np.diff(security[rows]), np.diff(period[rows])
-    if ((step > 0) | ((step == 0) & (on >= 0))).all():
+    if not (security[rows[1:]] >= security[rows[:-1]]).all():
+        rows = rows[counting_order(security[rows], n_names)[0]]
+    if _runs_on(security, period, rows):  # files come by date, or by security and date
         return rows
-    span = int(period[rows].max() - period[rows].min()) + 1
-    by_period, _ = counting_order(period[rows] - period[rows].min(), span)
-    rows = rows[by_period]
-    by_security, _ = counting_order(security[rows], n_names)
-    return rows[by_security]
+    low, high = int(period[rows].min()), int(period[rows].max())
+    rows = np.sort(rows)
+    rows = rows[counting_order(period[rows] - low, high - low + 1)[0]]
+    return rows[counting_order(security[rows], n_names)[0]]
+
+
+@njit(cache=True, nogil=True)
+def _runs_on(security, period, rows):  # pragma: no cover - compiled
+    """Whether the periods of rows that are in the order of their securities never fall."""
+    for at in range(1, len(rows)):
+        row, before = rows[at], rows[at - 1]
+        if security[row] == security[before] and period[row] < period[before]:
+            return False
+    return True
 
 
 def _note_repeated(

@@ -11,7 +11,7 @@ import numpy as np
 import pyarrow as pa
 import pyarrow.csv
 
-from lineproof.intake.ahead import ahead
+from lineproof.ahead import ahead
 from lineproof.intake.decoding import member_name
 from lineproof.intake.headers import check_separator
 from lineproof.intake.lines import Block, Misfits, find_misfits, pick_lines, read_blocks
