@@ -15,7 +15,7 @@ from lineproof.designs import WEIGHTS, Design
 from lineproof.periods import ABSENT
 from lineproof.ranking import PanelRows, Ranked
 from lineproof.stats.holding import Held, Rows, assign, in_order
-from lineproof.stats.moving import moves, turnover
+from lineproof.stats.moving import at_formation, moves, turnover
 from lineproof.stats.weights import scaled_to_one
 
 RETURN_COLUMNS = ["asset", "date", "excess_return", "n_members", "mean_size", "ante_beta"]
@@ -54,10 +54,14 @@ class Formed:
         return len(self.ranked.month) * self.ranked.formations.n_groups
 
     @cached_property
+    def size(self) -> np.ndarray:
+        """Size of each member at formation."""
+        return self.rows.panel["size"].to_numpy(dtype=float)[self.ranked.formations.row]
+
+    @cached_property
     def weight(self) -> np.ndarray:
         """Weight of each member at formation, scaled to one in each group."""
-        size = self.rows.panel["size"].to_numpy()[self.ranked.formations.row]
-        raw = catalog.load(WEIGHTS[self.design.weights])(size)
+        raw = catalog.load(WEIGHTS[self.design.weights])(self.size)
         return scaled_to_one(raw, self.cell, self.n_cells)
 
     @cached_property
@@ -84,15 +88,16 @@ def members(formed: Formed) -> pd.DataFrame:
     """Who was in which group, formation by formation."""
     f = formed.ranked.formations
     order = in_order(formed.cell, formed.n_cells)
-    row = f.row[order]
+    n_each = np.bincount(formed.cell, minlength=f.n_groups * len(formed.dates))
+    groups = np.tile(np.arange(f.n_groups), len(formed.dates))
     return pd.DataFrame(
         {
-            "formed": formed.dates[formed.ranked.formation_of[order]],
-            "asset": _named(f.group[order], formed.assets),
+            "formed": np.repeat(formed.dates, np.diff(f.starts)),
+            "asset": _named(np.repeat(groups, n_each), formed.assets),
             "security": _named(f.security[order], formed.rows.names),
             "weight": formed.weight[order],
             "ante_beta": formed.ante_beta[order],
-            "size": formed.rows.panel["size"].to_numpy()[row],
+            "size": formed.size[order],
         },
         copy=False,
     )
@@ -166,25 +171,19 @@ def _ratio(part: np.ndarray, whole: np.ndarray) -> np.ndarray:
 
 def formations(formed: Formed) -> pd.DataFrame:
     """What each group is at its formation, and how many of its members leave while it is held."""
-    f, n_cells = formed.ranked.formations, formed.n_cells
-    size = formed.rows.panel["size"].to_numpy()[f.row]
-    beta, with_beta = formed.ante_beta, np.isfinite(formed.ante_beta)
-
-    def total(values: np.ndarray) -> np.ndarray:
-        return np.bincount(formed.cell, values, n_cells)
-
-    weighed = total(np.where(with_beta, formed.weight, 0.0))
-    part = total(np.where(with_beta, formed.weight * beta, 0.0))
-    leaves = formed.rows.last[f.security] < f.last[formed.ranked.formation_of]
+    f = formed.ranked.formations
+    given = (f.starts, f.group, formed.weight, formed.size, formed.ante_beta)
+    sums = at_formation(*given, formed.rows.last[f.security], f.last, f.n_groups)
+    n_members, total_size, n_sized, part, weighed, n_exits = sums.reshape(len(sums), -1)
     return pd.DataFrame(
         {
             "formed": np.repeat(formed.dates, f.n_groups),
             "asset": pd.Series(np.tile(formed.assets, len(formed.dates)), dtype=str),
-            "n_members": np.bincount(formed.cell, minlength=n_cells),
+            "n_members": n_members.astype(np.int64),
             "turnover": _turnover(formed),
-            "mean_size": _ratio(total(np.nan_to_num(size)), total(np.isfinite(size).astype(float))),
+            "mean_size": _ratio(total_size, n_sized),
             "ante_beta": _ratio(part, weighed),
-            "n_exits": total(leaves.astype(float)).astype(np.int64),
+            "n_exits": n_exits.astype(np.int64),
         }
     )
 

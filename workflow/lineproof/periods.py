@@ -9,6 +9,7 @@ from typing import Protocol
 import numpy as np
 
 ABSENT = -1  # the number of a date that is no period of the study
+_MANY = 10_000
 _JANUARY_1970 = 1970 * 12
 _RECENT = 250  # trading days that show on which weekdays the market is open
 
@@ -47,8 +48,16 @@ class Months:
     noun: str = "month"
 
     def number(self, days: np.ndarray) -> np.ndarray:
-        months = days.astype("datetime64[M]").astype(np.int64) + _JANUARY_1970
-        return np.where(np.isnat(days), ABSENT, months)
+        if len(days) > _MANY and not np.isnat(days).any():  # the calendar is worked out once a day
+            since = days.astype("datetime64[D]").astype(np.int64)
+            low, high = int(since.min()), int(since.max())
+            if high - low < len(days):
+                every = np.arange(low, high + 1).astype("datetime64[D]")
+                return self._of(every)[since - low]
+        return np.where(np.isnat(days), ABSENT, self._of(days))
+
+    def _of(self, days: np.ndarray) -> np.ndarray:
+        return days.astype("datetime64[M]").astype(np.int64) + _JANUARY_1970
 
     def date(self, numbers: np.ndarray) -> np.ndarray:
         first = (np.asarray(numbers) + 1 - _JANUARY_1970).astype("datetime64[M]")

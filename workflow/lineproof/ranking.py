@@ -72,11 +72,8 @@ class PanelRows:
         place = names[code[starts[:-1]]].get_indexer(self.names)
         number = self.periods.number(table["date"].to_numpy())
         period = np.where(number == ABSENT, _NO_ROW, number - self.low).astype(np.int32)
-        at = matched(self.starts, self.period, starts, period, place)
-        return [
-            np.append(table[column].to_numpy(dtype=float), np.nan)[at]  # −1 is the last
-            for column in columns
-        ]
+        given = (self.starts, self.period, starts, period, place)
+        return [matched(*given, table[column].to_numpy(dtype=float)) for column in columns]
 
     def earlier(self, row: np.ndarray, months: int) -> np.ndarray:
         """Of the security of each row, the row that closes the month so many months before; −1 where it has none."""
@@ -132,8 +129,10 @@ def rank(
     variables, dated s or as many months earlier as the design estimates anew.
     """
     can, ranked_at = _candidates(rows, ranks, antes, design)
-    formed, starts = np.unique(rows.period[can], return_index=True)
-    counts = np.diff(np.append(starts, len(can)))
+    in_each = np.bincount(rows.period[can], minlength=len(rows.month))
+    formed = np.flatnonzero(in_each)
+    counts = in_each[formed]
+    starts = np.cumsum(counts) - counts
     rule, kept, groups = catalog.load(RULES[design.rule]), [], []
     for place in _in_turn(rows.month[formed], counts, design):
         part = slice(starts[place], starts[place] + counts[place])
@@ -143,9 +142,10 @@ def rank(
         if found is not None:
             kept.append(place)
             groups.append(found)
-    members = [np.arange(starts[place], starts[place] + counts[place]) for place in kept]
-    row = can[np.concatenate([np.empty(0, np.int64), *members])]
-    of_cells = _Cells(formed[kept], counts[kept], row, np.concatenate([np.empty(0, int), *groups]))
+    if len(kept) < len(formed):
+        members = [np.arange(starts[place], starts[place] + counts[place]) for place in kept]
+        can = can[np.concatenate([np.empty(0, np.int64), *members])]
+    of_cells = _Cells(formed[kept], counts[kept], can, np.concatenate([np.empty(0, int), *groups]))
     return Ranked(
         _formations(rows, of_cells, design), rows.month[formed[kept]], int(counts.max(initial=0))
     )
@@ -156,18 +156,23 @@ def _candidates(
 ) -> tuple[np.ndarray, np.ndarray]:
     """Rows that can be ranked, by formation and then in the panel's order, and the rows with what they rank on."""
     forms = np.append(rows.closes & design.forms(rows.month), False)  # −1 is the last
-    can = np.flatnonzero(forms[rows.period] & rows.panel["eligible"].to_numpy())
-    size = rows.panel["size"].to_numpy()[can]
-    can = can[catalog.load(WEIGHTS[design.weights])(size) > 0]
+    meets = forms[rows.period] & rows.panel["eligible"].to_numpy()
+    meets &= catalog.load(WEIGHTS[design.weights])(rows.panel["size"].to_numpy()) > 0
     for each in antes[:1]:
-        can = can[np.isfinite(each[can])]
+        meets &= np.isfinite(each)
+    if not design.estimation:
+        for each in ranks:
+            meets &= np.isfinite(each)
+    can = np.flatnonzero(meets)
     ranked_at = rows.earlier(can, design.estimation)
-    known = ranked_at >= 0
-    for each in ranks:
-        known &= np.isfinite(each[ranked_at])
-    can, ranked_at = can[known], ranked_at[known]
+    if design.estimation:
+        known = ranked_at >= 0
+        for each in ranks:
+            known &= np.isfinite(each[ranked_at])
+        can, ranked_at = can[known], ranked_at[known]
     order = in_order(rows.period[can], len(rows.month))
-    return can[order], ranked_at[order]
+    can = can[order]
+    return can, ranked_at[order] if design.estimation else can
 
 
 def _in_turn(month: np.ndarray, counts: np.ndarray, design: Design) -> list[int]:
@@ -197,7 +202,6 @@ def _formations(rows: PanelRows, found: _Cells, design: Design) -> Formations:
         starts=np.concatenate([[0], np.cumsum(found.counts)]).astype(np.int64),
         security=rows.owner[found.row],
         row=found.row,
-        end=rows.starts[rows.owner[found.row] + 1],
         group=found.cell,
         formed=formed,
         last=np.searchsorted(rows.month, month + design.hold, side="right") - 1,

@@ -68,6 +68,24 @@ def sort_ranked(
     Raises KnownProblem when no formation month has as many securities as groups, no return follows
     one, or a column to rank on is text.
     """
+    formed = form_groups(panel, estimates, design, periods)
+    returns = formed_tables.returns(formed)
+    return Sorted(
+        members=formed_tables.members(formed),
+        returns=returns,
+        formations=formed_tables.formations(formed),
+        transitions=formed_tables.transitions(formed),
+        assigned=formed_tables.assigned(formed, returns, market),
+    )
+
+
+def form_groups(
+    panel: pd.DataFrame,
+    estimates: Mapping[str, pd.DataFrame],
+    design: Design,
+    periods: Periods | None = None,
+) -> formed_tables.Formed:
+    """The groups of `sort_ranked`, formed and held, from which its tables follow. Raises KnownProblem."""
     periods = Months() if periods is None else periods
     rows = PanelRows.of(panel, periods)
     asked = dict.fromkeys((*design.rank_on, *design.ante_betas))
@@ -85,15 +103,7 @@ def sort_ranked(
         found = f"no member has a return after the last formation month, {last}"
         change = "form in another month, or lengthen the data"
         raise _not_formed(f"{design.name}.form_month", found, change)
-    formed = formed_tables.Formed(rows, held_rows, ranked, held, design)
-    returns = formed_tables.returns(formed)
-    return Sorted(
-        members=formed_tables.members(formed),
-        returns=returns,
-        formations=formed_tables.formations(formed),
-        transitions=formed_tables.transitions(formed),
-        assigned=formed_tables.assigned(formed, returns, market),
-    )
+    return formed_tables.Formed(rows, held_rows, ranked, held, design)
 
 
 def asset_names(*groups: int) -> list[str]:
@@ -171,6 +181,7 @@ def _held_rows(rows: PanelRows, antes: list[np.ndarray], design: Design) -> Rows
     growth = growth_of(rows.panel)
     size = lagged_sizes(rows.starts, rows.panel["size"].to_numpy(dtype=float), growth)
     return Rows(
+        starts=rows.starts,
         period=rows.period,
         excess=excess,
         growth=growth,

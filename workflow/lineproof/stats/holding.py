@@ -1,7 +1,8 @@
 """What groups return while they are held, compiled: the only loop over members and periods.
 
 Each formation is held on its own, from the period after it to the last of its holding period, and its sums go to cells
-of its own; so blocks of formations run side by side, and the order of a sum depends on the members alone.
+of its own. Blocks of formations run side by side, each through the rows of the panel as they lie in memory; the order
+of a sum depends on the members alone.
 """
 
 from __future__ import annotations
@@ -16,12 +17,12 @@ from numba import njit, prange
 # weights of the members with one.
 _WEIGHT, _RETURN, _MEMBERS, _SIZE, _SIZED, _BETA, _WITH_BETA = range(7)
 _N_SUMS = 7
-_N_BLOCKS = 16
+_N_BLOCKS = 4
 
 
 @dataclass(frozen=True)
 class Rows:
-    """The panel row by row, (n_rows,) each, sorted by security and period.
+    """The panel row by row, (n_rows,) each, sorted by security and period and parted by `starts` (n_securities + 1,).
 
     `period` counts from 0, and is −1 where a row lies in no period. `growth` is 1 + the total
     return, 1 where it is missing. `weight` is what a member weighs in the row's period; `drifts`
@@ -30,6 +31,7 @@ class Rows:
     each further line, from that many years after.
     """
 
+    starts: np.ndarray
     period: np.ndarray
     excess: np.ndarray
     growth: np.ndarray
@@ -44,7 +46,7 @@ class Formations:
     """Groups by formation, ascending in time.
 
     Members are listed by formation, parted by `starts` (n_formations + 1,): the `security` of each, a
-    number below `n_securities`, its `row` at the formation, the `end` of its security's rows, and its
+    number below `n_securities`, its `row` at the formation, which is that of no other, and its
     `group` from 0. `formed` and `last`
     (n_formations,) are the period of the formation and the last one of its holding period;
     `renewed` (n_formations, n_renewals) are the periods at whose ends ex-ante betas are taken anew.
@@ -53,7 +55,6 @@ class Formations:
     starts: np.ndarray
     security: np.ndarray
     row: np.ndarray
-    end: np.ndarray
     group: np.ndarray
     formed: np.ndarray
     last: np.ndarray
@@ -92,9 +93,13 @@ def hold(rows: Rows, formations: Formations) -> Held:
     In a period without a return a security is no member, and the others carry the group in
     proportion to their weights.
     """
-    out = np.zeros((formations.cells[-1], formations.n_groups, _N_SUMS))
-    drifted = np.zeros(len(formations.row))
-    _hold(*_arguments(rows, formations), out, drifted)
+    f = formations
+    out = np.zeros((f.cells[-1], f.n_groups, _N_SUMS))
+    drifted = np.zeros(len(rows.period))
+    if len(f.formed):
+        of_rows = (rows.starts, rows.period, rows.excess, rows.growth, rows.size, rows.weight)
+        of_formations = (f.formed, f.last, f.renewed, f.cells)
+        _hold(*of_rows, rows.beta, rows.drifts, *_by_row(rows, f), *of_formations, out, drifted)
     weight = out[..., _WEIGHT]
     return Held(
         excess=_ratio(out[..., _RETURN], weight),
@@ -102,7 +107,7 @@ def hold(rows: Rows, formations: Formations) -> Held:
         total_size=out[..., _SIZE],
         n_sized=out[..., _SIZED],
         beta=_ratio(out[..., _BETA], out[..., _WITH_BETA]),
-        drifted=drifted,
+        drifted=drifted[f.row],
     )
 
 
@@ -111,116 +116,112 @@ def assign(rows: Rows, formations: Formations, beta: np.ndarray) -> np.ndarray:
 
     `beta` is (n_cells, n_groups). A member of several groups that are held at once gets their mean.
     """
-    total, count = np.zeros(len(rows.period)), np.zeros(len(rows.period), np.int64)
     f = formations
-    given = (f.starts, f.row, f.end, f.group, f.formed, f.last, f.cells)
-    _assign(rows.period, rows.excess, *given, beta, total, count)
-    return _ratio(total, count)
+    found = np.full(len(rows.period), np.nan)
+    if len(f.formed):
+        group, formation, _ = _by_row(rows, f)
+        given = (group, formation, f.formed, f.last, f.cells)
+        _assign(rows.starts, rows.period, rows.excess, *given, beta, found)
+    return found
 
 
 def _ratio(part: np.ndarray, whole: np.ndarray) -> np.ndarray:
     return np.divide(part, whole, out=np.full(part.shape, np.nan), where=whole > 0)
 
 
-def _arguments(rows: Rows, f: Formations) -> tuple:
-    of_rows = (rows.period, rows.excess, rows.growth, rows.size, rows.weight, rows.beta)
-    return (
-        *of_rows,
-        rows.drifts,
-        *_in_blocks(f),
-        f.row,
-        f.end,
-        f.group,
-        f.formed,
-        f.last,
-        f.renewed,
-        f.cells,
-    )
-
-
-def _in_blocks(f: Formations) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Where blocks of formations begin among the members, the members of each in the order of their rows, and the
-    formation of each: what is read then lies together, and sums still run in the order of the securities."""
-    first = np.linspace(0, len(f.formed), _N_BLOCKS + 1).astype(np.int64)
-    formation_of = np.repeat(np.arange(len(f.formed)), np.diff(f.starts))
-    begins = f.starts[first]
-    block = np.repeat(np.arange(_N_BLOCKS), np.diff(begins))
-    security, n_securities = f.security, f.n_securities
-    return begins, in_order(block * n_securities + security, _N_BLOCKS * n_securities), formation_of
+def _by_row(rows: Rows, f: Formations) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """The group formed at each row, −1 for none, (n_rows,); the formation of each period, −1 for none; and where blocks
+    of formations begin, by their members."""
+    group = np.full(len(rows.period), -1, np.int32)
+    group[f.row] = f.group
+    formation = np.full(int(f.last.max()) + 1, -1, np.int64)
+    formation[f.formed] = np.arange(len(f.formed))
+    shares = f.starts[-1] * np.arange(_N_BLOCKS + 1) // _N_BLOCKS
+    return group, formation, np.searchsorted(f.starts, shares)
 
 
 @njit(cache=True, parallel=True)
 def _hold(
-    period, excess, growth, size, weight, beta, drifts, begins, order, formation_of, row, end, group,
-    formed, last, renewed, cells, out, drifted,
+    starts, period, excess, growth, size, weight, beta, drifts, group, formation, blocks, formed, last,
+    renewed, cells, out, drifted,
 ):  # fmt: skip  # pragma: no cover - compiled
-    for block in prange(len(begins) - 1):
-        for place in range(begins[block], begins[block + 1]):
-            member = order[place]
-            f = formation_of[member]
-            drifted[member] = _one_member(
-                period, excess, growth, size, weight, beta, drifts, row[member], end[member],
-                formed[f], last[f], renewed[f], out[cells[f] : cells[f + 1], group[member]],
-            )  # fmt: skip
+    for block in prange(len(blocks) - 1):
+        _hold_block(
+            starts, period, excess, growth, size, weight, beta, drifts, group, formation,
+            blocks[block], blocks[block + 1], formed, last, renewed, cells, out, drifted,
+        )  # fmt: skip
 
 
 @njit(cache=True)
-def _one_member(
-    period, excess, growth, size, weight, beta, drifts, row, end, formed, last, renewed, out
-):  # pragma: no cover - compiled
-    """Adds a member to the cells (n_periods, n_sums) of its group, and returns what it weighs after the last one."""
-    wealth, known, year, left = 1.0, np.nan, 0, 0.0
-    if len(beta) > 0:
-        known = beta[0, row]
-    for at in range(row + 1, end):
-        now = period[at]
-        if now > last:
-            break
-        if now <= formed:
-            continue  # in no period
-        if not np.isnan(excess[at]):
-            share = wealth if drifts else weight[at]
-            _add(out[now - formed - 1], share, excess[at], size[at], known)
-            if now == last:
-                left = share * growth[at]
-        wealth *= growth[at]
-        while year < len(renewed) and renewed[year] < now:
-            year += 1
-        if year < len(renewed) and renewed[year] == now:
-            newer = beta[min(year + 1, len(beta) - 1), at]
-            if not np.isnan(newer):
-                known = newer
-    return left
-
-
-@njit(cache=True)
-def _add(cell, share, excess, size, beta):  # pragma: no cover - compiled
-    cell[_WEIGHT] += share
-    cell[_RETURN] += share * excess
-    cell[_MEMBERS] += 1
-    if not np.isnan(size):
-        cell[_SIZE] += size
-        cell[_SIZED] += 1
-    if not np.isnan(beta):
-        cell[_BETA] += share * beta
-        cell[_WITH_BETA] += share
+def _hold_block(
+    starts, period, excess, growth, size, weight, beta, drifts, group, formation, low, high, formed,
+    last, renewed, cells, out, drifted,
+):  # fmt: skip  # pragma: no cover - compiled
+    """Adds the members of the formations from `low` to `high` to the cells of their groups, and notes what each weighs
+    after the last period. One function, since a call with as many arrays would cost as much as what it does."""
+    has_beta, n_years = len(beta) > 0, renewed.shape[1]
+    first_day, last_day = formed[low] if low < high else 1, formed[high - 1] if low < high else 0
+    for security in range(len(starts) - 1):
+        end = starts[security + 1]
+        for row in range(starts[security], end):
+            if group[row] < 0 or period[row] < first_day or period[row] > last_day:
+                continue
+            f, g = formation[period[row]], group[row]
+            begins, ends, cell = formed[f], last[f], cells[f]
+            wealth, year = 1.0, 0
+            known = beta[0, row] if has_beta else np.nan
+            for at in range(row + 1, end):
+                now = period[at]
+                if now > ends:
+                    break
+                if now <= begins:
+                    continue  # in no period
+                if not np.isnan(excess[at]):
+                    share = wealth if drifts else weight[at]
+                    place = cell + now - begins - 1
+                    out[place, g, _WEIGHT] += share
+                    out[place, g, _RETURN] += share * excess[at]
+                    out[place, g, _MEMBERS] += 1
+                    if not np.isnan(size[at]):
+                        out[place, g, _SIZE] += size[at]
+                        out[place, g, _SIZED] += 1
+                    if not np.isnan(known):
+                        out[place, g, _BETA] += share * known
+                        out[place, g, _WITH_BETA] += share
+                    if now == ends:
+                        drifted[row] = share * growth[at]
+                wealth *= growth[at]
+                while year < n_years and renewed[f, year] < now:
+                    year += 1
+                if year < n_years and renewed[f, year] == now:
+                    newer = beta[min(year + 1, len(beta) - 1), at]
+                    if not np.isnan(newer):
+                        known = newer
 
 
 @njit(cache=True)
 def _assign(
-    period, excess, starts, row, end, group, formed, last, cells, beta, total, count
+    starts, period, excess, group, formation, formed, last, cells, beta, found
 ):  # pragma: no cover - compiled
-    for f in range(len(formed)):
-        for member in range(starts[f], starts[f + 1]):
-            for at in range(row[member] + 1, end[member]):
+    for security in range(len(starts) - 1):
+        end = starts[security + 1]
+        total, count = np.zeros(end - starts[security]), np.zeros(end - starts[security])
+        for row in range(starts[security], end):
+            if group[row] < 0:
+                continue
+            f = formation[period[row]]
+            for at in range(row + 1, end):
                 now = period[at]
                 if now > last[f]:
                     break
                 if now > formed[f] and not np.isnan(excess[at]):
-                    found = beta[cells[f] + now - formed[f] - 1, group[member]]
-                    if not np.isnan(found):
-                        total[at] += found
-                        count[at] += 1
+                    given = beta[cells[f] + now - formed[f] - 1, group[row]]
+                    if not np.isnan(given):
+                        total[at - starts[security]] += given
+                        count[at - starts[security]] += 1
+        for row in range(starts[security], end):
+            if count[row - starts[security]] > 0:
+                found[row] = total[row - starts[security]] / count[row - starts[security]]
 
 
 @njit(cache=True)
@@ -239,13 +240,15 @@ def in_order(key, n_keys):  # pragma: no cover - compiled
 
 
 @njit(cache=True)
-def matched(starts, period, other_starts, other_period, other_of):  # pragma: no cover - compiled
-    """For each row of a table, the row of another of the same security and period, or −1; int64 (n_rows,).
+def matched(
+    starts, period, other_starts, other_period, other_of, values
+):  # pragma: no cover - compiled
+    """For each row of a table, the value of another's row of the same security and period, or NaN; (n_rows,).
 
     Both are sorted by security and period, and parted by `starts` and `other_starts`; `other_of`
     (n_securities,) is the place of each security in the other table, −1 where it has none.
     """
-    found = np.full(len(period), -1, np.int64)
+    found = np.full(len(period), np.nan)
     for security in range(len(starts) - 1):
         other = other_of[security]
         if other >= 0:
@@ -254,5 +257,5 @@ def matched(starts, period, other_starts, other_period, other_of):  # pragma: no
                 while at < stop and other_period[at] < period[row]:
                     at += 1
                 if at < stop and other_period[at] == period[row] and period[row] >= 0:
-                    found[row] = at
+                    found[row] = values[at]
     return found

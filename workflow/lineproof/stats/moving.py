@@ -48,6 +48,28 @@ def turnover(
     return found
 
 
+@njit(cache=True)
+def at_formation(
+    starts, group, weight, size, beta, last_row, last, n_groups
+):  # pragma: no cover - compiled
+    """Sums over the members of each group, (6, n_formations, n_groups): of members; of sizes, and how many are known;
+    of weights × betas, and of the weights of members that have one; of members whose `last_row` is before `last` of
+    their formation (n_formations,)."""
+    sums = np.zeros((6, len(last), n_groups))
+    for now in range(len(last)):
+        for member in range(starts[now], starts[now + 1]):
+            each = group[member]
+            sums[0, now, each] += 1
+            if not np.isnan(size[member]):
+                sums[1, now, each] += size[member]
+                sums[2, now, each] += 1
+            if not np.isnan(beta[member]):
+                sums[3, now, each] += weight[member] * beta[member]
+                sums[4, now, each] += weight[member]
+            sums[5, now, each] += last_row[member] < last[now]
+    return sums
+
+
 def moves(
     starts: np.ndarray, security: np.ndarray, group: np.ndarray, n_securities: int, n_groups: int
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:

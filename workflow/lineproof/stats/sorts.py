@@ -6,6 +6,7 @@ import math
 from collections.abc import Callable, Sequence
 
 import numpy as np
+from numba import njit
 
 Marks = np.ndarray | None  # which values set the breakpoints, bool (n,); None for all
 Rule = Callable[[np.ndarray, int, Marks], np.ndarray]  # the group of each value, from 1 on
@@ -46,7 +47,17 @@ def ranked_groups(values: np.ndarray, n_groups: int) -> np.ndarray:
 def by_quantiles(values: np.ndarray, n_groups: int, marks: Marks) -> np.ndarray:
     """Groups parted at the quantiles of the values marked, of which there is one at least."""
     set_by = values if marks is None else values[marks]
-    return np.searchsorted(breakpoints(set_by, n_groups), values, side="left") + 1
+    return _one_more_than_below(values, breakpoints(set_by, n_groups))
+
+
+@njit(cache=True, nogil=True)
+def _one_more_than_below(values, points):  # pragma: no cover - compiled
+    """One more than how many of a few points lie below each value, int64 (n,)."""
+    count = np.ones(len(values), np.int64)
+    for point in points:
+        for at in range(len(values)):
+            count[at] += point < values[at]
+    return count
 
 
 def by_equal_counts(values: np.ndarray, n_groups: int, marks: Marks) -> np.ndarray:

@@ -20,14 +20,20 @@ def by_size(lagged_size: np.ndarray) -> np.ndarray:
     return np.where(np.isnan(lagged_size), 0.0, lagged_size)
 
 
-def scaled_to_one(weight: np.ndarray, group: np.ndarray, n_groups: int) -> np.ndarray:
+@njit(cache=True)
+def scaled_to_one(weight, group, n_groups):  # pragma: no cover - compiled
     """Weights divided by their sum in each group; shape as `weight`.
 
     `group` numbers the cell (a portfolio in a period) of each row, 0 to n_groups − 1. A cell whose
     weights sum to zero keeps zero weights.
     """
-    total = np.bincount(group, weight, n_groups)[group]
-    return np.divide(weight, total, out=np.zeros_like(weight), where=total > 0)
+    total, scaled = np.zeros(n_groups), np.zeros(len(weight))
+    for row in range(len(weight)):
+        total[group[row]] += weight[row]
+    for row in range(len(weight)):
+        if total[group[row]] > 0:
+            scaled[row] = weight[row] / total[group[row]]
+    return scaled
 
 
 @njit(cache=True)
