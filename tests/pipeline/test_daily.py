@@ -16,6 +16,7 @@ from tests.pipeline.conftest import Project, copy_program
 
 from lineproof import store
 from lineproof.estimation import estimates_of
+from lineproof.formation_summary import describe_sorts
 from lineproof.forming import form_portfolios
 from lineproof.frames import contract
 from lineproof.gathering import gather_estimates
@@ -83,6 +84,9 @@ def made(tmp_path_factory: pytest.TempPathFactory) -> Made:
     index = json.loads(json.dumps(listed(subperiods, market, frequency)))
     periods = periods_of(frequency, market["date"].to_numpy())
     parts = [describe_sample(panel, betas, index, INTAKE, periods)]
+    formed = [table for each in sorts.values() for table in (each.formations, each.transitions)]
+    hold = wiring.options("describe_sample")["hold"]
+    parts += describe_sorts(hold, formed, panel["date"].max())
     parts += [
         price_subperiod(cut, subperiod=name, **wiring.options("price_subperiod"))
         for name, cut in cuts.items()

@@ -12,11 +12,15 @@ from typing import Any
 
 import numpy as np
 import pandas as pd
+from tests.unit import group_examples
 
+from lineproof.addresses import is_spread
 from lineproof.analyses import ANALYSES
+from lineproof.formation_summary import describe_formations
 from lineproof.frequency import FREQUENCIES
 from lineproof.paper.context import Context
 from lineproof.pricing import price_subperiod
+from lineproof.sorting import asset_names
 
 HOSTILE = ["<script>alert(1);", "=cmd()|'calc'!A0", "R&D_50%", "{$x^2$}#~\\", "[2] food", "*Star"]
 LONG = "The very long name of an index of everything that has ever been listed anywhere"
@@ -34,9 +38,10 @@ def cut(
     riskless = np.full(len(months), 0.003) + 0.0005 * random.standard_normal(len(months))
     excess = 0.004 * (1 - betas) + np.outer(market, betas) + 0.015 * random.standard_normal(shape)
     nothing = np.full(shape, np.nan)
+    formed = ranked & np.array([not is_spread(asset) for asset in assets])
     wide = {
         "excess_return": excess,
-        "n_members": 30 + random.integers(0, 5, shape) if ranked else nothing,
+        "n_members": np.where(formed, 30 + random.integers(0, 5, shape), np.nan),
         "mean_size": np.full(shape, 120.0) if ranked else nothing,
         "ante_beta": betas + 0.1 * random.standard_normal(shape) if ranked else nothing,
         "market_excess": np.repeat(market[:, None], len(assets), axis=1),
@@ -111,6 +116,16 @@ def sample_rows(
     return counts(rows)
 
 
+def group_rows(sort: str, assets: list[str], formed: list[str], seed: int) -> pd.DataFrame:
+    """The numbers of groups that are drawn at each of some formations."""
+    membership = group_examples.drawn_membership(assets, formed, seed)
+    tables = (
+        group_examples.formations(membership, assets, n_exits=1),
+        group_examples.transitions(membership),
+    )
+    return describe_formations(sort, *tables, hold=12, last=group_examples.date(formed[-1]))
+
+
 def facts(sorts: dict[str, dict[str, Any]], **changes: Any) -> dict[str, Any]:
     """What the paper knows of the study."""
     paper = {
@@ -150,20 +165,19 @@ def facts(sorts: dict[str, dict[str, Any]], **changes: Any) -> dict[str, Any]:
     }
 
 
-def ranked_facts(title: str = "10 groups, equally weighted", groups: int = 10) -> dict[str, Any]:
+def ranked_facts(
+    title: str = "10 groups, equally weighted", groups: int | list[int] = 10
+) -> dict[str, Any]:
     """What the paper knows of a ranked sort."""
+    numbers = groups if isinstance(groups, list) else [groups]
     return {
         "title": title,
-        "design": "single_window",
-        "groups": groups,
-        "weights": "equal",
+        "design": "single_window" if len(numbers) == 1 else "double_sort",
+        "groups": numbers,
+        "variables": ["size", "beta"][-len(numbers) :],
+        "formation": f"at the end of each December, securities are ranked into {numbers} groups",
+        "prior_betas": "that they are ranked on",
         "weights_label": "equally weighted, rebalanced monthly",
-        "form_month": 12,
-        "hold": 12,
-        "estimator_label": "ordinary least squares",
-        "window": 60,
-        "window_periods": "months",
-        "min_obs": 24,
     }
 
 
@@ -216,6 +230,10 @@ def study(
             )
         )
     frames.append(sample_rows(periods, intake, months))
+    years = [str(month) for month in months if month.month == 12]
+    for place, (name, (said, assets)) in enumerate(sorts.items()):
+        if said["design"] != "supplied":
+            frames.append(group_rows(name, [a for a in assets if a[0] == "p"], years, place))
     estimates = pd.concat(frames, ignore_index=True)[frames[0].columns]
     said = facts({name: about for name, (about, _) in sorts.items()}, **changes)
     return Context(estimates, periods, said, intake)
@@ -250,6 +268,18 @@ def usual() -> Context:
             ],
         ),
     }
+    return study(sorts, periods)
+
+
+@cache
+def double() -> Context:
+    """Three by four groups with their differences, and ten groups with theirs."""
+    assets = [*asset_names(3, 4), "spread", "spread-01", "spread-02", "spread-03"]
+    sorts = {
+        "double": (ranked_facts("3 × 4 groups", [3, 4]), assets),
+        "ten": (ranked_facts(), [*groups(10), "spread"]),
+    }
+    periods = [subperiod("full", "1990-01", "2009-12"), subperiod("late", "2000-01", "2009-12")]
     return study(sorts, periods)
 
 

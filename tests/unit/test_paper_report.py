@@ -147,7 +147,7 @@ def test_the_intake_in_short_and_where_the_rest_is() -> None:
         r'<tr><th scope="row">a return below −100 %</th><td class="count">15</td><td>set aside</td>'
     )
     assert re.search(row + r'<td class="count"><span [^>]*>720</span></td></tr>', section)
-    assert '<a href="#figure-coverage">Figure 3</a>' in section
+    assert '<a href="#figure-coverage">Figure 5</a>' in section
     assert "No security ever leaves" not in section
     survivors = {"number": 26, "label": "no security ever leaves", "answer": "flag", "n": 1}
     intake = {**examples.INTAKE, "faults": [survivors], "span": ["The study begins there & ends"]}

@@ -21,7 +21,7 @@ from lineproof.paper.specification import Cell, Column, Panel, Row, Table, expla
 from lineproof.paper.symbols import SYMBOLS, Phrase, said
 from lineproof.paper.tables import build, write_tables
 
-STUDIES = [examples.usual, examples.hostile, examples.many]
+STUDIES = [examples.usual, examples.hostile, examples.many, examples.double]
 
 
 @pytest.fixture(params=STUDIES, ids=lambda make: make.__name__)
@@ -95,7 +95,9 @@ def test_every_number_is_the_rounded_estimate_at_its_address(context: Context) -
         assert page
         for address, column, text in page:
             value = getattr(context.book.at(address), column)
-            assert bare(text) in {printed(value, form) for form in ("percent", "number", "p")} | {
+            assert bare(text) in {
+                printed(value, form) for form in ("percent", "number", "p", "share")
+            } | {
                 printed(value, "count"),
                 printed(value, "average"),
             }
@@ -235,7 +237,10 @@ def test_wide_sorts_wrap_into_blocks_of_ten() -> None:
 
 def test_other_sorts_follow_in_an_appendix() -> None:
     tables = build(examples.usual())
-    assert [table.number for table in tables.values()] == [*"123456", "A1", "A2", "A3", "A4"]
+    assert [table.number for table in tables.values()] == [
+        *"12345678",
+        *(f"A{n}" for n in range(1, 7)),
+    ]
     assert "ranked_portfolios-sectors" in tables
 
 

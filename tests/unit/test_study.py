@@ -643,3 +643,37 @@ def test_a_byte_that_is_not_utf8_is_said_with_its_line(tmp_path: Path) -> None:
     path.write_bytes(GOOD.replace("My study", "Meine Studie \xfc").encode("latin-1"))
     with pytest.raises(KnownProblem, match=r"mine\.yaml, line 1: a byte that is not UTF-8: 0xfc"):
         load_study(path)
+
+
+SUPPLIED = (
+    "  given: {design: supplied, file: bills.csv, columns: {asset: a, date: month, return: ret}}\n"
+)
+
+
+@pytest.mark.parametrize(
+    ("paper", "places"),
+    [
+        ("tables: [group_moves]", ["tables"]),
+        ("tables: [group_moves], figures: [moves, staying]", ["figures", "tables"]),
+        ("tables: [group_moves, sample], figures: [moves, coverage]", []),
+        ("tables: default", []),
+    ],
+)
+def test_supplied_assets_alone_leave_nothing_to_show_of_groups(
+    folder: Path, paper: str, places: list[str]
+) -> None:
+    text = changed(("  ten: {rank_on: monthly60}\n", SUPPLIED)) + f"paper: {{{paper}}}\n"
+    if not places:
+        assert list(load_study(write(folder, text)).sorts) == ["given"]
+        return
+    found = problems(folder, text)
+    assert len(found) == len(places)
+    for place, problem in zip(places, found, strict=True):
+        assert f"paper.{place}" in problem
+        assert "only what shows ranked groups" in problem
+
+
+def test_tables_of_groups_beside_supplied_main_assets_go_to_the_appendix(folder: Path) -> None:
+    text = changed(("  ten: {rank_on: monthly60}\n", SUPPLIED + "  ten: {rank_on: monthly60}\n"))
+    study = load_study(write(folder, text + "paper: {main: given, tables: [group_moves]}\n"))
+    assert Wiring(study).tables[0] == "tables/group_moves-ten.tex"

@@ -68,10 +68,10 @@ def test_a_shrunk_entry_is_made_from_another(tmp_path: Path) -> None:
     wiring = Wiring(study)
     assert list(wiring.beta_inputs("second")) == ["betas"]
     options = {"shrink": "fixed", "own": {"weight": 0.6, "to": 1}, "dated": "monthly"}
-    assert wiring.options("estimate_betas-second") == options
+    assert wiring.options("shrink_betas-second") == options
     said = facts(study)["sorts"]["ten"]
-    assert said["estimator_label"] == "ordinary least squares, shrunk to a fixed value"
-    assert (said["window"], said["min_obs"]) == (60, 24)
+    words = "of their last 60 months (ordinary least squares; at least 24 months; shrunk to a fixed value, 1,"
+    assert f"{words} with weight 0.6 on the estimate)" in said["formation"]
 
 
 @pytest.mark.parametrize(

@@ -23,6 +23,7 @@ SEPARATOR = "/"
 
 # Assets of rows that are about no test asset; a test asset so called would share an address with them.
 RESERVED_ASSETS = frozenset({"-", "all", "market", "riskless"})
+NEW, OUT = "new", "out"  # where a security comes from that was in no group, and where it goes
 SPREAD = "spread"  # high minus low of a sort; `spread-01` that of its first group
 
 

@@ -6,6 +6,7 @@ from typing import Any
 
 from lineproof import demo_files
 from lineproof.beta_checks import own_option_findings, shrinkage_findings, size_findings
+from lineproof.paper.exhibits import OF_RANKED
 from lineproof.schema import Finding, nearest
 from lineproof.sort_checks import has_size, sort_findings
 from lineproof.source_checks import source_findings
@@ -177,7 +178,7 @@ def _delisting_findings(content: dict[str, Any], file: YamlFile) -> list[Finding
 
 def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
     paper = content["paper"]
-    return [
+    found: list[Finding] = [
         (
             ("paper", key),
             f"{paper[key]!r} is not declared under {among}",
@@ -185,6 +186,23 @@ def _paper_findings(content: dict[str, Any], _: YamlFile) -> list[Finding]:
         )
         for key, among in (("main", "portfolios"), ("main_subperiod", "subperiods"))
         if paper.get(key) is not None and paper[key] not in content[among]
+    ]
+    return found or _of_ranked_findings(paper, content["portfolios"])
+
+
+def _of_ranked_findings(paper: dict[str, Any], portfolios: dict[str, Any]) -> list[Finding]:
+    """Tables or figures of ranked groups alone, where no test assets that they show are ranked."""
+    main = paper.get("main") or next(iter(portfolios))
+    shown = {"tables": list(portfolios), "figures": [main]}
+    return [
+        (
+            ("paper", key),
+            "only what shows ranked groups, and these test assets are supplied",
+            "add one that shows supplied test assets, or write default",
+        )
+        for key, sorts in shown.items()
+        if set() < set(paper[key]) <= OF_RANKED
+        if all(portfolios[sort]["design"] == "supplied" for sort in sorts)
     ]
 
 

@@ -3,14 +3,12 @@
 from __future__ import annotations
 
 from dataclasses import asdict
-from math import prod
 from typing import Any
 
-from lineproof.designs import WEIGHTS, Design
-from lineproof.estimators import ESTIMATORS, SHRINKAGES
-from lineproof.formation_words import formation_in_words
+from lineproof.designs import WEIGHTS
+from lineproof.formation_words import formation_in_words, prior_betas, variables
 from lineproof.frequency import FREQUENCIES
-from lineproof.study import BetaSpec, SortSpec, Study
+from lineproof.study import SortSpec, Study
 
 
 def facts(study: Study) -> dict[str, Any]:
@@ -48,33 +46,10 @@ def _sort_facts(sort: SortSpec, study: Study) -> dict[str, Any]:
     ranked = sort.ranked
     if ranked is None:
         return said
-    said |= {
-        "groups": int(prod(ranked.groups)),
-        "weights": ranked.weights,
+    return said | {
+        "groups": list(ranked.groups),
+        "variables": variables(sort, study),
+        "formation": formation_in_words(sort, study),
+        "prior_betas": prior_betas(sort, study),
         "weights_label": WEIGHTS[ranked.weights].label.format(period=FREQUENCIES[study.frequency]),
-        "form_month": ranked.form_month,
-        "hold": ranked.hold,
     }
-    if sort.estimates:
-        betas = study.betas[(*ranked.ante_betas, *sort.estimates)[0]]
-        said |= {
-            "estimator_label": _estimator_label(betas),
-            "window": betas.window,
-            "window_periods": FREQUENCIES[betas.returns].counted,
-            "min_obs": betas.min_obs,
-        }
-    if not _is_plain(ranked, sort.estimates):
-        said["formation"] = formation_in_words(sort, study)
-    return said
-
-
-def _is_plain(ranked: Design, estimates: tuple[str, ...]) -> bool:
-    """Whether groups are parted at the quantiles of one estimate of beta, once a year."""
-    on_one = ranked.rank_on == ranked.ante_betas == estimates and len(estimates) == 1
-    usual = (ranked.form_each, ranked.rule, ranked.breakpoints) == ("year", "quantiles", None)
-    return on_one and usual and not (ranked.in_blocks or ranked.overlap)
-
-
-def _estimator_label(betas: BetaSpec) -> str:
-    label = ESTIMATORS[betas.estimator].label
-    return f"{label}, {SHRINKAGES[betas.shrunk['shrink']].label}" if betas.shrunk else label

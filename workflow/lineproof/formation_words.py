@@ -1,21 +1,20 @@
-"""How groups are ranked and formed, in words, where the design is not the plain one on betas at quantiles each year."""
+"""How groups are ranked and formed, in words."""
 
 from __future__ import annotations
 
 from calendar import month_name
 
-from lineproof.designs import RULES, Design
-from lineproof.estimators import ESTIMATORS
-from lineproof.frequency import FREQUENCIES
+from lineproof.designs import ASSIGNED, RULES, Design
+from lineproof.estimator_words import window_in_words
 from lineproof.study import SortSpec, Study
 
 _COLUMNS = {
-    "": "the beta",
-    "beta": "the beta",
-    "alpha": "the alpha",
-    "se_beta": "the standard error of the beta",
-    "r2": "the R²",
-    "residual_sd": "the residual standard deviation",
+    "": "beta",
+    "beta": "beta",
+    "alpha": "alpha",
+    "se_beta": "standard error of beta",
+    "r2": "R²",
+    "residual_sd": "residual standard deviation",
 }
 
 
@@ -23,51 +22,87 @@ def formation_in_words(sort: SortSpec, study: Study) -> str:
     """A clause that starts with when groups are formed and ends with how long they are held."""
     ranked = sort.ranked
     assert ranked is not None
-    first, *second = (_variable(each, study) for each in ranked.rank_on)
-    on = first
+    on, *second = (_ranked_on(each, study) for each in ranked.rank_on)
     if second:
         on += (
             f" and, {'inside each group' if ranked.dependent else 'apart from it'}, on {second[0]}"
         )
+    dated = f", as of {ranked.estimation} months before," if ranked.in_blocks else ""
     count = " × ".join(map(str, ranked.groups))
     parts = [
-        f"at the end of {_when(ranked)}, securities are ranked on {on} and "
-        f"{RULES[ranked.rule].label} into {count} groups",
-        f"held for {ranked.hold} months"
-        + (", the groups held at once averaged" if ranked.overlap else ""),
+        f"{_when(ranked)}, securities are ranked{dated} on {on} and {RULES[ranked.rule].label} "
+        f"into {count} groups{_breakpoints(ranked)}",
+        f"held for {ranked.hold} months",
     ]
-    if ranked.in_blocks:
-        parts[0] = parts[0].replace(
-            "ranked on", f"ranked, as of {ranked.estimation} months before, on", 1
-        )
-        parts.append("with ex-ante betas taken anew each year")
-    if ranked.breakpoints:
-        from lineproof.intake.screens import (
-            screen_label,
-        )  # heavy, and the Snakefile comes through here
-
-        parts[0] += f" (breakpoints of those with {screen_label(ranked.breakpoints)})"
+    if ranked.overlap:
+        parts.append("the groups held at once averaged")
+    if ranked.assign_betas != "none":
+        parts.append(f"with {ASSIGNED[ranked.assign_betas]} assigned to each member")
     return ", ".join(parts)
 
 
+def variables(sort: SortSpec, study: Study) -> list[str]:
+    """What each variable that a sort ranks on is called in a table; the names of betas tell apart what would be one."""
+    assert sort.ranked is not None
+    found = [_called(each, study) for each in sort.ranked.rank_on]
+    if len(set(found)) == len(found):
+        return found
+    tables = (each.partition(".")[0] for each in sort.ranked.rank_on)
+    return [f"{name} {table}" for name, table in zip(found, tables, strict=True)]
+
+
+def prior_betas(sort: SortSpec, study: Study) -> str | None:
+    """Which betas of the members the ex-ante beta of a group is the mean of, or None where it has none."""
+    ranked = sort.ranked
+    assert ranked is not None
+    if not ranked.ante_betas:
+        return None
+    first, *later = ranked.ante_betas
+    on_it = {first, f"{first}.beta"} & set(ranked.rank_on) and not ranked.in_blocks
+    found = (
+        "that they are ranked on"
+        if on_it
+        else f"of their last {window_in_words(study.betas[first])}"
+    )
+    if ranked.renews:
+        found += ", taken anew at the end of each year"
+    for each in later:
+        found += f", then of their last {window_in_words(study.betas[each])}"
+    return found
+
+
+def _called(asked: str, study: Study) -> str:
+    table, _, column = asked.partition(".")
+    return _COLUMNS[column] if table in study.betas else asked
+
+
+def _ranked_on(asked: str, study: Study) -> str:
+    table = asked.partition(".")[0]
+    if table not in study.betas:
+        return asked
+    return f"the {_called(asked, study)} of their last {window_in_words(study.betas[table])}"
+
+
+def _breakpoints(ranked: Design) -> str:
+    if not ranked.breakpoints:
+        return ""
+    from lineproof.intake.screens import screen_label  # heavy, and the Snakefile comes through here
+
+    return f" (breakpoints of those with {screen_label(ranked.breakpoints)})"
+
+
 def _when(ranked: Design) -> str:
+    start = ""
+    if ranked.first_formation:
+        year, month = ranked.first_formation.split("-")
+        start = f", from {month_name[int(month)]} {year} on"
     if ranked.form_each == "month":
-        return "each month"
+        return f"at the end of each month{start}"
     if ranked.form_each == "quarter":
         first = (ranked.form_month - 1) % 3 + 1
         *early, last = (month_name[first + step] for step in (0, 3, 6, 9))
-        return f"each {', '.join(early)} and {last}"
-    every = f"every {ranked.hold // 12} years, in" if ranked.in_blocks else "each"
-    return f"{every} {month_name[ranked.form_month]}"
-
-
-def _variable(asked: str, study: Study) -> str:
-    table, _, column = asked.partition(".")
-    if table not in study.betas:
-        return asked
-    betas = study.betas[table]
-    periods = FREQUENCIES[betas.returns].counted
-    return (
-        f"{_COLUMNS[column]} of their last {betas.window} {periods} "
-        f"({ESTIMATORS[betas.estimator].label}; at least {betas.min_obs} {periods})"
-    )
+        return f"at the end of each {', '.join(early)} and {last}{start}"
+    month = month_name[ranked.form_month]
+    if ranked.in_blocks:
+        return f"every {ranked.hold // 12} years, at the end of {month}{start}"
+    return f"at the end of each {month}{start}"

@@ -10,7 +10,7 @@ import numpy as np
 import pandas as pd
 
 from lineproof import catalog
-from lineproof.addresses import SPREAD
+from lineproof.addresses import NEW, OUT, SPREAD
 from lineproof.designs import WEIGHTS, Design
 from lineproof.periods import ABSENT
 from lineproof.ranking import PanelRows, Ranked
@@ -19,7 +19,6 @@ from lineproof.stats.moving import at_formation, moves, turnover
 from lineproof.stats.weights import scaled_to_one
 
 RETURN_COLUMNS = ["asset", "date", "excess_return", "n_members", "mean_size", "ante_beta"]
-NEW, OUT = "new", "out"  # where a security comes from that was in no group, and where it goes
 
 
 @dataclass(frozen=True)

@@ -9,9 +9,9 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from lineproof.addresses import COLUMNS, DTYPES
 from lineproof.calendar import month_name, month_number, within_months
 from lineproof.periods import ABSENT, Months, Periods
+from lineproof.plain_estimates import plain_estimates
 from lineproof.securities import coded, starts_of
 
 
@@ -35,7 +35,8 @@ def describe_sample(
         rows += _subperiod_rows(sample, subperiod)
     no_totals = panel["total_return"].isna().all()
     too_few = f"too few {periods.noun}s with returns in the subperiod"
-    return _as_estimates(rows, _NO_TOTALS if no_totals else too_few)
+    frame = pd.DataFrame(rows, columns=_ROW)
+    return plain_estimates(frame.assign(reason=_NO_TOTALS if no_totals else too_few))
 
 
 _NO_TOTALS = "the returns are in excess of a riskless rate that is not known"
@@ -138,12 +139,3 @@ def _subperiod_rows(sample: _Sample, subperiod: dict[str, Any]) -> list[Row]:
     }
     name = subperiod["name"]
     return [(name, "sample", "panel", "all", *each, n_periods) for each in values.items()]
-
-
-def _as_estimates(rows: list[Row], why_undefined: str) -> pd.DataFrame:
-    frame = pd.DataFrame(rows, columns=_ROW).assign(sort="-", se_kind="-", n_assets=0)
-    frame["estimate"] = frame["estimate"].astype(float)
-    undefined = frame["estimate"].isna()
-    frame["status"] = np.where(undefined, "undefined", "ok")
-    frame["reason"] = np.where(undefined, why_undefined, "")
-    return frame.reindex(columns=COLUMNS).astype(DTYPES)

@@ -19,6 +19,7 @@ from typing import Any
 
 from lineproof import store
 from lineproof.analyses import ANALYSES
+from lineproof.designs import Design
 from lineproof.digests import Digests, ModulesNamed
 from lineproof.facts import facts
 from lineproof.paper import exhibits
@@ -109,7 +110,10 @@ class Wiring:
                 "hac_lag": study.hac_lag,
                 "analyses": list(ANALYSES) if study.analyses == "all" else list(study.analyses),
             },
-            "describe_sample": {"frequency": study.frequency},
+            "describe_sample": {
+                "frequency": study.frequency,
+                "hold": {name: spec.hold for name, spec in self.ranked.items()},
+            },
             "write_paper": {"facts": facts(study)},
         }
         if study.demo is not None:
@@ -229,6 +233,17 @@ class Wiring:
             for kind in ("members", "returns", "formations", "transitions", "assigned")
         ]
         return [*(f"betas/{name}.parquet" for name in self.study.betas), *sorts]
+
+    @property
+    def ranked(self) -> dict[str, Design]:
+        """How each set of ranked test assets is formed, by name."""
+        return {name: s.ranked for name, s in self.study.sorts.items() if s.ranked is not None}
+
+    @property
+    def formed(self) -> list[str]:
+        """Formations and transitions of each ranked set, in this order."""
+        kinds = ("formations", "transitions")
+        return [f"portfolios/{name}/{kind}.parquet" for name in self.ranked for kind in kinds]
 
     @property
     def main_betas(self) -> list[str]:

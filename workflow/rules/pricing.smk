@@ -1,4 +1,4 @@
-# Prices each subperiod, describes the sample, and gathers every number into one table.
+# Prices each subperiod, describes the sample and the groups, and gathers every number into one table.
 
 
 rule price_subperiod:
@@ -26,6 +26,7 @@ rule describe_sample:
         intake=after_cutting("data/intake.json"),
         index=after_cutting("subperiods/index.json"),
         betas=after_cutting([f"betas/{name}.parquet" for name in wiring.main_betas]),
+        formed=after_cutting(wiring.formed),
         options=wiring.options_file("describe_sample"),
         pins=wiring.pins,
         code=wiring.code("describe_sample"),

@@ -55,11 +55,13 @@ class Book:
         names = [name for name in Number.__dataclass_fields__ if name != "address"]
         self._columns = {name: estimates[name].tolist() for name in names}
         self._assets: dict[tuple[str, str], dict[str, None]] = {}
+        self._spreads: dict[tuple[str, str], dict[str, None]] = {}
         self._ran: set[tuple[str, str, str]] = set()
         for sort, subperiod, analysis, _, asset, *_ in keys:
             self._ran.add((sort, subperiod, analysis))
-            if sort != "-" and asset not in RESERVED_ASSETS and not is_spread(asset):
-                self._assets.setdefault((sort, subperiod), {})[asset] = None
+            if "-" not in (sort, subperiod) and asset not in RESERVED_ASSETS:
+                kept = self._spreads if is_spread(asset) else self._assets
+                kept.setdefault((sort, subperiod), {})[asset] = None
 
     def at(self, *parts: str) -> Number:
         """The number at an address, given whole or as its seven parts.
@@ -85,9 +87,20 @@ class Book:
         """Names of the test assets of a sort in a subperiod, without spreads, in the order of the estimates."""
         return list(self._assets.get((sort, subperiod), ()))
 
+    def spreads(self, sort: str, subperiod: str) -> list[str]:
+        """Names of the differences of groups of a sort in a subperiod, in the order of the estimates."""
+        return list(self._spreads.get((sort, subperiod), ()))
+
     def months(self) -> list[str]:
         """Months ("1950-01") for which the sample's coverage is reported, in order."""
-        start = SEPARATOR.join(["-", "-", "sample", "month", ""])
+        return self._months("-", "sample")
+
+    def formations(self, sort: str) -> list[str]:
+        """Months ("1950-12") in which a sort forms groups, in order."""
+        return self._months(sort, "formations")
+
+    def _months(self, sort: str, analysis: str) -> list[str]:
+        start = SEPARATOR.join([sort, "-", analysis, "month", ""])
         found = (address for address in self._places if address.startswith(start))
         return sorted({address.split(SEPARATOR)[4] for address in found})
 

@@ -9,6 +9,7 @@ from typing import Any
 
 import pandas as pd
 
+from lineproof.addresses import is_spread
 from lineproof.frequency import Frequency
 from lineproof.paper.book import Book
 
@@ -116,7 +117,33 @@ class Context:
         found = (name for each in self.periods for name in self.book.assets(sort, each.name))
         return list(dict.fromkeys(found))
 
+    def groups(self, sort: str) -> list[int]:
+        """Number of groups by variable; none where the assets are supplied."""
+        return self.facts["sorts"][sort].get("groups", [])
+
+    def group(self, sort: str, asset: str) -> tuple[int, ...]:
+        """The number of a group by variable, from 1: `p02-05` is (2, 5); empty for what is no group."""
+        found = re.fullmatch(r"p(\d+)(?:-(\d+))?", asset) if self.ranked(sort) else None
+        return tuple(int(part) for part in found.groups() if part) if found else ()
+
     def label(self, sort: str, asset: str) -> str:
-        """An asset's name for readers: ranked groups p01, p02, … are called 1, 2, …"""
-        group = re.fullmatch(r"p0*(\d+)", asset) if self.ranked(sort) else None
-        return group[1] if group else asset
+        """An asset's name for readers: groups of one variable Low, 2, …, High, of two 1 / 1 to 5 / 5."""
+        numbers = self.group(sort, asset)
+        if len(numbers) == 1:
+            return group_name(numbers[0], self.groups(sort)[0])
+        if numbers:
+            return " / ".join(map(str, numbers))
+        return HIGH_LOW if self.ranked(sort) and is_spread(asset) else asset
+
+    def spreads(self, sort: str) -> list[str]:
+        """Differences of groups that a sort has in any subperiod, the overall one first."""
+        found = (name for each in self.periods for name in self.book.spreads(sort, each.name))
+        return list(dict.fromkeys(found))
+
+
+HIGH_LOW = "High − low"
+
+
+def group_name(number: int, count: int) -> str:
+    """The name of a group among so many, from the lowest on."""
+    return {1: "Low", count: "High"}.get(number, str(number))

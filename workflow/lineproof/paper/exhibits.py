@@ -12,6 +12,12 @@ TABLES: dict[str, Entry] = {
     "ranked_portfolios": Entry(
         "lineproof.paper.portfolio_tables:ranked_portfolios", "The ranked portfolios"
     ),
+    "groups_at_formation": Entry(
+        "lineproof.paper.group_tables:groups_at_formation", "Groups at formation"
+    ),
+    "group_moves": Entry(
+        "lineproof.paper.group_tables:group_moves", "Where members go by the next formation"
+    ),
     "alphas_betas": Entry(
         "lineproof.paper.portfolio_tables:alphas_betas", "Alphas and betas by subperiod"
     ),
@@ -26,7 +32,9 @@ TABLES: dict[str, Entry] = {
     ),
 }
 # Made once for each set of test assets; every other table shows all sets, or none.
-PER_SORT = {"ranked_portfolios", "alphas_betas"}
+PER_SORT = {"ranked_portfolios", "groups_at_formation", "group_moves", "alphas_betas"}
+# Made of groups that are ranked, so that there is none of supplied test assets; tables and figures share no such name.
+OF_RANKED = {"groups_at_formation", "group_moves", "moves", "staying"}
 
 # The note is a template of `symbols.said` that the report fills in.
 FIGURES: dict[str, Entry] = {
@@ -43,6 +51,18 @@ FIGURES: dict[str, Entry] = {
         "Alphas by subperiod",
         "Alphas of the test assets ({assets}) with intervals of {confidence}{percent} from "
         "standard errors that are {alpha_errors}. Filled: zero lies outside.",
+    ),
+    "moves": Entry(
+        "lineproof.paper.group_figures:moves",
+        "Where members go by the next formation",
+        "Per cent of the members of each group ({assets}) by their group at the next formation, mean "
+        "over formations; out: in no group. The fuller the colour, the larger the share.",
+    ),
+    "staying": Entry(
+        "lineproof.paper.group_figures:staying",
+        "Who stays in a group",
+        "At each formation ({assets}), the part of all members that are in the group they were in, and "
+        "that are in no group any more; below, the fewest and most members of a group.",
     ),
     "coverage": Entry(
         "lineproof.paper.figures:coverage",
@@ -75,13 +95,13 @@ def tables(facts: Mapping[str, Any]) -> list[Exhibit]:
     names = chosen(facts["paper"]["tables"], TABLES)
     found = [
         Exhibit(name, name, str(number), main, TABLES[name])
-        for number, name in enumerate(names, start=1)
+        for number, name in enumerate(_made(facts, main, names), start=1)
     ]
     appended = [
         (name, sort)
         for sort in facts["sorts"]
         if sort != main
-        for name in names
+        for name in _made(facts, sort, names)
         if name in PER_SORT
     ]
     for number, (name, sort) in enumerate(appended, start=1):
@@ -95,8 +115,14 @@ def figures(facts: Mapping[str, Any]) -> list[Exhibit]:
     names = chosen(facts["paper"]["figures"], FIGURES)
     return [
         Exhibit(name, name, str(number), main, FIGURES[name])
-        for number, name in enumerate(names, start=1)
+        for number, name in enumerate(_made(facts, main, names), start=1)
     ]
+
+
+def _made(facts: Mapping[str, Any], sort: str, names: list[str]) -> list[str]:
+    """Those of the names that a set of test assets has."""
+    supplied = facts["sorts"][sort]["design"] == "supplied"
+    return [name for name in names if not (supplied and name in OF_RANKED)]
 
 
 def table_files(facts: Mapping[str, Any]) -> list[str]:

@@ -17,7 +17,7 @@ from lineproof.paper.context import Context, Subperiod
 from lineproof.paper.palette import LIGHT
 
 PERCENT = 100.0
-_STEPS = [1, 2, 5, 10]  # between ticks, at any power of ten
+STEPS = [1, 2, 5, 10]  # between ticks, at any power of ten
 _POINT = {"marker": "o", "ls": "none", "ms": 3.2, "color": LIGHT["ink"], "mew": 0}
 _MARKET = {
     "marker": "D",
@@ -27,8 +27,8 @@ _MARKET = {
     "mec": LIGHT["ink"],
     "mew": 0.9,
 }
-_FITTED = {"color": LIGHT["first"], "lw": 1.4}
-_THEORY = {"color": LIGHT["second"], "lw": 1.4, "ls": (0, (4, 2))}
+FITTED = {"color": LIGHT["first"], "lw": 1.4}
+THEORY = {"color": LIGHT["second"], "lw": 1.4, "ls": (0, (4, 2))}
 _OUTSIDE = {
     "marker": "o",
     "ms": 3.6,
@@ -64,9 +64,9 @@ def market_lines(context: Context, sort: str) -> Figure:
         _draw_lines(axes, context, sort, period, (left, right))
         axes.set_xlim(left, right)
     _one_scale(panels)
-    _key(
+    key(
         figure,
-        [("Test asset", _POINT), ("Market", _MARKET), ("Fitted line", _FITTED), ("CAPM", _THEORY)],
+        [("Test asset", _POINT), ("Market", _MARKET), ("Fitted line", FITTED), ("CAPM", THEORY)],
     )
     return figure
 
@@ -86,7 +86,7 @@ def alphas(context: Context, sort: str) -> Figure:
     _one_scale(panels)
     _name_assets(figure, panels, context, sort, assets)
     zero = "zero at the level of the tests"
-    _key(figure, [(f"Differs from {zero}", _OUTSIDE), (f"Cannot be told from {zero}", _INSIDE)])
+    key(figure, [(f"Differs from {zero}", _OUTSIDE), (f"Cannot be told from {zero}", _INSIDE)])
     return figure
 
 
@@ -96,7 +96,7 @@ def coverage(context: Context, sort: str) -> Figure:
     axes = figure.add_subplot()
     months = context.book.months()
     years = [int(month[:4]) + (int(month[5:]) - 1) / 12 for month in months]
-    for term, line in (("n_securities", _FITTED), ("n_with_beta", _THEORY)):
+    for term, line in (("n_securities", FITTED), ("n_with_beta", THEORY)):
         keys = [("-", "-", "sample", "month", month, term, "-") for month in months]
         counts = [context.book.at(*each).estimate for each in keys]
         start = next((place for place, count in enumerate(counts) if count), len(counts))
@@ -104,10 +104,10 @@ def coverage(context: Context, sort: str) -> Figure:
     if years:
         axes.set_xlim(years[0], years[-1] + 1 / 12)
     axes.set_ylim(bottom=0)
-    axes.xaxis.set_major_locator(MaxNLocator(8, integer=True, steps=_STEPS))
-    axes.yaxis.set_major_locator(MaxNLocator(5, integer=True, steps=_STEPS))
+    axes.xaxis.set_major_locator(MaxNLocator(8, integer=True, steps=STEPS))
+    axes.yaxis.set_major_locator(MaxNLocator(5, integer=True, steps=STEPS))
     axes.set_ylabel("Securities")
-    _key(figure, [("Alive", _FITTED), ("With a beta", _THEORY)])
+    key(figure, [("Alive", FITTED), ("With a beta", THEORY)])
     return figure
 
 
@@ -128,8 +128,8 @@ def _grid(periods: list[Subperiod], x_label: str, y_label: str) -> tuple[Figure,
             continue
         axes.set_title(_title(periods[place].title, n_columns))
         axes.tick_params(labelbottom=place + n_columns >= count)
-        axes.yaxis.set_major_locator(MaxNLocator(5, steps=_STEPS))
-        axes.xaxis.set_major_locator(MaxNLocator(4, steps=_STEPS))
+        axes.yaxis.set_major_locator(MaxNLocator(5, steps=STEPS))
+        axes.xaxis.set_major_locator(MaxNLocator(4, steps=STEPS))
     figure.supxlabel(x_label, fontsize="medium")
     figure.supylabel(y_label, fontsize="medium")
     return figure, panels[:count]
@@ -158,7 +158,7 @@ def _draw_lines(
         return
     market = book.at(sort, period.name, "market_line", "-", "all", "market_mean", "-")
     if market.defined:
-        axes.plot(ends, [PERCENT * market.estimate * end for end in ends], **_THEORY, zorder=1)
+        axes.plot(ends, [PERCENT * market.estimate * end for end in ends], **THEORY, zorder=1)
         axes.plot(1.0, PERCENT * market.estimate, **_MARKET, zorder=4)
     start = (sort, period.name, "market_line", paper["line_weights"], "all")
     intercept, slope = (
@@ -166,7 +166,7 @@ def _draw_lines(
     )
     if slope.defined:
         heights = [PERCENT * (intercept.estimate + slope.estimate * end) for end in ends]
-        axes.plot(ends, heights, **_FITTED, zorder=2)
+        axes.plot(ends, heights, **FITTED, zorder=2)
 
 
 def _alpha(context: Context, sort: str, period: Subperiod, asset: str) -> Number | None:
@@ -190,15 +190,22 @@ def _name_assets(
     figure: Figure, panels: list[Axes], context: Context, sort: str, assets: list[str]
 ) -> None:
     labels = [context.label(sort, asset) for asset in assets]
-    if context.ranked(sort):
+    names = context.facts["sorts"][sort].get("variables", [])
+    if len(names) == 2:
+        step = context.groups(sort)[1]  # the first of each group of the first variable
+        figure.supxlabel(
+            f"Group by {names[0]} / by {names[1]}, from low to high", fontsize="medium"
+        )
+    elif names:
+        labels = [str(*context.group(sort, asset)) for asset in assets]  # words have no room
         step = -(-len(assets) // 10)
-        figure.supxlabel("Group, from lowest to highest beta", fontsize="medium")
+        figure.supxlabel(f"Group, from lowest to highest {names[0]}", fontsize="medium")
     else:
         step = 1
     shown = range(1, len(assets) + 1, step)
     for axes in panels:
-        names = [_text(_shortened(labels[at - 1], 16)) for at in shown]
-        axes.set_xticks(list(shown), names, rotation=0 if context.ranked(sort) else 90)
+        ticks = [_text(_shortened(labels[at - 1], 16)) for at in shown]
+        axes.set_xticks(list(shown), ticks, rotation=0 if context.ranked(sort) else 90)
 
 
 def _one_scale(panels: Iterable[Axes]) -> None:
@@ -208,7 +215,7 @@ def _one_scale(panels: Iterable[Axes]) -> None:
         axes.autoscale(axis="y")
 
 
-def _key(figure: Figure, entries: list[tuple[str, dict]]) -> None:
+def key(figure: Figure, entries: list[tuple[str, dict]]) -> None:
     handles = [Line2D([], [], **look, label=label) for label, look in entries]
     figure.legend(handles=handles, loc="outside upper center", ncols=len(handles))
 

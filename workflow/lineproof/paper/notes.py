@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from lineproof.analyses import ALPHA_ERRORS, ANALYSES, LINE_ERRORS, LINE_WEIGHTS
-from lineproof.paper.context import MONTHS, Context, Subperiod
+from lineproof.paper.context import Context, Subperiod
 from lineproof.paper.rounding import share
 from lineproof.paper.symbols import Phrase, said
 from lineproof.quotings import BUILDS
@@ -36,39 +36,53 @@ def formation(context: Context, sort: str) -> Phrase:
     facts = context.facts["sorts"][sort]
     if not context.ranked(sort):
         return said("{title}: test assets supplied as return series.", title=facts["title"])
-    if "formation" in facts:
-        return said(
-            "{title}: {formation}; returns are {weights}.",
-            title=facts["title"],
-            formation=facts["formation"],
-            weights=facts["weights_label"],
-        )
     return said(
-        "{title}: at the end of each {month}, securities are ranked on the beta of their last "
-        "{window} {periods} "
-        "({estimator}; at least {least} {periods}) and parted at its quantiles into {groups} groups, "
-        "held for "
-        "{hold} months; returns are {weights}. Group 1 has the lowest betas.",
+        "{title}: {formation}; returns are {weights}.",
         title=facts["title"],
-        month=MONTHS[facts["form_month"] - 1],
-        window=str(facts["window"]),
-        periods=facts["window_periods"],
-        estimator=facts["estimator_label"],
-        least=str(facts["min_obs"]),
-        groups=str(facts["groups"]),
-        hold=str(facts["hold"]),
+        formation=facts["formation"],
         weights=facts["weights_label"],
+    )
+
+
+def low_and_high(context: Context, sort: str) -> list[Phrase]:
+    """What the names of a sort's groups mean."""
+    if not context.ranked(sort):
+        return []
+    names = context.facts["sorts"][sort]["variables"]
+    return [said("Low and High: lowest and highest {variables}.", variables=" or ".join(names))]
+
+
+def groups(context: Context, sort: str) -> list[Phrase]:
+    """What the names of a sort's groups, and of the differences between them, mean."""
+    found = low_and_high(context, sort)
+    if context.spreads(sort):
+        outer, *inner = context.facts["sorts"][sort]["variables"]
+        within = f" inside each {outer} group; Mean: of all {outer} groups" if inner else ""
+        found.append(
+            said(
+                "High − low: the return of the highest {of} group less that of the lowest{within}.",
+                of=(inner or [outer])[0],
+                within=within,
+            )
+        )
+    return found
+
+
+def prior_betas(context: Context, sort: str) -> Phrase:
+    """Of which betas the ex-ante betas are the means."""
+    return said(
+        "Prior {beta}: mean by weight of the members’ betas, those {which}.",
+        which=context.facts["sorts"][sort]["prior_betas"],
     )
 
 
 def formations(context: Context, sorts: list[str]) -> list[Phrase]:
     """How several sets of test assets are made, without saying twice what they share."""
     found: list[Phrase] = []
-    said_of: dict[tuple, str] = {}
+    said_of: dict[str, str] = {}
     for sort in sorts:
         facts = context.facts["sorts"][sort]
-        own = {"title", "weights", "weights_label"}
-        shared = tuple((key, facts[key]) for key in facts if key not in own)
+        shared = facts.get("formation")
         if context.ranked(sort) and shared in said_of:
             found.append(
                 said(
@@ -79,7 +93,8 @@ def formations(context: Context, sorts: list[str]) -> list[Phrase]:
                 )
             )
             continue
-        said_of[shared] = facts["title"]
+        if shared is not None:
+            said_of[shared] = facts["title"]
         found.append(formation(context, sort))
     return found
 

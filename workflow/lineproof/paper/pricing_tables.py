@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from lineproof.paper import notes
+from lineproof.paper import layout, notes
 from lineproof.paper.book import Number
 from lineproof.paper.context import Context, Subperiod
 from lineproof.paper.specification import EMPTY, Cell, Column, Panel, Row, Table, cell
@@ -101,7 +101,7 @@ def _panels(
 def _panel_title(context: Context, sort: str, place: int, count: int) -> Phrase:
     if count == 1:
         return Phrase([context.title(sort)])
-    return said("Panel {letter}: {title}", letter=chr(ord("A") + place), title=context.title(sort))
+    return layout.lettered(place, Phrase([context.title(sort)]))
 
 
 def _notes_on_sorts(context: Context, analysis: str, panels: tuple[Panel, ...]) -> list[Phrase]:
@@ -109,6 +109,8 @@ def _notes_on_sorts(context: Context, analysis: str, panels: tuple[Panel, ...]) 
         return [notes.not_run(analysis)]
     shown = [panel.key for panel in panels]
     made = notes.formations(context, shown)
+    if any(context.spreads(sort) for sort in shown):
+        made.append(said("Differences of groups are no test assets here."))
     gone = [note for sort in shown for note in notes.without_assets(context, sort, context.periods)]
     return [*made, *gone]
 

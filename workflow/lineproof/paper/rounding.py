@@ -31,6 +31,7 @@ class Format:
 FORMATS: dict[str, Format] = {
     "percent": Format(places=2, shift=2),
     "fine_percent": Format(places=4, shift=2),
+    "share": Format(places=1, shift=2),
     "number": Format(places=2),
     "p": Format(places=3, bounded=True),
     "average": Format(places=1, grouped=True),
