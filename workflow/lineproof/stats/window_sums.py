@@ -1,4 +1,4 @@
-"""Sums over rolling windows by blocks, and the least squares that follow from them, compiled.
+"""Sums over rolling windows by blocks, compiled, and the fit of each window from them.
 
 The observations of a security are cut into blocks of as many periods as a window has. Prefix sums run forwards from
 the start of a block, suffix sums backwards from its end, so that any window is one suffix of a block plus one prefix
@@ -7,9 +7,9 @@ behind once it has left the window, as it would with running sums, and nothing l
 not even in the last bit.
 
 What the sums hold of the factors alone depends on the date only while a window has no gap: it is then taken from one
-table by date, made for all securities together (`by_date`). What follows from the sums is worked out for many windows
-at a time, a number after the other, which the processor does for several at once. A window of which centring or a
-close fit would cost digits is fitted again from its own observations (`window_alone`).
+table by date, made for all securities together (`window_dates`). What follows from the sums is worked out for many
+windows at a time (`window_solve`). A window of which centring or a close fit would cost digits is fitted again from
+its own observations (`window_alone`).
 """
 
 from __future__ import annotations
@@ -17,90 +17,15 @@ from __future__ import annotations
 import numpy as np
 from numba import njit, prange
 
-from lineproof.stats.window_alone import (
-    ALL,
-    FITTED,
-    MOMENTS,
-    NEIGHBOURS,
-    SLOPES,
-    fit_alone,
-    of_neighbours,
-)
+from lineproof.stats.window_alone import ALL, FITTED, fit_alone
+from lineproof.stats.window_dates import invert
+from lineproof.stats.window_solve import solve
 
-# Centring within the window and taking off the fit both cancel digits. The block sums are kept while more than this
-# share of the raw sum of squares is left after both: 3 digits lost at most.
-_SHARE_LEFT = 1e-3
 _AT_ONCE = 256  # windows, whose numbers then stay in the fastest memory
 _PARTS = 64  # shares of the work, of which each has its own scratch
 
 _compiled = njit(cache=True, error_model="numpy")
 _parallel = njit(cache=True, error_model="numpy", parallel=True)
-
-
-@_parallel
-def by_date(factors, wanted, powers):  # pragma: no cover - compiled
-    """What whole windows that end at the wanted dates share, a column a date: the share left by centring (0 where there
-    is no such window, or it needs care), the sum of weights, means, and centred products with their inverse."""
-    k = factors.shape[1]
-    out = np.zeros((2 + k + 2 * k * k, len(factors)))
-    for date in prange(len(factors)):
-        _one_date(factors, wanted[date], powers, date, out)
-    return out
-
-
-@_compiled
-def _one_date(factors, is_wanted, powers, date, out):  # pragma: no cover - compiled
-    n, k = len(powers) - 1, factors.shape[1]
-    weight, first = 0.0, date - n + 1
-    if not is_wanted:
-        return
-    for row in range(n):
-        weight += powers[n - 1 - row]
-        for i in range(k):
-            if np.isnan(factors[first + row, i]):
-                return
-    mean, raw, inverse = np.empty(k), np.empty(k), np.empty((k, k))
-    for i in range(k):
-        total, raw[i], base = 0.0, 0.0, factors[first, i]
-        for row in range(n):
-            x = factors[first + row, i]
-            total += powers[n - 1 - row] * (x - base)
-            raw[i] += powers[n - 1 - row] * x * x
-        mean[i] = base + total / weight
-        out[2 + i, date] = mean[i]
-    for i in range(k):
-        for j in range(i + 1):
-            product = 0.0
-            for row in range(n):
-                u, v = factors[first + row, i] - mean[i], factors[first + row, j] - mean[j]
-                product += powers[n - 1 - row] * u * v
-            inverse[i, j], inverse[j, i] = product, product
-            out[2 + k + i * k + j, date], out[2 + k + j * k + i, date] = product, product
-    out[0, date], out[1, date] = _invert(inverse, raw), weight
-    for i in range(k):
-        for j in range(k):
-            out[2 + k + k * k + i * k + j, date] = inverse[i, j]
-
-
-@_compiled
-def _invert(matrix, raw):  # pragma: no cover - compiled
-    """Invert a positive definite matrix in place; the smallest pivot relative to `raw`, 0 where there is none."""
-    k, left = len(raw), 1.0
-    for p in range(k):
-        pivot = matrix[p, p]
-        if not pivot > _SHARE_LEFT * raw[p]:
-            return 0.0
-        left = min(left, pivot / raw[p])
-        matrix[p, p] = 1.0
-        for j in range(k):
-            matrix[p, j] /= pivot
-        for i in range(k):
-            if i != p:
-                factor = matrix[i, p]
-                matrix[i, p] = 0.0
-                for j in range(k):
-                    matrix[i, j] -= factor * matrix[p, j]
-    return left
 
 
 @_compiled
@@ -239,7 +164,7 @@ def _fit_one(
                 period, dates, powers, ends, first, number[low:high], n_obs[low:high],
                 spans, low, whole[low:high], block, sums, held, at, k,
             )  # fmt: skip
-            _solve(what, sum_of, held, out, offset + low, state[low:high], k)
+            solve(what, sum_of, held, out, offset + low, state[low:high], k)
         for w in range(low, high):
             if which != ALL or state[w] != FITTED:
                 part = slice(spans[0, w], spans[1, w] + 1)
@@ -413,121 +338,4 @@ def _centre(total, mean, products, inverse, raw):  # pragma: no cover - compiled
             if i == j:
                 raw[i] = total[c]
             c += 1
-    return weight, _invert(inverse, raw)
-
-
-# The loops below each read and write few arrays: only such ones does the compiler make work on several numbers at once.
-
-
-@_compiled
-def _solve(what, sum_of, held, out, offset, state, k):  # pragma: no cover - compiled
-    """Write what is asked for of each window; `state` is not `FITTED` where that would have cost too many digits."""
-    m = len(state)
-    sum_y, square_y, s = held[0], held[1], held[2 : 2 + k]
-    left, weight = held[2 + k], held[3 + k]
-    mean, products = held[4 + k : 4 + 2 * k], held[4 + 2 * k : 4 + 2 * k + k * k]
-    inverse = held[4 + 2 * k + k * k : 4 + 2 * k + 2 * k * k]
-    mean_y, syy, explained, rest, n_obs = held[-5], held[-4], held[-3], held[-2], held[-1]
-    for w in range(m):
-        mean_y[w] = sum_y[w] / weight[w]
-    for w in range(m):
-        syy[w] = square_y[w] - mean_y[w] * sum_y[w]
-        explained[w] = 0.0
-    for i in range(k):
-        _take_product(s[i], mean[i], sum_y, m)
-    for i in range(k):
-        for j in range(k):
-            _add_product(explained, s[i], inverse[i * k + j], s[j], m)
-    for w in range(m):
-        rest[w] = syy[w] - explained[w]
-    for w in range(m):
-        # the smaller of two shares, each times what is left, above its least
-        kept = left[w] * rest[w] > _SHARE_LEFT * syy[w]
-        kept &= rest[w] > _SHARE_LEFT * square_y[w]
-        kept &= (left[w] > 0) & (syy[w] > 0)
-        state[w] = FITTED if kept else 0
-    if what == SLOPES:
-        _slopes(
-            sum_of, n_obs, weight, mean, inverse, s, mean_y, syy, explained, rest, out, offset, m, k
-        )
-    elif what == MOMENTS:
-        for line, values in enumerate((mean[0], mean_y, products[0], s[0], syy, rest)):
-            for w in range(m):
-                out[line, offset + w] = values[w]
-    elif what == NEIGHBOURS:
-        _neighbours(n_obs, weight, mean, products, s, mean_y, syy, out, offset, state)
-
-
-@_compiled
-def _take_product(total, a, b, m):  # pragma: no cover - compiled
-    for w in range(m):
-        total[w] -= a[w] * b[w]
-
-
-@_compiled
-def _add_product(total, a, b, c, m):  # pragma: no cover - compiled
-    for w in range(m):
-        total[w] += a[w] * b[w] * c[w]
-
-
-@_compiled
-def _slopes(
-    sum_of, n_obs, weight, mean, inverse, s, mean_y, syy, explained, rest, out, offset, m, k
-):  # pragma: no cover - compiled
-    """Beta, alpha, its standard error, R² and the residuals' standard deviation, a line each."""
-    high = offset + m
-    beta, alpha, se = out[0, offset:high], out[1, offset:high], out[2, offset:high]
-    r2, sd = out[3, offset:high], out[4, offset:high]
-    for w in range(m):
-        beta[w] = 0.0
-        alpha[w] = mean_y[w]
-    for w in range(m):
-        se[w] = 0.0
-    for i in range(k):
-        slope = sd  # for a while
-        for w in range(m):
-            slope[w] = 0.0
-        for j in range(k):
-            line, of_s, both = inverse[i * k + j], s[j], sum_of[i] * sum_of[j]
-            for w in range(m):
-                slope[w] += line[w] * of_s[w]
-            for w in range(m):
-                se[w] += both * line[w]
-        of_beta = sum_of[i]
-        for w in range(m):
-            beta[w] += of_beta * slope[w]
-        _take_product(alpha, slope, mean[i], m)
-    variance = explained  # once R² is known
-    for w in range(m):
-        r2[w] = min(max(explained[w] / syy[w], 0.0), 1.0)
-    for w in range(m):
-        variance[w] = rest[w] / (n_obs[w] - k - 1)
-    for w in range(m):
-        se[w] = np.sqrt(se[w] * variance[w])
-    for w in range(m):
-        sd[w] = np.sqrt(variance[w] * (n_obs[w] / weight[w]))
-
-
-@_compiled
-def _neighbours(
-    n_obs, weight, mean, products, s, mean_y, syy, out, offset, state
-):  # pragma: no cover - compiled
-    """The same for the sum of three single slopes over 1 + 2ρ."""
-    single, squares = np.empty(3), np.empty((3, 3))
-    for w in range(len(state)):
-        place = offset + w
-        for i in range(3):
-            single[i] = s[i, w]
-            for j in range(3):
-                squares[i, j] = products[3 * i + j, w]
-        beta, spread = of_neighbours(squares, single)
-        if not spread > 0:
-            state[w] = 0
-            continue
-        own = single[1] / squares[1, 1]
-        rest = syy[w] - single[1] * own + (beta - own) ** 2 * squares[1, 1]
-        variance = rest / (n_obs[w] - 2)
-        out[0, place], out[1, place] = beta, mean_y[w] - beta * mean[1, w]
-        out[2, place] = np.sqrt(spread * variance)
-        out[3, place] = min(max((syy[w] - rest) / syy[w], 0.0), 1.0)
-        out[4, place] = np.sqrt(variance * (n_obs[w] / weight[w]))
+    return weight, invert(inverse, raw)

@@ -1,6 +1,6 @@
 """Least squares over rolling windows: the only loop over windows in the project.
 
-The arithmetic stands in `window_sums`, and for single windows in `window_alone`.
+The arithmetic stands in `window_sums` and the modules that it names.
 """
 
 from __future__ import annotations
@@ -10,7 +10,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from lineproof.stats.window_alone import ALL, FITTED, MOMENTS, SLOPES, TOO_FEW
-from lineproof.stats.window_sums import by_date, count_windows, fit_blocks, parts_of
+from lineproof.stats.window_dates import by_date
+from lineproof.stats.window_sums import count_windows, fit_blocks, parts_of
 
 _N_OUT = {MOMENTS: 6}  # lines of numbers, 5 for the others
 
