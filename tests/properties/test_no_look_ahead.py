@@ -20,6 +20,7 @@ from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 from tests.properties.drawn_designs import DRAWN, SECTORS, estimates, options, with_sector
 from tests.properties.random_market import DATES, WINDOWS, draw_market
+from tests.thorough import examples
 
 from lineproof import store
 from lineproof.designs import DESIGNS, WEIGHTS, Design
@@ -33,7 +34,7 @@ SEEDS = st.integers(0, 2**32 - 1)
 # The place of the cut in the calendar: late enough for a first formation and a return after it in
 # any month of the year, early enough for later values to change.
 CUTS = st.floats(0.5, 1.0, exclude_max=True)
-FEW = settings(max_examples=15, deadline=None, derandomize=True)
+FEW = settings(max_examples=examples(15), deadline=None, derandomize=True)
 Market = tuple[pd.DataFrame, pd.DataFrame]
 
 

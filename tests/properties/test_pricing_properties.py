@@ -7,6 +7,7 @@ import pandas as pd
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from tests.thorough import examples
 
 from lineproof.addresses import address
 from lineproof.analyses import ANALYSES
@@ -24,7 +25,7 @@ from lineproof.stats.market_line import (
 from lineproof.stats.time_series import Regression, regress, standard_errors
 
 SEEDS = st.integers(0, 2**32 - 1)
-MANY = settings(max_examples=40, deadline=None, derandomize=True)
+MANY = settings(max_examples=examples(40), deadline=None, derandomize=True)
 FEW = settings(max_examples=25, deadline=None, derandomize=True)
 # Well-conditioned random samples through another order of operations.
 CLOSE = 1e-7

@@ -7,12 +7,13 @@ from dataclasses import dataclass
 import numpy as np
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from tests.thorough import examples
 
 from lineproof.stats.betas import RollingBetas, rolling_ols
 from lineproof.stats.windows import Sample, WindowEnds
 
 SEEDS = st.integers(0, 2**32 - 1)
-MANY = settings(max_examples=60, deadline=None, derandomize=True)
+MANY = settings(max_examples=examples(60), deadline=None, derandomize=True)
 FIELDS = ("beta", "alpha", "se_beta", "r2", "residual_sd")
 
 

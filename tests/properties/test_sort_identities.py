@@ -17,6 +17,7 @@ from hypothesis import strategies as st
 from tests.properties.drawn_designs import DRAWN, NOT_RANKED, draw_design, estimates, with_sector
 from tests.properties.random_market import DATES, draw_market
 from tests.properties.slow_sort import SlowSort
+from tests.thorough import examples
 
 from lineproof.addresses import is_spread
 from lineproof.designs import DESIGNS, WEIGHTS, Design
@@ -26,7 +27,7 @@ from lineproof.problems import KnownProblem
 from lineproof.sorting import Sorted, asset_names, sort_ranked
 
 SEEDS = st.integers(0, 2**32 - 1)
-FEW = settings(max_examples=4, deadline=None, derandomize=True)
+FEW = settings(max_examples=examples(4), deadline=None, derandomize=True)
 # Sums of at most 30 returns or sizes in another order; returns are of the order of 0.1.
 CLOSE = {"rtol": 1e-12, "atol": 1e-14}
 RETURNS = ["excess_return", "n_members", "mean_size", "ante_beta"]
