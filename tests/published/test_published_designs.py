@@ -20,8 +20,9 @@ from lineproof.estimation import estimates_of
 from lineproof.forming import form_portfolios
 from lineproof.frames import contract
 from lineproof.sorting import Sorted
+from lineproof.specs import Study
 from lineproof.stats.sorts import by_equal_counts, group_sizes
-from lineproof.study import Study, load_study
+from lineproof.study import load_study
 from lineproof.validation import validate_returns
 from lineproof.wiring import Wiring
 

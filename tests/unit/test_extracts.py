@@ -17,7 +17,8 @@ import pytest
 from lineproof.extracts import fetch_extracts
 from lineproof.intake.reading import open_files
 from lineproof.problems import KnownProblem
-from lineproof.study import Study, load_study
+from lineproof.specs import Study
+from lineproof.study import load_study
 from lineproof.wiring import Wiring
 
 PASSWORD = "Rook-and-Gull"

@@ -8,7 +8,8 @@ from pathlib import Path
 import pytest
 
 from lineproof.planning import Most, most_steps
-from lineproof.study import Study, SubperiodSpec, load_study
+from lineproof.specs import Study, SubperiodSpec
+from lineproof.study import load_study
 
 RULES = [(), ("estimate",), ("sort",), ("subperiod",), ()]
 

@@ -7,7 +7,8 @@ from pathlib import Path
 import pytest
 
 from lineproof.problems import KnownProblem
-from lineproof.study import Study, load_study
+from lineproof.specs import Study
+from lineproof.study import load_study
 
 STUDY = """\
 study: {name: mine, title: My study}

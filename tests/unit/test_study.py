@@ -9,7 +9,8 @@ from pathlib import Path
 import pytest
 
 from lineproof.problems import KnownProblem
-from lineproof.study import IntakeSpec, load_study
+from lineproof.specs import IntakeSpec
+from lineproof.study import load_study
 from lineproof.wiring import Wiring
 
 GOOD = textwrap.dedent(

@@ -9,7 +9,8 @@ import pytest
 
 from lineproof.facts import facts
 from lineproof.problems import KnownProblem
-from lineproof.study import Study, load_study
+from lineproof.specs import Study
+from lineproof.study import load_study
 from lineproof.wiring import Wiring
 
 TEXT = textwrap.dedent(

@@ -24,7 +24,7 @@ from lineproof.intake.signed import made_with
 from lineproof.intake.stopping import counted
 from lineproof.paper.rounding import printed
 from lineproof.problems import KnownProblem, Problem
-from lineproof.study import Study
+from lineproof.specs import Study
 from lineproof.wiring import Wiring
 
 WIDTH = 96  # of a line, unless a name or a row of the data is longer

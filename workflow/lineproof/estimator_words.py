@@ -6,7 +6,7 @@ from typing import Any
 
 from lineproof.estimators import ESTIMATORS, SHRINKAGES
 from lineproof.frequency import FREQUENCIES
-from lineproof.study import BetaSpec
+from lineproof.specs import BetaSpec
 
 
 def window_in_words(betas: BetaSpec) -> str:

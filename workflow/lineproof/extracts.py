@@ -19,7 +19,7 @@ from lineproof.problems import KnownProblem
 if TYPE_CHECKING:
     import pyarrow as pa
 
-    from lineproof.study import Source, Study
+    from lineproof.specs import Source, Study
 
 # Types that are kept and sorted as they are; everything else is taken as text, numeric too, so that no digit is lost.
 _KEPT = {"int2", "int4", "int8", "float4", "float8", "bool", "date", "timestamp", "timestamptz"}

@@ -8,7 +8,7 @@ from typing import Any
 from lineproof.designs import WEIGHTS
 from lineproof.formation_words import formation_in_words, prior_betas, variables
 from lineproof.frequency import FREQUENCIES
-from lineproof.study import SortSpec, Study
+from lineproof.specs import SortSpec, Study
 
 
 def facts(study: Study) -> dict[str, Any]:

@@ -6,7 +6,7 @@ from calendar import month_name
 
 from lineproof.designs import ASSIGNED, RULES, Design
 from lineproof.estimator_words import window_in_words
-from lineproof.study import SortSpec, Study
+from lineproof.specs import SortSpec, Study
 
 _COLUMNS = {
     "": "beta",

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
-from lineproof.study import Study, SubperiodSpec
+from lineproof.specs import Study, SubperiodSpec
 
 _YEARS = 40  # taken for the span of data that have not been read
 

@@ -24,7 +24,7 @@ from lineproof.digests import Digests, ModulesNamed
 from lineproof.facts import facts
 from lineproof.paper import exhibits
 from lineproof.provenance import WORKFLOW, code_of
-from lineproof.study import BetaSpec, Study
+from lineproof.specs import BetaSpec, Study
 
 
 @dataclass(frozen=True)
