@@ -52,6 +52,14 @@ def load(folder: Path, entry: str) -> Study:
             "equal counts have no breakpoints",
         ),
         ("rank_on: size, assign_betas: ex_ante", "groups have no ex-ante betas"),
+        ("rank_on: m60, groups: 5.0", "found 5.0"),
+        (
+            "rank_on: m60, ante_betas: [m60, m84]",
+            "2 ex-ante betas by year, for a hold of 12 months",
+        ),
+        ("rank_on: m60, form_each: month, form_month: 6", "have no form_month"),
+        ("design: double_sort, rank_on: [m60, m60.beta], groups: [2, 2]", "'m60' stands twice"),
+        ("rank_on: m84.r2, form_each: quarter, form_month: 13", "13 is out of range"),
     ],
 )
 def test_what_does_not_fit(tmp_path: Path, entry: str, expected: str) -> None:
@@ -59,6 +67,14 @@ def test_what_does_not_fit(tmp_path: Path, entry: str, expected: str) -> None:
         load(tmp_path, entry)
     assert expected in str(caught.value)
     assert len(caught.value.problems) == 1
+
+
+def test_a_name_of_two_things_cannot_be_ranked_on(tmp_path: Path) -> None:
+    (tmp_path / "r.csv").write_text("id,month,ret,cap,ex\n")
+    text = STUDY.format(entry="rank_on: size").replace("m84:", "size:")
+    (tmp_path / "mine.yaml").write_text(text)
+    with pytest.raises(KnownProblem, match="'size' is a column of the returns, and of betas too"):
+        load_study(tmp_path / "mine.yaml")
 
 
 @pytest.mark.parametrize(

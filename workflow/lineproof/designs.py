@@ -38,6 +38,7 @@ RULES: dict[str, Entry] = {
 }
 
 FORM_EACH = {"month": 1, "quarter": 3, "year": 12}  # how often groups are formed, in months
+HOLD_BLOCKS = 48  # months for which blocks are held unless said: Fama and MacBeth 1973
 # Betas of groups that their members can get.
 ASSIGNED = {
     "none": "no betas",

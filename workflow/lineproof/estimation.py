@@ -133,6 +133,8 @@ def estimate_betas(
     estimation = Estimation(market, factors, **options)
     for panel in panels:
         table = estimation.of(panel)
+        if table.empty:
+            continue
         codes, names = coded(table["security"])
         texts = pa.DictionaryArray.from_arrays(codes, pa.array(names.tolist(), pa.string()))
         yield {"betas": table.assign(security=texts.cast(pa.string()).to_pandas().astype("str"))}

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import Any
 
-from lineproof.designs import FORM_EACH
+from lineproof.designs import FORM_EACH, HOLD_BLOCKS
 from lineproof.schema import Finding, nearest
 from lineproof.yamlfile import Place, YamlFile
 
@@ -55,7 +55,7 @@ def sort_findings(content: dict[str, Any], file: YamlFile) -> list[Finding]:
         if design != "supplied":
             found += _lengths(place, options, given)
             found += _references(place, options, content)
-            found += _holding(place, options)
+            found += _holding(place, options, given)
     return found
 
 
@@ -90,6 +90,7 @@ def _references(
                 said,
                 nearest(asked, known) if betas else "declare it under betas",
             )
+    yield from _unclear(place, options, betas, columns)
     for asked in _listed(options.get("ante_betas", [])):
         if asked not in betas:
             said = f"{asked!r} is not declared under betas"
@@ -116,11 +117,30 @@ def _references(
         yield (*place, "assign_betas"), said, "name some under ante_betas"
 
 
-def _holding(place: Place, options: dict[str, Any]) -> Iterator[Finding]:
-    hold = options.get("hold")
-    if hold is None:
-        return
+def _unclear(
+    place: Place, options: dict[str, Any], betas: list[str], columns: list[str]
+) -> Iterator[Finding]:
+    """Names that stand for two things, and two names that stand for one."""
+    ranked_on = _listed(options.get("rank_on", []))
+    for asked in ranked_on:
+        if asked in columns and asked.partition(".")[0] in betas:
+            said = f"{asked!r} is a column of the returns, and of betas too"
+            yield (*place, "rank_on"), said, "rename the entry under betas"
+    meant = [asked.removesuffix(".beta") for asked in ranked_on]
+    if len(set(meant)) < len(meant):
+        yield (*place, "rank_on"), f"{meant[0]!r} stands twice", "name two variables"
+
+
+def _holding(place: Place, options: dict[str, Any], given: dict[str, Any]) -> Iterator[Finding]:
     step = FORM_EACH[options["form_each"]]
+    hold = options.get("hold", HOLD_BLOCKS if options["design"] == "three_windows" else step)
+    if options["form_each"] == "month" and "form_month" in given:
+        said = "groups that are formed each month have no form_month"
+        yield (*place, "form_month"), said, "remove it, or set form_each: quarter or year"
+    n_betas, years = len(_listed(options.get("ante_betas", []))), max(-(-hold // 12), 1)
+    if n_betas > years:
+        said = f"{n_betas} ex-ante betas by year, for a hold of {hold} months"
+        yield (*place, "ante_betas"), said, f"give at most {years}"
     if options["design"] == "three_windows":
         if hold % 12:
             yield (*place, "hold"), f"{hold} months are no whole years", "give a multiple of 12"

@@ -95,7 +95,7 @@ def form_groups(
     ranked = rank(rows, ranks, antes, _marks(rows, design), design)
     if len(ranked.month) == 0:
         groups = int(np.prod(design.groups))
-        raise _not_formed(f"{design.name}.groups", *_too_few(groups, ranked.most))
+        raise _unformed(design, groups, ranked.most)
     held_rows = _held_rows(rows, antes, design)
     held = hold(held_rows, ranked.formations)
     if not held.n_members.any():
@@ -111,15 +111,25 @@ def asset_names(*groups: int) -> list[str]:
     return formed_tables.asset_names(groups)
 
 
-def _too_few(groups: int, most: int) -> tuple[str, str]:
-    """What was found where at most so many securities can be ranked in any formation month, and what to change."""
+def _unformed(design: Design, groups: int, most: int) -> KnownProblem:
+    """The error where at most so many securities can be ranked in any formation month."""
     if most == 0:
-        found = "no security has an estimate and passes the screens in any formation month"
-        return found, "lower min of the betas, lengthen the data, or check the screens"
+        since = f" from {design.first_formation} on" if design.first_formation else ""
+        found = f"no security has an estimate and passes the screens in any formation month{since}"
+        change = "lower min of the betas, lengthen the data, or check the screens"
+        if since:
+            return _not_formed(f"{design.name}.first_formation", found, f"form earlier, {change}")
+        return _not_formed(f"{design.name}.groups", found, change)
+    if design.breakpoints is not None and most >= groups:
+        found = (
+            "too few securities meet the condition to part the groups by, in every formation month"
+        )
+        return _not_formed(f"{design.name}.breakpoints", found, "check the condition")
     whose = "1 security" if most == 1 else f"{most} securities"
     found = f"{groups} groups, but at most {whose} can be ranked in a formation month"
     fewer = "use fewer groups, or check the screens"
-    return found, fewer if most > 1 else "deliver more securities, or check the screens"
+    change = fewer if most > 1 else "deliver more securities, or check the screens"
+    return _not_formed(f"{design.name}.groups", found, change)
 
 
 def _not_formed(option: str, found: str, change: str) -> KnownProblem:
@@ -156,7 +166,10 @@ class _Columns:
     names: np.ndarray
 
 
-_AS_TABLED = {"return": "total_return"}
+def _returns(panel: pd.DataFrame) -> pd.Series:
+    """Total returns, or those in excess where a study knows no others."""
+    total = panel["total_return"]
+    return panel["excess_return"] if total.isna().all() else total
 
 
 def _marks(rows: PanelRows, design: Design) -> np.ndarray | None:
@@ -166,7 +179,7 @@ def _marks(rows: PanelRows, design: Design) -> np.ndarray | None:
     column = design.breakpoints["column"]
     values, texts = {}, {}
     if column != "security":
-        series = rows.panel[_AS_TABLED.get(column, column)]
+        series = rows.panel[column] if column != "return" else _returns(rows.panel)
         if pd.api.types.is_numeric_dtype(series):
             values["return_" if column == "return" else column] = series.to_numpy(dtype=float)
         else:

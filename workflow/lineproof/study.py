@@ -8,7 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from lineproof.cross_checks import CHECKS, beta_returns
-from lineproof.designs import FORM_EACH, Design
+from lineproof.designs import FORM_EACH, HOLD_BLOCKS, Design
 from lineproof.estimators import OWN_OPTIONS
 from lineproof.intake.formats import given_files, members
 from lineproof.problems import KnownProblem, Problem
@@ -173,7 +173,6 @@ _SAME_IN_DESIGN = (
     *("weights", "form_month", "form_each", "rule", "dependent", "overlap", "spread"),
     "assign_betas",
 )
-_HOLD_BLOCKS = 48  # months: Fama and MacBeth 1973
 
 
 def _design(name: str, options: dict[str, Any], betas: dict[str, Any]) -> Design:
@@ -188,7 +187,7 @@ def _design(name: str, options: dict[str, Any], betas: dict[str, Any]) -> Design
         ante_betas=_several(options["ante_betas"])
         if "ante_betas" in options
         else tuple(tables[:1]),
-        hold=options.get("hold", _HOLD_BLOCKS if blocks else FORM_EACH[options["form_each"]]),
+        hold=options.get("hold", HOLD_BLOCKS if blocks else FORM_EACH[options["form_each"]]),
         in_blocks=blocks,
         renews=blocks or len(_several(options.get("ante_betas", ""))) > 1,
         estimation=options["estimation"] if blocks else 0,

@@ -285,10 +285,12 @@ def _gather(
     m, n_sums, n_dates = len(number), sums.shape[1], dates.shape[1]
     of_prefix, of_suffix, count = held[-2], held[-3], held[-1]  # the first two for a while
     oldests, lasts = spans[0, low : low + m], spans[1, low : low + m]
+    runs_on = True
     for w in range(m):
         oldest, last = oldests[w], lasts[w]
         end = ends[number[w] - first]
         at[w], count[w] = max(min(end, n_dates - 1), 0), n_obs[w]
+        runs_on &= at[w] == at[0] + w
         of_prefix[w], of_suffix[w] = powers[end - period[last]], 0.0
         if block[0, last] != oldest:
             of_suffix[w] = powers[end - block[1, oldest]]
@@ -298,7 +300,6 @@ def _gather(
         prefix, suffix, line = sums[0, c], sums[1, c], held[c]
         for w in range(m):
             line[w] = of_prefix[w] * prefix[lasts[w]] + of_suffix[w] * suffix[oldests[w]]
-    runs_on = at[m - 1] - at[0] == m - 1
     for c in range(len(dates)):
         dated, line = dates[c], held[2 + k + c]
         begins = at[0]
