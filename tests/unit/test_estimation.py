@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 import numpy as np
 import pandas as pd
 import pytest
 
-from lineproof.estimation import estimates_of
+from lineproof import store
+from lineproof.estimation import estimate_betas, estimates_of
 from lineproof.frames import BETAS, contract
 from lineproof.problems import KnownProblem
 
@@ -91,6 +94,19 @@ def test_no_estimate_at_all_says_what_to_change() -> None:
     with pytest.raises(KnownProblem) as flat:
         estimates_of(panel_of({"A": series}), market_of(np.full(40, 0.1)), **OPTIONS)
     assert "the market's return is the same in every month" in str(flat.value)
+
+
+def test_pieces_without_an_estimate_are_passed_over(tmp_path: Path) -> None:
+    market, series = draw(8)
+    young, old = panel_of({"A": series.iloc[:5]}), panel_of({"B": series})
+    pieces = estimate_betas([young, old, young.assign(security="C")], market_of(market), **OPTIONS)
+    store.write_together(pieces, {"betas": tmp_path / "betas.parquet"})
+    found = store.read_table(tmp_path / "betas.parquet")
+    assert found["security"].unique().tolist() == ["B"]
+    alone = estimate_betas([young], market_of(market), **OPTIONS)
+    with pytest.raises(KnownProblem, match="no security has 6 months of returns"):
+        store.write_together(alone, {"betas": tmp_path / "none.parquet"})
+    assert not (tmp_path / "none.parquet").exists()
 
 
 DAYS = pd.bdate_range("2001-01-02", "2001-08-31", unit="ms").delete([30, 31, 77])

@@ -296,6 +296,20 @@ def test_too_many_groups() -> None:
     assert "portfolios.two.groups: 5 groups, but at most 4 securities" in str(told.value)
     with pytest.raises(KnownProblem, match="no security has an estimate"):
         form_tiny(form_month=6)
+    with pytest.raises(
+        KnownProblem, match=r"first_formation: .* in any formation month from 2001-05 on"
+    ):
+        form_tiny(first_formation="2001-05")
+    with pytest.raises(KnownProblem, match="breakpoints: too few securities meet the condition"):
+        form_tiny(breakpoints={"column": "size", "at_least": 1e9})
+
+
+def test_a_condition_on_returns_uses_those_that_are_known() -> None:
+    """At formation each returns one half; without a riskless rate only excess returns are known."""
+    condition = {"column": "return", "at_least": 0.4}
+    panel = tiny_panel().assign(total_return=np.nan)
+    found = form(panel, betas_at("2000-12", BETAS), breakpoints=condition)
+    assert found.members["security"].tolist() == ["A", "B", "C", "D"]
 
 
 def test_nothing_after_the_last_formation() -> None:
