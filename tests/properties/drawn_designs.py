@@ -46,6 +46,7 @@ def _common(rng: np.random.Generator) -> dict[str, Any]:
         "rule": rule,
         "breakpoints": some,
         "form_month": int(rng.integers(1, 13)),
+        "first_formation": [None, None, "1990-10", "1991-01", "1991-02"][rng.integers(5)],
         "spread": bool(rng.random() < 0.5),
         "assign_betas": str(rng.choice(["none", "ex_ante"])),
     }

@@ -15,6 +15,12 @@ from lineproof.designs import FORM_EACH, Design
 from lineproof.periods import Periods
 
 
+def number_of(month: str) -> int:
+    """A month as it is numbered here, from `YYYY-MM`."""
+    year, number = map(int, month.split("-"))
+    return 12 * year + number - 1
+
+
 @dataclass
 class SlowSort:
     """What `sort_ranked` should find. A period is counted by its place in the calendar, the dates of the market."""
@@ -89,14 +95,16 @@ class SlowSort:
         for month, place in self.closing.items():
             if (month - self.design.form_month + 1) % FORM_EACH[self.design.form_each]:
                 continue
+            if self.design.first_formation and month < number_of(self.design.first_formation):
+                continue
             values = self.ranked_on(place)
             if len(values) < prod(self.design.groups):
                 continue
-            first = month if first is None else first
-            if self.design.in_blocks and (month - first) % self.design.hold:
+            if self.design.in_blocks and first and (month - first) % self.design.hold:
                 continue
             groups = self.grouped(values)
             if groups is not None:
+                first = first or month
                 found[place] = groups
         return found
 

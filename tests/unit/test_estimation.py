@@ -96,6 +96,17 @@ def test_no_estimate_at_all_says_what_to_change() -> None:
     assert "the market's return is the same in every month" in str(flat.value)
 
 
+def test_what_an_estimator_cannot_use_is_said() -> None:
+    market, series = draw(5)
+    panel, table = panel_of({"A": series}), market_of(market)
+    sample = {"name": "short", "window": 12}
+    with pytest.raises(KnownProblem, match="12 months of returns that downside can use within 12"):
+        estimates_of(panel, table, estimator="downside", min_obs=12, **sample)
+    brief = {"estimator": "exponential", "min_obs": 6, "own": {"half_life": 0.01}}
+    with pytest.raises(KnownProblem, match="does not vary among the months that count"):
+        estimates_of(panel, table, **brief, **sample)
+
+
 def test_pieces_without_an_estimate_are_passed_over(tmp_path: Path) -> None:
     market, series = draw(8)
     young, old = panel_of({"A": series.iloc[:5]}), panel_of({"B": series})

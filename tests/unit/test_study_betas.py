@@ -94,6 +94,11 @@ def test_a_shrunk_entry_is_made_from_another(tmp_path: Path) -> None:
             ".volatility_window",
             "volatility_window 70 is longer than the window of 60",
         ),
+        (
+            "estimator: correlation_volatility, volatility_window: 8, volatility_min: 6, overlap: 9",
+            ".overlap",
+            "overlap 9 is longer than the volatility_window of 8",
+        ),
         ("from: firts, shrink: cross_section", ".from", "'firts' is not declared under betas"),
         ("from: second, shrink: cross_section", ".from", "'second' is shrunk itself"),
         ("from: first", "", "the key 'shrink' is missing"),

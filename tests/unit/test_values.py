@@ -19,6 +19,7 @@ from lineproof.intake.values import (
     as_digits,
     check_date_format,
     missing_codes,
+    settled_texts,
     to_days,
     to_numbers,
 )
@@ -148,6 +149,25 @@ def test_decimal_commas(written: str, value: float) -> None:
     numbers = to_numbers(text(written), CODES, decimal="comma")
     assert numbers.value.tolist() == [value]
     assert not numbers.is_text.any()
+
+
+@pytest.mark.parametrize(
+    ("decimal", "given", "kept"),
+    [
+        ("comma", "2,500", "2.500"),
+        ("comma", "0,5", "0.5"),
+        ("comma", "1.234,5", "1,234.5"),  # read with thousands later
+        ("comma", "Ports, Mills", "Ports, Mills"),
+        ("comma", "-99,0", ""),
+        ("point", "2,500", "2,500"),
+        ("point", "-99.0", ""),
+        ("point", "-99.5", "-99.5"),
+        ("point", "inf", "inf"),
+        ("point", "", ""),
+    ],
+)
+def test_texts_of_further_columns(decimal: str, given: str, kept: str) -> None:
+    assert settled_texts([given, "x"], ["-99"], decimal) == [kept, "x"]
 
 
 @pytest.mark.parametrize("written", ["0.05", "1.234", "1,2,3", "1 234", ",", "-1.000,5"])

@@ -78,6 +78,9 @@ def size_findings(place: Place, options: dict[str, Any], content: dict[str, Any]
             said = f"volatility_min {fewest} is longer than the volatility_window of {short}"
             change = "lower volatility_min or lengthen volatility_window"
             found.append(((*place, "volatility_min"), said, change))
+        if short is not None and options["overlap"] > short:
+            said = f"overlap {options['overlap']} is longer than the volatility_window of {short}"
+            found.append(((*place, "overlap"), said, "sum over fewer periods"))
         if short is not None and short > options["window"]:
             said = f"volatility_window {short} is longer than the window of {options['window']}"
             found.append(((*place, "volatility_window"), said, "shorten it, or lengthen window"))

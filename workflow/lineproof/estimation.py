@@ -97,10 +97,15 @@ class Estimation:
             return
         words, (window, min_obs) = FREQUENCIES[self._returns], self._options.values()
         if not self._n_still:
+            which = "" if self._estimator == "ols" else f" that {self._estimator} can use"
             found = (
-                f"no security has {min_obs} {words.nouns} of returns within {window} {words.nouns}"
+                f"no security has {min_obs} {words.nouns} of returns{which} within {window} "
+                f"{words.nouns}"
             )
             change = "lower min or lengthen window"
+        elif "half_life" in self._own:
+            found = f"the market's return does not vary among the {words.nouns} that count"
+            change = "lengthen half_life, or check the market's file"
         elif self._table.shape[1] > 2:
             found = "the market or a factor never changes, or is a mixture of the others"
             change = "check the market's file and that of the factors"

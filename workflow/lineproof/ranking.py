@@ -134,7 +134,10 @@ def rank(
     counts = in_each[formed]
     starts = np.cumsum(counts) - counts
     rule, kept, groups = catalog.load(RULES[design.rule]), [], []
-    for place in _in_turn(rows.month[formed], counts, design):
+    months = rows.month[formed].tolist()
+    for place, month in enumerate(months):
+        if design.in_blocks and kept and (month - months[kept[0]]) % design.hold:
+            continue  # a block must end before the next begins
         part = slice(starts[place], starts[place] + counts[place])
         values = [each[ranked_at[part]] for each in ranks]
         of_part = None if marks is None else marks[can[part]]
@@ -173,17 +176,6 @@ def _candidates(
     order = in_order(rows.period[can], len(rows.month))
     can = can[order]
     return can, ranked_at[order] if design.estimation else can
-
-
-def _in_turn(month: np.ndarray, counts: np.ndarray, design: Design) -> list[int]:
-    """Which formation months are used: all, or where a block must end first, the first that can be and then in step."""
-    if not design.in_blocks:
-        return list(range(len(month)))
-    enough = np.flatnonzero(counts >= np.prod(design.groups))
-    if len(enough) == 0:
-        return []
-    first = month[enough[0]]
-    return [int(at) for at in enough if (month[at] - first) % design.hold == 0]
 
 
 @dataclass(frozen=True)

@@ -20,7 +20,7 @@ from lineproof.intake.values import (
     Numbers,
     as_decimal,
     as_digits,
-    missing_codes,
+    settled_texts,
     to_days,
     to_numbers,
 )
@@ -124,7 +124,7 @@ def _take_block(
     if "return_" in columns:
         see(day, columns["return_"])
     for name, known in taken.texts.items():
-        columns[name] = _texts(block.columns[name], reading["missing"], known)
+        columns[name] = _texts(block.columns[name], reading, known)
     _count_days(columns["day"], taken)
     known = taken.names.codes(names)
     taken.last_day = _grown(taken.last_day, len(taken.names))
@@ -209,12 +209,13 @@ def _written(block: RawBlock, name: str, before: str = "") -> Callable[[np.ndarr
     return said
 
 
-def _texts(column: pa.Array, missing: list[str], known: Names) -> np.ndarray:
+def _texts(column: pa.Array, reading: dict[str, Any], known: Names) -> np.ndarray:
     """Codes into the distinct texts of a further column; a code for missing is the empty text."""
     coded = column.dictionary_encode()
     texts = [as_digits(value) for value in coded.dictionary.to_pylist()]
-    blank = set(missing_codes(missing))
-    codes = known.codes(["" if text in blank else text for text in [*texts, ""]])
+    is_text = pa.types.is_string(column.type) or pa.types.is_large_string(column.type)
+    decimal = reading.get("decimal", "point") if is_text else "point"
+    codes = known.codes([*settled_texts(texts, reading["missing"], decimal), ""])
     return codes[coded.indices.fill_null(len(texts)).to_numpy(zero_copy_only=False)]
 
 

@@ -86,6 +86,18 @@ def to_numbers(
     )
 
 
+def settled_texts(texts: list[str], missing: list[str], decimal: str) -> list[str]:
+    """Texts of a further column as they are kept: nothing for a code for missing, however written, and numbers with a
+    decimal point, as screens and rankings read them."""
+    array = pa.array(texts, pa.large_string())
+    numbers = to_numbers(array, missing, thousands=True, decimal=decimal)
+    if decimal == "comma":
+        is_number = ~(numbers.is_text | numbers.is_not_finite)
+        array = pc.if_else(pa.array(is_number), _with_points(array), array)
+    kept = array.to_pylist()
+    return ["" if code >= 0 else text for text, code in zip(kept, numbers.code, strict=True)]
+
+
 def _typed(array: pa.Array, codes: list[str]) -> Numbers:
     """Numbers that the file holds as numbers: null or NaN is the empty field."""
     value = array.cast(pa.float64(), safe=False).to_numpy(zero_copy_only=False).copy()

@@ -173,7 +173,8 @@ def rolling_correlation_volatility(
     """ρ σ / σ_m: correlation over a long window, both volatilities over a short one (Frazzini and Pedersen 2014).
 
     The correlation is that of returns summed over `overlap` periods, overlapping (the source sums three days of log
-    returns; here excess returns are summed). ρ and `n_obs` come from `window`, σ and σ_m from complete pairs within
+    returns; here excess returns are summed), by the last period of each sum: the first sums of a window reach
+    `overlap` − 1 periods back before it. ρ and `n_obs` come from `window`, σ and σ_m from complete pairs within
     `volatility_window`.
 
     Alpha is the mean of the security − beta × that of the market over the long window, per period; R² is ρ². Residuals

@@ -26,26 +26,11 @@ def breakpoints(values: np.ndarray, n_groups: int) -> np.ndarray:
     return lower + (above - lower) * (part / n_groups)
 
 
-def ranked_groups(values: np.ndarray, n_groups: int) -> np.ndarray:
-    """Group of each value, 1 for the lowest to `n_groups` for the highest; shape as `values`.
+def by_quantiles(values: np.ndarray, n_groups: int, marks: Marks) -> np.ndarray:
+    """Groups parted at the quantiles of the values marked, of which there is one at least.
 
     A value at a breakpoint belongs to the lower group, so equal values always share a group.
-
-    Raises
-    ------
-    ValueError
-        When there are fewer values than groups, or a value is missing.
     """
-    values = np.asarray(values, float)
-    if len(values) < n_groups:
-        raise ValueError(f"{len(values)} values cannot fill {n_groups} groups")
-    if np.isnan(values).any():
-        raise ValueError("a missing value cannot be ranked")
-    return by_quantiles(values, n_groups, None)
-
-
-def by_quantiles(values: np.ndarray, n_groups: int, marks: Marks) -> np.ndarray:
-    """Groups parted at the quantiles of the values marked, of which there is one at least."""
     set_by = values if marks is None else values[marks]
     return _one_more_than_below(values, breakpoints(set_by, n_groups))
 
