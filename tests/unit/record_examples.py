@@ -66,9 +66,9 @@ def _usual() -> dict[str, Any]:
         "period": "month",
         "files": [
             {"place": "data.returns", "label": "raw/returns.csv", "rows_read": kept + 1_381, "rows_kept": kept,
-             "rows_set_aside": 1_284, "exact_duplicates": 97, "n_bytes": 12_345_678, "sha256": "ab" * 32},
+             "rows_set_aside": 1_284, "exact_duplicates": 97},
             {"place": "data.market", "label": "raw/market.csv", "rows_read": 320, "rows_kept": 312,
-             "rows_set_aside": 0, "exact_duplicates": 0, "rows_unused": 8, "n_bytes": 4_321, "sha256": "cd" * 32},
+             "rows_set_aside": 0, "exact_duplicates": 0, "rows_unused": 8},
             {"place": "data.riskless", "label": "raw/riskless.csv", "rows_read": 312, "rows_kept": 312,
              "rows_set_aside": 0, "exact_duplicates": 0},
         ],
@@ -132,6 +132,16 @@ def daily() -> dict[str, Any]:
     intake["evidence"] |= observed(4, days)
     del intake["delisting"]
     return intake
+
+
+def raw_files() -> dict[str, Any]:
+    """Sizes and sums of the files of `usual`, whose last was made by a rule."""
+    signs = [
+        {"n_bytes": 12_345_678, "sha256": "ab" * 32},
+        {"n_bytes": 4_321, "sha256": "cd" * 32},
+        {"n_bytes": 99},
+    ]
+    return {"made_with": "ef" * 32, "files": signs}
 
 
 def earlier() -> dict[str, Any]:

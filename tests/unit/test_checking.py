@@ -154,7 +154,8 @@ def test_summary_of_a_study(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> 
     intake = validate(tmp_path, lines(*ROWS), market=MARKET).intake
     study = load_study("mine.yaml")
     options = Wiring(study).options("validate_returns")
-    store.write_json({**intake, "made_with": made_with(options)}, "results/mine/data/intake.json")
+    store.write_json(intake, "results/mine/data/intake.json")
+    store.write_json({"made_with": made_with(options)}, "results/mine/data/raw_files.json")
     said = summary(study).splitlines()
     assert said[0] == "A study of mine (mine.yaml): the study file and its data can be used."
     assert said[2:-3] == describe_intake(intake)

@@ -194,7 +194,15 @@ def test_each_file_has_its_equation(case) -> None:
         )
         unused = file.get("rows_unused")
         assert said + (f" + {unused:,} not used" if unused else "") in words
-        assert file.get("sha256", "") in words
+
+
+def test_each_file_has_its_size_and_sum() -> None:
+    raw = examples.raw_files()
+    words = " ".join(Page(write_data_report(examples.usual(), FACTS, raw)).words.split())
+    for file in raw["files"]:
+        assert f"{file['n_bytes']:,} bytes" in words
+    assert words.count("SHA-256") == 2
+    assert "ab" * 32 in words
 
 
 @pytest.mark.parametrize("key", ["rows_kept", "rows_set_aside", "exact_duplicates", "rows_read"])

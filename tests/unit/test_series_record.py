@@ -110,9 +110,9 @@ def test_sizes_and_sums_of_raw_files(tmp_path: Path) -> None:
         )
         for label in labels
     ]
-    record = signed({"n": 1, "files": files}, full, [str(path) for path in kept], {"b": 1, "a": 2})
+    record = signed(files, full, [str(path) for path in kept], {"b": 1, "a": 2})
     found = record.pop("files")
-    assert record == {"n": 1, "made_with": made_with({"a": 2, "b": 1})}
+    assert record == {"made_with": made_with({"a": 2, "b": 1})}
     assert [file["label"] for file in found] == [file["label"] for file in files]
     assert [file.get("sha256") for file in found] == [*sums["returns"], None, None, None]
     assert [file.get("n_bytes") for file in found] == [15, 15, None, None, 15]

@@ -40,8 +40,8 @@ def summary(study: Study) -> str:
     Raises KnownProblem when the record there is that of another study file.
     """
     place = f"{study.folder}/data/intake.json"
-    intake = store.read_json(place)
-    if intake.get("made_with") != made_with(Wiring(study).options("validate_returns")):
+    intake, raw = store.read_json(place), store.read_json(f"{study.folder}/data/raw_files.json")
+    if raw["made_with"] != made_with(Wiring(study).options("validate_returns")):
         found = f"it is not the record of {study.path.name} as it stands now"
         raise KnownProblem(_NO_SUMMARY, [Problem(place, found, "delete it and check again")])
     return "\n".join(

@@ -14,6 +14,7 @@ checkpoint validate_returns:
         set_aside=wiring.path("data/set_aside.parquet"),
         set_aside_csv=wiring.path("data/set_aside.csv"),
         intake=wiring.path("data/intake.json"),
+        raw_files=wiring.path("data/raw_files.json"),
     log:
         wiring.path("logs/validate_returns.log"),
     benchmark:
@@ -49,6 +50,7 @@ if study.factors is not None:
 rule write_data_report:
     input:
         intake=after_validation("data/intake.json"),
+        raw_files=after_validation("data/raw_files.json"),
         options=wiring.options_file("write_paper"),
         pins=wiring.pins,
         code=wiring.code("write_data_report"),

@@ -27,8 +27,6 @@ class FileRecord(TypedDict):
     rows_unused: NotRequired[
         int
     ]  # of a series: without a value, or in periods that the other series lacks
-    n_bytes: NotRequired[int]
-    sha256: NotRequired[str]
 
 
 class SeriesRecord(TypedDict):
@@ -220,7 +218,6 @@ class Intake(TypedDict):
     period: NotRequired[Literal["month", "day"]]  # month where absent
     files: NotRequired[list[FileRecord]]
     series: NotRequired[list[SeriesRecord]]
-    made_with: NotRequired[str]  # see `signed.made_with`
     set_aside: NotRequired[list[AsideRecord]]
     delisting: NotRequired[DelistingRecord]
     evidence: NotRequired[Evidence]

@@ -88,7 +88,7 @@ class Intake:
             rules["missing_final_return"], rules["final_return_by_reason"], span.first, n_periods
         )
         self._builds = (
-            {name: MarketBuild(kinds.build) for name in self._names} if kinds.build else {}
+            {name: MarketBuild(kinds.build) for name in self.panels} if kinds.build else {}
         )
         self._alive = np.zeros(n_periods, np.int64)
         self._panel = PanelCounts()
@@ -105,7 +105,8 @@ class Intake:
         return "total" if self._are_made_total else self._kinds.returns_are
 
     @property
-    def _names(self) -> list[str]:
+    def panels(self) -> list[str]:
+        """Names of the tables that `tables` gives pieces of."""
         return ["panel", "daily"] if self._kinds.compounds else ["panel"]
 
     def tables(self) -> Iterator[dict[str, pd.DataFrame]]:
@@ -255,6 +256,10 @@ class Intake:
         for table in self._account.set_aside():
             yield {"set_aside": table}
 
+    def files(self) -> list[dict[str, Any]]:
+        """A `record.FileRecord` a raw file, those of returns first."""
+        return [*self._account.file_records(), *self._supplied.files(self._used)]
+
     def counts(self) -> dict[str, Any]:
         """What came in and what became of it: see `intake.record`."""
         panel, name = self._panel, self._rates.span.periods.name
@@ -266,7 +271,7 @@ class Intake:
             "rows_screened": panel.n_screened,
             "n_securities": panel.n_securities,
             "n_missing_returns": panel.n_missing,
-            "files": [*self._account.file_records(), *self._supplied.files(self._used)],
+            "files": self.files(),
             "series": self._series,
             "faults": self._taken.tally.report(self._answers()),
             "screens": self._screens.report(),

@@ -13,6 +13,7 @@ from lineproof.intake.headers import where_is
 from lineproof.intake.stopping import stop
 
 _MOST, _BY_FAR = 0.5, 0.9  # shares of the values given
+_MANY = 10_000  # values that speak for a whole file
 
 
 @dataclass
@@ -41,7 +42,8 @@ class WrittenNumbers:
     def add(self, column: pa.Array, is_text: np.ndarray, is_missing: np.ndarray) -> None:
         """Take in one block: the returns as written, and masks (n_rows,) of those that are text, or missing.
 
-        Raises KnownProblem at once where nearly all are so written: no other rows of such a file are worth reading.
+        Raises KnownProblem at once where nearly all of many are so written: no other rows of such a file are worth
+        reading.
         """
         n_given = len(is_text) - int(is_missing.sum())
         self._n_given += n_given
@@ -52,7 +54,7 @@ class WrittenNumbers:
             found = other.filter(pc.match_substring_regex(other, form.pattern))
             form.n += len(found)
             form.least = min(filter(None, (pc.min(found).as_py(), form.least)), default=None)
-            if len(found) > _BY_FAR * n_given:
+            if n_given >= _MANY and len(found) > _BY_FAR * n_given:
                 raise self._stop(form)
 
     def judge(self) -> None:

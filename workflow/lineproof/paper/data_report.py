@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -34,12 +34,16 @@ class Section:
     build: Builder
 
 
-def write_data_report(intake: Intake, facts: dict[str, Any]) -> str:
+def write_data_report(
+    intake: Intake, facts: dict[str, Any], raw: Mapping[str, Any] | None = None
+) -> str:
     """The whole page from the record of the intake and what `lineproof.facts.facts` says of the study.
+
+    `raw` has sizes and sums of the raw files, as `intake.signed.signed` gives them.
 
     Raises ValueError when the rows of a file do not add up.
     """
-    record = Record(intake)
+    record = Record(intake, (raw or {}).get("files", []))
     built = [(section, section.build(record)) for section in SECTIONS]
     shown = [(section, content) for section, content in built if content is not None]
     return (
@@ -75,6 +79,7 @@ def _files(record: Record) -> list[dict[str, Any]]:
     found = []
     for place, file in enumerate(files_of(record.intake)):
         path: tuple[str | int, ...] = ("files", place) if given else ()
+        signs = record.raw_files[place] if given and record.raw_files else {}
         words = {"rows_kept": "kept", "rows_set_aside": "set aside"}
         words["exact_duplicates"] = "exact duplicates"
         if file.get("rows_unused"):
@@ -85,8 +90,8 @@ def _files(record: Record) -> list[dict[str, Any]]:
                 "label": file["label"],
                 "read": record.at(*path, "rows_read"),
                 "parts": [(record.at(*path, key), said) for key, said in words.items()],
-                "n_bytes": record.at(*path, "n_bytes") if "n_bytes" in file else None,
-                "sha256": file.get("sha256", ""),
+                "n_bytes": f"{signs['n_bytes']:,}" if "n_bytes" in signs else "",
+                "sha256": signs.get("sha256", ""),
             }
         )
     return found

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import partial
 from html import escape
@@ -32,9 +32,10 @@ class Value:
 
 @dataclass(frozen=True)
 class Record:
-    """The intake, read by place."""
+    """The intake, read by place, and the signs of its raw files in their order."""
 
     intake: Mapping[str, Any]
+    raw_files: Sequence[Mapping[str, Any]] = ()
 
     def get(self, *path: str | int) -> Any:
         """What stands at a place; raises KeyError or IndexError where nothing does."""
