@@ -73,7 +73,7 @@ PORTFOLIOS: list[tuple[str, dict[str, Any], str]] = [
     ("ante_betas", {"ante_betas": "other"}, "those of their last 99 trading days"),
     (
         "ante_betas",
-        {"ante_betas": ["other", "shorter"]},
+        {"ante_betas": ["other", "shorter"], "hold": 24, "overlap": True},
         "those of their last 99 trading days (ordinary least squares; at least 33 trading days), taken "
         "anew at the end of each year, then of their last 77 trading days",
     ),

@@ -285,9 +285,13 @@ def _gather(
     m, n_sums, n_dates = len(number), sums.shape[1], dates.shape[1]
     of_prefix, of_suffix, count = held[-2], held[-3], held[-1]  # the first two for a while
     oldests, lasts = spans[0, low : low + m], spans[1, low : low + m]
-    runs_on = True
+    runs_on = steps_on = (
+        True  # a date a window, an observation a window: then what is read lies together
+    )
+    low_one, last_one = oldests[0], lasts[0]
     for w in range(m):
         oldest, last = oldests[w], lasts[w]
+        steps_on &= (oldest == low_one + w) & (last == last_one + w)
         end = ends[number[w] - first]
         at[w], count[w] = max(min(end, n_dates - 1), 0), n_obs[w]
         runs_on &= at[w] == at[0] + w
@@ -298,8 +302,12 @@ def _gather(
                 of_prefix[w] = 0.0
     for c in range(2 + k):
         prefix, suffix, line = sums[0, c], sums[1, c], held[c]
-        for w in range(m):
-            line[w] = of_prefix[w] * prefix[lasts[w]] + of_suffix[w] * suffix[oldests[w]]
+        if steps_on:
+            for w in range(m):
+                line[w] = of_prefix[w] * prefix[last_one + w] + of_suffix[w] * suffix[low_one + w]
+        else:
+            for w in range(m):
+                line[w] = of_prefix[w] * prefix[lasts[w]] + of_suffix[w] * suffix[oldests[w]]
     for c in range(len(dates)):
         dated, line = dates[c], held[2 + k + c]
         begins = at[0]
