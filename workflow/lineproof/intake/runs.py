@@ -11,6 +11,7 @@ from numba import njit
 from lineproof.store import Scratch
 
 Columns = dict[str, np.ndarray]
+_ROWS = 1 << 20  # of a run: many small ones would be read back in as many small parts
 
 
 class Names:
@@ -42,11 +43,28 @@ class SortedRuns:
     scratch: Scratch
     _runs: list[tuple[list[str], np.ndarray]] = field(default_factory=list)
     _columns: list[str] = field(default_factory=list)
+    _held: list[tuple[np.ndarray, Columns]] = field(default_factory=list)
+    _names: Names = field(default_factory=Names)
 
     def add(self, security: np.ndarray, names: list[str], columns: Columns) -> None:
         """Add rows: `security` (n_rows,) is int32 into `names`, which may have names without rows."""
         if len(security) == 0:
             return
+        self._held.append((self._names.codes(names)[security], columns))
+        if sum(len(codes) for codes, _ in self._held) >= _ROWS:
+            self._end_run()
+
+    def _end_run(self) -> None:
+        """Sort the rows held since the last run ended, and put them away."""
+        if not self._held:
+            return
+        security = np.concatenate([codes for codes, _ in self._held])
+        columns = {
+            name: np.concatenate([each[name] for _, each in self._held])
+            for name in self._held[0][1]
+        }
+        names = self._names.texts()
+        self._held, self._names = [], Names()
         rank, ordered = _ranks(names)
         order, start = counting_order(rank[security], len(names))
         is_sorted = bool((order[1:] > order[:-1]).all())
@@ -57,6 +75,7 @@ class SortedRuns:
 
     @property
     def n_rows(self) -> int:
+        self._end_run()
         return sum(int(start[-1]) for _, start in self._runs)
 
     def stretches(
@@ -67,6 +86,7 @@ class SortedRuns:
         All rows of a security come together, in the order of the raw files; a stretch has at most so many rows, or one
         security.
         """
+        self._end_run()
         names = sorted(set().union(*(ordered for ordered, _ in self._runs)))
         place = {name: at for at, name in enumerate(names)}
         placed = [
