@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-import os
-
 import pytest
 from hypothesis import settings
+
+from tests.thorough import IS_THOROUGH
 
 # A slow machine is no failure.
 settings.register_profile("patient", deadline=None)
@@ -14,7 +14,7 @@ settings.load_profile("patient")
 
 def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
     """Skip what is thorough unless LINEPROOF_THOROUGH is set."""
-    if os.environ.get("LINEPROOF_THOROUGH"):
+    if IS_THOROUGH:
         return
     skip = pytest.mark.skip(reason="whole runs: set LINEPROOF_THOROUGH=1")
     for item in items:

@@ -21,10 +21,11 @@ from tests.thorough import examples
 
 from lineproof.addresses import is_spread
 from lineproof.designs import DESIGNS, WEIGHTS, Design
+from lineproof.formed_tables import asset_names
 from lineproof.frames import contract
 from lineproof.periods import periods_of
 from lineproof.problems import KnownProblem
-from lineproof.sorting import Sorted, asset_names, sort_ranked
+from lineproof.sorting import Sorted, sort_ranked
 
 SEEDS = st.integers(0, 2**32 - 1)
 FEW = settings(max_examples=examples(4), deadline=None, derandomize=True)

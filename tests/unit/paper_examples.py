@@ -17,10 +17,10 @@ from tests.unit import group_examples
 from lineproof.addresses import is_spread
 from lineproof.analyses import ANALYSES
 from lineproof.formation_summary import describe_formations
+from lineproof.formed_tables import asset_names
 from lineproof.frequency import FREQUENCIES
 from lineproof.paper.context import Context
 from lineproof.pricing import price_subperiod
-from lineproof.sorting import asset_names
 
 HOSTILE = ["<script>alert(1);", "=cmd()|'calc'!A0", "R&D_50%", "{$x^2$}#~\\", "[2] food", "*Star"]
 LONG = "The very long name of an index of everything that has ever been listed anywhere"

@@ -12,8 +12,8 @@ from tests.unit.group_examples import date, drawn_membership, formations, transi
 
 from lineproof.addresses import address
 from lineproof.formation_summary import describe_formations, describe_sorts
+from lineproof.formed_tables import asset_names
 from lineproof.frames import ESTIMATES, FORMATIONS, TRANSITIONS
-from lineproof.sorting import asset_names
 
 # Four formations of two groups. A and B leave no gap; C comes in, D leaves, E is out once and comes back.
 MEMBERS = {

@@ -14,11 +14,11 @@ import pandas as pd
 import pytest
 
 from lineproof.designs import Design
+from lineproof.formed_tables import asset_names
 from lineproof.frames import contract
 from lineproof.problems import KnownProblem
 from lineproof.sorting import (
     Sorted,
-    asset_names,
     growth_of,
     sort_ranked,
     take_supplied,

@@ -27,8 +27,9 @@ def settle(environ: MutableMapping[str, str]) -> None:
     if str(_WORKFLOW) not in known:
         environ["PYTHONPATH"] = ":".join([str(_WORKFLOW), *filter(None, known)])
     environ.pop("PYTHONDONTWRITEBYTECODE", None)
-    folder = _WORKFLOW.parent / ".venv" / "numba" / kernels_digest(_WORKFLOW / "lineproof")
-    environ.setdefault("NUMBA_CACHE_DIR", str(folder))
+    if "NUMBA_CACHE_DIR" not in environ:
+        folder = _WORKFLOW.parent / ".venv" / "numba" / kernels_digest(_WORKFLOW / "lineproof")
+        environ["NUMBA_CACHE_DIR"] = str(folder)
 
 
 def kernels_digest(package: Path) -> str:

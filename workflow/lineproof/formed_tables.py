@@ -14,7 +14,7 @@ from lineproof.addresses import NEW, OUT, SPREAD
 from lineproof.designs import WEIGHTS, Design
 from lineproof.periods import ABSENT
 from lineproof.ranking import PanelRows, Ranked
-from lineproof.stats.holding import Held, Rows, assign, in_order
+from lineproof.stats.holding import Held, Rows, assign, in_order, ratio
 from lineproof.stats.moving import at_formation, moves, turnover
 from lineproof.stats.weights import scaled_to_one
 
@@ -34,7 +34,7 @@ class Formed:
     @cached_property
     def assets(self) -> np.ndarray:
         """Names of the groups in their order, (n_groups,)."""
-        return np.array(asset_names(self.design.groups), dtype=object)
+        return np.array(asset_names(*self.design.groups), dtype=object)
 
     @cached_property
     def dates(self) -> np.ndarray:
@@ -70,8 +70,8 @@ class Formed:
         return betas[0, row] if len(betas) else np.full(len(row), np.nan)
 
 
-def asset_names(groups: Sequence[int]) -> list[str]:
-    """A name for each group, in an order that is that of the names."""
+def asset_names(*groups: int) -> list[str]:
+    """`p01` (lowest) to `p10`; of two variables `p01-01` to `p05-05`. Names sort in the order of the groups."""
     names = [f"{group:0{_digits(groups[0])}d}" for group in range(1, groups[0] + 1)]
     for count in groups[1:]:
         inner = [f"{group:0{_digits(count)}d}" for group in range(1, count + 1)]
@@ -87,7 +87,7 @@ def members(formed: Formed) -> pd.DataFrame:
     """Who was in which group, formation by formation."""
     f = formed.ranked.formations
     order = in_order(formed.cell, formed.n_cells)
-    n_each = np.bincount(formed.cell, minlength=f.n_groups * len(formed.dates))
+    n_each = np.bincount(formed.cell, minlength=formed.n_cells)
     groups = np.tile(np.arange(f.n_groups), len(formed.dates))
     return pd.DataFrame(
         {
@@ -113,7 +113,7 @@ def returns(formed: Formed) -> pd.DataFrame:
     by_period = {
         "excess_return": _mean_over(f, held.excess, n_periods),
         "n_members": _sum_over(f, held.n_members, n_periods),
-        "mean_size": _ratio(
+        "mean_size": ratio(
             _sum_over(f, held.total_size, n_periods), _sum_over(f, held.n_sized, n_periods)
         ),
         "ante_beta": _mean_over(f, held.beta, n_periods),
@@ -138,7 +138,7 @@ def _with_spreads(
     """High minus low of the last variable: one, or in a double sort its mean and that in each first group."""
     names = [SPREAD]
     if len(groups) > 1:
-        names += [f"{SPREAD}-{name[1:]}" for name in asset_names(groups[:-1])]
+        names += [f"{SPREAD}-{name[1:]}" for name in asset_names(*groups[:-1])]
     found = {}
     for name, values in tables.items():
         parts = values.reshape(len(values), -1, groups[-1])
@@ -161,11 +161,7 @@ def _sum_over(f, values: np.ndarray, n_periods: int) -> np.ndarray:
 def _mean_over(f, values: np.ndarray, n_periods: int) -> np.ndarray:
     known = np.isfinite(values)
     counts = _sum_over(f, known.astype(float), n_periods)
-    return _ratio(_sum_over(f, np.where(known, values, 0.0), n_periods), counts)
-
-
-def _ratio(part: np.ndarray, whole: np.ndarray) -> np.ndarray:
-    return np.divide(part, whole, out=np.full(part.shape, np.nan), where=whole > 0)
+    return ratio(_sum_over(f, np.where(known, values, 0.0), n_periods), counts)
 
 
 def formations(formed: Formed) -> pd.DataFrame:
@@ -180,8 +176,8 @@ def formations(formed: Formed) -> pd.DataFrame:
             "asset": pd.Series(np.tile(formed.assets, len(formed.dates)), dtype=str),
             "n_members": n_members.astype(np.int64),
             "turnover": _turnover(formed),
-            "mean_size": _ratio(total_size, n_sized),
-            "ante_beta": _ratio(part, weighed),
+            "mean_size": ratio(total_size, n_sized),
+            "ante_beta": ratio(part, weighed),
             "n_exits": n_exits.astype(np.int64),
         }
     )

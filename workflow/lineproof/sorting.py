@@ -106,11 +106,6 @@ def form_groups(
     return formed_tables.Formed(rows, held_rows, ranked, held, design)
 
 
-def asset_names(*groups: int) -> list[str]:
-    """`p01` (lowest) to `p10`; of two variables `p01-01` to `p05-05`. Names sort in the order of the groups."""
-    return formed_tables.asset_names(groups)
-
-
 def _unformed(design: Design, groups: int, most: int) -> KnownProblem:
     """The error where at most so many securities can be ranked in any formation month."""
     if most == 0:

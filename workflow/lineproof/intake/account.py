@@ -12,6 +12,7 @@ from lineproof.intake.blocks import RawFile
 from lineproof.intake.chunk import Chunk
 from lineproof.intake.faults import label_of
 from lineproof.intake.first_pass import Taken
+from lineproof.intake.record import FileRecord, check_conserved
 from lineproof.intake.second_pass import Tracked
 from lineproof.intake.stopping import counted
 from lineproof.problems import KnownProblem, Problem
@@ -38,16 +39,9 @@ class Account:
         self._taken.aside.count(self._files, self._taken.tally)
 
     def check_conservation(self) -> None:
-        """Raises AssertionError when the rows read of a file are not the sum of what became of them."""
+        """Raises ValueError when the rows read of a file are not the sum of what became of them."""
         for file in self.file_records():
-            kept, aside, exact = (
-                file[key] for key in ("rows_kept", "rows_set_aside", "exact_duplicates")
-            )
-            if file["rows_read"] != kept + aside + exact:
-                raise AssertionError(
-                    f"rows of {file['label']} were lost: {file['rows_read']} read, {kept} kept, {aside} set aside, "
-                    f"{exact} exact duplicates"
-                )
+            check_conserved(file)
 
     def nothing_kept(self) -> KnownProblem:
         """The error when every row is set aside: each fault with its first row."""
@@ -76,8 +70,8 @@ class Account:
             "exact_duplicates": int(self.tracked.n_duplicates.sum()),
         }
 
-    def file_records(self) -> list[dict[str, Any]]:
-        """A `record.FileRecord` a file."""
+    def file_records(self) -> list[FileRecord]:
+        """What became of the rows of each file."""
         return [
             {
                 "place": "data.returns",

@@ -121,6 +121,14 @@ class Context:
         """Number of groups by variable; none where the assets are supplied."""
         return self.facts["sorts"][sort].get("groups", [])
 
+    def variables(self, sort: str) -> list[str]:
+        """What each variable that a sort ranks on is called."""
+        return self.facts["sorts"][sort]["variables"]
+
+    def group_assets(self, sort: str) -> list[str]:
+        """Those test assets of a sort that are groups."""
+        return [asset for asset in self.assets(sort) if self.group(sort, asset)]
+
     def group(self, sort: str, asset: str) -> tuple[int, ...]:
         """The number of a group by variable, from 1: `p02-05` is (2, 5); empty for what is no group."""
         found = re.fullmatch(r"p(\d+)(?:-(\d+))?", asset) if self.ranked(sort) else None

@@ -8,6 +8,7 @@ from matplotlib.collections import PolyCollection
 from matplotlib.figure import Figure
 from matplotlib.ticker import MaxNLocator
 
+from lineproof.addresses import OUT
 from lineproof.paper import figures, style
 from lineproof.paper.context import Context
 from lineproof.paper.palette import LIGHT
@@ -20,7 +21,7 @@ _TICKS = 13
 
 def moves(context: Context, sort: str) -> Figure:
     """Mean share of each group's members by the group after: one shaded square each."""
-    assets = [asset for asset in context.assets(sort) if context.group(sort, asset)]
+    assets = context.group_assets(sort)
     shares = _shares(context, sort, assets)
     wide = 0.75 * style.NARROW
     figure = Figure(figsize=(wide, 0.86 * wide), layout="constrained")
@@ -51,7 +52,7 @@ def _shares(context: Context, sort: str, assets: list[str]) -> np.ndarray:
     """(n_groups, n_groups + 1) shares, `out` last; NaN where one is not defined or not reported."""
     found = np.full((len(assets), len(assets) + 1), np.nan)
     for row, before in enumerate(assets):
-        for column, after in enumerate([*assets, "out"]):
+        for column, after in enumerate([*assets, OUT]):
             keys = (sort, "-", "transitions", "-", before, after, "-")
             if context.book.has(*keys):
                 found[row, column] = context.book.at(*keys).estimate

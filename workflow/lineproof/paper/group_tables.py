@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from functools import partial
 
+from lineproof.addresses import NEW, OUT
 from lineproof.paper import layout, notes
 from lineproof.paper.context import Context
 from lineproof.paper.specification import EMPTY, Cell, Column, Panel, Row, Table, cell
 from lineproof.paper.symbols import Phrase, said
 
-MOST_AFTER = 12  # columns of groups after
 _MEMBERS = "Members"
 _GROUPS = (
     # term, heading, spanner, alone over a grid, format
@@ -26,7 +26,7 @@ _GROUPS = (
 
 def groups_at_formation(context: Context, sort: str) -> Table:
     """Number and size of members, betas before and after, turnover and leavers: means over all formations."""
-    assets = _groups(context, sort)
+    assets = context.group_assets(sort)
     quantities = [
         layout.Quantity(
             term,
@@ -44,10 +44,6 @@ def groups_at_formation(context: Context, sort: str) -> Table:
         panels=layout.panels(context, sort, quantities, assets, []),
         notes=_notes(context, sort, [quantity.key for quantity in quantities]),
     )
-
-
-def _groups(context: Context, sort: str) -> list[str]:
-    return [asset for asset in context.assets(sort) if context.group(sort, asset)]
 
 
 def _keys(context: Context, sort: str, asset: str, term: str) -> tuple[str, ...]:
@@ -123,10 +119,10 @@ def _outside(context: Context, sort: str) -> list[Phrase]:
 
 def _matrix(context: Context, sort: str) -> tuple[Panel, ...]:
     """Groups before down and after across, in as many panels as a page asks for."""
-    groups = _groups(context, sort)
+    groups = context.group_assets(sort)
     before = [(asset, Phrase([context.label(sort, asset)])) for asset in groups]
-    after = [(asset, context.label(sort, asset)) for asset in groups] + [("out", "Out")]
-    count = -(-len(after) // MOST_AFTER)
+    after = [(asset, context.label(sort, asset)) for asset in groups] + [(OUT, "Out")]
+    count = -(-len(after) // layout.MOST_SIDE_BY_SIDE)
     most = -(-len(after) // count)
     blocks = [after[start : start + most] for start in range(0, len(after), most)]
     return tuple(
@@ -135,7 +131,7 @@ def _matrix(context: Context, sort: str) -> tuple[Panel, ...]:
             _to(place, block) if count > 1 else Phrase(),
             (said("Group before"),),
             tuple(
-                Column(name, Phrase([label]), said("Group after") if name != "out" else Phrase())
+                Column(name, Phrase([label]), said("Group after") if name != OUT else Phrase())
                 for name, label in block
             ),
             tuple(
@@ -143,9 +139,9 @@ def _matrix(context: Context, sort: str) -> tuple[Panel, ...]:
                     name,
                     (label,),
                     tuple(_share(context, sort, name, to) for to, _ in block),
-                    gap=name == "new",
+                    gap=name == NEW,
                 )
-                for name, label in [*before, ("new", said("New"))]
+                for name, label in [*before, (NEW, said("New"))]
             ),
         )
         for place, block in enumerate(blocks)
@@ -164,12 +160,12 @@ def _share(context: Context, sort: str, before: str, after: str) -> Cell:
 
 def _kept(context: Context, sort: str) -> tuple[Panel, ...]:
     """Of groups by two variables, which part stays in its group, in that of either variable, and leaves."""
-    outer, inner = context.facts["sorts"][sort]["variables"]
+    outer, inner = context.variables(sort)
     terms = (
         ("same", "Same group"),
         ("same_first", f"Same {outer} group"),
         ("same_second", f"Same {inner} group"),
-        ("out", "Out"),
+        (OUT, "Out"),
     )
 
     def share(term: str, asset: str) -> Cell:
@@ -179,4 +175,4 @@ def _kept(context: Context, sort: str) -> tuple[Panel, ...]:
         layout.Quantity(term, Phrase([name]), Phrase(), Phrase([name]), partial(share, term))
         for term, name in terms
     ]
-    return layout.panels(context, sort, quantities, _groups(context, sort), [])
+    return layout.panels(context, sort, quantities, context.group_assets(sort), [])

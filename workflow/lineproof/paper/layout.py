@@ -62,7 +62,7 @@ def _grids(context: Context, sort: str, quantities: list[Quantity]) -> Iterator[
     grids = [_Grid(quantity, context, sort) for quantity in quantities]
     widest = max(len(grid.columns()) for grid in grids)
     abreast = max(MOST_SIDE_BY_SIDE // widest, 1)
-    outer, _ = context.facts["sorts"][sort]["variables"]
+    outer, _ = context.variables(sort)
     for shown in _shared_out(grids, abreast):
         rows = [
             Row(
@@ -101,7 +101,9 @@ class _Grid:
     def __init__(self, quantity: Quantity, context: Context, sort: str) -> None:
         self.quantity = quantity
         self.count = context.groups(sort)[1]
-        self._name = said("{name}, by {inner}", name=quantity.name, inner=_inner(context, sort))
+        self._name = said(
+            "{name}, by {inner}", name=quantity.name, inner=context.variables(sort)[1]
+        )
         self._groups = {context.group(sort, asset): asset for asset in context.assets(sort)}
         overall, *self._spreads = context.spreads(sort) or [None]
         self._overall = EMPTY if overall is None else quantity.cell(overall)
@@ -126,10 +128,6 @@ class _Grid:
     def mean_row(self) -> list[Cell]:
         cells = [EMPTY] * self.count
         return [*cells, self._overall] if self.has_spread else cells
-
-
-def _inner(context: Context, sort: str) -> str:
-    return context.facts["sorts"][sort]["variables"][1]
 
 
 def lettered(place: int, title: Phrase) -> Phrase:

@@ -48,7 +48,7 @@ def low_and_high(context: Context, sort: str) -> list[Phrase]:
     """What the names of a sort's groups mean."""
     if not context.ranked(sort):
         return []
-    names = context.facts["sorts"][sort]["variables"]
+    names = context.variables(sort)
     return [said("Low and High: lowest and highest {variables}.", variables=" or ".join(names))]
 
 
@@ -56,7 +56,7 @@ def groups(context: Context, sort: str) -> list[Phrase]:
     """What the names of a sort's groups, and of the differences between them, mean."""
     found = low_and_high(context, sort)
     if context.spreads(sort):
-        outer, *inner = context.facts["sorts"][sort]["variables"]
+        outer, *inner = context.variables(sort)
         within = f" inside each {outer} group; Mean: of all {outer} groups" if inner else ""
         found.append(
             said(

@@ -181,7 +181,7 @@ def _together(context: Context, sort: str) -> list[list[_Head]]:
         alone += [(asset, Phrase()) for asset in spreads]
         return [[_Head(asset, context.label(sort, asset), over)] for asset, over in alone]
     found: dict[int, list[_Head]] = {}
-    (first, second), variables = counts, context.facts["sorts"][sort]["variables"]
+    (first, second), variables = counts, context.variables(sort)
     for asset in context.assets(sort):
         outer, inner = context.group(sort, asset)
         spanner = said(
@@ -241,7 +241,7 @@ def _block_title(context: Context, sort: str, block: list[_Head]) -> Phrase:
     groups = [head.asset for head in block if context.group(sort, head.asset)]
     counts = context.groups(sort)
     if len(counts) == 2 and groups:
-        outer, inner = context.facts["sorts"][sort]["variables"]
+        outer, inner = context.variables(sort)
         numbers = [context.group(sort, asset)[0] for asset in (groups[0], groups[-1])]
         ends = dict.fromkeys(group_name(number, counts[0]) for number in numbers)
         return said("{outer} {ends}, by {inner}", outer=outer, ends=" to ".join(ends), inner=inner)

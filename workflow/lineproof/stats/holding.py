@@ -102,11 +102,11 @@ def hold(rows: Rows, formations: Formations) -> Held:
         _hold(*of_rows, rows.beta, rows.drifts, *_by_row(rows, f), *of_formations, out, drifted)
     weight = out[..., _WEIGHT]
     return Held(
-        excess=_ratio(out[..., _RETURN], weight),
+        excess=ratio(out[..., _RETURN], weight),
         n_members=out[..., _MEMBERS],
         total_size=out[..., _SIZE],
         n_sized=out[..., _SIZED],
-        beta=_ratio(out[..., _BETA], out[..., _WITH_BETA]),
+        beta=ratio(out[..., _BETA], out[..., _WITH_BETA]),
         drifted=drifted[f.row],
     )
 
@@ -125,7 +125,8 @@ def assign(rows: Rows, formations: Formations, beta: np.ndarray) -> np.ndarray:
     return found
 
 
-def _ratio(part: np.ndarray, whole: np.ndarray) -> np.ndarray:
+def ratio(part: np.ndarray, whole: np.ndarray) -> np.ndarray:
+    """Part over whole, NaN where the whole is not above zero; shapes alike."""
     return np.divide(part, whole, out=np.full(part.shape, np.nan), where=whole > 0)
 
 
