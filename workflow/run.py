@@ -48,7 +48,7 @@ def set_up(kind: str) -> str:
     if _is_current("test") or (kind == "run" and _is_current("run")):
         return ""
     print(
-        f"Setting up the environment in {ENVIRONMENT.name}; this is done once and takes a minute.",
+        f"Setting up the environment in {ENVIRONMENT.name}; this is done once and takes a few minutes.",
         file=sys.stderr,
     )
     try:
